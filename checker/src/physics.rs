@@ -1,0 +1,5 @@
+//! The physics: pure functions of numbers, nothing else.
+//! Must not know spans, files, names of parts, policies or verdicts.
+
+pub mod math;
+pub mod unit;
