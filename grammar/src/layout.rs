@@ -1,0 +1,7 @@
+//! x
+/// s
+pub trait Spelling {}
+/// s
+pub struct AsWritten;
+/// s
+pub fn layout() {}
