@@ -1,0 +1,424 @@
+//! A rail at a signal frequency low enough to pull it down within each half wave: an exact march
+//! through charging and discharging against a sine load, and the least headroom over it.
+//! Must not know amplifiers: what the rail is needed for is a closure of the signal's phase.
+
+use super::conduction::bracketed_root;
+use super::rail::Rail;
+use super::reservoir::Draw;
+use crate::physics::math::{PI, cos, exp, maximum, root, sin_cos};
+use crate::physics::unit::{Amp, Hertz, Volt};
+
+/// Signal periods in the longest pattern after which signal and mains repeat together.
+const MOST_PERIODS: u32 = 16;
+
+/// Most half-cycles of the mains in one signal period; 100 at 1 Hz and 50 Hz.
+const MOST_HALF_CYCLES: f64 = 400.0;
+
+/// Phases of the signal against the mains that are searched before refining.
+const PHASES: u32 = 16;
+
+/// Tolerance of the search over phases, radians of the mains.
+const FINE_PHASE: f64 = 4e-3;
+
+/// Tolerances of the search within a piece, radians of the mains: while comparing phases, and for
+/// the result.
+const COARSE: f64 = 2e-2;
+const FINE: f64 = 1e-6;
+
+/// Longest step of sampling within a piece, radians of the mains, and how far above the least (as a
+/// part of the source's crest) a sample may lie and still be looked at closer.
+const SAMPLING: f64 = PI / 8.0;
+const SLACK: f64 = 5e-3;
+
+/// Most patterns marched through to find the steady state; three or four are usual.
+const MAX_MARCHES: u32 = 100;
+
+/// Most pieces between two break points of source and load; one or two are usual.
+const MOST_PIECES: u32 = 16;
+
+/// A rail current: a standing part and the half waves of a sine.
+#[derive(Clone, Copy, Debug, PartialEq)]
+pub struct LowFrequencyLoad {
+    /// Drawn all the time (idle current).
+    pub standing: Amp,
+    /// Peak of the half waves, all channels in phase.
+    pub peak: Amp,
+    /// Frequency of the signal.
+    pub frequency: Hertz,
+    /// In which halves of the signal period this rail is drawn upon.
+    pub draw: Draw,
+}
+
+/// The moment at which a rail has least to spare.
+#[derive(Clone, Copy, Debug, PartialEq)]
+pub struct Headroom {
+    /// Rail less what is needed of it; negative if it falls short.
+    pub least: Volt,
+    /// The rail then.
+    pub rail: Volt,
+    /// Phase of the signal current then, radians from its rise through zero, 0 to 2π.
+    pub signal_rad: f64,
+    /// Mains angle at which the signal rose through zero, radians from a zero crossing, 0 to π.
+    pub mains_rad: f64,
+}
+
+impl Rail {
+    /// The least of rail(t) - needed(t) over the signal period and over every phase of the signal
+    /// against the mains, in the periodic steady state. `needed` is a function of the phase of the
+    /// signal current in radians, 0 to 2π.
+    ///
+    /// 16 phases are searched and the neighbourhood of the worst is refined to 0.2 degrees, the
+    /// moment within the period to 1e-6 radians; the result is exact to about 1e-4 of the ripple.
+    ///
+    /// A signal period that holds p/q half-cycles of the mains, q up to 16, repeats after q
+    /// periods. Any other frequency is replaced by the next LOWER one that does, less than
+    /// 1/16 of a half-cycle away: a mains frequency is only held to about 1 %, and a longer half
+    /// wave sags deeper.
+    ///
+    /// The source resistance is that of both rails charging together, though at this frequency
+    /// they take turns to be loaded: slightly low rails, deliberately.
+    ///
+    /// `None` where the rail collapses to zero under the load, for a frequency above zero but under
+    /// 1/400 of twice the mains, and for anything negative or not finite.
+    pub fn least_headroom(
+        &self,
+        load: LowFrequencyLoad,
+        needed: impl Fn(f64) -> Volt,
+    ) -> Option<Headroom> {
+        let march = March::new(self, load)?;
+        let width = PI / f64::from(march.periods);
+        let phases = PHASES.div_ceil(march.periods);
+        let step = width / f64::from(phases);
+        let mut level = 1.0;
+        let mut worst: Option<(Headroom, f64)> = None;
+        for n in 0..phases {
+            let phase = step * f64::from(n);
+            level = march.settle(phase, level)?;
+            let found = march.least(phase, level, &needed, COARSE)?;
+            if worst.is_none_or(|(w, _)| found.least < w.least) {
+                worst = Some((found, level));
+            }
+        }
+        let (coarse, start) = worst?;
+        let deficit = |phase: f64| {
+            let phase = phase.rem_euclid(PI);
+            let level = march.settle(phase, start);
+            let found = level.and_then(|level| march.least(phase, level, &needed, COARSE));
+            found.map_or(f64::INFINITY, |h| -h.least.0)
+        };
+        let centre = coarse.mains_rad;
+        let (phase, _) = maximum(deficit, centre - step, centre + step, FINE_PHASE);
+        self.least_headroom_at(load, phase, needed)
+    }
+
+    /// The same at one phase: the signal current rises through zero at `mains_rad` radians after a
+    /// zero crossing of the mains. Some ten times quicker, for a search that holds the phase.
+    pub fn least_headroom_at(
+        &self,
+        load: LowFrequencyLoad,
+        mains_rad: f64,
+        needed: impl Fn(f64) -> Volt,
+    ) -> Option<Headroom> {
+        let phase = mains_rad.rem_euclid(PI);
+        let march = March::new(self, load)?;
+        let level = march.settle(phase, 1.0)?;
+        march.least(phase, level, &needed, FINE)
+    }
+}
+
+/// A load against a rail, in the units of the module `conduction` (currents as R·i/E), with the
+/// voltage inside the capacitor as the level: y = (u + Vd)/E.
+struct March<'a> {
+    rail: &'a Rail,
+    standing: f64,
+    peak: f64,
+    draw: Draw,
+    /// Signal frequency / mains frequency.
+    pace: f64,
+    /// Signal periods after which everything repeats.
+    periods: u32,
+}
+
+/// What is carried from piece to piece.
+#[derive(Clone, Copy)]
+struct State {
+    level: f64,
+    /// Derivative of the level by the level at the start of the pattern.
+    slope: f64,
+    /// Whether the rectifier conducts.
+    on: bool,
+}
+
+/// A stretch between two events: rectifier on or off, load half wave on or off, within one
+/// half-cycle of the mains.
+struct Piece<'a> {
+    march: &'a March<'a>,
+    on: bool,
+    /// Mains angle at its start, within the half-cycle.
+    angle: f64,
+    /// Signal phase at its start, within the half wave, and its cosine.
+    phase: f64,
+    phase_cos: f64,
+    /// Whether the signal is in its negative half.
+    negative: bool,
+    /// Peak of the half wave if this one loads the rail, else 0.
+    wave: f64,
+    /// Level at the start, and what of it fades while conducting.
+    level: f64,
+    fading: f64,
+}
+
+/// A moment within a piece.
+struct Moment {
+    level: f64,
+    /// d = sin θ - y + (r/R)·l: the charging current while the rectifier conducts, and how far the
+    /// source is above the rail while it does not; and its slope.
+    drive: f64,
+    slope: f64,
+    /// Rail terminal in the units of a level.
+    terminal: f64,
+}
+
+impl<'a> March<'a> {
+    fn new(rail: &'a Rail, load: LowFrequencyLoad) -> Option<Self> {
+        let unit = rail.resistance / rail.crest;
+        let (standing, peak) = (load.standing.0 * unit, load.peak.0 * unit);
+        let half_cycles = rail.omega / (PI * load.frequency.0);
+        let sound = standing >= 0.0
+            && peak >= 0.0
+            && (standing + peak).is_finite()
+            && half_cycles > 0.0
+            && half_cycles <= MOST_HALF_CYCLES;
+        let (pattern, periods) = sound.then(|| next_ratio(half_cycles))?;
+        Some(Self {
+            rail,
+            standing,
+            peak,
+            draw: load.draw,
+            pace: 2.0 * f64::from(periods) / pattern,
+            periods,
+        })
+    }
+
+    /// The level at the signal's rise through zero at `phase` of the mains, in the periodic steady
+    /// state, to 1e-11 of the crest.
+    ///
+    /// The map from one pattern to the next is a contraction whose derivative is the product of
+    /// what each conduction lets fade, so Newton needs one march a step. Should a Newton step fall
+    /// so low that the rail collapses, plain repetition from the unloaded level follows, which
+    /// approaches from above.
+    fn settle(&self, phase: f64, guess: f64) -> Option<f64> {
+        let mut level = guess;
+        let mut newton = true;
+        for _ in 0..MAX_MARCHES {
+            let Some((end, slope)) = self.pattern(phase, level, |_, _| {}) else {
+                if !newton {
+                    return None;
+                }
+                (newton, level) = (false, 1.0);
+                continue;
+            };
+            let change = end - level;
+            if change.abs() < 1e-11 {
+                return Some(end);
+            }
+            level = if newton && slope < 1.0 { level + change / (1.0 - slope) } else { end };
+        }
+        Some(level)
+    }
+
+    /// Least headroom over one pattern that starts at `level`.
+    fn least(
+        &self,
+        phase: f64,
+        level: f64,
+        needed: &impl Fn(f64) -> Volt,
+        tolerance: f64,
+    ) -> Option<Headroom> {
+        let mut least: Option<Headroom> = None;
+        let slack = Volt(SLACK * self.rail.crest);
+        self.pattern(phase, level, |piece, length| {
+            let spare = |after: f64| {
+                let rail = Volt(self.rail.volts(piece.at(after).terminal));
+                let signal_rad = piece.signal_phase(after);
+                Headroom { least: rail - needed(signal_rad), rail, signal_rad, mains_rad: phase }
+            };
+            let parts = (length / SAMPLING).ceil().max(2.0);
+            let step = length / parts;
+            let mut sampled = (0.0, spare(0.0));
+            for n in 1..=parts as u32 {
+                let after = step * f64::from(n);
+                let found = spare(after);
+                if found.least < sampled.1.least {
+                    sampled = (after, found);
+                }
+            }
+            if least.is_some_and(|l| sampled.1.least > l.least + slack) {
+                return;
+            }
+            let (from, to) = ((sampled.0 - step).max(0.0), (sampled.0 + step).min(length));
+            let (after, _) = maximum(|after| -spare(after).least.0, from, to, tolerance);
+            let found = spare(after);
+            if least.is_none_or(|l| found.least < l.least) {
+                least = Some(found);
+            }
+        })?;
+        least
+    }
+
+    /// One whole pattern from the signal's rise through zero at `phase` of the mains: the level at
+    /// its end and the derivative of that by the level at its start. Each piece is shown to `visit`
+    /// with its length. `None` where the rail collapses.
+    fn pattern(
+        &self,
+        phase: f64,
+        level: f64,
+        mut visit: impl FnMut(&Piece, f64),
+    ) -> Option<(f64, f64)> {
+        let mut state = State { level, slope: 1.0, on: false };
+        let (mut angle, mut signal, mut half_waves) = (phase, 0.0, 0);
+        state.on = self.piece(state, angle, signal, false).at(0.0).drive > 0.0;
+        while half_waves < 2 * self.periods {
+            let negative = half_waves % 2 == 1;
+            let (to_crossing, to_zero) = (PI - angle, (PI - signal) / self.pace);
+            let span = to_crossing.min(to_zero);
+            state = self.span(state, (angle, signal, negative), span, &mut visit)?;
+            (angle, signal) = (angle + span, signal + self.pace * span);
+            if to_zero <= to_crossing {
+                (signal, half_waves) = (0.0, half_waves + 1);
+            }
+            if to_crossing <= to_zero {
+                angle = 0.0;
+                if state.on {
+                    return None; // conducting at a zero crossing: the rail is below zero
+                }
+            }
+        }
+        Some((state.level, state.slope))
+    }
+
+    /// From one break point of source or load to the next, through every switching between.
+    fn span(
+        &self,
+        mut state: State,
+        (angle, signal, negative): (f64, f64, bool),
+        span: f64,
+        visit: &mut impl FnMut(&Piece, f64),
+    ) -> Option<State> {
+        let mut done = 0.0;
+        for left in (0..MOST_PIECES).rev() {
+            let piece = self.piece(state, angle + done, signal + self.pace * done, negative);
+            let event = if left > 0 { piece.event(span - done) } else { None };
+            let length = event.unwrap_or(span - done);
+            visit(&piece, length);
+            let end = piece.at(length);
+            if end.terminal <= self.rail.floor {
+                return None;
+            }
+            state.level = end.level;
+            if state.on {
+                state.slope *= exp(-length / self.rail.x);
+            }
+            if event.is_none() {
+                break;
+            }
+            state.on = !state.on;
+            done += length;
+        }
+        Some(state)
+    }
+
+    /// The piece that begins in `state` at a mains angle and a signal phase.
+    ///
+    /// Conducting, with ρs = 1 - r/R and l = l0 + l1·sin a, a = the signal phase running ν times as
+    /// fast as the mains, dy/dθ = (sin θ - ρs·l - y)/x has the solution
+    /// y = (sin θ - x·cos θ)/(1 + x²) - ρs·l0 - ρs·l1·(sin a - xν·cos a)/(1 + x²ν²) + fading part.
+    fn piece(&self, state: State, angle: f64, phase: f64, negative: bool) -> Piece<'_> {
+        let idle = negative && self.draw == Draw::OneHalf;
+        let wave = if idle { 0.0 } else { self.peak };
+        let mut piece = Piece {
+            march: self,
+            on: state.on,
+            angle,
+            phase,
+            phase_cos: cos(phase),
+            negative,
+            wave,
+            level: state.level,
+            fading: 0.0,
+        };
+        if state.on {
+            piece.fading = state.level - piece.at(0.0).level;
+        }
+        piece
+    }
+}
+
+impl Piece<'_> {
+    /// The moment `after` radians of the mains from its start.
+    fn at(&self, after: f64) -> Moment {
+        let Rail { x, esr_share: esr, .. } = *self.march.rail;
+        let (standing, pace) = (self.march.standing, self.march.pace);
+        let (sin, cos) = sin_cos(self.angle + after);
+        let (sin_a, cos_a) = sin_cos(self.phase + pace * after);
+        let load = standing + self.wave * sin_a;
+        let load_slope = self.wave * pace * cos_a;
+        if self.on {
+            let lag = x * pace;
+            let wave = self.wave * (sin_a - lag * cos_a) / (1.0 + lag * lag);
+            let level = (sin - x * cos) / (1.0 + x * x) - (1.0 - esr) * (standing + wave)
+                + self.fading * exp(-after / x);
+            let drive = sin - level + esr * load;
+            let slope = cos - (drive - load) / x + esr * load_slope;
+            Moment { level, drive, slope, terminal: sin - (1.0 - esr) * drive }
+        } else {
+            let drawn = standing * after + self.wave / pace * (self.phase_cos - cos_a);
+            let level = self.level - drawn / x;
+            let drive = sin - level + esr * load;
+            let slope = cos + load / x + esr * load_slope;
+            Moment { level, drive, slope, terminal: level - esr * load }
+        }
+    }
+
+    /// Phase of the signal, 0 to 2π, `after` radians of the mains from the start.
+    fn signal_phase(&self, after: f64) -> f64 {
+        let phase = self.phase + self.march.pace * after;
+        if self.negative { phase + PI } else { phase }
+    }
+
+    /// When the rectifier switches within `length`: where the drive changes to the sign that ends
+    /// this piece. If both ends still have the piece's own sign but the drive first runs towards
+    /// zero and then away from it, the turning point between is looked at too.
+    fn event(&self, length: f64) -> Option<f64> {
+        let side = if self.on { 1.0 } else { -1.0 };
+        let drive = |after: f64| {
+            let now = self.at(after);
+            (side * now.drive, side * now.slope)
+        };
+        let slope = |after: f64| drive(after).1;
+        let mut beyond = length;
+        if drive(length).0 >= 0.0 {
+            if slope(0.0) >= 0.0 || slope(length) <= 0.0 {
+                return None;
+            }
+            beyond = root(slope, 0.0, length, 1e-13)?;
+            if drive(beyond).0 >= 0.0 {
+                return None;
+            }
+        }
+        Some(bracketed_root(drive, 0.0, beyond, beyond))
+    }
+}
+
+/// The next p/q, q up to [`MOST_PERIODS`], not below `ratio`, the smallest q first among equals;
+/// as (p, q), p a whole number.
+fn next_ratio(ratio: f64) -> (f64, u32) {
+    let mut best = (ratio.ceil().max(1.0), 1);
+    for q in 2..=MOST_PERIODS {
+        let p = (ratio * f64::from(q) * (1.0 - 1e-12)).ceil().max(1.0);
+        if p / f64::from(q) < best.0 / f64::from(best.1) * (1.0 - 1e-12) {
+            best = (p, q);
+        }
+    }
+    best
+}
