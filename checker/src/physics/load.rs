@@ -944,14 +944,8 @@ mod tests {
         assert!((z.modulus().0 - 32f64.sqrt()).abs() < 1e-12);
         assert!((z.angle_rad() - 0.1).abs() < 1e-12);
         assert_eq!(load.covered(audio()), Band::new(Hertz(50.0), Hertz(500.0)));
-        assert_eq!(
-            load.worst(audio(), |_, z| -z.modulus().0)
-                .unwrap()
-                .frequency
-                .0
-                .round(),
-            500.0
-        );
+        let least = load.worst(audio(), |_, z| -z.modulus().0).unwrap();
+        assert!((least.frequency.0 - 500.0).abs() < 1e-6);
         assert!(
             load.survey(Band::new(Hertz(1e3), Hertz(2e3)).unwrap())
                 .is_none()
