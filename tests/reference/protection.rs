@@ -47,7 +47,7 @@ fn false_trips() {
 fn quiet_and_fast_exclude_each_other() {
     for (f, bound) in [(20.0, 7.96e-3), (10.0, 15.9e-3)] {
         for vth in [0.1, 0.65, 0.94] {
-            let rc = ((35.0_f64 / vth).powi(2) - 1.0).sqrt() / (std::f64::consts::TAU * f);
+            let rc = (35.0 * 35.0 / (vth * vth) - 1.0_f64).sqrt() / (std::f64::consts::TAU * f);
             let d = Detector::new(Ohm(rc * 1e5), Farad(1e-5), Volt(vth)).unwrap();
             close(d.trips_below(Volt(35.0)).unwrap().0, f, 1e-9);
             let t = d.time_from_rest(Volt(35.0)).unwrap().0;
@@ -56,7 +56,8 @@ fn quiet_and_fast_exclude_each_other() {
     }
 }
 
-/// D. 50 V into 6.2 ohm for 20 ms + 10 ms: 403 W, 12.1 J, and 10 g of copper gain 105 K/s. Half a unit of the last digit.
+/// D. 50 V into 6.2 ohm for 20 ms + 10 ms: 403 W, 12.1 J, and 10 g of copper gain 105 K/s.
+/// Half a unit of the last digit.
 #[test]
 fn coil_energy() {
     let fault = DcFault::new(Volt(50.0), Ohm(6.2), Ohm(0.0)).unwrap();
