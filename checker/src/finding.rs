@@ -261,8 +261,8 @@ pub struct Finding {
 pub struct Assumed {
     /// `load pa-4 minimum`.
     pub key: String,
-    /// The value used.
-    pub value: Measure,
+    /// The value used; `None` where it is no number, and `why` says it in words.
+    pub value: Option<Measure>,
     /// Why this one: `80 % of nominal`.
     pub why: &'static str,
     /// The block that could state it.

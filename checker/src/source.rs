@@ -17,8 +17,15 @@ pub trait Files {
     /// The text at a path, or why not, in words that end a sentence (`it is larger than 16 MiB`).
     ///
     /// # Errors
-    /// When the file is absent, not a regular file, too large, unreadable, or not UTF-8.
+    /// When the file is absent, not a regular file, too large, or unreadable.
     fn read(&self, path: &Path) -> Result<Arc<str>, String>;
+    /// The tree of the text at a path. An editor keeps trees of files that did not change.
+    ///
+    /// # Errors
+    /// As [`Files::read`].
+    fn tree(&self, path: &Path) -> Result<Arc<Tree>, String> {
+        Ok(Arc::new(parse(self.read(path)?)))
+    }
     /// The path with links resolved, for the check that it stays below the root.
     fn resolve(&self, path: &Path) -> PathBuf;
 }
@@ -125,9 +132,5 @@ impl Sources {
     /// All files with their ids, root first.
     pub fn iter(&self) -> impl Iterator<Item = (FileId, &File)> {
         (0u32..).map(FileId).zip(&self.files)
-    }
-    /// Parse a text and add it.
-    pub fn add_text(&mut self, path: PathBuf, name: String, text: &str) -> FileId {
-        self.add(path, name, Arc::new(parse(text)))
     }
 }
