@@ -174,3 +174,6 @@ pub enum FaultKind {
     /// The tolerance, not its quantity, is at fault.
     Tolerance,
 }
+
+#[cfg(test)]
+mod tests;

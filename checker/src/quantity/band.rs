@@ -86,7 +86,8 @@ pub fn suspect(value: f64, band: Band, dimension: Dimension, slips: &[Slip]) -> 
     Some(match meant {
         Some((likely, why)) => Suggestion {
             likely: Some(likely),
-            replacement: Some(show(likely)),
+            // Twelve digits drop the noise of the factor and keep every digit a person typed.
+            replacement: Some(print::format_digits(likely, dimension, 12)),
             text: format!("{unusual}; {} would fit ({why})", show(likely)),
         },
         None => Suggestion {

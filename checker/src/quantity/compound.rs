@@ -73,8 +73,9 @@ pub fn windings(tokens: &[&str]) -> Option<Result<Windings, Fault>> {
     };
     each.used = if from_next { each.used } else { 1 };
     let other = voltage(left, &[if left_unit.is_empty() { "V" } else { left_unit }])?;
-    if each.form == Form::Plain {
-        each.form = Form::Rms;
+    match each.form {
+        Form::Plain | Form::Rms => each.form = Form::Rms,
+        _ => return None,
     }
     if (each.value - other.value).abs() > 1e-9 * each.value.abs() {
         return Some(Err(unequal(first, other.value, each.value, each.used)));

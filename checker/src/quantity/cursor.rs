@@ -18,6 +18,15 @@ impl<'t> Cursor<'t> {
         }
     }
 
+    /// At byte `offset` of token `index`.
+    pub(super) fn at(tokens: &'t [&'t str], index: usize, offset: usize) -> Self {
+        Self {
+            tokens,
+            index,
+            offset,
+        }
+    }
+
     /// What is left of the token.
     pub(super) fn rest(&self) -> &'t str {
         self.tokens

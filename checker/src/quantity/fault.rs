@@ -1,7 +1,6 @@
 //! The words for what cannot be taken as a quantity: what is wrong, what was expected, what to write.
 //! Must not know keys; what a value would mean for an amplifier is for the caller to add.
 
-use super::cursor::Cursor;
 use super::letter_code::Code;
 use super::read::{Typed, attempt};
 use super::unit::{self, Foreign, Unit};
@@ -61,18 +60,19 @@ fn with_reading(mut fault: Fault, text: String, meaning: &str) -> Fault {
 }
 
 /// `nan`, `inf` and their like, which a conversion would take for numbers.
-pub(super) fn not_a_number(cursor: Cursor<'_>) -> Option<Fault> {
-    const WORDS: [&str; 6] = ["nan", "inf", "infinity", "infinite", "+inf", "\u{221e}"];
-    let text = cursor.rest();
-    let is_word = WORDS.iter().any(|word| word.eq_ignore_ascii_case(text));
-    is_word.then(|| {
-        fault(
-            FaultKind::OutOfRange,
-            format!("`{text}` is not a number"),
-            "write a figure with its unit, or `none` if nothing is fitted".to_string(),
-            cursor.used() + 1,
-        )
-    })
+pub(super) fn is_no_number(text: &str) -> bool {
+    const WORDS: [&str; 5] = ["nan", "inf", "infinity", "infinite", "\u{221e}"];
+    WORDS.iter().any(|word| word.eq_ignore_ascii_case(text))
+}
+
+/// What to say to one of those.
+pub(super) fn not_a_number(text: &str, used: usize) -> Fault {
+    fault(
+        FaultKind::OutOfRange,
+        format!("`{text}` is not a number"),
+        "write a figure with its unit, or `none` if nothing is fitted".to_string(),
+        used,
+    )
 }
 
 /// The letter O typed for a zero: `1OO`, `OR22`, `0hm`.
@@ -87,23 +87,45 @@ pub(super) fn letter_o(tokens: &[&str], wants: &[Dimension]) -> Option<Fault> {
         return None;
     }
     let repaired: Vec<&str> = near.iter().map(String::as_str).collect();
-    let Reading::Read { quantity, .. } = attempt(&repaired, wants) else {
-        return None;
+    let (used, text, meaning) = match attempt(&repaired, wants) {
+        Reading::Read { quantity, notes } => {
+            let typed = repaired.get(..quantity.used).unwrap_or(&repaired).join(" ");
+            let text = notes.first().map_or(typed, |note| note.canonical.clone());
+            let meaning = print::format(quantity.value, quantity.dimension);
+            (quantity.used, text, meaning)
+        }
+        // A number it is, but its unit is missing too; the first reading supplies one.
+        Reading::Wrong(Fault {
+            kind: FaultKind::MissingUnit,
+            used,
+            readings,
+            ..
+        }) if tokens
+            .first()
+            .is_some_and(|t| t.starts_with(|c: char| c.is_ascii_digit())) =>
+        {
+            let first = readings.into_iter().next()?;
+            (used, first.text, first.meaning)
+        }
+        _ => return None,
     };
-    let used = quantity.used;
-    let text = repaired.get(..used).unwrap_or(&repaired).join(" ");
-    let typed = joined(tokens, used);
-    if typed == text {
-        return None;
-    }
-    let value = print::format(quantity.value, quantity.dimension);
-    let fault = fault(
-        FaultKind::Number,
-        format!("`{typed}` has a letter O and a zero mixed up"),
-        format!("write `{text}`"),
-        used,
-    );
-    Some(with_reading(fault, text, &value))
+    let is_touched = near
+        .iter()
+        .zip(tokens)
+        .take(used)
+        .any(|(new, old)| new != old);
+    is_touched.then(|| {
+        let fault = fault(
+            FaultKind::Number,
+            format!(
+                "`{}` has a letter O and a zero mixed up",
+                joined(tokens, used)
+            ),
+            format!("write `{text}`"),
+            used,
+        );
+        with_reading(fault, text, &meaning)
+    })
 }
 
 /// The token with `0hm` turned to `ohm` and, if it holds a digit, every other O to a zero.
@@ -268,20 +290,31 @@ pub(super) fn foreign(
             replaced(typed, message, &format!("{prefix}ohm"), used)
         }
         Foreign::Metre if wants.contains(&Dimension::Length) => metres(typed, used),
-        Foreign::Metre => {
-            let mut fault = fault(
-                FaultKind::UnknownUnit,
-                format!("`m` alone is no unit; {} is wanted here", names(wants)),
-                format!("write the whole unit, as in {}", examples(wants)),
-                used,
-            );
-            for want in wants.iter().filter(|want| !want.usual_unit().is_empty()) {
-                let text = typed.with_unit(want.usual_unit());
-                fault.readings.push(reading(text, want.name()));
-            }
+        Foreign::Metre => lone_milli(typed, wants, used),
+    }
+}
+
+/// `50 m`: milli of what, or minutes.
+fn lone_milli(typed: &Typed, wants: &[Dimension], used: usize) -> Fault {
+    let mut fault = fault(
+        FaultKind::UnknownUnit,
+        format!("`m` alone is no unit; {} is wanted here", names(wants)),
+        format!("write the whole unit, as in {}", examples(wants)),
+        used,
+    );
+    for want in wants {
+        if let Some(milli) = unit::milli(*want) {
             fault
+                .readings
+                .push(reading(typed.with_unit(&milli), "milli"));
+        }
+        if *want == Dimension::Time {
+            fault
+                .readings
+                .push(reading(typed.with_unit("minute"), "minutes"));
         }
     }
+    fault
 }
 
 fn replaced(typed: &Typed, message: &str, unit: &str, used: usize) -> Fault {

@@ -27,7 +27,7 @@ pub(super) struct Code {
 pub(super) fn scan(text: &str, wants: &[Dimension]) -> Vec<Code> {
     wants
         .iter()
-        .filter_map(|&dimension| scan_one(text, dimension))
+        .filter_map(|&dimension| scan_one(text, dimension, wants))
         .collect()
 }
 
@@ -66,7 +66,7 @@ fn digits_at(text: &str) -> (&str, &str) {
     text.split_at_checked(len).unwrap_or(("", text))
 }
 
-fn scan_one(text: &str, dimension: Dimension) -> Option<Code> {
+fn scan_one(text: &str, dimension: Dimension, wants: &[Dimension]) -> Option<Code> {
     let (before, suffix) = digits_at(text);
     let mark = suffix.chars().next()?;
     let (ten, usual) = letter(dimension, mark)?;
@@ -81,7 +81,7 @@ fn scan_one(text: &str, dimension: Dimension) -> Option<Code> {
     if !fits {
         return None;
     }
-    if after.is_empty() && is_plain_unit(suffix) {
+    if after.is_empty() && is_plain_unit(suffix, wants) {
         return None;
     }
     let (tolerance, unit_len) = tail(rest, dimension)?;
@@ -111,10 +111,16 @@ fn scan_one(text: &str, dimension: Dimension) -> Option<Code> {
     })
 }
 
-/// `250mW` is milliwatts, `100nF` nanofarads: the suffix says it all and is no code. The letters
-/// that are a unit by themselves (`8R`) stay codes.
-fn is_plain_unit(suffix: &str) -> bool {
-    suffix.chars().count() > 1 && matches!(unit::lookup(suffix), Lookup::Unit(_))
+/// `250mW` is milliwatts, `100nF` nanofarads, `8Ω` ohms: the suffix says it all and is no code. `R`
+/// alone stays a code, and so do `27KJ` and `27KG`, which are kilohms with a tolerance letter unless
+/// joules or kilograms would do.
+fn is_plain_unit(suffix: &str, wants: &[Dimension]) -> bool {
+    let Lookup::Unit(unit) = unit::lookup(suffix) else {
+        return false;
+    };
+    let is_silly_here = matches!(unit.dimension, Dimension::Energy | Dimension::Mass)
+        && !wants.contains(&unit.dimension);
+    !matches!(suffix, "R" | "r" | "K") && !is_silly_here
 }
 
 /// What follows the digits: nothing, the unit again, or a tolerance letter. `None` if it is more.
@@ -183,15 +189,16 @@ pub(super) fn tolerance(
     value: f64,
     dimension: Dimension,
 ) -> Option<(Tolerance, String)> {
-    if dimension == Dimension::Capacitance && value < 10e-12 {
-        if let Some(size) = picofarads(letter) {
-            let amount = Amount::Absolute(size * 1e-12);
-            let both = Tolerance {
-                plus: amount,
-                minus: amount,
-            };
-            return Some((both, format!("±{size} pF")));
-        }
+    if dimension == Dimension::Capacitance
+        && value < 10e-12
+        && let Some(size) = picofarads(letter)
+    {
+        let amount = Amount::Absolute(size * 1e-12);
+        let both = Tolerance {
+            plus: amount,
+            minus: amount,
+        };
+        return Some((both, format!("±{size} pF")));
     }
     let (minus, plus) = percent(letter)?;
     let text = if plus > minus {

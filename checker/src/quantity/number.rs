@@ -27,7 +27,7 @@ pub(super) enum Mark {
     Either,
     /// `4.700`: a decimal point, unless three digits with a closing zero are a digit group.
     PerhapsGroup,
-    /// `1,000,000`, `1,000.5`, `1.000,5`: only a digit group makes sense, but it is not accepted.
+    /// `1,000,000`, `1,000.5`, `1.000,5`, `1'000`, `1_000`: only a digit group makes sense, but it is not accepted.
     Group,
     /// `1.2.3`, `5.`: no number.
     Malformed,
@@ -44,8 +44,12 @@ impl Number {
         )
     }
 
-    /// As it is usually written.
+    /// As it is usually written. An undecided comma stays, so that a repair of something else does
+    /// not decide it.
     pub(super) fn text(&self) -> String {
+        if self.mark == Mark::Either {
+            return self.with(&self.digits.replace('.', ","));
+        }
         self.with(&self.digits)
     }
 
@@ -74,10 +78,10 @@ pub(super) fn value_of(digits: &str, ten: i32, times: f64) -> Option<f64> {
 pub(super) fn scan(text: &str) -> Option<Number> {
     let body_len = text
         .bytes()
-        .take_while(|b| b.is_ascii_digit() || matches!(b, b'.' | b','))
+        .take_while(|b| b.is_ascii_digit() || matches!(b, b'.' | b',' | b'_' | b'\''))
         .count();
     let (body, rest) = text.split_at_checked(body_len)?;
-    let after_mark = body.trim_start_matches(['.', ',']);
+    let after_mark = body.strip_prefix(['.', ',']).unwrap_or(body);
     if !after_mark.starts_with(|c: char| c.is_ascii_digit()) {
         return None;
     }
@@ -117,6 +121,7 @@ fn marks(body: &str) -> (Mark, String, Option<String>) {
     let points = body.matches('.').count();
     let commas = body.matches(',').count();
     match (points, commas) {
+        _ if body.contains(['_', '\'']) => several_marks(body),
         (0, 0) => (Mark::Clear, body.to_string(), None),
         (1, 0) => one_mark(body, '.'),
         (0, 1) => one_mark(body, ','),
@@ -144,10 +149,10 @@ fn one_mark(body: &str, mark: char) -> (Mark, String, Option<String>) {
     (certainty, digits, grouped)
 }
 
-/// Two or more marks: digit groups of three, then perhaps one decimal mark of the other kind.
+/// Two or more marks, or one that can only group: digit groups of three, then perhaps one decimal mark of the other kind.
 fn several_marks(body: &str) -> (Mark, String, Option<String>) {
     let malformed = || (Mark::Malformed, body.to_string(), None);
-    let Some(group_mark) = body.chars().find(|c| matches!(c, '.' | ',')) else {
+    let Some(group_mark) = body.chars().find(|c| !c.is_ascii_digit()) else {
         return malformed();
     };
     let decimal_mark = if group_mark == '.' { ',' } else { '.' };

@@ -36,25 +36,52 @@ pub(super) fn attempt(tokens: &[&str], wants: &[Dimension]) -> Reading {
     let mut cursor = Cursor::new(tokens);
     let sign = Sign::take(&mut cursor);
     cursor.next_text();
-    if let Some(fault) = fault::not_a_number(cursor) {
-        return Reading::Wrong(fault);
+    if fault::is_no_number(cursor.rest()) {
+        let text = cursor.rest();
+        cursor.skip(text.len());
+        return Reading::Wrong(fault::not_a_number(text, past_unit(cursor).used()));
     }
     let stated = fraction(cursor, wants)
         .map(Ok)
         .or_else(|| coded(cursor, wants))
         .or_else(|| {
-            let number = number::scan(cursor.rest())?;
+            let number =
+                fraction_of_watt(cursor.rest(), wants).or_else(|| number::scan(cursor.rest()))?;
             cursor.skip(number.len);
             Some(with_unit(cursor, Typed { sign, number }, tokens, wants))
         });
     match stated {
         None => Reading::Not,
-        Some(Err(fault)) => Reading::Wrong(fault),
+        Some(Err(fault)) => Reading::Wrong(with_tolerance(fault, tokens)),
         Some(Ok(stated)) => match stated.finish(sign, tokens) {
             Ok(read) => read,
             Err(fault) => Reading::Wrong(fault),
         },
     }
+}
+
+/// Lets a fault span the tolerance behind it and its readings keep it, so that a repair of `47K ±5 %`
+/// loses nothing and the tolerance is not reported as a stray.
+fn with_tolerance(mut fault: Fault, tokens: &[&str]) -> Fault {
+    let Some(last) = fault.used.checked_sub(1) else {
+        return fault;
+    };
+    let glued = tokens
+        .get(last)
+        .and_then(|token| token.find(['±', '+']))
+        .filter(|offset| *offset > 0);
+    let cursor = match glued {
+        Some(offset) => Cursor::at(tokens, last, offset),
+        None => Cursor::at(tokens, fault.used, 0),
+    };
+    // A tolerance in percent is the same for every dimension.
+    if let Some(Ok((_, after, text))) = tolerance::read(cursor, Dimension::Resistance) {
+        fault.used = after.used();
+        for reading in &mut fault.readings {
+            reading.text = format!("{} {text}", reading.text);
+        }
+    }
+    fault
 }
 
 /// What stood before the digits.
@@ -224,6 +251,25 @@ fn fraction<'t>(mut cursor: Cursor<'t>, wants: &[Dimension]) -> Option<Stated<'t
     })
 }
 
+/// The `1/4` of `1/4 W`, which is how small resistors are sold.
+fn fraction_of_watt(text: &str, wants: &[Dimension]) -> Option<Number> {
+    if !wants.contains(&Dimension::Power) {
+        return None;
+    }
+    let len = text
+        .bytes()
+        .take_while(|b| b.is_ascii_digit() || *b == b'/')
+        .count();
+    let value = compound::fraction(text.get(..len)?)?;
+    Some(Number {
+        digits: value.to_string(),
+        grouped: None,
+        exponent: None,
+        mark: Mark::Clear,
+        len,
+    })
+}
+
 /// A letter code, if one of the wanted dimensions uses its letter.
 fn coded<'t>(mut cursor: Cursor<'t>, wants: &[Dimension]) -> Option<Result<Stated<'t>, Fault>> {
     let text = tolerance::until_sign(cursor.rest());
@@ -338,6 +384,18 @@ fn unit_at(cursor: Cursor<'_>) -> Option<Found<'_>> {
     })
 }
 
+/// Past the unit at `cursor`, if there is one.
+fn past_unit(cursor: Cursor<'_>) -> Cursor<'_> {
+    match unit_at(cursor) {
+        Some(Found {
+            lookup: Lookup::Unit(_),
+            after,
+            ..
+        }) => after,
+        _ => cursor,
+    }
+}
+
 fn joined_unit<'t>(at: Cursor<'t>, head: &str) -> Option<Found<'t>> {
     let mut next = at;
     next.skip(head.len());
@@ -391,20 +449,16 @@ fn with_unit<'t>(
     let is_glued = !cursor.is_between();
     let number_wanted = wants.contains(&Dimension::Number);
     if typed.number.mark == Mark::Malformed {
-        return Err(fault::malformed(tokens, cursor.used()));
+        return Err(fault::malformed(tokens, past_unit(cursor).used()));
     }
     let Some(found) = unit_at(cursor) else {
         return without_unit(cursor, typed, tokens, wants);
     };
     let used = found.after.used();
+    let prefixed = prefix_units(&found.text, wants);
     match found.lookup {
         Lookup::Unit(unit) => stated_unit(found.after, &typed, &unit, wants),
-        _ if prefix_units(&found.text, wants).len() == 1 => {
-            match prefix_units(&found.text, wants).first() {
-                Some(unit) => stated_unit(found.after, &typed, unit, wants),
-                None => Err(fault::missing_unit(&typed, wants, cursor.used())),
-            }
-        }
+        _ if let [unit] = prefixed.as_slice() => stated_unit(found.after, &typed, unit, wants),
         _ if !is_glued && number_wanted => without_unit(cursor, typed, tokens, wants),
         Lookup::BadPrefix(units) => Err(fault::bad_prefix(&typed, &found.text, &units, used)),
         Lookup::Foreign(foreign) => Err(fault::foreign(&typed, foreign, &found.text, wants, used)),

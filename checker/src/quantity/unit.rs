@@ -308,6 +308,13 @@ pub(super) fn ignoring_case(text: &str, wanted: &[Dimension]) -> Option<String> 
     })
 }
 
+/// The unit of `dimension` with the prefix milli, if it takes that.
+pub(super) fn milli(dimension: Dimension) -> Option<String> {
+    ROWS.iter()
+        .find(|row| row.dimension == dimension && row.prefixes.contains('m'))
+        .map(|row| unit_of(row, "m", 0).symbol)
+}
+
 /// The unit that a bare prefix stands for where `dimension` is wanted: `22k`, `100n`.
 pub(super) fn bare_prefix(text: &str, dimension: Dimension) -> Option<Unit> {
     let (allowed, base) = match dimension {
