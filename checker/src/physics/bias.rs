@@ -274,7 +274,7 @@ mod tests {
         }
 
         #[test]
-        fn no_number_from_nonsense(a in any::<f64>(), b in any::<f64>(), c in any::<f64>(), d in any::<f64>(), n in any::<u32>()) {
+        fn no_number_from_nonsense(a in proptest::num::f64::ANY, b in proptest::num::f64::ANY, c in proptest::num::f64::ANY, d in proptest::num::f64::ANY, n in any::<u32>()) {
             if let Some(l) = ThermalLoop::bipolar(Volt(a), KelvinPerWatt(b), Amp(c), Ohm(d)) {
                 prop_assert!(l.gain().is_none_or(f64::is_finite));
                 prop_assert!(l.unconditional().is_none_or(Ohm::is_finite));

@@ -438,8 +438,8 @@ mod tests {
         }
 
         #[test]
-        fn no_number_from_nonsense(r in any::<f64>(), at in any::<f64>(), p in any::<f64>(), air in any::<f64>(),
-            w in any::<f64>(), n in any::<u32>()) {
+        fn no_number_from_nonsense(r in proptest::num::f64::ANY, at in proptest::num::f64::ANY, p in proptest::num::f64::ANY, air in proptest::num::f64::ANY,
+            w in proptest::num::f64::ANY, n in any::<u32>()) {
             if let Some(sink) = StatedSink::new(KelvinPerWatt(r), Kelvin(at)) {
                 prop_assert!(sink.rise(Watt(p)).is_none_or(Kelvin::is_finite));
                 prop_assert!(sink.watts(Kelvin(p)).is_none_or(Watt::is_finite));

@@ -120,10 +120,10 @@ impl Network {
     /// extreme current is the greater (`Most`) or the lesser (`Least`) of the two, so a check that
     /// must hold for the extreme is made on both.
     ///
-    /// At every point of the line more current passes with R2 low, R3, Ra and Rb high, Vz low and
-    /// `RE` low. Only R1 changes sides: `di/dG1` has the sign of `Von - i·RE`, because R1 feeds node B
-    /// while the drop across `RE` exceeds the turn-on voltage and loads it otherwise. Hence one line
-    /// with R1 high and one with R1 low.
+    /// Wherever the line allows a positive current, more of it passes with R2 low, R3, Ra and Rb high,
+    /// Vz low and `RE` low. Only R1 changes sides: `di/dG1` has the sign of `Von - i·RE`, because R1
+    /// feeds node B while the drop across `RE` exceeds the turn-on voltage and loads it otherwise.
+    /// Hence one line with R1 high and one with R1 low.
     ///
     /// `None` as for [`Network::line`], or if a tolerance is negative, 1 or more, or not a number.
     #[must_use]
@@ -522,8 +522,8 @@ mod tests {
 
         #[test]
         fn nothing_makes_it_panic_or_lie(
-            re in any::<f64>(), r1 in any::<f64>(), r2 in any::<f64>(), r3 in any::<f64>(),
-            von in any::<f64>(), v in any::<f64>(),
+            re in proptest::num::f64::ANY, r1 in proptest::num::f64::ANY, r2 in proptest::num::f64::ANY, r3 in proptest::num::f64::ANY,
+            von in proptest::num::f64::ANY, v in proptest::num::f64::ANY,
         ) {
             let n = Network {
                 emitter: Ohm(re), sense_base: Ohm(r1), base_output: Some(Ohm(r2)),

@@ -104,7 +104,7 @@ mod tests {
         }
 
         #[test]
-        fn no_number_from_nonsense(a in any::<f64>(), b in any::<f64>(), c in any::<f64>(), d in any::<f64>()) {
+        fn no_number_from_nonsense(a in proptest::num::f64::ANY, b in proptest::num::f64::ANY, c in proptest::num::f64::ANY, d in proptest::num::f64::ANY) {
             if let Some(z) = Zobel::new(Ohm(a), Farad(b)) {
                 prop_assert!(z.watts(Volt(c), Hertz(d)).is_none_or(Watt::is_finite));
                 prop_assert!(z.capacitor_volts(Volt(c), Hertz(d)).is_none_or(Volt::is_finite));

@@ -144,7 +144,7 @@ pub enum BreakLimit {
 /// Volts at which a relay is taken to break its a.c. amperes where the sheet states no d.c. figure.
 ///
 /// The pair "250 V a.c. / 30 V d.c." at one current is what sheets of small power relays print
-/// (common practice).
+/// (common practice, no source).
 pub const ASSUMED_BREAK_VOLTS: Volt = Volt(30.0);
 
 impl DcBreak {
@@ -217,8 +217,8 @@ impl Cutout {
     /// `None` for a tolerance that is negative or a part that is not finite.
     #[must_use]
     pub fn sink_at_latest(&self) -> Option<Celsius> {
-        self.sensible()
-            .then(|| self.trip + self.tolerance + self.cooler)
+        let latest = self.trip + self.tolerance + self.cooler;
+        (self.sensible() && latest.0.is_finite()).then_some(latest)
     }
 
     /// What is left before an early cutout opens with the sink at a temperature:
@@ -287,7 +287,7 @@ mod tests {
         }
 
         #[test]
-        fn no_number_from_nonsense(a in any::<f64>(), b in any::<f64>(), c in any::<f64>(), d in any::<f64>()) {
+        fn no_number_from_nonsense(a in proptest::num::f64::ANY, b in proptest::num::f64::ANY, c in proptest::num::f64::ANY, d in proptest::num::f64::ANY) {
             if let Some(x) = Detector::new(Ohm(a), Farad(b), Volt(c)) {
                 prop_assert!(x.time_from_rest(Volt(d)).is_none_or(Second::is_finite));
                 prop_assert!(x.time_at_worst(Volt(d)).is_none_or(Second::is_finite));
