@@ -256,6 +256,31 @@ pub struct Finding {
     pub build: Option<String>,
 }
 
+impl Finding {
+    /// An error at a place, nothing more.
+    #[must_use]
+    pub fn error(rule: &'static str, site: Site, message: String, hint: String) -> Self {
+        Self {
+            rule,
+            severity: Severity::Error,
+            message,
+            hint,
+            readings: Vec::new(),
+            site,
+            related: Vec::new(),
+            edits: Vec::new(),
+            waiver: None,
+            build: None,
+        }
+    }
+    /// The same, quieter.
+    #[must_use]
+    pub fn at(mut self, severity: Severity) -> Self {
+        self.severity = severity;
+        self
+    }
+}
+
 /// A value used because the file does not state it.
 #[derive(Clone, Debug, PartialEq)]
 pub struct Assumed {

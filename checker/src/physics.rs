@@ -1,6 +1,16 @@
 //! The physics: pure functions of numbers, nothing else.
 //! Must not know spans, files, names of parts, policies or verdicts.
 
+pub mod bias;
+pub mod drive;
+pub mod heat;
+pub mod heatsink;
+pub mod limiter;
 pub mod load;
 pub mod math;
+pub mod network;
+pub mod output_stage;
+pub mod protection;
+pub mod sharing;
+pub mod supply;
 pub mod unit;

@@ -89,6 +89,15 @@ impl Amount {
 }
 
 impl Tolerance {
+    /// Whether both sides are fractions of the stated value.
+    #[must_use]
+    pub fn is_relative(self) -> bool {
+        matches!(
+            (self.plus, self.minus),
+            (Amount::Relative(_), Amount::Relative(_))
+        )
+    }
+
     /// Lowest and highest value this tolerance admits round `value`.
     #[must_use]
     pub fn limits(self, value: f64) -> (f64, f64) {

@@ -21,8 +21,8 @@ pub enum Sense {
 pub enum Allow {
     /// A share of the rating, per cent.
     Percent(f64),
-    /// This far below a rated temperature, K.
-    Below(f64),
+    /// This far below a rated temperature, K, and never above the second figure, degC.
+    Below(f64, f64),
     /// A figure of its own, with the hard limit that stands for a rating, both in the rule's unit.
     /// For [`Sense::AtLeast`] the hard limit is the lower one.
     Fixed(f64, f64),
@@ -131,7 +131,7 @@ pub struct Compared {
 pub fn compare(rule: &Rule, allow: Allow, stress: f64, rating: f64, ambient: f64) -> Option<Compared> {
     let (allowance, rating) = match allow {
         Allow::Percent(p) => (rating * p / 100.0, rating),
-        Allow::Below(k) => (rating - k, rating),
+        Allow::Below(k, most) => ((rating - k).min(most), rating),
         Allow::Fixed(a, hard) => (a, hard),
         Allow::None => return None,
     };
@@ -201,7 +201,7 @@ mod tests {
 
     #[test]
     fn temperatures_count_from_ambient() {
-        let rule = Rule { sense: Sense::Temperature, allow: Allow::Below(25.0), ..RULE };
+        let rule = Rule { sense: Sense::Temperature, allow: Allow::Below(25.0, f64::INFINITY), ..RULE };
         let c = compare(&rule, rule.allow, 100.0, 150.0, 40.0).unwrap();
         let want = 100.0 * 60.0 / 85.0; // (100 - 40) / (150 - 25 - 40)
         assert!((c.used_percent.unwrap() - want).abs() < 1e-12);

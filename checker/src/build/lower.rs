@@ -107,18 +107,7 @@ impl Lowering<'_> {
 
     fn say(&mut self, rule: &'static str, severity: Severity, span: Span, message: String, hint: String) -> &mut Finding {
         let site = self.site(span);
-        self.out.findings.push(Finding {
-            rule,
-            severity,
-            message,
-            hint,
-            readings: Vec::new(),
-            site,
-            related: Vec::new(),
-            edits: Vec::new(),
-            waiver: None,
-            build: None,
-        });
+        self.out.findings.push(Finding::error(rule, site, message, hint).at(severity));
         let last = self.out.findings.len() - 1;
         &mut self.out.findings[last]
     }

@@ -6,7 +6,7 @@ use std::path::{Path, PathBuf};
 
 use super::lower::{self, WaiverText};
 use super::statement::{Declared, Select, Value};
-use crate::finding::{FileId, Finding, Related, Severity, Site, TextEdit};
+use crate::finding::{FileId, Finding, Related, Site, TextEdit};
 use crate::source::{Files, Sources, normal};
 use crate::vocabulary::{Block, Takes, nearest};
 
@@ -46,10 +46,6 @@ pub fn load(files: &dyn Files, path: &Path, shown: &str, root: &Path, policies: 
     Ok(project)
 }
 
-fn finding(rule: &'static str, severity: Severity, site: Site, message: String, hint: String) -> Finding {
-    Finding { rule, severity, message, hint, readings: Vec::new(), site, related: Vec::new(), edits: Vec::new(), waiver: None, build: None }
-}
-
 impl Project {
     /// The block with this name.
     #[must_use]
@@ -63,7 +59,7 @@ impl Project {
     }
 
     fn say(&mut self, rule: &'static str, site: Site, message: String, hint: String) -> &mut Finding {
-        self.findings.push(finding(rule, Severity::Error, site, message, hint));
+        self.findings.push(Finding::error(rule, site, message, hint));
         let last = self.findings.len() - 1;
         &mut self.findings[last]
     }
@@ -174,7 +170,7 @@ impl Project {
             } else if block.kind.kind == "policy" {
                 let message = format!("policy `{}` starts from nothing", block.name);
                 let hint = format!("write `policy {} from {} {{`", block.name, policies.first().unwrap_or(&"bench"));
-                said.push(finding("syntax.word", Severity::Error, block.name_site, message, hint));
+                said.push(Finding::error("syntax.word", block.name_site, message, hint));
             }
             for line in &block.lines {
                 let line = line.change.as_ref().map_or(line, |c| &c.1);
@@ -203,7 +199,7 @@ impl Project {
                 if at == block.name {
                     let message = format!("`{}` starts from itself", block.name);
                     let related = vec![Related { message: "by way of this".to_owned(), site: next.site }];
-                    let mut f = finding("data.cycle", Severity::Error, site, message, "break the circle: one of them must not have a `from`".to_owned());
+                    let mut f = Finding::error("data.cycle", site, message, "break the circle: one of them must not have a `from`".to_owned());
                     f.related = related;
                     said.push(f);
                 }
@@ -221,7 +217,7 @@ impl Project {
             Some(found) if kind == "any" || found.kind.kind == kind => {}
             Some(found) => {
                 let message = format!("`{name}` is a {}; a {kind} is wanted here", found.kind.kind);
-                let mut f = finding("data.missing", Severity::Error, site, message, format!("name a {kind}"));
+                let mut f = Finding::error("data.missing", site, message, format!("name a {kind}"));
                 f.related = vec![Related { message: "declared here".to_owned(), site: found.name_site }];
                 said.push(f);
             }
@@ -236,7 +232,7 @@ impl Project {
                 } else {
                     format!("did you mean {}?", near.iter().map(|n| format!("`{n}`")).collect::<Vec<_>>().join(" or "))
                 };
-                let mut f = finding("data.missing", Severity::Error, site, message, hint);
+                let mut f = Finding::error("data.missing", site, message, hint);
                 f.edits = near.iter().map(|n| TextEdit { site, text: (*n).to_owned() }).collect();
                 said.push(f);
             }

@@ -411,13 +411,21 @@ mod tests {
             let load = Impedance::polar(Ohm(z), phi);
             let clip = drop.clip(Volt(rail), load).unwrap().0;
             let fullest = |amplitude: f64| {
-                (0..=20_000)
-                    .map(|k| math::PI * f64::from(k) / 20_000.0)
-                    .map(|theta| {
-                        let i = amplitude / z * (theta - phi).sin().abs();
-                        amplitude * theta.sin() + drop.at(Amp(i)).0
-                    })
-                    .fold(0.0, f64::max)
+                let at = |theta: f64| {
+                    let i = amplitude / z * (theta - phi).sin().abs();
+                    amplitude * theta.sin() + drop.at(Amp(i)).0
+                };
+                let (mut lo, mut hi, mut best) = (0.0, math::PI, (0.0, 0.0));
+                for _ in 0..4 {
+                    let step = (hi - lo) / 2000.0;
+                    for theta in (0..=2000).map(|k| lo + step * f64::from(k)) {
+                        if at(theta) > best.1 {
+                            best = (theta, at(theta));
+                        }
+                    }
+                    (lo, hi) = ((best.0 - step).max(0.0), (best.0 + step).min(math::PI));
+                }
+                best.1
             };
             prop_assert!(fullest(clip) <= rail * (1.0 + 1e-11));
             prop_assert!(fullest(clip * (1.0 + 1e-6)) > rail * (1.0 + 1e-8));

@@ -14,6 +14,8 @@ mod reservoir;
 mod sag;
 mod switch_on;
 mod transformer;
+#[cfg(test)]
+mod twin;
 
 pub use rail::{Cycle, Rail, RailParts, Sample};
 pub use rectifier::Rectifier;

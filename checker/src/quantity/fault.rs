@@ -244,16 +244,31 @@ fn two_quantities(tokens: &[&str], used: usize) -> Option<Fault> {
     Some(with_reading(fault, text, "the two, one after the other"))
 }
 
-/// `MA`, `mHz`, `MF`.
-pub(super) fn bad_prefix(typed: &Typed, text: &str, units: &[String], used: usize) -> Fault {
+/// `MA`, `mHz`, `MF`: `units` are what it may have been meant to be.
+pub(super) fn bad_prefix(
+    typed: &Typed,
+    text: &str,
+    units: &[Unit],
+    wants: &[Dimension],
+    used: usize,
+) -> Fault {
+    if let Some(unit) = units.first()
+        && !wants.contains(&unit.dimension)
+    {
+        return other_kind(typed, text, unit.dimension, wants, used);
+    }
     let prefix = if text.starts_with('M') {
         "mega"
     } else {
         "milli"
     };
-    let listed: Vec<String> = units
+    let readings: Vec<Meaning> = units
         .iter()
-        .map(|unit| format!("`{}`", quoted(&typed.with_unit(unit))))
+        .map(|unit| reading(typed.with_unit(&unit.symbol), format!("in {}", unit.symbol)))
+        .collect();
+    let listed: Vec<String> = readings
+        .iter()
+        .map(|reading| format!("`{}`", quoted(&reading.text)))
         .collect();
     let mut fault = fault(
         FaultKind::Ambiguous,
@@ -261,12 +276,23 @@ pub(super) fn bad_prefix(typed: &Typed, text: &str, units: &[String], used: usiz
         format!("write {}", listed.join(" or ")),
         used,
     );
-    for unit in units {
-        fault
-            .readings
-            .push(reading(typed.with_unit(unit), format!("in {unit}")));
-    }
+    fault.readings = readings;
     fault
+}
+
+/// A unit of another kind, itself not one this language reads.
+fn other_kind(typed: &Typed, text: &str, is: Dimension, wants: &[Dimension], used: usize) -> Fault {
+    fault(
+        FaultKind::WrongDimension,
+        format!(
+            "`{}` is {}; {} is wanted here",
+            quoted(&typed.with_unit(text)),
+            is.name(),
+            names(wants)
+        ),
+        format!("write it as in {}", examples(wants)),
+        used,
+    )
 }
 
 /// A text of plain meaning that this language does not take for a unit.
@@ -277,7 +303,15 @@ pub(super) fn foreign(
     wants: &[Dimension],
     used: usize,
 ) -> Fault {
+    let is = foreign.dimension();
+    let is_wanted = wants
+        .iter()
+        .any(|want| want.difference() == is.difference());
+    if !is_wanted && foreign != Foreign::Metre {
+        return other_kind(typed, text, is, wants, used);
+    }
     match foreign {
+        Foreign::Fahrenheit if !wants.contains(&is) => fahrenheit_difference(typed, used),
         Foreign::Fahrenheit => fahrenheit(typed, used),
         Foreign::Inch => inches(typed, used),
         Foreign::CentreTapped => centre_tapped(typed, used),
@@ -339,6 +373,12 @@ fn fahrenheit(typed: &Typed, used: usize) -> Fault {
     let celsius = typed.value(0, 1.0).map(|f| (f - 32.0) * 5.0 / 9.0);
     let message = "temperatures are stated in degC, not in Fahrenheit";
     converted(message, celsius, Dimension::Temperature, used)
+}
+
+fn fahrenheit_difference(typed: &Typed, used: usize) -> Fault {
+    let kelvin = typed.value(0, 1.0).map(|f| f * 5.0 / 9.0);
+    let message = "differences of temperature are stated in K, not in Fahrenheit";
+    converted(message, kelvin, Dimension::TemperatureDifference, used)
 }
 
 fn inches(typed: &Typed, used: usize) -> Fault {

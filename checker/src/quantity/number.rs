@@ -151,6 +151,7 @@ fn one_mark(body: &str, mark: char) -> (Mark, String, Option<String>) {
 
 /// Two or more marks, or one that can only group: digit groups of three, then perhaps one decimal mark of the other kind.
 fn several_marks(body: &str) -> (Mark, String, Option<String>) {
+    let is_digits = |part: &str| part.bytes().all(|b| b.is_ascii_digit());
     let malformed = || (Mark::Malformed, body.to_string(), None);
     let Some(group_mark) = body.chars().find(|c| !c.is_ascii_digit()) else {
         return malformed();
@@ -163,10 +164,9 @@ fn several_marks(body: &str) -> (Mark, String, Option<String>) {
     let mut groups = whole.split(group_mark);
     let first_fits = groups
         .next()
-        .is_some_and(|g| (1..=3).contains(&g.len()) && !g.starts_with('0'));
-    let grouped = first_fits && groups.all(|g| g.len() == 3);
-    let fraction_fits =
-        fraction.is_none_or(|f| !f.is_empty() && f.bytes().all(|b| b.is_ascii_digit()));
+        .is_some_and(|g| (1..=3).contains(&g.len()) && !g.starts_with('0') && is_digits(g));
+    let grouped = first_fits && groups.all(|g| g.len() == 3 && is_digits(g));
+    let fraction_fits = fraction.is_none_or(|f| !f.is_empty() && is_digits(f));
     if !grouped || !fraction_fits {
         return malformed();
     }

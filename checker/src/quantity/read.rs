@@ -74,8 +74,11 @@ fn with_tolerance(mut fault: Fault, tokens: &[&str]) -> Fault {
         Some(offset) => Cursor::at(tokens, last, offset),
         None => Cursor::at(tokens, fault.used, 0),
     };
-    // A tolerance in percent is the same for every dimension.
-    if let Some(Ok((_, after, text))) = tolerance::read(cursor, Dimension::Resistance) {
+    // A tolerance in percent is the same for every dimension; any other is left to be judged once
+    // the quantity is settled.
+    if let Some(Ok((tolerance, after, text))) = tolerance::read(cursor, Dimension::Resistance)
+        && tolerance.is_relative()
+    {
         fault.used = after.used();
         for reading in &mut fault.readings {
             reading.text = format!("{} {text}", reading.text);
@@ -460,7 +463,9 @@ fn with_unit<'t>(
         Lookup::Unit(unit) => stated_unit(found.after, &typed, &unit, wants),
         _ if let [unit] = prefixed.as_slice() => stated_unit(found.after, &typed, unit, wants),
         _ if !is_glued && number_wanted => without_unit(cursor, typed, tokens, wants),
-        Lookup::BadPrefix(units) => Err(fault::bad_prefix(&typed, &found.text, &units, used)),
+        Lookup::BadPrefix(units) => {
+            Err(fault::bad_prefix(&typed, &found.text, &units, wants, used))
+        }
         Lookup::Foreign(foreign) => Err(fault::foreign(&typed, foreign, &found.text, wants, used)),
         Lookup::Unknown if is_glued => Err(fault::unknown_unit(
             &typed,

@@ -612,7 +612,7 @@ fn check(text: &str, wants: &[D]) {
 }
 
 proptest! {
-    #![proptest_config(ProptestConfig::with_cases(4000))]
+    #![proptest_config(ProptestConfig::with_cases(2000))]
 
     #[test]
     fn any_text_is_answered(text in "\\PC{0,40}", want in dimension()) {

@@ -135,7 +135,7 @@ pub(super) enum Lookup {
     /// A unit.
     Unit(Unit),
     /// A unit whose prefix nobody uses with it, and the units it may have been meant to be.
-    BadPrefix(Vec<String>),
+    BadPrefix(Vec<Unit>),
     /// A unit this language does not read, and which there is a way to rewrite.
     Foreign(Foreign),
     /// None.
@@ -161,6 +161,20 @@ pub(super) enum Foreign {
     Metre,
     /// A small omega, what case folding makes of the ohm sign.
     SmallOmega,
+}
+
+impl Foreign {
+    /// What it measures.
+    pub(super) fn dimension(self) -> Dimension {
+        match self {
+            Self::Fahrenheit => D::Temperature,
+            Self::Inch | Self::Metre => D::Length,
+            Self::CentreTapped | Self::PeakToPeak => D::Voltage,
+            Self::Conductance => D::ThermalResistance,
+            Self::Min => D::Time,
+            Self::SmallOmega => D::Resistance,
+        }
+    }
 }
 
 #[rustfmt::skip]
@@ -261,7 +275,7 @@ fn kelvin(unit: &Unit) -> &str {
 
 /// The units `text` may have been meant to be if it is a unit with a prefix nobody uses with it:
 /// `MA` for `mA`, `mHz` for `MHz`, `MF` for `uF` or `mF`.
-fn other_prefixes(text: &str) -> Vec<String> {
+fn other_prefixes(text: &str) -> Vec<Unit> {
     let (rest, others): (&str, &[&str]) = if let Some(rest) = text.strip_prefix('M') {
         (rest, &["u", "m", "k"])
     } else if let Some(rest) = text.strip_prefix('m') {
@@ -281,7 +295,7 @@ fn other_prefixes(text: &str) -> Vec<String> {
         .filter(|prefix| row.prefixes.contains(**prefix))
         .filter(|prefix| **prefix != "u" || row.dimension == D::Capacitance)
         .filter(|prefix| **prefix != "k" || !row.prefixes.contains('m'))
-        .map(|prefix| unit_of(row, prefix, 0).symbol)
+        .map(|prefix| unit_of(row, prefix, 0))
         .collect()
 }
 

@@ -108,9 +108,11 @@ impl Rail {
             return None;
         }
         let (alpha, beta) = steady_angles(self.x, j, self.floor)?;
+        let conduction = Conduction::new(self.x, j, alpha, 0.0);
         let cycle = Cycle {
             rail: *self,
-            conduction: Conduction::new(self.x, j, alpha, 0.0),
+            conduction,
+            summit: conduction.greatest(beta),
             current: current.0,
             j,
             alpha,
@@ -140,7 +142,7 @@ pub struct Sample {
 
 /// The periodic steady state of a rail at one constant current.
 ///
-/// A query is a closed form or a few Newton steps; nothing is kept but the two angles and the
+/// A query is a closed form or a few Newton steps; nothing is kept but the angles and the
 /// trough. The waveform repeats every half-cycle of the mains.
 #[derive(Clone, Copy, Debug)]
 pub struct Cycle {
@@ -150,6 +152,8 @@ pub struct Cycle {
     j: f64,
     alpha: f64,
     beta: f64,
+    /// Angle of the greatest charging current.
+    summit: f64,
     trough: f64,
 }
 
@@ -162,6 +166,7 @@ impl Cycle {
             j: 0.0,
             alpha: FRAC_PI_2,
             beta: FRAC_PI_2,
+            summit: FRAC_PI_2,
             trough: rail.unloaded().0,
         }
     }
@@ -204,8 +209,7 @@ impl Cycle {
             return Volt(self.trough);
         }
         let rise = |angle| self.terminal_slope(angle);
-        let from = self.conduction.greatest(self.beta);
-        Volt(self.terminal(bracketed_root(rise, from, self.beta, self.beta)))
+        Volt(self.terminal(bracketed_root(rise, self.summit, self.beta, self.beta)))
     }
 
     /// R.m.s. of the charging current, which is the winding's where each winding feeds one rail
@@ -219,7 +223,7 @@ impl Cycle {
     /// Peak of the charging current, which is the peak of one diode.
     #[must_use]
     pub fn charging_peak(&self) -> Amp {
-        let (s, _) = self.conduction.current(self.conduction.greatest(self.beta));
+        let (s, _) = self.conduction.current(self.summit);
         Amp(s.max(0.0) * self.rail.crest / self.rail.resistance)
     }
 
@@ -288,6 +292,167 @@ impl Cycle {
             return self.alpha;
         }
         let rise = |angle| self.terminal_slope(angle);
-        bracketed_root(rise, self.conduction.greatest(self.beta), self.alpha, self.alpha)
+        bracketed_root(rise, self.summit, self.alpha, self.alpha)
+    }
+}
+
+#[cfg(test)]
+pub(super) mod tests {
+    use super::*;
+    use crate::physics::supply::twin::Twin;
+    use proptest::prelude::*;
+
+    pub(crate) fn parts() -> RailParts {
+        RailParts {
+            no_load_crest: Volt(52.467),
+            diode_drop: Volt(0.9),
+            source: Ohm(0.49),
+            reservoir: Farad(0.01),
+            esr: Ohm(0.03),
+            mains: Hertz(50.0),
+        }
+    }
+
+    pub(crate) fn twin(p: RailParts) -> Twin {
+        Twin {
+            crest: p.no_load_crest.0,
+            drop: p.diode_drop.0,
+            source: p.source.0,
+            esr: p.esr.0,
+            reservoir: p.reservoir.0,
+            omega: TAU * p.mains.0,
+        }
+    }
+
+    prop_compose! {
+        /// Any supply a power amplifier might have, and many it would not.
+        pub(crate) fn any_parts()(
+            crest in 10.0f64..150.0, drop in 0.0f64..2.5, source in -4.0f64..1.5,
+            reservoir in -7.5f64..-2.0, esr in 0.0f64..0.3, sixty in any::<bool>(),
+        ) -> RailParts {
+            RailParts {
+                no_load_crest: Volt(crest),
+                diode_drop: Volt(drop),
+                source: Ohm(crate::physics::math::exp(source)),
+                reservoir: Farad(crate::physics::math::exp(reservoir)),
+                esr: Ohm(esr),
+                mains: Hertz(if sixty { 60.0 } else { 50.0 }),
+            }
+        }
+    }
+
+    #[test]
+    fn no_current_leaves_the_crest_less_the_drop() {
+        let cycle = Rail::new(parts()).unwrap().loaded(Amp(0.0)).unwrap();
+        for v in [cycle.mean(), cycle.trough(), cycle.crest()] {
+            assert!((v.0 - 51.567).abs() < 1e-12, "{v:?}"); // 52.467 - 0.9
+        }
+        assert_eq!(cycle.charging_rms(), Amp(0.0));
+        assert_eq!(cycle.charging_peak(), Amp(0.0));
+        let tiny = Rail::new(parts()).unwrap().loaded(Amp(1e-9)).unwrap();
+        assert!((tiny.mean() - cycle.mean()).abs() < Volt(1e-4));
+    }
+
+    #[test]
+    fn senseless_parts_and_currents_are_refused() {
+        for bad in [0.0, -1.0, f64::NAN, f64::INFINITY] {
+            assert_eq!(Rail::new(RailParts { no_load_crest: Volt(bad), ..parts() }), None);
+            assert_eq!(Rail::new(RailParts { source: Ohm(bad), ..parts() }), None);
+            assert_eq!(Rail::new(RailParts { reservoir: Farad(bad), ..parts() }), None);
+            assert_eq!(Rail::new(RailParts { mains: Hertz(bad), ..parts() }), None);
+        }
+        for bad in [-1.0, f64::NAN, f64::INFINITY, 1e12, 1e300] {
+            assert!(Rail::new(parts()).unwrap().loaded(Amp(bad)).is_none(), "{bad}");
+        }
+        assert_eq!(Rail::new(RailParts { diode_drop: Volt(60.0), ..parts() }), None);
+    }
+
+    #[test]
+    fn an_endless_reservoir_has_no_ripple_and_one_form_factor() {
+        // C without end: I = (2E/πR)(sin φ - φ·cos φ), V = E·cos φ - Vd, Irms² by quadrature of the
+        // closed form (2E²/π·R²)[φ/2 - 3/2·sin φ·cos φ + φ·cos² φ]; all by hand.
+        let rail = Rail::new(RailParts { reservoir: Farad(1e4), esr: Ohm(0.0), ..parts() }).unwrap();
+        let (e, r) = (52.467, 0.49);
+        for phi in [0.1, 0.3, 0.6, 1.0] {
+            let (sin, cos) = sin_cos(phi);
+            let current = 2.0 * e / (PI * r) * (sin - phi * cos);
+            let square = 2.0 * e * e / (PI * r * r) * (0.5 * phi - 1.5 * sin * cos + phi * cos * cos);
+            let cycle = rail.loaded(Amp(current)).unwrap();
+            assert!((cycle.mean().0 - (e * cos - 0.9)).abs() < 1e-6);
+            assert!(cycle.crest() - cycle.trough() < Volt(1e-4));
+            assert!((cycle.charging_rms().0 / square.sqrt() - 1.0).abs() < 1e-6);
+            assert!((cycle.conduction_rad() - 2.0 * phi).abs() < 1e-6);
+            assert!((cycle.charging_peak().0 - e * (1.0 - cos) / r).abs() < 1e-5);
+        }
+    }
+
+    #[test]
+    fn samples_are_the_waveform() {
+        let cycle = Rail::new(parts()).unwrap().loaded(Amp(2.0)).unwrap();
+        let samples: Vec<_> = cycle.samples(20_000).collect();
+        let mean = samples.iter().map(|s| s.rail.0).sum::<f64>() / 20_000.0;
+        let charge = samples.iter().map(|s| s.charging.0).sum::<f64>() / 20_000.0;
+        let low = samples.iter().map(|s| s.rail.0).fold(f64::INFINITY, f64::min);
+        assert!((mean - cycle.mean().0).abs() < 1e-7, "{mean} {:?}", cycle.mean());
+        assert!((charge - 2.0).abs() < 1e-6);
+        assert!((low - cycle.trough().0).abs() < 1e-4);
+    }
+
+    proptest! {
+        #![proptest_config(ProptestConfig::with_cases(3000))]
+
+        /// One half-cycle of small steps from the solved start comes back to it, and measures the
+        /// same mean, trough, crest, peak and r.m.s.
+        #[test]
+        fn steady_state_repeats_under_small_steps(parts in any_parts(), lj in -9.0f64..-0.5) {
+            let rail = Rail::new(parts).unwrap();
+            let current = crate::physics::math::exp(lj) * parts.no_load_crest.0 / rail.resistance;
+            let twin = twin(parts);
+            let Some(cycle) = rail.loaded(Amp(current)) else {
+                // Refused: then a long march must indeed end at or below zero volts.
+                let h = PI / twin.omega / 500.0;
+                let half_cycles = 200 + (30.0 * rail.x) as usize;
+                let mut low = f64::INFINITY;
+                twin.march(&|_| current, (0.0, parts.no_load_crest.0), h, 500 * half_cycles, |_, v, _| {
+                    low = low.min(v);
+                });
+                prop_assert!(low < 1e-3 * parts.no_load_crest.0, "refused at {low} V");
+                return Ok(());
+            };
+            let count = 4000;
+            let h = PI / twin.omega / count as f64;
+            let start = cycle.alpha / twin.omega;
+            let inside = rail.volts(sin_cos(cycle.alpha).0) + parts.esr.0 * current;
+            let (mut mean, mut square, mut peak) = (0.0, 0.0, 0.0f64);
+            let (mut low, mut high) = (f64::INFINITY, f64::NEG_INFINITY);
+            let end = twin.march(&|_| current, (start, inside), h, count, |_, v, i| {
+                mean += v / count as f64;
+                square += i * i / count as f64;
+                peak = peak.max(i);
+                low = low.min(v);
+                high = high.max(v);
+            });
+            let scale = parts.no_load_crest.0;
+            let unit = scale / rail.resistance;
+            prop_assert!((end - inside).abs() < 2e-6 * scale, "{end} {inside}");
+            prop_assert!((mean - cycle.mean().0).abs() < 2e-6 * scale, "mean {mean} {:?}", cycle.mean());
+            prop_assert!((low - cycle.trough().0).abs() < 2e-3 * scale && low >= cycle.trough().0 - 2e-6 * scale);
+            prop_assert!((high - cycle.crest().0).abs() < 2e-3 * scale && high <= cycle.crest().0 + 2e-6 * scale);
+            prop_assert!((square.sqrt() - cycle.charging_rms().0).abs() < 1e-4 * unit);
+            prop_assert!((peak - cycle.charging_peak().0).abs() < 1e-3 * unit && peak <= cycle.charging_peak().0 + 2e-6 * unit);
+        }
+
+        /// More current: a lower rail, a longer conduction, never a number that is none.
+        #[test]
+        fn more_current_lowers_the_rail(parts in any_parts(), lj in -12.0f64..-0.5, more in 1.01f64..3.0) {
+            let rail = Rail::new(parts).unwrap();
+            let current = crate::physics::math::exp(lj) * parts.no_load_crest.0 / rail.resistance;
+            if let (Some(a), Some(b)) = (rail.loaded(Amp(current)), rail.loaded(Amp(current * more))) {
+                prop_assert!(b.mean() < a.mean() && b.trough() < a.trough());
+                prop_assert!(b.conduction_rad() > a.conduction_rad());
+                prop_assert!(b.charging_rms() > a.charging_rms() && a.charging_rms().0 > current);
+                prop_assert!(a.trough() < a.mean() && a.mean() < a.crest() && a.crest() <= rail.unloaded());
+            }
+        }
     }
 }

@@ -5,30 +5,40 @@
 use super::conduction::bracketed_root;
 use super::rail::Rail;
 use super::reservoir::Draw;
-use crate::physics::math::{PI, cos, exp, maximum, root, sin_cos};
+use crate::physics::math::{FRAC_PI_2, PI, asin, cos, exp, root, sin_cos};
 use crate::physics::unit::{Amp, Hertz, Volt};
 
 /// Signal periods in the longest pattern after which signal and mains repeat together.
-const MOST_PERIODS: u32 = 16;
+const MOST_PERIODS: u32 = 8;
 
 /// Most half-cycles of the mains in one signal period; 100 at 1 Hz and 50 Hz.
 const MOST_HALF_CYCLES: f64 = 400.0;
 
-/// Phases of the signal against the mains that are searched before refining.
-const PHASES: u32 = 16;
+/// Phases of the signal against the mains that are searched before refining: at least 16, and so
+/// many that the sine of the signal, which turns that much faster against them, moves by less than
+/// 0.08 radians from one to the next; within a limit that counts above the mains frequency only.
+const PHASES: f64 = 16.0;
+const PHASES_PER_PACE: f64 = 40.0;
+const MOST_PHASES: usize = 64;
 
-/// Tolerance of the search over phases, radians of the mains.
-const FINE_PHASE: f64 = 4e-3;
+/// Most parabolas laid through the neighbourhood of the worst phase, and the gain (as a part of
+/// the crest of the source) below which another is not worth its time.
+const PARABOLAS: u32 = 6;
+const GAIN: f64 = 1e-7;
 
-/// Tolerances of the search within a piece, radians of the mains: while comparing phases, and for
-/// the result.
-const COARSE: f64 = 2e-2;
-const FINE: f64 = 1e-6;
+/// How exactly a level is settled, as the square of the last change: while comparing phases, and
+/// for the result.
+const ROUGH: f64 = 1e-8;
+const EXACT: f64 = 1e-13;
 
-/// Longest step of sampling within a piece, radians of the mains, and how far above the least (as a
-/// part of the source's crest) a sample may lie and still be looked at closer.
+/// Longest step of sampling within a piece, radians of the mains or of the signal, and how far above
+/// the least so far (as a part of the source's crest) the bottom of a parabola through three samples
+/// may lie and still be looked at closer.
 const SAMPLING: f64 = PI / 8.0;
 const SLACK: f64 = 5e-3;
+
+/// Most samples of a piece; a piece is no longer than half a period of mains and of signal.
+const MOST_SAMPLES: usize = 10;
 
 /// Most patterns marched through to find the steady state; three or four are usual.
 const MAX_MARCHES: u32 = 100;
@@ -67,13 +77,12 @@ impl Rail {
     /// against the mains, in the periodic steady state. `needed` is a function of the phase of the
     /// signal current in radians, 0 to 2π.
     ///
-    /// 16 phases are searched and the neighbourhood of the worst is refined to 0.2 degrees, the
-    /// moment within the period to 1e-6 radians; the result is exact to about 1e-4 of the ripple.
+    /// At least 16 phases are searched and the neighbourhood of the worst is refined.
     ///
-    /// A signal period that holds p/q half-cycles of the mains, q up to 16, repeats after q
+    /// A signal period that holds p/q half-cycles of the mains, q up to 8, repeats after q
     /// periods. Any other frequency is replaced by the next LOWER one that does, less than
-    /// 1/16 of a half-cycle away: a mains frequency is only held to about 1 %, and a longer half
-    /// wave sags deeper.
+    /// 1/8 of a half-cycle away (at 31.5 Hz and 50 Hz mains, 31.25 Hz): a mains frequency is only
+    /// held to about 1 %, and a longer half wave sags deeper.
     ///
     /// The source resistance is that of both rails charging together, though at this frequency
     /// they take turns to be loaded: slightly low rails, deliberately.
@@ -86,29 +95,31 @@ impl Rail {
         needed: impl Fn(f64) -> Volt,
     ) -> Option<Headroom> {
         let march = March::new(self, load)?;
-        let width = PI / f64::from(march.periods);
-        let phases = PHASES.div_ceil(march.periods);
-        let step = width / f64::from(phases);
+        let (phases, step) = march.phases();
         let mut level = 1.0;
-        let mut worst: Option<(Headroom, f64)> = None;
+        let mut scan = [(f64::INFINITY, level); MOST_PHASES];
+        for (n, point) in scan.iter_mut().enumerate().take(phases) {
+            level = march.settle(step * n as f64, level, ROUGH)?;
+            *point = (march.least(step * n as f64, level, &needed)?.least.0, level);
+        }
+        let lowest = scan.iter().fold(f64::INFINITY, |low, point| low.min(point.0));
+        let mut worst = (0.0, f64::INFINITY);
         for n in 0..phases {
-            let phase = step * f64::from(n);
-            level = march.settle(phase, level)?;
-            let found = march.least(phase, level, &needed, COARSE)?;
-            if worst.is_none_or(|(w, _)| found.least < w.least) {
-                worst = Some((found, level));
+            let beside = |offset: usize| scan.get((n + offset) % phases).copied();
+            let (before, here, after) = (beside(phases - 1)?, beside(0)?, beside(1)?);
+            let local = here.0 <= before.0.min(after.0);
+            if local && here.0 < lowest + SLACK * self.crest {
+                let phase = step * n as f64;
+                let spare = |phase: f64| march.spare(phase, here.1, &needed);
+                let points =
+                    [(phase - step, before.0), (phase, here.0), (phase + step, after.0)];
+                let found = bottom(spare, points, GAIN * self.crest);
+                if found.1 < worst.1 {
+                    worst = found;
+                }
             }
         }
-        let (coarse, start) = worst?;
-        let deficit = |phase: f64| {
-            let phase = phase.rem_euclid(PI);
-            let level = march.settle(phase, start);
-            let found = level.and_then(|level| march.least(phase, level, &needed, COARSE));
-            found.map_or(f64::INFINITY, |h| -h.least.0)
-        };
-        let centre = coarse.mains_rad;
-        let (phase, _) = maximum(deficit, centre - step, centre + step, FINE_PHASE);
-        self.least_headroom_at(load, phase, needed)
+        self.least_headroom_at(load, worst.0, needed)
     }
 
     /// The same at one phase: the signal current rises through zero at `mains_rad` radians after a
@@ -121,8 +132,8 @@ impl Rail {
     ) -> Option<Headroom> {
         let phase = mains_rad.rem_euclid(PI);
         let march = March::new(self, load)?;
-        let level = march.settle(phase, 1.0)?;
-        march.least(phase, level, &needed, FINE)
+        let level = march.settle(phase, 1.0, EXACT)?;
+        march.least(phase, level, &needed)
     }
 }
 
@@ -200,17 +211,35 @@ impl<'a> March<'a> {
         })
     }
 
+    /// How many phases of the signal to search, and the mains angle between them. One pattern of q
+    /// periods already meets q phases, evenly spread.
+    fn phases(&self) -> (usize, f64) {
+        let wanted = PHASES.max(PHASES_PER_PACE * self.pace) / f64::from(self.periods);
+        let phases = (wanted.ceil() as usize).clamp(3, MOST_PHASES);
+        (phases, PI / f64::from(self.periods) / phases as f64)
+    }
+
+    /// Least headroom in volts at one phase, infinite where the rail collapses.
+    fn spare(&self, phase: f64, guess: f64, needed: &impl Fn(f64) -> Volt) -> f64 {
+        let phase = phase.rem_euclid(PI);
+        let level = self.settle(phase, guess, ROUGH);
+        let found = level.and_then(|level| self.least(phase, level, needed));
+        found.map_or(f64::INFINITY, |h| h.least.0)
+    }
+
     /// The level at the signal's rise through zero at `phase` of the mains, in the periodic steady
-    /// state, to 1e-11 of the crest.
+    /// state.
     ///
     /// The map from one pattern to the next is a contraction whose derivative is the product of
-    /// what each conduction lets fade, so Newton needs one march a step. Should a Newton step fall
+    /// what each conduction lets fade, so Newton needs one march a step, and after a step that
+    /// changed the level by δ the error is of the order δ²: that much is `tolerance`. Should a Newton step fall
     /// so low that the rail collapses, plain repetition from the unloaded level follows, which
     /// approaches from above.
-    fn settle(&self, phase: f64, guess: f64) -> Option<f64> {
+    fn settle(&self, phase: f64, guess: f64, tolerance: f64) -> Option<f64> {
         let mut level = guess;
         let mut newton = true;
         for _ in 0..MAX_MARCHES {
+            let before = level;
             let Some((end, slope)) = self.pattern(phase, level, |_, _| {}) else {
                 if !newton {
                     return None;
@@ -219,48 +248,46 @@ impl<'a> March<'a> {
                 continue;
             };
             let change = end - level;
-            if change.abs() < 1e-11 {
-                return Some(end);
-            }
             level = if newton && slope < 1.0 { level + change / (1.0 - slope) } else { end };
+            if (level - before) * (level - before) < tolerance {
+                return Some(level);
+            }
         }
         Some(level)
     }
 
-    /// Least headroom over one pattern that starts at `level`.
-    fn least(
-        &self,
-        phase: f64,
-        level: f64,
-        needed: &impl Fn(f64) -> Volt,
-        tolerance: f64,
-    ) -> Option<Headroom> {
+    /// Least headroom over one pattern that starts at `level`. Each piece is sampled; where the
+    /// samples promise about the least so far or less, parabolas find the bottom next to them.
+    fn least(&self, phase: f64, level: f64, needed: &impl Fn(f64) -> Volt) -> Option<Headroom> {
+        let crest = self.rail.crest;
         let mut least: Option<Headroom> = None;
-        let slack = Volt(SLACK * self.rail.crest);
         self.pattern(phase, level, |piece, length| {
-            let spare = |after: f64| {
+            let headroom = |after: f64| {
                 let rail = Volt(self.rail.volts(piece.at(after).terminal));
                 let signal_rad = piece.signal_phase(after);
                 Headroom { least: rail - needed(signal_rad), rail, signal_rad, mains_rad: phase }
             };
-            let parts = (length / SAMPLING).ceil().max(2.0);
-            let step = length / parts;
-            let mut sampled = (0.0, spare(0.0));
-            for n in 1..=parts as u32 {
-                let after = step * f64::from(n);
-                let found = spare(after);
-                if found.least < sampled.1.least {
-                    sampled = (after, found);
+            let spare = |after| headroom(after).least.0;
+            let longest = SAMPLING / self.pace.max(1.0);
+            let parts = ((length / longest).ceil() as usize).clamp(2, MOST_SAMPLES - 1);
+            let mut samples = [(0.0, f64::INFINITY); MOST_SAMPLES];
+            let mut lowest = 0;
+            for n in 0..=parts {
+                let after = length * n as f64 / parts as f64;
+                samples[n] = (after, spare(after));
+                if samples[n].1 < samples[lowest].1 {
+                    lowest = n;
                 }
             }
-            if least.is_some_and(|l| sampled.1.least > l.least + slack) {
-                return;
-            }
-            let (from, to) = ((sampled.0 - step).max(0.0), (sampled.0 + step).min(length));
-            let (after, _) = maximum(|after| -spare(after).least.0, from, to, tolerance);
-            let found = spare(after);
-            if least.is_none_or(|l| found.least < l.least) {
-                least = Some(found);
+            let middle = lowest.clamp(1, parts - 1);
+            let points = [samples[middle - 1], samples[middle], samples[middle + 1]];
+            let so_far = least.map_or(f64::INFINITY, |l| l.least.0);
+            let promise = vertex(points).map_or(f64::INFINITY, |v| v.1).min(samples[lowest].1);
+            if promise < so_far + SLACK * crest {
+                let found = headroom(bottom(spare, points, GAIN * crest).0);
+                if found.least.0 < so_far {
+                    least = Some(found);
+                }
             }
         })?;
         least
@@ -360,7 +387,11 @@ impl Piece<'_> {
         let Rail { x, esr_share: esr, .. } = *self.march.rail;
         let (standing, pace) = (self.march.standing, self.march.pace);
         let (sin, cos) = sin_cos(self.angle + after);
-        let (sin_a, cos_a) = sin_cos(self.phase + pace * after);
+        let (sin_a, cos_a) = if self.wave > 0.0 {
+            sin_cos(self.phase + pace * after)
+        } else {
+            (0.0, self.phase_cos) // nothing below depends on it
+        };
         let load = standing + self.wave * sin_a;
         let load_slope = self.wave * pace * cos_a;
         if self.on {
@@ -387,34 +418,83 @@ impl Piece<'_> {
     }
 
     /// When the rectifier switches within `length`: where the drive changes to the sign that ends
-    /// this piece. If both ends still have the piece's own sign but the drive first runs towards
-    /// zero and then away from it, the turning point between is looked at too.
+    /// this piece.
+    ///
+    /// The crest of the source is looked at first, as the drive is below zero again at the end of a
+    /// half-cycle. If still no end has the other sign, but the drive first runs towards zero and
+    /// then away from it, the turning point between is looked at too.
     fn event(&self, length: f64) -> Option<f64> {
         let side = if self.on { 1.0 } else { -1.0 };
         let drive = |after: f64| {
             let now = self.at(after);
             (side * now.drive, side * now.slope)
         };
-        let slope = |after: f64| drive(after).1;
+        let to_crest = FRAC_PI_2 - self.angle;
         let mut beyond = length;
-        if drive(length).0 >= 0.0 {
-            if slope(0.0) >= 0.0 || slope(length) <= 0.0 {
-                return None;
-            }
-            beyond = root(slope, 0.0, length, 1e-13)?;
-            if drive(beyond).0 >= 0.0 {
-                return None;
+        if !self.on && to_crest > 0.0 && to_crest < length && drive(to_crest).0 < 0.0 {
+            beyond = to_crest;
+        } else {
+            let (end, end_slope) = drive(length);
+            if end >= 0.0 {
+                if end_slope <= 0.0 || drive(0.0).1 >= 0.0 {
+                    return None;
+                }
+                beyond = root(|after| drive(after).1, 0.0, length, 1e-12)?;
+                if drive(beyond).0 >= 0.0 {
+                    return None;
+                }
             }
         }
-        Some(bracketed_root(drive, 0.0, beyond, beyond))
+        // Where the source alone would meet the level of the start.
+        let meeting = asin(self.level.clamp(0.0, 1.0));
+        let guess = if self.on { PI - meeting } else { meeting } - self.angle;
+        let start = if guess > 0.0 && guess < beyond { guess } else { 0.5 * beyond };
+        Some(bracketed_root(drive, 0.0, beyond, start))
     }
+}
+
+/// A position and the height there.
+type Point = (f64, f64);
+
+/// Lowest point of the parabola through three points, if it lies between the outer two.
+fn vertex([a, b, c]: [Point; 3]) -> Option<Point> {
+    let (first, second) = ((b.1 - a.1) / (b.0 - a.0), (c.1 - b.1) / (c.0 - b.0));
+    let bend = (second - first) / (c.0 - a.0);
+    let at = 0.5 * (a.0 + b.0 - first / bend);
+    let height = a.1 + (at - a.0) * (first + bend * (at - b.0));
+    (bend > 0.0 && at > a.0 && at < c.0).then_some((at, height))
+}
+
+/// The lowest point of `f` that parabolas find from three points in ascending order, each new one
+/// replacing the point farther from it of the outer two, until one gains less than `gain`. Never
+/// higher than the lowest of the three.
+fn bottom(f: impl Fn(f64) -> f64, mut points: [Point; 3], gain: f64) -> Point {
+    let lower = |a: Point, b: Point| if b.1 < a.1 { b } else { a };
+    let mut lowest = lower(lower(points[0], points[1]), points[2]);
+    for _ in 0..PARABOLAS {
+        let Some((at, _)) = vertex(points) else { break };
+        let new = (at, f(at));
+        let gained = lowest.1 - new.1;
+        lowest = lower(lowest, new);
+        let [a, b, c] = points;
+        points = match (at < b.0, new.1 < b.1) {
+            (true, true) => [a, new, b],
+            (true, false) => [new, b, c],
+            (false, true) => [b, new, c],
+            (false, false) => [a, b, new],
+        };
+        if gained.abs() < gain {
+            break;
+        }
+    }
+    lowest
 }
 
 /// The next p/q, q up to [`MOST_PERIODS`], not below `ratio`, the smallest q first among equals;
 /// as (p, q), p a whole number.
 fn next_ratio(ratio: f64) -> (f64, u32) {
-    let mut best = (ratio.ceil().max(1.0), 1);
-    for q in 2..=MOST_PERIODS {
+    let mut best = (f64::INFINITY, 1);
+    for q in 1..=MOST_PERIODS {
         let p = (ratio * f64::from(q) * (1.0 - 1e-12)).ceil().max(1.0);
         if p / f64::from(q) < best.0 / f64::from(best.1) * (1.0 - 1e-12) {
             best = (p, q);

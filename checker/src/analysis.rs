@@ -1,0 +1,18 @@
+//! Where the models meet: one build at its corners, from stated values to stresses.
+//! Must not know how findings are shown, nor text beyond the places values came from.
+//!
+//! A [`Case`] is one build with one alternate in one mains region. Every intermediate result is a
+//! method that solves once and answers with what is missing where it cannot. Data flow one way:
+//! loads -> rails -> signals -> heat -> ratings; rules ask for stresses and compare.
+
+pub mod case;
+pub mod chain;
+pub mod devices;
+pub mod heat;
+pub mod loads;
+pub mod margins;
+pub mod rails;
+pub mod signal;
+
+pub use case::{Case, Tables};
+pub use margins::{Margins, Stress};
