@@ -188,6 +188,9 @@ const FOREIGN: &[(Foreign, &[&str])] = &[
     (Foreign::SmallOmega, &["\u{3c9}", "k\u{3c9}", "m\u{3c9}", "M\u{3c9}"]),
 ];
 
+/// Longer texts are not looked up; the longest unit is half this.
+const LONGEST: usize = 40;
+
 /// Whether `text` is exactly a unit, so that no part may bear it as a name.
 #[must_use]
 pub fn is_unit(text: &str) -> bool {
@@ -196,6 +199,9 @@ pub fn is_unit(text: &str) -> bool {
 
 /// Finds the unit spelled `text`, compound units included.
 pub(super) fn lookup(text: &str) -> Lookup {
+    if text.is_empty() || text.len() > LONGEST {
+        return Lookup::Unknown;
+    }
     if let Some(unit) = simple(text) {
         return Lookup::Unit(unit);
     }
