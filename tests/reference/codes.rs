@@ -7,7 +7,7 @@
 #![allow(
     clippy::panic,
     clippy::expect_used,
-    reason = "helpers of tests fail by panicking"
+    reason = "what the tests share fails by panicking"
 )]
 
 use derate::quantity::{
