@@ -4,11 +4,13 @@
 //! Every source line gets at most one problem, so that a half-typed line shows one mistake; a
 //! block without `}` gets one more.
 
+use std::ops::Range;
 use std::sync::Arc;
 
 use crate::line_index::LineIndex;
-use crate::parse::{Part, Phrase, Row, read_row};
+use crate::parse::read_line;
 use crate::problem::{Problem, ProblemKind};
+use crate::row::{Part, Phrase, Row, read_row};
 use crate::span::Span;
 use crate::tree::{Block, Group, Item, Line, Piece, PieceKind, Token, TokenKind, Tree};
 
@@ -19,6 +21,8 @@ pub const MAX_LINE_BYTES: usize = 1 << 16;
 /// So many problems are listed, then one that says there are more.
 pub const MAX_PROBLEMS: usize = 1000;
 
+pub(crate) const BYTE_ORDER_MARK: char = '\u{FEFF}';
+
 /// A tab stop, where indentations are compared.
 const TAB: usize = 4;
 
@@ -27,16 +31,95 @@ const TAB: usize = 4;
 #[must_use]
 pub fn parse(text: impl Into<Arc<str>>) -> Tree {
     let text: Arc<str> = text.into();
-    let lines = LineIndex::new(Arc::clone(&text));
-    let mut assembler = Assembler::new(&text, lines.line_count());
-    for number in 0..lines.line_count() {
-        assembler.source_line(number, lines.line_span(number));
+    let lines = LineIndex::new(text);
+    let mut marks = Vec::new();
+    read_lines(&lines, 0..lines.line_count(), &mut marks);
+    assemble(lines, marks)
+}
+
+impl Tree {
+    /// The tree of a text that differs little from this one: the same as [`parse`] gives, but
+    /// only the source lines between the first and the last difference are read anew.
+    #[must_use]
+    pub fn reparse(&self, text: impl Into<Arc<str>>) -> Self {
+        let text: Arc<str> = text.into();
+        let (head, tail) = common_ends(self.text.as_bytes(), text.as_bytes());
+        let old_tail = self.text.len() - tail;
+        let new_tail = text.len() - tail;
+        let lines = LineIndex::new(text);
+
+        // A line is kept if it and at least the first byte of its line end lie in the common
+        // head, or it and at least the last byte of the line end before it in the common tail.
+        let first = lines.line_of(head);
+        let kept_until = lines.line_span(first).start;
+        let after = lines.line_of(new_tail) + 1;
+        let kept_from = lines.line_start(after) - new_tail + old_tail;
+
+        let (kept_head, rest) = split_at(&self.marks, kept_until);
+        let (_, kept_tail) = split_at(rest, kept_from);
+        let mut marks = Vec::with_capacity(self.marks.len() + 16);
+        marks.extend_from_slice(kept_head);
+        read_lines(&lines, first..after, &mut marks);
+        marks.extend(kept_tail.iter().map(|mark| Piece {
+            kind: mark.kind,
+            span: Span::new(
+                mark.span.start - old_tail + new_tail,
+                mark.span.end - old_tail + new_tail,
+            ),
+        }));
+        assemble(lines, marks)
     }
-    assembler.finish();
+}
+
+/// Lengths of what two texts share at their beginnings, and at the ends of what is left.
+fn common_ends(old: &[u8], new: &[u8]) -> (usize, usize) {
+    let head = old.iter().zip(new).take_while(|(a, b)| a == b).count();
+    let left = old.len().min(new.len()) - head;
+    let tail = old.iter().rev().zip(new.iter().rev()).take(left);
+    (head, tail.take_while(|(a, b)| a == b).count())
+}
+
+/// The pieces that begin before `offset`, and the others.
+fn split_at(marks: &[Piece], offset: usize) -> (&[Piece], &[Piece]) {
+    marks.split_at(marks.partition_point(|mark| mark.span.start < offset))
+}
+
+fn read_lines(lines: &LineIndex, numbers: Range<usize>, marks: &mut Vec<Piece>) {
+    for number in numbers {
+        let span = content(lines, number);
+        if span.len() <= MAX_LINE_BYTES {
+            read_line(span.slice(lines.text()), span.start, marks);
+        } else {
+            marks.push(Piece {
+                kind: PieceKind::Unread,
+                span,
+            });
+        }
+    }
+}
+
+/// The bytes of a source line without its line end and without a byte-order mark.
+fn content(lines: &LineIndex, number: usize) -> Span {
+    let span = lines.line_span(number);
+    let bom = number == 0 && lines.text().starts_with(BYTE_ORDER_MARK);
+    let skipped = if bom { BYTE_ORDER_MARK.len_utf8() } else { 0 };
+    Span::new(span.start + skipped, span.end)
+}
+
+fn assemble(lines: LineIndex, marks: Vec<Piece>) -> Tree {
+    let text = Arc::clone(lines.text());
+    let mut assembler = Assembler::new(&text, lines.line_count());
+    let mut rest = marks.as_slice();
+    for number in 0..lines.line_count() {
+        let span = content(&lines, number);
+        let (row, after) = split_line(rest, span.end);
+        rest = after;
+        assembler.source_line(number, span, row);
+    }
+    assembler.end_block(None);
     let Assembler {
         items,
         mut problems,
-        marks,
         faulty,
         ..
     } = assembler;
@@ -51,11 +134,16 @@ pub fn parse(text: impl Into<Arc<str>>) -> Tree {
     }
 }
 
+/// The pieces up to the end of a line, and the others.
+pub(crate) fn split_line(marks: &[Piece], end: usize) -> (&[Piece], &[Piece]) {
+    let count = marks.iter().take_while(|mark| mark.span.end <= end).count();
+    marks.split_at(count)
+}
+
 struct Assembler<'t> {
     text: &'t str,
     items: Vec<Item>,
     problems: Vec<Problem>,
-    marks: Vec<Piece>,
     faulty: Vec<bool>,
     /// The source line being read.
     number: usize,
@@ -63,6 +151,8 @@ struct Assembler<'t> {
     block: Option<Block>,
     /// The last statement, which the next source line may continue.
     statement: Option<Statement>,
+    /// The column of the last key.
+    key_column: usize,
     skip: Skip,
 }
 
@@ -70,7 +160,7 @@ struct Assembler<'t> {
 struct Statement {
     /// `None` where it does not begin with a key.
     line: Option<Line>,
-    /// The column of its first token, from 0.
+    /// The column, from 0, that a line must pass to continue it.
     column: usize,
     /// The comma it may be continued after, and the source line of that comma.
     comma: Option<(Span, usize)>,
@@ -94,38 +184,27 @@ impl<'t> Assembler<'t> {
             text,
             items: Vec::new(),
             problems: Vec::new(),
-            marks: Vec::new(),
             faulty: vec![false; lines],
             number: 0,
             block: None,
             statement: None,
+            key_column: 0,
             skip: Skip::Nothing,
         }
     }
 
-    fn source_line(&mut self, number: usize, span: Span) {
+    fn source_line(&mut self, number: usize, span: Span, pieces: &[Piece]) {
         self.number = number;
-        let bom = number == 0 && self.text.starts_with('\u{FEFF}');
-        let start = span.start + if bom { '\u{FEFF}'.len_utf8() } else { 0 };
-        let source = Span::new(start, span.end);
-        if source.len() > MAX_LINE_BYTES {
-            return self.too_long(source);
+        if span.len() > MAX_LINE_BYTES {
+            self.raise(Problem::new(
+                ProblemKind::LineTooLong,
+                Span::at(span.start),
+                format!("this line is longer than {MAX_LINE_BYTES} bytes and is not read"),
+                "break it after a comma",
+            ));
+        } else if !pieces.is_empty() {
+            self.row(read_row(self.text, pieces), span.start);
         }
-        let row = read_row(source.slice(self.text), start, &mut self.marks);
-        self.row(row, start);
-    }
-
-    fn too_long(&mut self, span: Span) {
-        self.marks.push(Piece {
-            kind: PieceKind::Unread,
-            span,
-        });
-        self.raise(Problem::new(
-            ProblemKind::LineTooLong,
-            Span::at(span.start),
-            format!("this line is longer than {MAX_LINE_BYTES} bytes and is not read"),
-            "break it after a comma",
-        ));
     }
 
     fn row(&mut self, row: Row, start: usize) {
@@ -200,30 +279,40 @@ impl<'t> Assembler<'t> {
             return;
         };
         statement.comma = phrase.trailing_comma.map(|comma| (comma, number));
-        match &mut statement.line {
-            Some(line) => {
-                if let Some(last) = phrase.groups.last() {
-                    line.span = line.span.cover(last.span);
-                }
-                line.groups.extend(phrase.groups);
-                line.comment = comment;
+        let first = statement.number;
+        if let Some(line) = &mut statement.line {
+            if let Some(last) = phrase.groups.last() {
+                line.span = line.span.cover(last.span);
             }
-            None => self.mark_faulty(number),
+            line.groups.extend(phrase.groups);
+            line.comment = comment;
+        } else {
+            self.mark_faulty(number);
+        }
+        // What is wrong with its last line is wrong with the whole statement.
+        if self.faulty.get(number) == Some(&true) {
+            self.mark_faulty(first);
         }
     }
 
     fn begin_statement(&mut self, phrase: Phrase, column: usize, comment: Option<Span>) {
         let comma = phrase.trailing_comma.map(|comma| (comma, self.number));
         let line = self.keyed_line(phrase, comment);
+        // Without a key it is most likely what the comma before it has lost, and its lines go on
+        // where that statement's would.
+        if line.is_some() || column <= self.key_column {
+            self.key_column = column;
+        }
         self.statement = Some(Statement {
             line,
-            column,
+            column: self.key_column,
             comma,
             number: self.number,
         });
     }
 
     fn keyed_line(&mut self, phrase: Phrase, comment: Option<Span>) -> Option<Line> {
+        let comma = phrase.first_comma;
         let mut groups = phrase.groups;
         let key = groups
             .first()
@@ -240,7 +329,16 @@ impl<'t> Assembler<'t> {
             return None;
         };
         let end = groups.last().map_or(key.span.end, |group| group.span.end);
-        drop_first_token(&mut groups);
+        if !drop_first_token(&mut groups)
+            && let Some(comma) = comma
+        {
+            self.raise(Problem::new(
+                ProblemKind::StrayComma,
+                comma,
+                "a comma follows the key",
+                "remove it: commas part the groups that follow a key",
+            ));
+        }
         Some(Line {
             key,
             groups,
@@ -296,7 +394,7 @@ impl<'t> Assembler<'t> {
                 "remove the space before it",
             ));
         }
-        if let Some(comma) = comma_in(&phrase) {
+        if let Some(comma) = phrase.first_comma {
             self.raise(Problem::new(
                 ProblemKind::StrayComma,
                 comma,
@@ -440,10 +538,6 @@ impl<'t> Assembler<'t> {
         self.items.push(Item::Block(block));
     }
 
-    fn finish(&mut self) {
-        self.end_block(None);
-    }
-
     // --- problems ---
 
     /// Whether a source line is passed over, because a problem above it or of its own leaves it
@@ -565,27 +659,20 @@ fn inside(column: usize, first: &Part) -> bool {
     column > 0 || !matches!(first, Part::Phrase(_))
 }
 
-fn comma_in(phrase: &Phrase) -> Option<Span> {
-    match phrase.groups.as_slice() {
-        [first, second, ..] => Some(Span::new(first.span.end, second.span.start)),
-        _ => phrase.trailing_comma,
-    }
-}
-
-/// Takes the key out of the first group.
-fn drop_first_token(groups: &mut Vec<Group>) {
+/// Takes the key out of the first group; false if nothing but the key stood there.
+fn drop_first_token(groups: &mut Vec<Group>) -> bool {
     let Some(first) = groups.first_mut() else {
-        return;
+        return false;
     };
-    if first.tokens.len() > 1 {
-        first.tokens.remove(0);
-        first.span.start = first
-            .tokens
-            .first()
-            .map_or(first.span.start, |t| t.span.start);
-    } else {
-        groups.remove(0);
+    first.tokens.remove(0);
+    let next = first.tokens.first().map(|token| token.span.start);
+    match next {
+        Some(start) => first.span.start = start,
+        None => {
+            groups.remove(0);
+        }
     }
+    next.is_some()
 }
 
 fn shortened(name: &str) -> String {

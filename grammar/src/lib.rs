@@ -11,8 +11,9 @@
 //!
 //! | file | holds |
 //! |---|---|
-//! | `ampspec.pest`, `parse` | one source line to tokens, phrases and braces |
-//! | `assemble` | source lines to blocks and statements, and what is wrong with their form |
+//! | `ampspec.pest`, `parse` | one source line to pieces: tokens, commas, braces, a comment |
+//! | `row` | the pieces of a line to groups, and what is wrong with them |
+//! | `assemble` | lines to statements and blocks, and what is wrong with their form |
 //! | `tree`, `problem`, `span` | what comes out |
 //! | `line_index` | bytes to lines and columns and back |
 //! | `layout` | the canonical layout of a tree |
@@ -20,16 +21,17 @@
 
 mod assemble;
 mod edit;
-//mod layout;
+mod layout;
 mod line_index;
 mod parse;
 mod problem;
+mod row;
 mod span;
 mod tree;
 
 pub use assemble::{MAX_LINE_BYTES, MAX_PROBLEMS, parse};
 pub use edit::{Edit, EditError, apply};
-//pub use layout::{AsWritten, Spelling, layout};
+pub use layout::{AsWritten, Spelling, layout};
 pub use line_index::{ColumnUnit, LineIndex, Position};
 pub use problem::{Problem, ProblemKind};
 pub use span::Span;

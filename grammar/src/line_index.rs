@@ -46,7 +46,7 @@ pub struct Position {
 }
 
 /// The line starts of one text, built once.
-#[derive(Clone, Debug)]
+#[derive(Clone, Eq, PartialEq, Debug)]
 pub struct LineIndex {
     text: Arc<str>,
     starts: Vec<usize>,
@@ -86,14 +86,19 @@ impl LineIndex {
             .saturating_sub(1)
     }
 
+    /// Where a line, from 0, begins; the end of the text for a line that does not exist.
+    #[must_use]
+    pub fn line_start(&self, line: usize) -> usize {
+        let end = self.text.len();
+        self.starts.get(line).copied().unwrap_or(end)
+    }
+
     /// The bytes of a line, from 0, without its line end; empty at the end of the text for a
     /// line that does not exist.
     #[must_use]
     pub fn line_span(&self, line: usize) -> Span {
-        let length = self.text.len();
-        let start = self.starts.get(line).copied().unwrap_or(length);
-        let end = self.starts.get(line + 1).copied().unwrap_or(length);
-        let content = Span::new(start, end).slice(&self.text);
+        let start = self.line_start(line);
+        let content = Span::new(start, self.line_start(line + 1)).slice(&self.text);
         let content = content.strip_suffix('\n').unwrap_or(content);
         let content = content.strip_suffix('\r').unwrap_or(content);
         Span::new(start, start + content.len())

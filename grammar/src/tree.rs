@@ -8,7 +8,7 @@ use crate::problem::Problem;
 use crate::span::Span;
 
 /// What a text holds, and what is wrong with its form.
-#[derive(Clone, Debug)]
+#[derive(Clone, Eq, PartialEq, Debug)]
 pub struct Tree {
     /// The text.
     pub text: Arc<str>,
@@ -25,7 +25,7 @@ pub struct Tree {
 }
 
 /// A block, or a line outside every block.
-#[derive(Clone, Debug)]
+#[derive(Clone, Eq, PartialEq, Debug)]
 pub enum Item {
     /// `kind NAME ... { ... }`
     Block(Block),
@@ -33,8 +33,19 @@ pub enum Item {
     Line(Line),
 }
 
+impl Item {
+    /// Its bytes.
+    #[must_use]
+    pub fn span(&self) -> Span {
+        match self {
+            Self::Block(block) => block.span,
+            Self::Line(line) => line.span,
+        }
+    }
+}
+
 /// `kind NAME "title" words { lines }`
-#[derive(Clone, Debug)]
+#[derive(Clone, Eq, PartialEq, Debug)]
 pub struct Block {
     /// The first token of the header.
     pub kind: Token,
@@ -64,7 +75,7 @@ impl Block {
 }
 
 /// `key group, group, ...`
-#[derive(Clone, Debug)]
+#[derive(Clone, Eq, PartialEq, Debug)]
 pub struct Line {
     /// The key, always a word.
     pub key: Token,
@@ -77,7 +88,7 @@ pub struct Line {
 }
 
 /// The tokens between two separator commas.
-#[derive(Clone, Debug)]
+#[derive(Clone, Eq, PartialEq, Debug)]
 pub struct Group {
     /// At least one token.
     pub tokens: Vec<Token>,
