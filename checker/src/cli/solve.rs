@@ -1,0 +1,126 @@
+//! What the commands that solve builds have in common: their options, and the run.
+//! Must not know how a run is printed.
+
+use std::path::PathBuf;
+
+use clap::ValueEnum;
+use derate::render::run::{FailOn, Run};
+use derate::render::terminal::Style;
+use derate::{Options, Outcome};
+use rayon::prelude::*;
+
+use super::input::{Given, Input, inputs};
+use super::today::today;
+use super::{Colour, NOT_RUN};
+
+/// Options of every command that solves builds.
+#[derive(clap::Args)]
+pub(crate) struct Solve {
+    /// Write the report to this file instead of standard output
+    #[arg(long, value_name = "FILE")]
+    pub(crate) out: Option<PathBuf>,
+    /// Only the build of this name
+    #[arg(long, value_name = "NAME")]
+    build: Option<String>,
+    /// Use this policy in place of the one that each build names
+    #[arg(long, value_name = "NAME")]
+    policy: Option<String>,
+    /// From where on the exit status is 1
+    #[arg(long, value_enum, default_value_t, value_name = "LEVEL")]
+    fail_on: Level,
+    /// When to use colour
+    #[arg(
+        long,
+        alias = "color",
+        value_enum,
+        default_value_t,
+        value_name = "WHEN"
+    )]
+    colour: Colour,
+    /// How many files to check at once [default: one for each processor]
+    #[arg(long, value_name = "N")]
+    threads: Option<usize>,
+}
+
+/// From where on a run fails.
+#[derive(Clone, Copy, Default, ValueEnum)]
+enum Level {
+    /// Errors
+    #[default]
+    Error,
+    /// Errors and warnings
+    Warning,
+    /// Errors, warnings, and margins that could not be checked
+    Unchecked,
+}
+
+impl Solve {
+    /// How to draw in a terminal.
+    pub(crate) fn style(&self) -> Style {
+        self.colour.style(self.out.is_some())
+    }
+
+    /// Solve every file named; also what to say on standard error, and the exit status.
+    pub(crate) fn run(&self, command: &'static str, paths: &[PathBuf]) -> (Run, Vec<String>, u8) {
+        let (files, mut notes) = inputs(paths);
+        let options = Options {
+            policy: self.policy.clone(),
+            build: self.build.clone(),
+            today: today(),
+            changes: true,
+        };
+        let results = self.each(&files, |file| outcome(file, &options));
+        let mut outcomes = Vec::with_capacity(results.len());
+        for result in results {
+            match result {
+                Ok(outcome) => outcomes.push(outcome),
+                Err(note) => notes.push(note),
+            }
+        }
+        if let Some(name) = &self.build
+            && !outcomes.is_empty()
+            && outcomes.iter().all(|o| o.report.builds.is_empty())
+        {
+            notes.push(format!("no build is named {name}"));
+        }
+        let fail_on = match self.fail_on {
+            Level::Error => FailOn::Error,
+            Level::Warning => FailOn::Warning,
+            Level::Unchecked => FailOn::Unchecked,
+        };
+        let run = Run::new(command, fail_on, outcomes);
+        let status = if notes.is_empty() {
+            run.exit_status()
+        } else {
+            NOT_RUN
+        };
+        (run, notes, status)
+    }
+
+    /// One result for each file, in the order of the files, whatever the number of threads. A pool
+    /// costs more to start than a file takes to check, so one file has none.
+    fn each<T: Send>(&self, files: &[Input], work: impl Fn(&Input) -> T + Sync) -> Vec<T> {
+        let one_by_one = || files.iter().map(&work).collect();
+        if files.len() < 2 || self.threads == Some(1) {
+            return one_by_one();
+        }
+        match rayon::ThreadPoolBuilder::new()
+            .num_threads(self.threads.unwrap_or(0))
+            .build()
+        {
+            Ok(pool) => pool.install(|| files.par_iter().map(&work).collect()),
+            Err(_) => one_by_one(),
+        }
+    }
+}
+
+fn outcome(file: &Input, options: &Options) -> Result<Outcome, String> {
+    let text = file
+        .read()
+        .map_err(|why| format!("cannot read {}: {why}", file.name))?;
+    let given = Given {
+        path: file.path.clone(),
+        text,
+    };
+    Ok(derate::check(&given, &file.path, &file.name, options))
+}
