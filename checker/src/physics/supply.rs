@@ -24,7 +24,9 @@ pub use reservoir::{
     stored_energy,
 };
 pub use sag::{Headroom, LowFrequencyLoad};
-pub use switch_on::{Closing, SoftStart, Surge, core_surge, soft_start, stuck_soft_start, switch_on};
+pub use switch_on::{
+    Closing, SoftStart, Surge, core_surge, soft_start, stuck_soft_start, switch_on,
+};
 pub use transformer::{
     Transformer, assumed_regulation, regulation_from_resistances, regulation_of_full_load,
 };

@@ -97,7 +97,11 @@ fn weights(
     weight: impl Fn(&Reservoir) -> Option<f64>,
 ) -> Option<(f64, Vec<f64>)> {
     let one: Vec<f64> = groups.iter().map(weight).collect::<Option<_>>()?;
-    let sum: f64 = groups.iter().zip(&one).map(|(g, w)| f64::from(g.count) * w).sum();
+    let sum: f64 = groups
+        .iter()
+        .zip(&one)
+        .map(|(g, w)| f64::from(g.count) * w)
+        .sum();
     let sound = one.iter().all(|w| *w > 0.0 && w.is_finite());
     (sound && sum > 0.0 && sum.is_finite()).then_some((sum, one))
 }
@@ -146,5 +150,89 @@ impl Bleeder {
         };
         let watts = across.0 * across.0 / resistance.0;
         (resistance.0 > 0.0 && watts.is_finite()).then_some(Watt(watts))
+    }
+}
+
+#[cfg(test)]
+mod tests {
+    use super::*;
+    use crate::physics::math::sin;
+
+    #[test]
+    fn draws_match_fine_sampling() {
+        for draw in [Draw::OneHalf, Draw::BothHalves] {
+            let count = 100_000;
+            let (mut mean, mut square) = (0.0, 0.0);
+            for n in 0..count {
+                let wave = sin(2.0 * PI * f64::from(n) / f64::from(count));
+                let i = if draw == Draw::OneHalf {
+                    wave.max(0.0)
+                } else {
+                    wave.abs()
+                };
+                mean += i / f64::from(count);
+                square += i * i / f64::from(count);
+            }
+            assert!((draw.mean(Amp(1.0)).0 - mean).abs() < 1e-9);
+            assert!((draw.ripple(Amp(1.0)).0 - (square - mean * mean).sqrt()).abs() < 1e-9);
+        }
+    }
+
+    #[test]
+    fn capacitors_share_by_esr_where_all_state_it_else_by_capacitance() {
+        let one = |count, uf: f64, esr: Option<f64>| Reservoir {
+            count,
+            capacitance: Farad(uf * 1e-6),
+            esr: esr.map(Ohm),
+        };
+        // By hand: 2 x 10 mF of 40 mohm and 1 x 1 mF of 0.2 ohm: 25 + 25 + 5 = 55 siemens.
+        let stated = [one(2, 10e3, Some(0.04)), one(1, 1e3, Some(0.2))];
+        let shares = ripple_shares(&stated).unwrap();
+        assert!((shares[0] - 25.0 / 55.0).abs() < 1e-12 && (shares[1] - 5.0 / 55.0).abs() < 1e-12);
+        let (c, esr) = in_parallel(&stated).unwrap();
+        assert!((c.0 - 21e-3).abs() < 1e-12 && (esr.0 - 1.0 / 55.0).abs() < 1e-12);
+        let silent = [one(2, 10e3, Some(0.04)), one(1, 1e3, None)];
+        let shares = ripple_shares(&silent).unwrap();
+        assert!((shares[0] - 10.0 / 21.0).abs() < 1e-12 && (shares[1] - 1.0 / 21.0).abs() < 1e-12);
+        assert_eq!(in_parallel(&silent).unwrap().1, Ohm(0.0));
+        assert_eq!(ripple_shares(&[]), None);
+        assert_eq!(in_parallel(&[one(1, 0.0, None)]), None);
+        assert_eq!(in_parallel(&[one(0, 1e3, None)]), None);
+    }
+
+    #[test]
+    fn nonsense_is_refused() {
+        let k = RippleMultipliers {
+            charging: 1.0,
+            audio: 1.0,
+        };
+        assert_eq!(reservoir_ripple(Amp(f64::NAN), Amp(1.0), k), None);
+        assert_eq!(
+            reservoir_ripple(Amp(1.0), Amp(1.0), RippleMultipliers { audio: 0.0, ..k }),
+            None
+        );
+        let time = |r, c, v, l| Bleeder::PerRail(Ohm(r)).discharge_time(Farad(c), Volt(v), Volt(l));
+        for bad in [0.0, -1.0, f64::NAN, f64::INFINITY] {
+            assert_eq!(time(bad, 1.0, 100.0, 60.0), None);
+            assert_eq!(time(1.0, bad, 100.0, 60.0), None);
+            assert_eq!(time(1.0, 1.0, bad, 60.0), None);
+            assert!(time(1.0, 1.0, 100.0, bad).is_none_or(|t| t == Second(0.0)));
+        }
+        assert_eq!(time(1.0, 1.0, 50.0, 60.0), Some(Second(0.0)));
+        assert_eq!(Bleeder::RailToRail(Ohm(0.0)).dissipation(Volt(50.0)), None);
+    }
+
+    #[test]
+    fn rail_to_rail_is_two_of_half_the_value() {
+        // By symmetry its middle is at 0 V: each half bleeds one rail.
+        let one = Bleeder::RailToRail(Ohm(9400.0));
+        let two = Bleeder::PerRail(Ohm(4700.0));
+        let time = |b: Bleeder| {
+            b.discharge_time(Farad(0.01), Volt(104.0), Volt(60.0))
+                .unwrap()
+        };
+        assert!((time(one) - time(two)).abs() < Second(1e-9));
+        let watts = |b: Bleeder| b.dissipation(Volt(52.0)).unwrap().0;
+        assert!((watts(one) - 2.0 * watts(two)).abs() < 1e-12);
     }
 }

@@ -150,7 +150,11 @@ pub fn soft_start(
     let mut square = 0.0;
     let mut inside = rail.floor;
     for _ in 0..half_cycles as usize {
-        let current = if slow.volts(inside) > BIASED.0 { idle } else { Amp::ZERO };
+        let current = if slow.volts(inside) > BIASED.0 {
+            idle
+        } else {
+            Amp::ZERO
+        };
         let next = charging_half_cycle(&slow, current, inside);
         (square, inside) = (square + next.square(PI), next.level);
     }
@@ -199,5 +203,133 @@ impl Rail {
     fn let_through(&self, square: f64) -> AmpSquaredSecond {
         let unit = self.crest / self.resistance;
         AmpSquaredSecond(square * unit * unit / self.omega)
+    }
+}
+
+#[cfg(test)]
+mod tests {
+    use super::*;
+    use crate::physics::supply::rail::RailParts;
+    use crate::physics::supply::rail::tests::{any_parts, parts, twin};
+    use proptest::prelude::*;
+
+    #[test]
+    fn a_full_reservoir_draws_no_surge() {
+        let rail = Rail::new(parts()).unwrap();
+        let surge = switch_on(&rail, Closing::Crest, rail.unloaded()).unwrap();
+        assert!(surge.peak.0 < 1e-6 && surge.total.0 < 1e-9, "{surge:?}");
+        for bad in [-1.0, f64::NAN, f64::INFINITY] {
+            assert!(switch_on(&rail, Closing::Zero, Volt(bad)).is_none());
+        }
+    }
+
+    #[test]
+    fn primary_surge_follows_the_turns() {
+        // By hand: two windings of a = 35·1.06/230 = 0.1613 carry 2·0.1613 = 0.3226 of the current.
+        let t = Transformer::new(Volt(230.0), Volt(35.0), 2, 300.0, 0.06).unwrap();
+        let one = AmpSquaredSecond(1.0);
+        let surge = Surge {
+            peak: Amp(1.0),
+            first: one,
+            total: one,
+        }
+        .primary(&t, 2);
+        let ratio = 2.0 * 35.0 * 1.06 / 230.0;
+        assert!((surge.peak.0 - ratio).abs() < 1e-12);
+        assert!((surge.total.0 - ratio * ratio).abs() < 1e-12);
+    }
+
+    #[test]
+    fn nonsense_is_refused() {
+        let rail = Rail::new(parts()).unwrap();
+        let soft = |r, i, t| soft_start(&rail, Ohm(r), 2, Amp(i), Second(t));
+        for bad in [-1.0, f64::NAN, f64::INFINITY] {
+            assert!(soft(bad, 0.1, 1.0).is_none());
+            assert!(soft(1.0, bad, 1.0).is_none());
+            assert!(soft(1.0, 0.1, bad).is_none());
+            assert!(core_surge(Volt(bad), Ohm(1.0), Hertz(50.0)).is_none());
+            assert!(core_surge(Volt(230.0), Ohm(bad), Hertz(50.0)).is_none());
+        }
+        assert!(soft(1.0, 0.1, 1e9).is_none());
+        assert!(core_surge(Volt(230.0), Ohm(0.0), Hertz(50.0)).is_none());
+    }
+
+    #[test]
+    fn a_soft_start_of_no_time_is_none() {
+        let rail = Rail::new(parts()).unwrap();
+        let found = soft_start(&rail, Ohm(2.0), 2, Amp(0.1), Second(0.0)).unwrap();
+        assert_eq!((found.reached, found.energy), (Volt(0.0), Joule(0.0)));
+        let direct = switch_on(&rail, Closing::Crest, Volt(0.0)).unwrap();
+        assert_eq!(found.second.peak, direct.peak);
+    }
+
+    #[test]
+    fn stuck_resistor_takes_what_the_steady_state_says() {
+        let rail = Rail::new(parts()).unwrap();
+        let watts = stuck_soft_start(&rail, Ohm(2.0), 2, Amp(0.2)).unwrap();
+        let rms = rail
+            .with_series(Ohm(2.0))
+            .unwrap()
+            .loaded(Amp(0.2))
+            .unwrap()
+            .charging_rms();
+        assert!((watts.0 - 4.0 * rms.0 * rms.0).abs() < 1e-12);
+        assert!(stuck_soft_start(&rail, Ohm(2.0), 2, Amp(1e3)).is_none());
+    }
+
+    proptest! {
+        #![proptest_config(ProptestConfig::with_cases(200))]
+
+        /// Peak and I²t of the charging surge equal small steps, closing at either moment.
+        #[test]
+        fn surge_equals_small_steps(parts in any_parts(), crest in any::<bool>(), start in 0.0f64..0.9) {
+            let rail = Rail::new(parts).unwrap();
+            prop_assume!(rail.x < 20.0);
+            let twin = twin(parts);
+            let (closing, from) = if crest { (Closing::Crest, 0.5 * PI) } else { (Closing::Zero, 0.0) };
+            let volts = start * rail.unloaded().0;
+            let found = switch_on(&rail, closing, Volt(volts)).unwrap();
+            let h = PI / twin.omega / 2000.0;
+            let (mut peak, mut first, mut total) = (0.0f64, 0.0, 0.0);
+            let begin = from / twin.omega;
+            let mut n = 0;
+            twin.march(&|_| 0.0, (begin, volts), h, 2000 * (20 + (10.0 * rail.x) as usize), |_, _, i| {
+                peak = peak.max(i);
+                total += i * i * h;
+                if n < 2000 {
+                    first += i * i * h;
+                }
+                n += 1;
+            });
+            // The sum of rectangles misses half a step of the jump when closing at a crest.
+            let edge = 0.5 * h * peak * peak * if crest { 1.0 } else { 0.0 };
+            let near = |a: f64, b: f64| (a - b).abs() < 2e-3 * total + edge;
+            prop_assert!((found.peak.0 - peak).abs() < 1e-3 * peak, "{found:?} {peak}");
+            prop_assert!(near(found.first.0, first), "{found:?} {first}");
+            prop_assert!(near(found.total.0, total), "{found:?} {total}");
+        }
+
+        /// A soft start equals small steps that decide on the idle current at the same moments.
+        #[test]
+        fn soft_start_equals_small_steps(
+            parts in any_parts(), extra in 0.1f64..20.0, idle in 0.0f64..0.5, half_cycles in 1usize..60,
+        ) {
+            let rail = Rail::new(parts).unwrap();
+            let bypass = (half_cycles as f64 + 0.5) * PI / rail.omega;
+            let found = soft_start(&rail, Ohm(extra), 2, Amp(idle), Second(bypass)).unwrap();
+            let slow = twin(RailParts { source: Ohm(parts.source.0 + extra), ..parts });
+            let h = PI / slow.omega / 2000.0;
+            let (mut inside, mut square) = (0.0, 0.0);
+            for n in 0..half_cycles {
+                let drawn = if inside > 10.0 { idle } else { 0.0 };
+                let begin = PI / slow.omega * n as f64;
+                inside = slow
+                    .march(&|_| drawn, (begin, inside), h, 2000, |_, _, i| square += i * i * h)
+                    .max(0.0);
+            }
+            let joules = 2.0 * extra * square;
+            prop_assert!((found.reached.0 - inside).abs() < 1e-4 * parts.no_load_crest.0, "{found:?} {inside}");
+            prop_assert!((found.energy.0 - joules).abs() < 1e-3 * joules + 1e-6, "{found:?} {joules}");
+        }
     }
 }

@@ -226,15 +226,9 @@ mod tests {
         let t = case_1_4();
         let ratio = t.turns_ratio();
         let primary = Ohm(0.245 / (2.0 * ratio * ratio));
-        let back = regulation_from_resistances(
-            Volt(230.0),
-            Volt(35.0),
-            2,
-            300.0,
-            primary,
-            Ohm(0.245),
-        )
-        .unwrap();
+        let back =
+            regulation_from_resistances(Volt(230.0), Volt(35.0), 2, 300.0, primary, Ohm(0.245))
+                .unwrap();
         assert!((back - 0.06).abs() < 1e-14, "{back}");
         assert!((t.referred(primary, 2).0 - 0.245).abs() < 1e-15);
     }
@@ -242,22 +236,31 @@ mod tests {
     #[test]
     fn senseless_plates_are_refused() {
         for bad in [0.0, -1.0, f64::NAN, f64::INFINITY] {
-            assert_eq!(Transformer::new(Volt(bad), Volt(35.0), 2, 300.0, 0.06), None);
-            assert_eq!(Transformer::new(Volt(230.0), Volt(bad), 2, 300.0, 0.06), None);
-            assert_eq!(Transformer::new(Volt(230.0), Volt(35.0), 2, bad, 0.06), None);
-            assert_eq!(Transformer::new(Volt(230.0), Volt(35.0), 2, 300.0, bad), None);
+            assert_eq!(
+                Transformer::new(Volt(bad), Volt(35.0), 2, 300.0, 0.06),
+                None
+            );
+            assert_eq!(
+                Transformer::new(Volt(230.0), Volt(bad), 2, 300.0, 0.06),
+                None
+            );
+            assert_eq!(
+                Transformer::new(Volt(230.0), Volt(35.0), 2, bad, 0.06),
+                None
+            );
+            assert_eq!(
+                Transformer::new(Volt(230.0), Volt(35.0), 2, 300.0, bad),
+                None
+            );
             assert_eq!(assumed_regulation(bad), None);
             assert_eq!(regulation_of_full_load(bad), None);
         }
-        assert_eq!(Transformer::new(Volt(230.0), Volt(35.0), 0, 300.0, 0.06), None);
-        let none = regulation_from_resistances(
-            Volt(230.0),
-            Volt(35.0),
-            2,
-            300.0,
-            Ohm(1e6),
-            Ohm(0.2),
+        assert_eq!(
+            Transformer::new(Volt(230.0), Volt(35.0), 0, 300.0, 0.06),
+            None
         );
+        let none =
+            regulation_from_resistances(Volt(230.0), Volt(35.0), 2, 300.0, Ohm(1e6), Ohm(0.2));
         assert_eq!(none, None);
     }
 
