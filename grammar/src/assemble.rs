@@ -4,109 +4,23 @@
 //! Every source line gets at most one problem, so that a half-typed line shows one mistake; a
 //! block without `}` gets one more.
 
-use std::ops::Range;
 use std::sync::Arc;
 
 use crate::line_index::LineIndex;
-use crate::parse::read_line;
 use crate::problem::{Problem, ProblemKind};
+use crate::read::{MAX_LINE_BYTES, content, split_line};
 use crate::row::{Part, Phrase, Row, read_row};
 use crate::span::Span;
-use crate::tree::{Block, Group, Item, Line, Piece, PieceKind, Token, TokenKind, Tree};
-
-/// A longer source line is not read: no hand writes one, and reading it would take memory many
-/// times its size.
-pub const MAX_LINE_BYTES: usize = 1 << 16;
+use crate::tree::{Block, Group, Item, Line, Piece, Token, TokenKind, Tree};
 
 /// So many problems are listed, then one that says there are more.
 pub const MAX_PROBLEMS: usize = 1000;
 
-pub(crate) const BYTE_ORDER_MARK: char = '\u{FEFF}';
-
 /// A tab stop, where indentations are compared.
 const TAB: usize = 4;
 
-/// Reads any text into a tree. Takes time linear in its length, and never fails: what cannot be
-/// read is a problem of the tree.
-#[must_use]
-pub fn parse(text: impl Into<Arc<str>>) -> Tree {
-    let text: Arc<str> = text.into();
-    let lines = LineIndex::new(text);
-    let mut marks = Vec::new();
-    read_lines(&lines, 0..lines.line_count(), &mut marks);
-    assemble(lines, marks)
-}
-
-impl Tree {
-    /// The tree of a text that differs little from this one: the same as [`parse`] gives, but
-    /// only the source lines between the first and the last difference are read anew.
-    #[must_use]
-    pub fn reparse(&self, text: impl Into<Arc<str>>) -> Self {
-        let text: Arc<str> = text.into();
-        let (head, tail) = common_ends(self.text.as_bytes(), text.as_bytes());
-        let old_tail = self.text.len() - tail;
-        let new_tail = text.len() - tail;
-        let lines = LineIndex::new(text);
-
-        // A line is kept if it and at least the first byte of its line end lie in the common
-        // head, or it and at least the last byte of the line end before it in the common tail.
-        let first = lines.line_of(head);
-        let kept_until = lines.line_span(first).start;
-        let after = lines.line_of(new_tail) + 1;
-        let kept_from = lines.line_start(after) - new_tail + old_tail;
-
-        let (kept_head, rest) = split_at(&self.marks, kept_until);
-        let (_, kept_tail) = split_at(rest, kept_from);
-        let mut marks = Vec::with_capacity(self.marks.len() + 16);
-        marks.extend_from_slice(kept_head);
-        read_lines(&lines, first..after, &mut marks);
-        marks.extend(kept_tail.iter().map(|mark| Piece {
-            kind: mark.kind,
-            span: Span::new(
-                mark.span.start - old_tail + new_tail,
-                mark.span.end - old_tail + new_tail,
-            ),
-        }));
-        assemble(lines, marks)
-    }
-}
-
-/// Lengths of what two texts share at their beginnings, and at the ends of what is left.
-fn common_ends(old: &[u8], new: &[u8]) -> (usize, usize) {
-    let head = old.iter().zip(new).take_while(|(a, b)| a == b).count();
-    let left = old.len().min(new.len()) - head;
-    let tail = old.iter().rev().zip(new.iter().rev()).take(left);
-    (head, tail.take_while(|(a, b)| a == b).count())
-}
-
-/// The pieces that begin before `offset`, and the others.
-fn split_at(marks: &[Piece], offset: usize) -> (&[Piece], &[Piece]) {
-    marks.split_at(marks.partition_point(|mark| mark.span.start < offset))
-}
-
-fn read_lines(lines: &LineIndex, numbers: Range<usize>, marks: &mut Vec<Piece>) {
-    for number in numbers {
-        let span = content(lines, number);
-        if span.len() <= MAX_LINE_BYTES {
-            read_line(span.slice(lines.text()), span.start, marks);
-        } else {
-            marks.push(Piece {
-                kind: PieceKind::Unread,
-                span,
-            });
-        }
-    }
-}
-
-/// The bytes of a source line without its line end and without a byte-order mark.
-fn content(lines: &LineIndex, number: usize) -> Span {
-    let span = lines.line_span(number);
-    let bom = number == 0 && lines.text().starts_with(BYTE_ORDER_MARK);
-    let skipped = if bom { BYTE_ORDER_MARK.len_utf8() } else { 0 };
-    Span::new(span.start + skipped, span.end)
-}
-
-fn assemble(lines: LineIndex, marks: Vec<Piece>) -> Tree {
+/// Puts the pieces of a text together.
+pub(crate) fn assemble(lines: LineIndex, marks: Vec<Piece>) -> Tree {
     let text = Arc::clone(lines.text());
     let mut assembler = Assembler::new(&text, lines.line_count());
     let mut rest = marks.as_slice();
@@ -132,12 +46,6 @@ fn assemble(lines: LineIndex, marks: Vec<Piece>) -> Tree {
         faulty,
         text,
     }
-}
-
-/// The pieces up to the end of a line, and the others.
-pub(crate) fn split_line(marks: &[Piece], end: usize) -> (&[Piece], &[Piece]) {
-    let count = marks.iter().take_while(|mark| mark.span.end <= end).count();
-    marks.split_at(count)
 }
 
 struct Assembler<'t> {
@@ -226,38 +134,50 @@ impl<'t> Assembler<'t> {
         if continues && let Some(Part::Phrase(phrase)) = parts.next() {
             self.continue_statement(phrase, row.comment.filter(|_| parts.peek().is_none()));
         }
-        let mut opened_here = false;
-        let mut closed_here = false;
+        let mut opened = false;
+        let mut closed = false;
         while let Some(part) = parts.next() {
-            if closed_here {
+            if closed {
                 self.after_brace(part.span());
             }
             match part {
-                Part::Phrase(phrase) => {
-                    let open = parts.next_if(|next| matches!(next, Part::Open(_)));
-                    let Some(Part::Open(open)) = open else {
+                Part::Phrase(phrase) => match parts.next_if(|next| matches!(next, Part::Open(_))) {
+                    Some(open) => {
+                        self.open(phrase, open.span(), column, opened, &mut parts);
+                        opened = true;
+                    }
+                    None => {
                         let comment = row.comment.filter(|_| parts.peek().is_none());
                         let column = self.column(start, phrase.span.start);
                         self.begin_statement(phrase, column, comment);
-                        continue;
-                    };
-                    if self.block.is_some() && (column > 0 || opened_here) {
-                        self.nested(phrase, open, column);
-                        if !leave_nested(&mut parts) {
-                            self.skip = Skip::Nested(column);
-                        }
-                    } else {
-                        self.header(phrase, open, column);
-                        opened_here = true;
                     }
-                }
+                },
                 Part::Open(open) => self.lone_open(open, column),
                 Part::Close(close) => {
                     self.close(close);
-                    opened_here = false;
-                    closed_here = true;
+                    opened = false;
+                    closed = true;
                 }
             }
+        }
+    }
+
+    /// A phrase and `{`: the header of a block, or one inside the block `opened` in this line or
+    /// before, whose `rest` is passed over.
+    fn open(
+        &mut self,
+        phrase: Phrase,
+        open: Span,
+        column: usize,
+        opened: bool,
+        rest: &mut impl Iterator<Item = Part>,
+    ) {
+        if self.block.is_none() || (column == 0 && !opened) {
+            return self.header(phrase, open, column);
+        }
+        self.nested(phrase, open, column);
+        if !leave_nested(rest) {
+            self.skip = Skip::Nested(column);
         }
     }
 

@@ -7,8 +7,8 @@
 use std::collections::BTreeMap;
 use std::ops::Range;
 
-use crate::assemble::{BYTE_ORDER_MARK, parse, split_line};
 use crate::line_index::LineIndex;
+use crate::read::{BYTE_ORDER_MARK, parse, split_line};
 use crate::span::Span;
 use crate::tree::{Block, Group, Item, Line, Piece, PieceKind, Tree};
 

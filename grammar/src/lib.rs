@@ -12,6 +12,7 @@
 //! | file | holds |
 //! |---|---|
 //! | `ampspec.pest`, `parse` | one source line to pieces: tokens, commas, braces, a comment |
+//! | `read` | a text line by line, all of it or what an edit changed |
 //! | `row` | the pieces of a line to groups, and what is wrong with them |
 //! | `assemble` | lines to statements and blocks, and what is wrong with their form |
 //! | `tree`, `problem`, `span` | what comes out |
@@ -25,14 +26,16 @@ mod layout;
 mod line_index;
 mod parse;
 mod problem;
+mod read;
 mod row;
 mod span;
 mod tree;
 
-pub use assemble::{MAX_LINE_BYTES, MAX_PROBLEMS, parse};
+pub use assemble::MAX_PROBLEMS;
 pub use edit::{Edit, EditError, apply};
 pub use layout::{AsWritten, Spelling, layout};
 pub use line_index::{ColumnUnit, LineIndex, Position};
 pub use problem::{Problem, ProblemKind};
+pub use read::{MAX_LINE_BYTES, parse};
 pub use span::Span;
 pub use tree::{Block, Group, Item, Line, Piece, PieceKind, Token, TokenKind, Tree};

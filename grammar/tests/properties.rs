@@ -1,11 +1,14 @@
 //! What holds for every text: nothing is lost, nothing panics, layout keeps the meaning.
 
+use std::io;
+use std::path::PathBuf;
+
 use ampspec_grammar::{AsWritten, Item, PieceKind, ProblemKind, Tree, layout, parse};
 use proptest::prelude::*;
 
 const SAMPLE: &str = include_str!("sample.ampspec");
 
-const CASES: u32 = 20000;
+const CASES: u32 = 1000;
 
 /// Continuations, comments and blocks of every form.
 const FORMS: &str = "\
@@ -247,6 +250,42 @@ fn typing_a_line_anew_shows_one_problem_at_a_time() {
             for (end, _) in line.char_indices() {
                 check_typing(&whole.reparse(format!("{before}{}{after}", &line[..end])));
             }
+        }
+    }
+}
+
+/// The demonstration kits, which users read as examples.
+fn kits() -> io::Result<Vec<(PathBuf, String)>> {
+    let mut folders = vec![PathBuf::from(env!("CARGO_MANIFEST_DIR")).join("../tests/kits")];
+    let mut kits = Vec::new();
+    while let Some(folder) = folders.pop() {
+        for entry in std::fs::read_dir(folder)? {
+            let path = entry?.path();
+            if path.is_dir() {
+                folders.push(path);
+            } else if path.extension().is_some_and(|e| e == "ampspec") {
+                let text = std::fs::read_to_string(&path)?;
+                kits.push((path, text));
+            }
+        }
+    }
+    Ok(kits)
+}
+
+#[test]
+fn the_kits_are_well_formed() {
+    for (path, text) in kits().unwrap() {
+        assert_eq!(parse(text).problems, [], "{}", path.display());
+    }
+}
+
+#[test]
+fn typing_a_kit_shows_one_problem_at_a_time() {
+    for (_, text) in kits().unwrap() {
+        let mut tree = parse("");
+        for (end, _) in text.char_indices() {
+            tree = tree.reparse(&text[..end]);
+            check_typing(&tree);
         }
     }
 }
