@@ -7,10 +7,13 @@ pub mod finding;
 pub mod physics;
 pub mod policy;
 pub mod quantity;
+pub mod render;
 pub mod rule;
 pub mod rules;
 pub mod source;
 pub mod tables;
+#[cfg(test)]
+pub(crate) mod testing;
 pub mod vocabulary;
 pub mod waiver;
 

@@ -70,6 +70,15 @@ pub enum Series {
     TwoDigits,
 }
 
+/// A kit made to trip a rule: replacements of text in a demo kit.
+#[derive(Clone, Copy, Debug, PartialEq, Eq)]
+pub struct Example {
+    /// The demo kit it starts from, `tern60`.
+    pub kit: &'static str,
+    /// What is replaced by what. The replacement is the mistake.
+    pub edits: &'static [(&'static str, &'static str)],
+}
+
 /// One rule. The check itself is added by [`crate::rules`], so that whoever only describes rules
 /// needs no physics.
 #[derive(Clone, Copy, Debug)]
@@ -100,6 +109,8 @@ pub struct Rule {
     pub allow_source: &'static str,
     /// What can be edited to clear it, best first.
     pub remedies: &'static [Remedy],
+    /// A kit that it finds fault with.
+    pub example: Example,
 }
 
 impl Rule {
@@ -181,6 +192,7 @@ mod tests {
         allow: Allow::Percent(90.0),
         allow_source: "",
         remedies: &[],
+        example: Example { kit: "", edits: &[] },
     };
 
     #[test]

@@ -41,7 +41,8 @@ macro_rules! rule {
         sense: $sense:ident,
         unit: $unit:literal,
         allow: $allow:expr, $allow_source:literal,
-        remedies: [$($remedy:expr),* $(,)?] $(,)?
+        remedies: [$($remedy:expr),* $(,)?],
+        example: $kit:literal, [$(($old:literal, $new:literal)),+ $(,)?] $(,)?
     ) => {
         $(#[doc = $why])+
         pub const RULE: crate::rule::Rule = crate::rule::Rule {
@@ -58,6 +59,7 @@ macro_rules! rule {
             allow: $allow,
             allow_source: $allow_source,
             remedies: &[$($remedy),*],
+            example: crate::rule::Example { kit: $kit, edits: &[$(($old, $new)),+] },
         };
     };
 }
@@ -90,4 +92,47 @@ pub fn all() -> impl Iterator<Item = &'static Rule> {
 #[must_use]
 pub fn find(name: &str) -> Option<&'static Rule> {
     all().find(|r| r.name == name)
+}
+
+#[cfg(test)]
+mod tests {
+    use super::*;
+    use crate::finding::Verdict;
+    use crate::testing;
+
+    /// Every rule finds fault with its own example, and not with the kit the example starts from.
+    #[test]
+    fn every_rule_trips_on_its_example_only() {
+        for registered in ALL {
+            let rule = registered.rule;
+            let kit = testing::kit(rule.example.kit);
+            let fires = |text: &str| {
+                let report = testing::report(text);
+                let margins = report.builds.iter().flat_map(|b| &b.margins);
+                margins.filter(|m| m.rule == rule.name).any(|m| matches!(m.verdict, Verdict::Over | Verdict::Thin))
+                    || report.findings.iter().any(|f| f.rule == rule.name)
+            };
+            assert!(!fires(&kit), "{} fires on the sound kit {}", rule.name, rule.example.kit);
+            assert!(fires(&testing::edited(&kit, rule.example.edits)), "{} does not fire on its example", rule.name);
+        }
+    }
+
+    #[test]
+    fn names_are_unique_and_every_record_is_whole() {
+        for (at, registered) in ALL.iter().enumerate() {
+            let r = registered.rule;
+            assert!(!ALL[..at].iter().any(|other| other.rule.name == r.name), "{} twice", r.name);
+            assert!(r.name.contains('.') && r.why.len() > 80 && !r.compares.is_empty() && !r.source.is_empty(), "{}", r.name);
+            for key in r.reads {
+                let (block, name) = key.split_once('.').unwrap();
+                let known = crate::vocabulary::block_kind(block).is_some_and(|b| b.key(name).is_some());
+                assert!(known, "{} reads unknown key {key}", r.name);
+            }
+            for remedy in r.remedies {
+                let (block, name) = remedy.key.split_once('.').unwrap();
+                let key = crate::vocabulary::block_kind(block).and_then(|b| b.key(name));
+                assert!(key.is_some_and(|k| k.shape().item(remedy.slot).is_some()), "{}: remedy {}", r.name, remedy.key);
+            }
+        }
+    }
 }

@@ -94,7 +94,7 @@ pub const BLOCKS: &[Block] = &[
         key("gate-source", "V at A ,...", "-", "transfer points, gate voltage against drain current").symbol("VGS"),
         key("gate-drift", "mV/K at A ,...", "-", "temperature coefficient of the gate voltage").symbol("dVGS/dT"),
         key("on-resistance", "ohm", "-", "at 25 degC").symbol("RDS(on)").band("ohm", 1e-4, 20.0),
-        key("second-breakdown", "%/K", "as thermal", "derating of the segments steeper than -1.05").band("%/K", 0.0, 2.0),
+        key("second-breakdown", "%/K", "as thermal", "derating of the segments steeper than -1.05").band("%/K", 0.0, 0.02),
         key("current", "A peak:A?", "-", "continuous collector or drain current, and the pulsed one")
             .symbol("IC, ID; ICM, IDM")
             .band("A", 10e-3, 400.0),
@@ -161,7 +161,7 @@ pub const BLOCKS: &[Block] = &[
         key("secondary", "nx? V {centre-tapped-total}?", "req", "r.m.s. of each winding at rated load on the matching tap")
             .band("V", 6.0, 130.0),
         key("rating", "VA per{transformer winding}?", "req", "per transformer assumed").band("VA", 5.0, 5000.0),
-        key("regulation", "% of{full-load no-load}", "assumed by VA", "no-load less full-load, over this").band("%", 0.5, 40.0),
+        key("regulation", "% of{full-load no-load}", "assumed by VA", "no-load less full-load, over this").band("%", 0.005, 0.4),
         key("resistance", "primary:ohm secondary:ohm", "from regulation", "of the windings, cold"),
         key("thermal-fuse", "degC", "-", "in the winding").band("degC", 70.0, 200.0),
     ]),

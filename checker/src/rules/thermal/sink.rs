@@ -25,6 +25,7 @@ rule! {
     remedies: [
         Remedy { key: "heatsink.resistance", slot: "K/W", series: Series::Heatsink, up: false },
     ],
+    example: "tern60", [("resistance         0.45 K/W at 50 K", "resistance         1.2 K/W at 50 K")],
 }
 
 /// One margin for the build's heatsink: the load that heats it most.

@@ -27,6 +27,7 @@ rule! {
         Remedy { key: "device.vceo", slot: "V", series: Series::TwoDigits, up: true },
         Remedy { key: "transformer.secondary", slot: "V", series: Series::SecondaryVolts, up: false },
     ],
+    example: "tern60", [("vceo               240 V", "vceo               90 V")],
 }
 
 /// One margin for each declared output device.

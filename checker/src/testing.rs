@@ -1,0 +1,66 @@
+//! Kits for the tests of rules: a demo kit, edited, checked, and looked at.
+
+use std::path::{Path, PathBuf};
+use std::sync::Arc;
+
+use crate::finding::{Margin, Report, Verdict};
+use crate::source::{Files, normal};
+
+/// Demo kits and their parts from the source tree, and one text that stands for a file beside them.
+struct Beside<'a>(&'a str);
+
+fn kits() -> PathBuf {
+    normal(&Path::new(env!("CARGO_MANIFEST_DIR")).join("../tests/kits"))
+}
+
+impl Files for Beside<'_> {
+    fn read(&self, path: &Path) -> Result<Arc<str>, String> {
+        if path.ends_with("under-test.ampspec") {
+            return Ok(self.0.into());
+        }
+        std::fs::read_to_string(path).map(Into::into).map_err(|e| e.to_string())
+    }
+    fn resolve(&self, path: &Path) -> PathBuf {
+        normal(path)
+    }
+}
+
+/// The text of a demo kit.
+pub(crate) fn kit(name: &str) -> String {
+    std::fs::read_to_string(kits().join(name).with_extension("ampspec")).unwrap()
+}
+
+/// The text with replacements made; each must be found.
+pub(crate) fn edited(text: &str, edits: &[(&str, &str)]) -> String {
+    let mut out = text.to_owned();
+    for (old, new) in edits {
+        assert!(out.contains(old), "`{old}` is not in the kit");
+        out = out.replace(old, new);
+    }
+    out
+}
+
+/// The demo kit `tern60`, edited.
+pub(crate) fn tern60(edits: &[(&str, &str)]) -> String {
+    edited(&kit("tern60"), edits)
+}
+
+/// Check a text as a file beside the demo kits.
+pub(crate) fn report(text: &str) -> Report {
+    let options = crate::Options { today: "2026-06-01".to_owned(), ..crate::Options::default() };
+    crate::check(&Beside(text), &kits().join("under-test.ampspec"), "under-test.ampspec", &options).unwrap().report
+}
+
+/// The margin of a rule for a part, in the first build, without alternate.
+pub(crate) fn margin(text: &str, rule: &str, part: &str) -> Margin {
+    let report = report(text);
+    let build = report.builds.first().expect("a build");
+    let found = build.margins.iter().find(|m| m.rule == rule && m.part.name == part);
+    let known: Vec<_> = build.margins.iter().filter(|m| m.rule == rule).map(|m| &m.part.name).collect();
+    found.unwrap_or_else(|| panic!("no margin of {rule} for {part}; there are {known:?}; findings {:#?}", report.findings)).clone()
+}
+
+/// Verdict of a rule for a part in the first build.
+pub(crate) fn verdict(text: &str, rule: &str, part: &str) -> Verdict {
+    margin(text, rule, part).verdict
+}
