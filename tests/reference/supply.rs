@@ -5,6 +5,8 @@
 //! 341, an ideal rectified sine behind a resistance Rs into a reservoir. The tables are the exact
 //! solution of that model, not readings of its charts.
 
+#![allow(clippy::unwrap_used, reason = "a missing value fails the test")]
+
 use derate::physics::math::{PI, TAU, sin, tan};
 use derate::physics::supply::{
     Bleeder, Closing, Draw, Rail, RailParts, Rectifier, RippleMultipliers, Transformer,

@@ -142,15 +142,24 @@ impl Conduction {
     }
 
     /// The angle at which s falls to zero, or `limit` if it is still positive there.
+    ///
+    /// There ds/dθ = cos θ + j/x is below zero, so it lies beyond π/2; the mirror image of the start
+    /// is close to it.
     pub(super) fn turn_off(&self, limit: f64) -> f64 {
         if self.current(limit).0 >= 0.0 {
             return limit;
         }
+        let positive = self.start.max(FRAC_PI_2);
+        let guess = if self.start < FRAC_PI_2 {
+            PI - self.start
+        } else {
+            limit
+        };
         bracketed_root(
             |angle| self.current(angle),
-            self.greatest(limit),
+            positive,
             limit,
-            limit,
+            guess.min(limit),
         )
     }
 }
@@ -158,7 +167,8 @@ impl Conduction {
 /// The angle after `from` (within this half-cycle) at which the source overtakes a level that falls
 /// by j/x per radian from `level`; `None` if it does not. The source must start below the level.
 ///
-/// The gap sin θ - y is concave, so Newton from the left never overshoots the first crossing.
+/// The gap sin θ - y is concave, so Newton from the left never overshoots the first crossing, and from
+/// the right it does so once. It starts where the source would meet the level if that did not fall.
 pub(super) fn turn_on(x: f64, j: f64, from: f64, level: f64) -> Option<f64> {
     let fall = j / x;
     let gap = |angle: f64| {
@@ -169,12 +179,16 @@ pub(super) fn turn_on(x: f64, j: f64, from: f64, level: f64) -> Option<f64> {
     if greatest <= from || gap(greatest).0 <= 0.0 {
         return None;
     }
-    let mut at = from;
+    let mut at = if level < 1.0 && from < FRAC_PI_2 {
+        asin(level).max(from)
+    } else {
+        from
+    };
     for _ in 0..MAX_STEPS {
         let (value, slope) = gap(at);
         let step = -value / slope;
         at += step;
-        if step <= 1e-8 {
+        if step.abs() <= 1e-8 {
             break;
         }
     }

@@ -28,7 +28,7 @@ const GAIN: f64 = 1e-7;
 
 /// How exactly a level is settled, as the square of the last change: while comparing phases, and
 /// for the result.
-const ROUGH: f64 = 1e-8;
+const ROUGH: f64 = 1e-6;
 const EXACT: f64 = 1e-13;
 
 /// Longest step of sampling within a piece, radians of the mains or of the signal, and how far above
@@ -96,11 +96,14 @@ impl Rail {
     ) -> Option<Headroom> {
         let march = March::new(self, load)?;
         let (phases, step) = march.phases();
-        let mut level = 1.0;
+        let (mut level, mut drift) = (1.0, 0.0);
         let mut scan = [(f64::INFINITY, level); MOST_PHASES];
         for (n, point) in scan.iter_mut().enumerate().take(phases) {
-            level = march.settle(step * n as f64, level, ROUGH)?;
-            *point = (march.least(step * n as f64, level, &needed)?.least.0, level);
+            let phase = step * n as f64;
+            let next = march.settle(phase, level + drift, ROUGH)?;
+            drift = if n == 0 { 0.0 } else { next - level };
+            level = next;
+            *point = (march.least(phase, level, &needed)?.least.0, level);
         }
         let lowest = scan
             .iter()
