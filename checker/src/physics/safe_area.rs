@@ -420,26 +420,56 @@ impl Allowance {
         }
     }
 
+    /// Position, use and limit of the worst point.
+    ///
+    /// A share is costly to solve, so each limit is first tried with even sharing: the greatest share
+    /// times that is more than it can come to. The most promising limit is solved first, and then
+    /// only those that could still beat it.
     fn worst_position(&self, locus: &Locus<'_>) -> (f64, f64, Limit) {
-        let mut best = (1.0, 0.0, Limit::Current);
         let highest = locus.highest_with_volts();
-        for bound in &self.bounds {
-            let (from, to) = if bound.limit == Limit::Current {
-                (0.0, 1.0)
+        let range = |bound: &Bound| {
+            let to = if bound.from.is_finite() {
+                locus.position(bound.from).min(highest)
             } else {
-                (
-                    locus.position(bound.to),
-                    locus.position(bound.from).min(highest),
-                )
+                1.0
             };
+            (locus.position(bound.to), to)
+        };
+        let if_even = |bound: &Bound| {
+            let (from, to) = range(bound);
             if from >= to {
-                continue;
+                return 0.0;
+            }
+            let t = locus.worst_if_even(bound.s, from, to);
+            bound.used(locus.volts(t), locus.even_part(t))
+        };
+        let solved = |bound: &Bound| {
+            let (from, to) = range(bound);
+            if from >= to {
+                return (1.0, 0.0, bound.limit);
             }
             let t = locus.worst(bound.s, from, to);
             let (volts, amps) = locus.at(t);
-            let used = bound.used(volts, amps);
-            if used > best.1 {
-                best = (t, used, bound.limit);
+            (t, bound.used(volts, amps), bound.limit)
+        };
+        // What each limit comes to with even sharing; beyond the array no limit is ruled out.
+        let mut even = [f64::INFINITY; 16];
+        for (slot, bound) in even.iter_mut().zip(&self.bounds) {
+            *slot = if_even(bound);
+        }
+        let known = even.iter().zip(&self.bounds);
+        let promising = known
+            .max_by(|a, b| a.0.total_cmp(b.0))
+            .map(|(_, bound)| solved(bound));
+        let mut best = promising.unwrap_or((1.0, 0.0, Limit::Current));
+        let share = locus.greatest_share();
+        for (index, bound) in self.bounds.iter().enumerate() {
+            let most = even.get(index).map_or(f64::INFINITY, |used| used * share);
+            if most > best.1 {
+                let found = solved(bound);
+                if found.1 > best.1 {
+                    best = found;
+                }
             }
         }
         best
@@ -464,21 +494,33 @@ impl Allowance {
         marks.retain(|v| (0.0..=to.0).contains(v));
         marks.sort_by(f64::total_cmp);
         marks.dedup();
-        let mut best: Option<(f64, f64, Limit)> = None;
+        let mut scans = Vec::new();
         let (mut peak, mut beyond, mut above) = (0.0_f64, 0.0_f64, false);
         for pair in marks.windows(2) {
             let [lo, hi] = *pair else { continue };
-            let current = highest(|v| line(Volt(v)).0, lo, hi)?.1.max(0.0);
+            let samples = sample(|v| line(Volt(v)).0, lo, hi)?;
+            let current = samples.iter().map(|s| s.1).fold(0.0, f64::max);
             peak = peak.max(current);
             if lo >= self.end {
                 beyond = beyond.max(current);
             }
             above |= lo >= self.breakdown && current > 0.0;
             for bound in self.bounds.iter().filter(|b| b.from <= lo && b.to >= hi) {
-                let (v, used) = highest(|v| bound.used(v, line(Volt(v)).0), lo, hi)?;
+                scans.push((*bound, samples.map(|(v, i)| (v, bound.used(v, i)))));
+            }
+        }
+        let mut best: Option<(f64, f64, Limit)> = None;
+        for (bound, samples) in &scans {
+            for &(v, used) in samples {
                 if best.is_none_or(|b| used > b.1) {
                     best = Some((v, used, bound.limit));
                 }
+            }
+        }
+        for (bound, samples) in &scans {
+            let used = |v: f64| bound.used(v, line(Volt(v)).0);
+            if let Some((v, value)) = narrowed(used, samples, best.map_or(0.0, |b| b.1)) {
+                best = Some((v, value, bound.limit));
             }
         }
         let (v, used, limit) = best?;
@@ -574,29 +616,43 @@ fn thermal_factor(rating: Rating, case: Celsius) -> Result<f64, Refused> {
     Ok(headroom / (rating.junction - STATED_AT))
 }
 
-/// Where a function that is smooth between `lo` and `hi` is greatest: eight steps, then the best
-/// bracket narrowed. `None` if it is not finite.
-fn highest(f: impl Fn(f64) -> f64, lo: f64, hi: f64) -> Option<(f64, f64)> {
-    const STEPS: u32 = 8;
-    let step = (hi - lo) / f64::from(STEPS);
-    let mut best = (lo, f(lo));
-    for k in 0..=STEPS {
-        let x = if k == STEPS {
-            hi
-        } else {
-            lo + step * f64::from(k)
+/// A smooth function on nine points from `lo` to `hi`. `None` if it is not finite.
+fn sample(f: impl Fn(f64) -> f64, lo: f64, hi: f64) -> Option<[(f64, f64); 9]> {
+    let mut samples = [(0.0, 0.0); 9];
+    for (k, slot) in samples.iter_mut().enumerate() {
+        let weight = k as f64 / 8.0;
+        let x = lo * (1.0 - weight) + hi * weight;
+        *slot = (x, f(x));
+    }
+    samples.iter().all(|s| s.1.is_finite()).then_some(samples)
+}
+
+/// The greatest value of a sampled function between its samples, if it beats `best`. Each local
+/// maximum is narrowed whose neighbours let it rise so far: by twice their difference at most.
+fn narrowed(f: impl Fn(f64) -> f64, samples: &[(f64, f64); 9], best: f64) -> Option<(f64, f64)> {
+    let mut found: Option<(f64, f64)> = None;
+    for window in samples.windows(3) {
+        let [left, middle, right] = window else {
+            continue;
         };
-        let value = f(x);
-        if !value.is_finite() {
-            return None;
-        }
-        if value > best.1 {
-            best = (x, value);
+        let rise = 2.0 * (2.0 * middle.1 - left.1.min(right.1) - middle.1);
+        let crest = middle.1 >= left.1 && middle.1 >= right.1;
+        // At either end of the samples the maximum may lie in the first or the last step.
+        let edge = (left.0 <= samples[0].0 && left.1 >= middle.1)
+            || (right.0 >= samples[8].0 && right.1 >= middle.1);
+        let reach = if edge {
+            left.1.max(right.1) + (left.1 - right.1).abs()
+        } else {
+            middle.1 + rise
+        };
+        if (crest || edge) && reach > found.map_or(best, |f| f.1) {
+            let top = math::maximum(&f, left.0, right.0, 1e-9 * (right.0 - left.0));
+            if top.1 > found.map_or(best, |f| f.1) {
+                found = Some(top);
+            }
         }
     }
-    let (left, right) = ((best.0 - step).max(lo), (best.0 + step).min(hi));
-    let narrowed = math::maximum(&f, left, right, 1e-9 * (hi - lo).max(1e-9));
-    Some(if narrowed.1 > best.1 { narrowed } else { best })
+    found
 }
 
 /// A limit on the current of one device against its v_CE: straight lines through stated points,
@@ -713,7 +769,8 @@ impl LimitLine {
     }
 }
 
-/// What the most loaded device carries when a limiter lets `sensed` through the least loaded one.
+/// What the most loaded device carries when a limiter senses one of the others and holds it to the
+/// line.
 /// `None` where no finite current answers.
 #[must_use]
 pub fn most_loaded_on_line(line: &LimitLine, bank: &Bank, volts: Volt) -> Option<Amp> {
@@ -1108,6 +1165,38 @@ mod tests {
             let _ = Curve::new(&[(Volt(v), Amp(i)), (Volt(a), Amp(b))]);
             let _ = LimitLine::new(&[(Volt(v), Amp(i)), (Volt(a), Amp(b))]);
         }
+    }
+
+    #[test]
+    fn a_curve_of_many_points_is_walked_to_its_end() {
+        // i = 400/v² in 60 segments gives what two points give.
+        let power_law = |n: u32| {
+            let points: Vec<_> = (0..=n)
+                .map(|k| 10.0 * 10f64.powf(f64::from(k) / f64::from(n)))
+                .map(|v| (v, 400.0 / (v * v)))
+                .collect();
+            curve(&points)
+        };
+        let bank = Bank::bipolar(3, Ohm(0.22), 0.05, Volt(0.02), Volt(0.0257)).unwrap();
+        let locus = Locus::new(
+            &bank,
+            Volt(55.0),
+            Volt(45.0),
+            Impedance::polar(Ohm(4.0), 0.8),
+        )
+        .unwrap();
+        let used = |n: u32| {
+            Allowance::dc(
+                rating(),
+                Some(&power_law(n)),
+                Celsius(60.0),
+                SecondBreakdown::AsThermal,
+            )
+            .unwrap()
+            .usage(&locus)
+            .used
+        };
+        assert!((used(60) / used(1) - 1.0).abs() < 1e-9);
     }
 
     #[test]

@@ -124,6 +124,12 @@ impl<'a> Locus<'a> {
         )
     }
 
+    /// v_CE at position t of the first quarter.
+    pub(crate) fn volts(&self, t: f64) -> f64 {
+        let (sin, cos) = rational(t);
+        self.rail - self.a * sin + self.b * cos
+    }
+
     /// v_CE and current of the most loaded device at a phase β of the whole half-cycle, 0 to π.
     pub(crate) fn at_phase(&self, beta_rad: f64) -> (f64, f64) {
         let (sin, cos) = math::sin_cos(beta_rad);
@@ -159,24 +165,26 @@ impl<'a> Locus<'a> {
     /// current).
     ///
     /// The slope of ln(i·v^s) vanishes where e·v·cos β = s·sin β·(A·cos β + B·sin β), e the
-    /// elasticity of the device's current. Divided by cos β this is a falling function against a
-    /// rising one, so there is one stationary point and it is a maximum; an e that drifts with the
-    /// current does so too slowly to add another (checked by brute force in the tests). With B = 0
-    /// the factor cos β is common, and β = 90° a false root, so it is divided out.
+    /// elasticity of the device's current. For a given e there is one such point (see `stationary`),
+    /// so on part of the quarter it is that point or the nearer end. As e drifts with the current
+    /// only slowly, taking it from the last point and solving again closes in by a factor of ten or
+    /// more each time; at a kink of a transfer curve it may not, and the slope itself is solved.
     pub(crate) fn worst(&self, s: f64, from: f64, to: f64) -> f64 {
+        const ROUNDS: usize = 12;
         if s <= 0.0 || to <= from {
             return to.max(from);
         }
-        let slope = |t: f64| {
-            let (sin, cos) = rational(t);
-            let volts = self.rail - self.a * sin + self.b * cos;
-            let elasticity = self.bank.split(self.peak * sin).elasticity;
-            if self.b > 0.0 {
-                elasticity * volts * cos - s * sin * (self.a * cos + self.b * sin)
-            } else {
-                elasticity * volts - s * sin * self.a
+        let mut elasticity = 1.0;
+        for _ in 0..ROUNDS {
+            let t = self.stationary(s, elasticity).clamp(from, to);
+            let here = self.elasticity_at(t);
+            // An error of 1e-6 moves t by less than that, and the value by its square.
+            if (here - elasticity).abs() < 1e-6 {
+                return t;
             }
-        };
+            elasticity = here;
+        }
+        let slope = |t: f64| self.slope(t, s, self.elasticity_at(t)).0;
         if slope(to) >= 0.0 {
             return to;
         }
@@ -184,6 +192,80 @@ impl<'a> Locus<'a> {
             return from;
         }
         math::root(slope, from, to, NARROWED).unwrap_or(to)
+    }
+
+    /// The position where i·v_CE^s would be greatest with every device carrying its even part: the
+    /// true maximum is at most the greatest share times the value there.
+    pub(crate) fn worst_if_even(&self, s: f64, from: f64, to: f64) -> f64 {
+        if s <= 0.0 || to <= from {
+            return to.max(from);
+        }
+        self.stationary(s, 1.0).clamp(from, to)
+    }
+
+    /// The bank's current at position t over N.
+    pub(crate) fn even_part(&self, t: f64) -> f64 {
+        self.peak * rational(t).0 / f64::from(self.bank.devices())
+    }
+
+    /// The greatest share that occurs on the locus: a share moves one way only with the current.
+    pub(crate) fn greatest_share(&self) -> f64 {
+        self.bank
+            .share(Amp::ZERO)
+            .max(self.bank.share(Amp(self.peak)))
+    }
+
+    fn elasticity_at(&self, t: f64) -> f64 {
+        self.bank.split(self.peak * rational(t).0).elasticity
+    }
+
+    /// (1 + t²)²·(e·v·cos β - s·sin β·(A·cos β + B·sin β)), a quartic in t, and its derivative.
+    /// With B = 0 the factor 1 - t² is common, and t = 1 a false root, so it is divided out.
+    fn slope(&self, t: f64, s: f64, e: f64) -> (f64, f64) {
+        let square = t * t;
+        let (direct, sine) = (e * self.rail, 2.0 * (e + s) * self.a);
+        if self.b <= 0.0 {
+            return (direct * (1.0 + square) - sine * t, 2.0 * direct * t - sine);
+        }
+        let fall = 1.0 - square;
+        (
+            direct * fall * (1.0 + square) - sine * t * fall
+                + self.b * (e * fall * fall - 4.0 * s * square),
+            -4.0 * direct * t * square
+                - sine * (1.0 - 3.0 * square)
+                - self.b * (4.0 * e * t * fall + 8.0 * s * t),
+        )
+    }
+
+    /// The one root of `slope` in 0 to 1, or 1 if it stays positive.
+    ///
+    /// Divided by cos β the slope is e·V + B·(e·cos β - s·sin β·tan β), which falls with β, less
+    /// (e + s)·A·sin β, which rises: they cross once at most. Newton, kept inside a bracket.
+    fn stationary(&self, s: f64, e: f64) -> f64 {
+        if self.slope(1.0, s, e).0 >= 0.0 {
+            return 1.0;
+        }
+        let (mut lo, mut hi, mut t) = (0.0, 1.0, 0.5);
+        for _ in 0..100 {
+            let (value, derivative) = self.slope(t, s, e);
+            if value > 0.0 {
+                lo = t;
+            } else {
+                hi = t;
+            }
+            let next = t - value / derivative;
+            let kept = if next > lo && next < hi {
+                next
+            } else {
+                0.5 * (lo + hi)
+            };
+            let moved = (kept - t).abs();
+            t = kept;
+            if moved <= NARROWED {
+                break;
+            }
+        }
+        t
     }
 
     /// The position in `[from, to]` where i/(p + q·v_CE) is greatest for the most loaded device: a
