@@ -5,13 +5,16 @@
 //! method that solves once and answers with what is missing where it cannot. Data flow one way:
 //! loads -> rails -> signals -> heat -> ratings; rules ask for stresses and compare.
 
+pub mod bias;
 pub mod case;
 pub mod chain;
 pub mod devices;
+pub mod drive;
 pub mod heat;
 pub mod loads;
 pub mod margins;
 pub mod rails;
+pub mod reach;
 pub mod signal;
 
 pub use case::{Case, Tables};

@@ -64,6 +64,21 @@ macro_rules! rule {
     };
 }
 
+pub mod bias {
+    //! The idle current.
+    pub mod consistency;
+    pub mod sensor_place;
+    pub mod stability;
+}
+pub mod drive {
+    //! What the output stage asks of the stages before it.
+    pub mod driver_current;
+    pub mod driver_dissipation;
+    pub mod input_level;
+    pub mod output_gain_droop;
+    pub mod slew;
+    pub mod standing_current;
+}
 pub mod thermal {
     //! Temperatures and hours.
     pub mod sink;
@@ -81,6 +96,15 @@ macro_rules! build {
 pub static ALL: &[Registered] = &[
     build!(voltage::device),
     build!(thermal::sink),
+    build!(bias::stability),
+    build!(bias::consistency),
+    build!(bias::sensor_place),
+    build!(drive::output_gain_droop),
+    build!(drive::driver_current),
+    build!(drive::driver_dissipation),
+    build!(drive::standing_current),
+    build!(drive::slew),
+    build!(drive::input_level),
 ];
 
 /// Every rule's record, in report order.
