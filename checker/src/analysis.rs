@@ -10,6 +10,7 @@ pub mod case;
 pub mod chain;
 pub mod devices;
 pub mod drive;
+pub mod fault;
 pub mod heat;
 pub mod loads;
 pub mod margins;

@@ -64,6 +64,19 @@ macro_rules! rule {
     };
 }
 
+pub mod bom {
+    //! The spec against its own bill of materials.
+    pub mod polarity;
+}
+pub mod data {
+    //! The spec against itself.
+    pub mod curve_against_power;
+    pub mod curve_order;
+    pub mod gain_order;
+    pub mod source;
+    pub mod substitute_speed;
+    pub mod thermal_against_power;
+}
 pub mod bias {
     //! The idle current.
     pub mod consistency;
@@ -79,6 +92,19 @@ pub mod drive {
     pub mod slew;
     pub mod standing_current;
 }
+pub mod protection {
+    //! A rail on the loudspeaker, and what stays charged.
+    pub mod absent;
+    pub mod bleed_down;
+    pub mod bridge_detector;
+    pub mod dc_fault_energy;
+    pub mod dc_fault_false_trip;
+    pub mod dc_fault_time;
+    pub mod fuse_fault;
+    pub mod offset_undetected;
+    pub mod relay_dc;
+    pub mod zobel;
+}
 pub mod thermal {
     //! Temperatures and hours.
     pub mod sink;
@@ -90,6 +116,10 @@ pub mod voltage {
 
 macro_rules! build {
     ($($path:ident)::+) => { Registered { rule: &$($path)::+::RULE, check: Check::Build($($path)::+::check) } };
+}
+
+macro_rules! text {
+    ($($path:ident)::+) => { Registered { rule: &$($path)::+::RULE, check: Check::Text($($path)::+::check) } };
 }
 
 /// Every rule.
@@ -105,6 +135,23 @@ pub static ALL: &[Registered] = &[
     build!(drive::standing_current),
     build!(drive::slew),
     build!(drive::input_level),
+    build!(protection::dc_fault_time),
+    build!(protection::dc_fault_energy),
+    build!(protection::dc_fault_false_trip),
+    build!(protection::offset_undetected),
+    build!(protection::relay_dc),
+    build!(protection::bridge_detector),
+    build!(protection::fuse_fault),
+    build!(protection::bleed_down),
+    build!(protection::absent),
+    build!(protection::zobel),
+    build!(data::curve_order),
+    build!(data::curve_against_power),
+    build!(data::thermal_against_power),
+    build!(data::gain_order),
+    build!(data::source),
+    text!(data::substitute_speed),
+    build!(bom::polarity),
 ];
 
 /// Every rule's record, in report order.
