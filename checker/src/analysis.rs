@@ -9,10 +9,14 @@ pub mod case;
 pub mod chain;
 pub mod devices;
 pub mod heat;
+pub mod limits;
 pub mod loads;
 pub mod margins;
 pub mod rails;
+pub mod safe_area;
 pub mod signal;
+pub mod temperatures;
+pub mod wear;
 
 pub use case::{Case, Tables};
 pub use margins::{Margins, Stress};
