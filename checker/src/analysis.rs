@@ -12,11 +12,15 @@ pub mod devices;
 pub mod drive;
 pub mod fault;
 pub mod heat;
+pub mod limits;
 pub mod loads;
 pub mod margins;
 pub mod rails;
 pub mod reach;
+pub mod safe_area;
 pub mod signal;
+pub mod temperatures;
+pub mod wear;
 
 pub use case::{Case, Tables};
 pub use margins::{Margins, Stress};

@@ -87,6 +87,7 @@ pub mod drive {
     //! What the output stage asks of the stages before it.
     pub mod driver_current;
     pub mod driver_dissipation;
+    pub mod driver_soa;
     pub mod input_level;
     pub mod output_gain_droop;
     pub mod slew;
@@ -132,6 +133,7 @@ pub static ALL: &[Registered] = &[
     build!(drive::output_gain_droop),
     build!(drive::driver_current),
     build!(drive::driver_dissipation),
+    build!(drive::driver_soa),
     build!(drive::standing_current),
     build!(drive::slew),
     build!(drive::input_level),

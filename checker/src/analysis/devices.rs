@@ -107,21 +107,6 @@ pub fn idle_of(stage: &Stage, group: &Idle) -> Result<Amp, Needs> {
     per_device.filter(|i| i.is_finite() && *i >= Amp::ZERO).ok_or_else(|| Needs::because(format!("the idle current of stage {} cannot be worked out", stage.owner.name)))
 }
 
-/// Idle current of one device of a stage: the greatest that its `idle` line states. `none` is zero.
-///
-/// # Errors
-/// When it is not stated.
-pub fn idle_of_stage(stage: &Stage) -> Result<Amp, Needs> {
-    if stage.idle.none {
-        return Ok(Amp::ZERO);
-    }
-    let mut most = Amp::ZERO;
-    for group in stage.idle.need()? {
-        most = most.max(idle_of(stage, group)?);
-    }
-    Ok(most)
-}
-
 impl Case<'_> {
     /// The banks of the output stage.
     ///
@@ -138,12 +123,20 @@ impl Case<'_> {
             .map_err(Clone::clone)
     }
 
-    /// Idle current of one output device.
+    /// Idle current of one output device: the greatest that its `idle` line states. `none` is zero.
     ///
     /// # Errors
     /// When it is not stated.
     pub fn idle(&self) -> Result<Amp, Needs> {
-        idle_of_stage(self.output())
+        let stage = self.output();
+        if stage.idle.none {
+            return Ok(Amp::ZERO);
+        }
+        let mut most = Amp::ZERO;
+        for group in stage.idle.need()? {
+            most = most.max(idle_of(stage, group)?);
+        }
+        Ok(most)
     }
 
     /// VBE of a device.

@@ -1,18 +1,21 @@
-//! The drive chain at full output: what each follower carries and asks for, and the drivers' heat and
-//! locus.
+//! The drive chain at full output: what each follower carries and asks for, and the driver's locus.
 //! Must not know what is allowed.
 
+use std::cell::Cell;
 use std::rc::Rc;
 
 use super::case::{Case, Side};
 use super::chain::no_gain;
-use super::heat::{Heat, case_to_sink};
-use super::loads::Driven;
+use super::loads::{Driven, Spot};
 use super::rails::Mains;
 use crate::build::Needs;
-use crate::build::parts::{Flavour, Stage as Stated, both};
-use crate::physics::drive::Stage;
-use crate::physics::unit::{Amp, Celsius, Hertz, Ohm, Volt, Watt};
+use crate::build::parts::{Flavour, Stage as Stated, both, three};
+use crate::physics::drive::{Driver, LocusPoint, Stage};
+use crate::physics::load::Impedance;
+use crate::physics::safe_area::{Allowance, Coverage};
+use crate::physics::sharing::Bank;
+use crate::physics::unit::{Amp, Hertz, Ohm, Volt};
+use crate::physics::waveform::Locus;
 
 /// One follower of the chain while the output swings to its peak.
 #[derive(Clone, Debug)]
@@ -40,6 +43,23 @@ pub struct Peak {
     pub frequency: Hertz,
     /// Peak current of one channel.
     pub amps: Amp,
+}
+
+/// The worst point of a driver's locus in a load.
+#[derive(Clone, Copy, Debug)]
+pub struct DriverUse {
+    /// Where in the band.
+    pub spot: Spot,
+    /// Peak output.
+    pub amplitude: Volt,
+    /// The point, for all drivers of one side together.
+    pub point: LocusPoint,
+    /// Through one driver then.
+    pub amps: Amp,
+    /// Allowed then.
+    pub allowed: Amp,
+    /// What the data cover.
+    pub coverage: Coverage,
 }
 
 impl Case<'_> {
@@ -88,14 +108,6 @@ impl Case<'_> {
         Ok(links)
     }
 
-    /// The bank that a driver drives, for the models of the driver.
-    ///
-    /// # Errors
-    /// What the output stage does not state.
-    pub fn driven_bank(&self, side: Side) -> Result<Stage, Needs> {
-        self.follower(self.output(), side)
-    }
-
     /// The driver stage.
     ///
     /// # Errors
@@ -104,35 +116,71 @@ impl Case<'_> {
         self.build.amplifier.driver.as_ref().ok_or_else(|| self.build.amplifier.driver_field.missing())
     }
 
-    /// Mean watts of one driver device of each side at the duty of a load.
+    /// The worst point of the driver's locus in a load at full drive, nominal mains, the drivers of a
+    /// side carrying alike.
+    ///
+    /// The frequency is searched with the driver's current as the output current over one gain, where
+    /// the locus of an output device has its worst point in closed form; there, and at the least
+    /// impedance, where the gain is lowest, the locus with the gain of each instant is walked.
     ///
     /// # Errors
-    /// What the chain does not state.
-    pub fn driver_watts(&self, heat: &Heat) -> Result<[Watt; 2], Needs> {
-        if !self.has_base_current() {
-            // class A: the whole rail stands across it on average, whatever it plays
-            let watts = heat.rail * super::devices::idle_of_stage(self.driver()?)?;
-            return Ok([watts, watts]);
+    /// What chain, load or supply do not state.
+    pub fn driver_use(&self, load: &Driven, side: Side, allowance: &Allowance) -> Result<DriverUse, Needs> {
+        let output = self.output();
+        let (bank, (drivers, drop), rail) = three(self.follower(output, side), both(self.driver()?.pairs.need().copied(), self.drop()), self.unsagged(Mains::Nominal))?;
+        let drivers = f64::from(drivers.max(1));
+        let peak = self.peak_into(load, Mains::Nominal)?;
+        let base = bank.demand(peak.amps).map_err(|e| no_gain(&output.device(side).owner.name, &e))?;
+        let gain = peak.amps / base * drivers;
+        let vbe = Self::vbe(output.device(side));
+        let nothing = || Needs::because(format!("load {} cannot be driven on the {:.1} V rail", load.name, rail.0));
+        let alone = Bank::even(1, Ohm::ZERO).ok_or_else(nothing)?;
+        let used = |z: Impedance| {
+            let amplitude = drop.burst(rail, z.modulus())?;
+            let scaled = Impedance { resistance: z.resistance * gain, reactance: z.reactance * gain };
+            Some(allowance.usage(&Locus::new(&alone, rail - vbe, amplitude, scaled)?).used)
+        };
+        let found = load.worst(self.band()?, |_, z| used(z).unwrap_or(f64::NAN)).ok_or_else(nothing)?;
+        let mut worst: Option<DriverUse> = None;
+        for spot in [found, load.minimum_seen()] {
+            let amplitude = drop.burst(rail, spot.seen.modulus()).ok_or_else(nothing)?;
+            let here = self.driver_locus(&bank, spot, (rail, vbe, amplitude), drivers, allowance, side)?;
+            if worst.is_none_or(|w| here.point.used > w.point.used) {
+                worst = Some(here);
+            }
         }
-        let watts = |side| self.driver_heat(side, heat.rail, heat.duty.amplitude, heat.duty.load);
-        let (upper, lower) = both(watts(Side::Upper), watts(Side::Lower))?;
-        Ok([upper, lower])
+        worst.ok_or_else(nothing)
     }
 
-    /// Case of one driver device of a side: on the build's sink, on a sink of its own, or on one that
-    /// the drivers of a channel share.
-    ///
-    /// # Errors
-    /// When its mounting is not stated.
-    pub fn driver_case(&self, heat: &Heat, watts: [Watt; 2], side: Side) -> Result<Celsius, Needs> {
-        let driver = self.driver()?;
-        let (case_sink, pairs) = both(case_to_sink(driver), driver.pairs.need().copied())?;
-        let own = watts[super::heat::at(side)];
-        let sink = match driver.own_sink.get() {
-            None => heat.hot_spot,
-            Some((sink, per)) if *per == "device" => heat.air + own * *sink,
-            Some((sink, _)) => heat.air + (watts[0] + watts[1]) * f64::from(pairs) * *sink,
+    fn driver_locus(&self, bank: &Stage, spot: Spot, (rail, vbe, amplitude): (Volt, Volt, Volt), drivers: f64, allowance: &Allowance, side: Side) -> Result<DriverUse, Needs> {
+        let wrong = || Needs::because("the rail leaves the driver no voltage");
+        let model = Driver::new(bank, rail, vbe, spot.seen.modulus(), spot.seen.angle_rad()).ok_or_else(wrong)?;
+        // the other half-cycle leaves the standing current at the greatest voltage
+        let highest = rail - vbe + amplitude;
+        let reach = allowance.point_usage(highest, bank.standing / drivers).ok_or_else(wrong)?.coverage;
+        let end = match reach {
+            Coverage::EndsAt { volts, .. } => volts,
+            _ => Volt(f64::INFINITY),
         };
-        Ok(sink + own * case_sink)
+        let (beyond, most) = (Cell::new(0.0_f64), Cell::new(0.0_f64));
+        let used = |volts: Volt, amps: Amp| {
+            let amps = amps / drivers;
+            most.set(most.get().max(amps.0));
+            if volts > end {
+                beyond.set(beyond.get().max(amps.0));
+            }
+            amps / allowance.allowed(volts)
+        };
+        let name = &self.output().device(side).owner.name;
+        let point = model.worst_on_locus(amplitude, used).map_err(|e| no_gain(name, &e))?;
+        let coverage = match reach {
+            // one per cent of the peak current beyond the end of a curve does not matter
+            Coverage::EndsAt { .. } if beyond.get() <= 0.01 * most.get() => Coverage::Whole,
+            Coverage::EndsAt { volts, .. } => Coverage::EndsAt { volts, fraction: beyond.get() / most.get() },
+            Coverage::AboveBreakdown if bank.standing <= Amp::ZERO => Coverage::Whole,
+            other => other,
+        };
+        let amps = point.amps / drivers;
+        Ok(DriverUse { spot, amplitude, point, amps, allowed: allowance.allowed(point.volts), coverage })
     }
 }

@@ -3,7 +3,7 @@
 use crate::analysis::reach::data_part;
 use crate::analysis::{Case, Margins, Stress};
 use crate::build::parts::SoaLine;
-use crate::finding::{Related, Verdict};
+use crate::finding::Verdict;
 use crate::physics::safe_area::{Curve, CurveError};
 use crate::rule::Allow;
 
@@ -31,8 +31,7 @@ pub fn check(case: &Case<'_>, out: &mut Margins<'_>) {
         for line in &device.soa {
             let note = disorder(line).unwrap_or_default();
             let verdict = if note.is_empty() { Verdict::Ok } else { Verdict::Over };
-            let related = vec![Related { message: "used here".to_owned(), site: case.output().devices.site() }];
-            out.judge(&RULE, data_part(device, "soa"), line.site, verdict, Stress { note, related, ..Stress::default() });
+            out.judge(&RULE, data_part(device, "soa"), line.site, verdict, Stress { note, ..Stress::default() });
         }
     }
 }

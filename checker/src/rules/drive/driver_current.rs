@@ -35,9 +35,6 @@ rule! {
 
 /// One margin for each declared device of driver and predriver.
 pub fn check(case: &Case<'_>, out: &mut Margins<'_>) {
-    if !case.has_base_current() {
-        return;
-    }
     for (depth, stage) in case.followers().into_iter().enumerate().skip(1) {
         for side in Side::BOTH {
             let (part, site) = (case.device_part(stage, side), stage.devices.site());
@@ -55,6 +52,9 @@ pub fn check(case: &Case<'_>, out: &mut Margins<'_>) {
 }
 
 fn stress(case: &Case<'_>, stage: &Stage, depth: usize, load: &Driven, side: Side) -> Result<Stress, Needs> {
+    if !case.has_base_current() {
+        return Err(Needs::because("the driver charges the gates of MOSFETs, and their charge is not stated"));
+    }
     let device = stage.device(side);
     let (peak, rating, sharing) = three(case.peak_into(load, Mains::High), device.current.need().copied(), bank(stage, side))?;
     let links = case.chain(side, peak.amps)?;

@@ -1,7 +1,7 @@
 //! drive.driver-dissipation: the driver's mean heat against what its case temperature leaves it.
 
 use crate::analysis::case::{Side, solved, stated};
-use crate::analysis::heat::{Heat, at};
+use crate::analysis::heat::Heat;
 use crate::analysis::loads::Driven;
 use crate::analysis::rails::Mains;
 use crate::analysis::{Case, Margins, Stress};
@@ -60,11 +60,10 @@ pub fn check(case: &Case<'_>, out: &mut Margins<'_>) {
 fn stress(case: &Case<'_>, load: &Driven, heat: &Heat, side: Side) -> Result<Stress, Needs> {
     let driver = case.driver()?;
     let device = driver.device(side);
-    let (watts, (rated, stated_at), junction) = three(case.driver_watts(heat), device.power.need().copied(), device.junction.need().copied())?;
-    let hot = case.driver_case(heat, watts, side)?;
-    let own = watts[at(side)];
+    let (found, (rated, stated_at), junction) = three(case.driver_temperatures(driver, heat, side), device.power.need().copied(), device.junction.need().copied())?;
+    let (own, hot) = (found.watts, found.case);
     let left = crate::physics::heat::derated(rated, stated_at, junction, hot).ok_or_else(|| Needs::because(format!("the power of {} is stated at its junction limit", device.owner.name)))?;
-    let sink = driver.own_sink.stated_at().map_or_else(|| case.build.heatsink.site(), |site| site);
+    let sink = driver.own_sink.stated_at().unwrap_or_else(|| case.build.heatsink.site());
     Ok(Stress {
         value: own.0,
         rating: left.0,
