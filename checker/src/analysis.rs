@@ -7,12 +7,15 @@
 
 pub mod case;
 pub mod chain;
+pub mod clip;
 pub mod devices;
 pub mod heat;
 pub mod loads;
 pub mod margins;
 pub mod rails;
 pub mod signal;
+pub mod supply;
+pub mod switch_on;
 
 pub use case::{Case, Tables};
 pub use margins::{Margins, Stress};

@@ -3,6 +3,7 @@
 
 pub mod bias;
 pub mod drive;
+pub mod fuse;
 pub mod heat;
 pub mod heatsink;
 pub mod limiter;
@@ -14,3 +15,4 @@ pub mod protection;
 pub mod sharing;
 pub mod supply;
 pub mod unit;
+pub mod wear;
