@@ -7,6 +7,7 @@
 
 pub mod case;
 pub mod chain;
+pub mod clip;
 pub mod derived;
 pub mod devices;
 pub mod heat;
@@ -14,6 +15,8 @@ pub mod loads;
 pub mod margins;
 pub mod rails;
 pub mod signal;
+pub mod supply;
+pub mod switch_on;
 
 pub use case::{Case, Tables};
 pub use margins::{Margins, Stress};

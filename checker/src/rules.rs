@@ -94,10 +94,39 @@ pub mod bom {
     //! The spec against its own bill of materials.
     pub mod quantity;
 }
+pub mod current {
+    //! Amperes and volt-amperes against ratings.
+    pub mod fuse_rms;
+    pub mod rectifier_mean;
+    pub mod rectifier_surge;
+    pub mod reservoir_ripple;
+    pub mod transformer_duty;
+    pub mod transformer_sine;
+}
 pub mod data {
     //! The spec against itself.
     pub mod reading;
     pub mod unused;
+}
+pub mod power {
+    //! Claimed watts and stated rails against solved ones.
+    pub mod low_frequency_sag;
+    pub mod rails_stated;
+    pub mod rated_power;
+    pub mod ripple_headroom;
+}
+pub mod supply {
+    //! The mains side: taps, fuses, switch-on, sharing.
+    pub mod bypass_stuck;
+    pub mod core_flux;
+    pub mod fuse_band;
+    pub mod fuse_inrush;
+    pub mod fuse_per_transformer;
+    pub mod inrush_resistor_energy;
+    pub mod mains_tap;
+    pub mod shared_count;
+    pub mod soft_start_absent;
+    pub mod soft_start_timing;
 }
 pub mod syntax;
 pub mod thermal {
@@ -107,6 +136,11 @@ pub mod thermal {
 pub mod voltage {
     //! Volts against breakdown and rated volts.
     pub mod device;
+    pub mod driver;
+    pub mod gate;
+    pub mod rectifier_reverse;
+    pub mod reservoir;
+    pub mod voltage_stage;
 }
 
 macro_rules! build {
@@ -124,7 +158,32 @@ macro_rules! reading {
 /// Every rule.
 pub static ALL: &[Registered] = &[
     build!(voltage::device),
+    build!(voltage::driver),
+    build!(voltage::voltage_stage),
+    build!(voltage::reservoir),
+    build!(voltage::rectifier_reverse),
+    build!(voltage::gate),
+    build!(power::rated_power),
+    build!(power::rails_stated),
+    build!(power::ripple_headroom),
+    build!(power::low_frequency_sag),
+    build!(current::rectifier_mean),
+    build!(current::rectifier_surge),
+    build!(current::reservoir_ripple),
+    build!(current::transformer_duty),
+    build!(current::transformer_sine),
+    build!(current::fuse_rms),
     build!(thermal::sink),
+    build!(supply::mains_tap),
+    build!(supply::core_flux),
+    build!(supply::shared_count),
+    build!(supply::fuse_band),
+    build!(supply::fuse_per_transformer),
+    build!(supply::fuse_inrush),
+    build!(supply::soft_start_absent),
+    build!(supply::soft_start_timing),
+    build!(supply::bypass_stuck),
+    build!(supply::inrush_resistor_energy),
     reading!(data::reading::unit_suspect),
     text!(data::unused),
     reading!(data::reading::duplicate),
@@ -180,6 +239,22 @@ mod tests {
             };
             assert!(!fires(&kit), "{} fires on the sound kit {}", rule.name, rule.example.kit);
             assert!(fires(&testing::edited(&kit, rule.example.edits)), "{} does not fire on its example", rule.name);
+        }
+    }
+
+    #[test]
+    fn zz_print() {
+        for kit in ["tern60", "tern-family", "tern-fet"] {
+            let start = std::time::Instant::now();
+            let report = testing::report(&testing::kit(kit));
+            println!("==== {kit} {:?} findings {:#?}", start.elapsed(), report.findings.iter().map(|f| (&f.rule, &f.message)).collect::<Vec<_>>());
+            for b in &report.builds {
+                println!("-- {}", b.name);
+                for m in &b.margins {
+                    println!("{:?} {} {} stress {:?} rating {:?} used {:?} | {} {:?} | {:?} {:?} V {:?} ch {:?}", m.verdict, m.rule, m.part.name, m.stress.map(|s| (s.value, s.unit)), m.rating.map(|s| s.value), m.used_percent, m.note, m.needs, m.witness.load, m.witness.mains_v, m.witness.amplitude_v, m.witness.channels_driven);
+                    if kit == "tern60" { for s in &m.working { println!("      {} = {} {} [{}]", s.symbol, s.value, s.unit, s.meaning); } }
+                }
+            }
         }
     }
 
