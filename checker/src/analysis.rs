@@ -8,6 +8,8 @@
 pub mod bias;
 pub mod case;
 pub mod chain;
+pub mod clip;
+pub mod derived;
 pub mod devices;
 pub mod drive;
 pub mod fault;
@@ -19,6 +21,8 @@ pub mod rails;
 pub mod reach;
 pub mod safe_area;
 pub mod signal;
+pub mod supply;
+pub mod switch_on;
 pub mod temperatures;
 pub mod wear;
 

@@ -8,7 +8,7 @@
 use crate::physics::math;
 use crate::physics::sharing::Bank;
 use crate::physics::unit::{Amp, Celsius, Hertz, Kelvin, Second, Volt, Watt};
-use crate::physics::waveform::{Locus, Point};
+use crate::physics::waveform::{Locus, Point, Spot};
 
 /// A log-log slope steeper than this (negative) is second breakdown: a power limit has -1.
 const SECOND_BREAKDOWN_SLOPE: f64 = 1.05;
@@ -406,7 +406,7 @@ impl Allowance {
     /// the current. So callers need one amplitude.
     #[must_use]
     pub fn usage(&self, locus: &Locus<'_>) -> Usage {
-        let (t, used, limit) = self.worst_position(locus);
+        let (spot, used, limit) = self.worst_spot(locus);
         let beyond = match locus.position(self.end) {
             t if t >= 1.0 => 1.0,
             t => 2.0 * t / (1.0 + t * t),
@@ -414,18 +414,18 @@ impl Allowance {
         let above = locus.greatest_voltage().0 > self.breakdown;
         Usage {
             used,
-            at: locus.point(t),
+            at: locus.point(spot),
             limit,
             coverage: self.coverage(beyond, above),
         }
     }
 
-    /// Position, use and limit of the worst point.
+    /// The worst spot, its use and its limit.
     ///
     /// A share is costly to solve, so each limit is first tried with even sharing: the greatest share
     /// times that is more than it can come to. The most promising limit is solved first, and then
     /// only those that could still beat it.
-    fn worst_position(&self, locus: &Locus<'_>) -> (f64, f64, Limit) {
+    fn worst_spot(&self, locus: &Locus<'_>) -> (Spot, f64, Limit) {
         let highest = locus.highest_with_volts();
         let range = |bound: &Bound| {
             let to = if bound.from.is_finite() {
@@ -435,41 +435,39 @@ impl Allowance {
             };
             (locus.position(bound.to), to)
         };
-        let if_even = |bound: &Bound| {
-            let (from, to) = range(bound);
-            if from >= to {
-                return 0.0;
-            }
-            let t = locus.worst_if_even(bound.s, from, to);
-            bound.used(locus.volts(t), locus.even_part(t))
-        };
         let solved = |bound: &Bound| {
             let (from, to) = range(bound);
-            if from >= to {
-                return (1.0, 0.0, bound.limit);
-            }
-            let t = locus.worst(bound.s, from, to);
-            let (volts, amps) = locus.at(t);
-            (t, bound.used(volts, amps), bound.limit)
+            (from < to).then(|| {
+                let spot = locus.worst(bound.s, from, to);
+                (spot, bound.used(spot.volts, spot.amps), bound.limit)
+            })
         };
         // What each limit comes to with even sharing; beyond the array no limit is ruled out.
         let mut even = [f64::INFINITY; 16];
-        for (slot, bound) in even.iter_mut().zip(&self.bounds) {
-            *slot = if_even(bound);
+        let mut first = (0, 0.0);
+        for (index, (slot, bound)) in even.iter_mut().zip(&self.bounds).enumerate() {
+            let (from, to) = range(bound);
+            let t = locus.worst_if_even(bound.s, from, to);
+            *slot = if from < to {
+                bound.used(locus.volts(t), locus.even_part(t))
+            } else {
+                0.0
+            };
+            if *slot > first.1 {
+                first = (index, *slot);
+            }
         }
-        let known = even.iter().zip(&self.bounds);
-        let promising = known
-            .max_by(|a, b| a.0.total_cmp(b.0))
-            .map(|(_, bound)| solved(bound));
-        let mut best = promising.unwrap_or((1.0, 0.0, Limit::Current));
+        let mut best = (locus.at(1.0), 0.0, Limit::Current);
         let share = locus.greatest_share();
-        for (index, bound) in self.bounds.iter().enumerate() {
-            let most = even.get(index).map_or(f64::INFINITY, |used| used * share);
-            if most > best.1 {
-                let found = solved(bound);
-                if found.1 > best.1 {
-                    best = found;
-                }
+        let others = (0..self.bounds.len()).filter(|index| *index != first.0);
+        for index in std::iter::once(first.0).chain(others) {
+            if even.get(index).is_some_and(|used| used * share <= best.1) {
+                continue;
+            }
+            if let Some(found) = self.bounds.get(index).and_then(solved)
+                && found.1 > best.1
+            {
+                best = found;
             }
         }
         best
@@ -547,7 +545,7 @@ impl Allowance {
             let (volts, amps) = locus.at_phase(beta);
             self.used_at(volts, amps).0 - allowance
         };
-        let worst = 2.0 * math::atan(self.worst_position(locus).0);
+        let worst = 2.0 * math::atan(self.worst_spot(locus).0.t);
         let step = math::PI / f64::from(SAMPLES);
         let mut marks: Vec<f64> = (0..=SAMPLES).map(|k| step * f64::from(k)).collect();
         marks.extend([worst, math::PI - worst]);
@@ -741,30 +739,25 @@ impl LimitLine {
         if self.at(start) <= Amp::ZERO {
             return Clearance {
                 ratio: 0.0,
-                at: locus.point(0.0),
+                at: locus.point(locus.at(0.0)),
             };
         }
-        let mut best: Option<(f64, f64)> = None;
+        // The end of the quarter always counts; some stretch mostly holds something worse.
+        let end = locus.at(1.0);
+        let mut best = (end, self.at(Volt(end.volts)).0 / end.amps);
         for (from, to, p, q) in self.stretches() {
             let (first, last) = (locus.position(to), locus.position(from));
-            if first >= last {
-                continue;
-            }
-            let t = locus.worst_against_line(p, q, first, last);
-            let (volts, amps) = locus.at(t);
-            let ratio = (p + q * volts) / amps;
-            if ratio.is_finite() && best.is_none_or(|b| ratio < b.1) {
-                best = Some((t, ratio));
+            if first < last {
+                let spot = locus.worst_against_line(p, q, first, last);
+                let ratio = (p + q * spot.volts) / spot.amps;
+                if ratio < best.1 {
+                    best = (spot, ratio);
+                }
             }
         }
-        // Some stretch always covers part of the quarter; the end of it is the fallback.
-        let (t, ratio) = best.unwrap_or_else(|| {
-            let (volts, amps) = locus.at(1.0);
-            (1.0, self.at(Volt(volts)).0 / amps)
-        });
         Clearance {
-            ratio,
-            at: locus.point(t),
+            ratio: best.1,
+            at: locus.point(best.0),
         }
     }
 }
@@ -859,7 +852,7 @@ fn between(
     coverage: Coverage,
 ) -> Usage {
     let used = |t: f64| {
-        let (volts, amps) = locus.at(t);
+        let Spot { volts, amps, .. } = locus.at(t);
         math::pow(longer.used_at(volts, amps).0, 1.0 - weight)
             * math::pow(shorter.used_at(volts, amps).0, weight)
     };
@@ -873,7 +866,7 @@ fn between(
         );
     let (from, to) = ((best.0 - step).max(0.0), (best.0 + step).min(1.0));
     let (t, value) = math::maximum(used, from, to, 1e-9);
-    let at = locus.point(t);
+    let at = locus.point(locus.at(t));
     let limit = shorter.used_at(at.volts.0, at.amps.0).1;
     Usage {
         used: value,

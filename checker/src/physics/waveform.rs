@@ -46,6 +46,14 @@ impl Point {
     }
 }
 
+/// A position of a locus with what the most loaded device stands there, in volts and amps.
+#[derive(Clone, Copy, Debug)]
+pub(crate) struct Spot {
+    pub(crate) t: f64,
+    pub(crate) volts: f64,
+    pub(crate) amps: f64,
+}
+
 /// Sine and cosine of β from t = tan(β/2).
 fn rational(t: f64) -> (f64, f64) {
     let square = t * t;
@@ -96,9 +104,9 @@ impl<'a> Locus<'a> {
         self.point(self.worst(1.0, 0.0, self.highest_with_volts()))
     }
 
-    /// The point at position t.
-    pub(crate) fn point(&self, t: f64) -> Point {
-        let (volts, amps) = self.at(t);
+    /// A spot as a report shows it.
+    pub(crate) fn point(&self, spot: Spot) -> Point {
+        let Spot { t, volts, amps } = spot;
         // The first quarter of β is the beginning of the half-cycle for a leading load and its
         // mirrored end for a lagging one.
         let beta = 2.0 * math::atan(t);
@@ -114,14 +122,9 @@ impl<'a> Locus<'a> {
         }
     }
 
-    /// v_CE and current of the most loaded device at position t of the first quarter.
-    pub(crate) fn at(&self, t: f64) -> (f64, f64) {
-        let (sin, cos) = rational(t);
-        let total = self.peak * sin;
-        (
-            self.rail - self.a * sin + self.b * cos,
-            total * self.bank.split(total).fraction,
-        )
+    /// The most loaded device at position t of the first quarter.
+    pub(crate) fn at(&self, t: f64) -> Spot {
+        self.spot(t).0
     }
 
     /// v_CE at position t of the first quarter.
@@ -168,30 +171,58 @@ impl<'a> Locus<'a> {
     /// elasticity of the device's current. For a given e there is one such point (see `stationary`),
     /// so on part of the quarter it is that point or the nearer end. As e drifts with the current
     /// only slowly, taking it from the last point and solving again closes in by a factor of ten or
-    /// more each time; at a kink of a transfer curve it may not, and the slope itself is solved.
-    pub(crate) fn worst(&self, s: f64, from: f64, to: f64) -> f64 {
+    /// more each time; where it does not, the slope itself is solved. At a kink of a transfer curve
+    /// the elasticity jumps and there can be several such points: those shares are scanned.
+    pub(crate) fn worst(&self, s: f64, from: f64, to: f64) -> Spot {
         const ROUNDS: usize = 12;
         if s <= 0.0 || to <= from {
-            return to.max(from);
+            return self.spot(to.max(from)).0;
         }
-        let mut elasticity = 1.0;
+        if self.bank.has_kinks() {
+            return self.scanned(s, from, to);
+        }
+        let (mut elasticity, mut before) = (1.0, f64::NAN);
         for _ in 0..ROUNDS {
             let t = self.stationary(s, elasticity).clamp(from, to);
-            let here = self.elasticity_at(t);
-            // An error of 1e-6 moves t by less than that, and the value by its square.
-            if (here - elasticity).abs() < 1e-6 {
-                return t;
+            let (spot, here) = self.spot(t);
+            // An error of 1e-6 in e moves t by less than that, and the value by its square. At an
+            // end of the range two e that agree on it are enough.
+            let settled = (here - elasticity).abs() < 1e-6 || (t - before).abs() <= f64::EPSILON;
+            if settled {
+                return spot;
             }
-            elasticity = here;
+            (elasticity, before) = (here, t);
         }
-        let slope = |t: f64| self.slope(t, s, self.elasticity_at(t)).0;
-        if slope(to) >= 0.0 {
-            return to;
+        let slope = |t: f64| self.slope(t, s, self.spot(t).1).0;
+        let t = if slope(to) >= 0.0 {
+            to
+        } else if slope(from) <= 0.0 {
+            from
+        } else {
+            math::root(slope, from, to, NARROWED).unwrap_or(to)
+        };
+        self.spot(t).0
+    }
+
+    /// The same by a scan of 96 positions and the best bracket narrowed.
+    fn scanned(&self, s: f64, from: f64, to: f64) -> Spot {
+        const STEPS: u32 = 96;
+        let value = |t: f64| {
+            let spot = self.spot(t).0;
+            spot.amps * math::pow(spot.volts.max(0.0), s)
+        };
+        let step = (to - from) / f64::from(STEPS);
+        let position = |k: u32| if k == STEPS { to } else { from + step * f64::from(k) };
+        let mut best = (to, value(to));
+        for k in 0..STEPS {
+            let here = value(position(k));
+            if here > best.1 {
+                best = (position(k), here);
+            }
         }
-        if slope(from) <= 0.0 {
-            return from;
-        }
-        math::root(slope, from, to, NARROWED).unwrap_or(to)
+        let (lo, hi) = ((best.0 - step).max(from), (best.0 + step).min(to));
+        let (t, top) = math::maximum(value, lo, hi, NARROWED);
+        self.spot(if top > best.1 { t } else { best.0 }).0
     }
 
     /// The position where i·v_CE^s would be greatest with every device carrying its even part: the
@@ -215,8 +246,20 @@ impl<'a> Locus<'a> {
             .max(self.bank.share(Amp(self.peak)))
     }
 
-    fn elasticity_at(&self, t: f64) -> f64 {
-        self.bank.split(self.peak * rational(t).0).elasticity
+    /// The most loaded device at position t, and the elasticity of its current.
+    fn spot(&self, t: f64) -> (Spot, f64) {
+        let (sin, cos) = rational(t);
+        let total = self.peak * sin;
+        let split = self.bank.split(total);
+        let volts = self.rail - self.a * sin + self.b * cos;
+        (
+            Spot {
+                t,
+                volts,
+                amps: total * split.fraction,
+            },
+            split.elasticity,
+        )
     }
 
     /// (1 + t²)²·(e·v·cos β - s·sin β·(A·cos β + B·sin β)), a quartic in t, and its derivative.
@@ -273,20 +316,20 @@ impl<'a> Locus<'a> {
     ///
     /// Stationary where e·cos β·(p + q·v) + q·sin β·(A·cos β + B·sin β) = 0; for an even share
     /// cos β = -qB/(p + qV).
-    pub(crate) fn worst_against_line(&self, p: f64, q: f64, from: f64, to: f64) -> f64 {
+    pub(crate) fn worst_against_line(&self, p: f64, q: f64, from: f64, to: f64) -> Spot {
         let slope = |t: f64| {
             let (sin, cos) = rational(t);
-            let volts = self.rail - self.a * sin + self.b * cos;
-            let elasticity = self.bank.split(self.peak * sin).elasticity;
-            elasticity * cos * (p + q * volts) + q * sin * (self.a * cos + self.b * sin)
+            let (spot, elasticity) = self.spot(t);
+            elasticity * cos * (p + q * spot.volts) + q * sin * (self.a * cos + self.b * sin)
         };
-        if to <= from || slope(to) >= 0.0 {
-            return to.max(from);
-        }
-        if slope(from) <= 0.0 {
-            return from;
-        }
-        math::root(slope, from, to, NARROWED).unwrap_or(to)
+        let t = if to <= from || slope(to) >= 0.0 {
+            to.max(from)
+        } else if slope(from) <= 0.0 {
+            from
+        } else {
+            math::root(slope, from, to, NARROWED).unwrap_or(to)
+        };
+        self.spot(t).0
     }
 }
 
@@ -322,8 +365,7 @@ mod tests {
             let rail = Volt(50.0);
             // Keep the volts positive: the stage saturates before.
             let locus = Locus::new(&bank, rail, rail * (swing / (1.0 + re / z)), load).unwrap();
-            let t = locus.worst(s, 0.0, locus.highest_with_volts());
-            let (v, i) = locus.at(t);
+            let Spot { volts: v, amps: i, .. } = locus.worst(s, 0.0, locus.highest_with_volts());
             let (found, fine) = (i * math::pow(v.max(0.0), s), brute(&locus, s));
             prop_assert!(found >= fine * (1.0 - 1e-12), "{found} {fine}");
             // A grid of 40 000 steps misses a smooth maximum by (curvature)·h²/8, about 1e-8.
@@ -338,7 +380,7 @@ mod tests {
             let load = Impedance::polar(Ohm(8.0), degrees.to_radians());
             let locus = Locus::new(&bank, Volt(40.0), Volt(40.0 * swing), load).unwrap();
             let volts = locus.rail + locus.b - w * (locus.a + locus.b);
-            prop_assert!((locus.at(locus.position(volts)).0 - volts).abs() < 1e-9);
+            prop_assert!((locus.at(locus.position(volts)).volts - volts).abs() < 1e-9);
         }
 
         #[test]
@@ -351,7 +393,7 @@ mod tests {
             let load = Impedance::polar(Ohm(8.0), phi);
             let amplitude = 40.0 * swing;
             let locus = Locus::new(&bank, Volt(40.0), Volt(amplitude), load).unwrap();
-            let point = locus.point(t);
+            let point = locus.point(locus.at(t));
             let current = amplitude / 8.0 * (point.angle_rad - phi).sin();
             let volts = 40.0 - amplitude * point.angle_rad.sin() - current * 0.11;
             prop_assert!((point.amps.0 - current / 2.0).abs() < 1e-9);
