@@ -339,6 +339,8 @@ fn bridged_halves() {
         1e-12,
     );
     near(half.output().0 * 2.0, 400.0, 1e-12);
+    near(half.mean_current().0, 20.0 / PI, 1e-12);
+    near(half.rms_current().0, 10.0 / 2f64.sqrt(), 1e-12);
 }
 
 /// Hand calculation: rail 50 V, drop 3 V at 2 A and 5 V at 10 A, so 2.5 V + 0.25 ohm·i. Into 8 ohm:

@@ -9,7 +9,7 @@ use crate::physics::unit::{Celsius, Henry, Hertz, Ohm};
 /// Relative difference below which two results of a search tie.
 const TIE: f64 = 1e-9;
 /// Grid points per octave of a search; narrower features bring grid points of their own.
-const POINTS_PER_OCTAVE: f64 = 8.0;
+const POINTS_PER_OCTAVE: f64 = 5.0;
 /// Width, in ln f, to which an extremum is narrowed; its value is then exact to the square of this.
 const NARROWED: f64 = 1e-8;
 /// Temperature coefficient of resistance of copper at 20 °C, per kelvin (IEC 60028 rounds to 0.003 93).
@@ -656,31 +656,23 @@ impl Load {
         .filter(|z| z.is_passive())
     }
 
-    /// The greatest value of `objective` over the covered part of `band` and every variant.
-    ///
-    /// A logarithmic grid with the rows of tables and the flanks of resonances added, then each
-    /// local maximum narrowed, so the answer does not depend on where grid points fell. A flat
-    /// load is asked once per variant, at the bottom of the band: its objective may depend on
-    /// frequency only through the impedance. Results within 1e-9 tie: the earlier variant
-    /// (lagging before leading), then the lower frequency, stands.
-    ///
-    /// `None` if the load covers none of the band, or if the objective was not finite anywhere it
-    /// was asked: a hole in it must not hide the worst case.
+    /// The load on the points that searches over the covered part of `band` start from, for as many
+    /// searches as are wanted. `None` if the load covers none of the band.
     #[must_use]
-    pub fn worst(&self, band: Band, objective: impl Fn(Hertz, Impedance) -> f64) -> Option<Worst> {
-        self.worst_on(&self.grid(band, 0.0)?, objective)
+    pub fn sampled(&self, band: Band) -> Option<Sampled> {
+        Sampled::on(self, self.grid(band, 0.0)?)
     }
 
-    /// Minimum modulus, extremes of phase, and equivalent peak dissipation resistance.
+    /// [`Sampled::worst`] for one search.
+    #[must_use]
+    pub fn worst(&self, band: Band, objective: impl Fn(Hertz, Impedance) -> f64) -> Option<Worst> {
+        self.sampled(band)?.worst(objective)
+    }
+
+    /// [`Sampled::survey`].
     #[must_use]
     pub fn survey(&self, band: Band) -> Option<Survey> {
-        let grid = self.grid(band, 0.0)?;
-        Some(Survey {
-            minimum: self.worst_on(&grid, |_, z| -z.modulus().0)?,
-            most_lagging: self.worst_on(&grid, |_, z| z.angle_rad())?,
-            most_leading: self.worst_on(&grid, |_, z| -z.angle_rad())?,
-            dissipation: self.worst_on(&grid, |_, z| -z.peak_dissipation_resistance().0)?,
-        })
+        self.sampled(band)?.survey()
     }
 
     /// ln f of the points a search starts from, ascending. `shift`, 0 to 1, moves the inner ones by
@@ -713,32 +705,74 @@ impl Load {
         grid.dedup_by(|a, b| (*a - *b).abs() < NARROWED);
         Some(grid)
     }
+}
 
-    fn worst_on(&self, grid: &[f64], objective: impl Fn(Hertz, Impedance) -> f64) -> Option<Worst> {
+/// A load on the points from which searches start.
+#[derive(Clone, Debug, PartialEq)]
+pub struct Sampled {
+    load: Load,
+    /// ln f, ascending.
+    grid: Vec<f64>,
+    /// Each variant, with f and Z on the grid.
+    variants: Vec<(Variant, Vec<(Hertz, Impedance)>)>,
+}
+
+impl Sampled {
+    fn on(load: &Load, grid: Vec<f64>) -> Option<Self> {
+        let sample = |variant: Variant| {
+            let points = grid.iter().map(|x| {
+                let f = Hertz(math::exp(*x));
+                Some((f, load.impedance(variant, f)?))
+            });
+            Some((variant, points.collect::<Option<Vec<_>>>()?))
+        };
+        let variants = load
+            .variants()
+            .into_iter()
+            .map(sample)
+            .collect::<Option<Vec<_>>>()?;
+        Some(Self {
+            load: load.clone(),
+            grid,
+            variants,
+        })
+    }
+
+    /// The greatest value of `objective` over the covered part of the band and every variant.
+    ///
+    /// A logarithmic grid with the rows of tables and the flanks of resonances added, then each
+    /// local maximum narrowed, so the answer does not depend on where grid points fell. A flat
+    /// load is asked once per variant, at the bottom of the band: its objective may depend on
+    /// frequency only through the impedance. Results within 1e-9 tie: the earlier variant
+    /// (lagging before leading), then the lower frequency, stands.
+    ///
+    /// `None` if the objective was not finite anywhere it was asked: a hole in it must not hide the
+    /// worst case.
+    #[must_use]
+    pub fn worst(&self, objective: impl Fn(Hertz, Impedance) -> f64) -> Option<Worst> {
         let mut best: Option<Worst> = None;
-        for variant in self.variants() {
-            // NaN marks a point without an answer; it spreads through the sums and is caught below.
-            let value_at = |x: f64| {
-                let f = Hertz(math::exp(x));
-                self.impedance(variant, f)
-                    .map_or(f64::NAN, |z| objective(f, z))
-            };
-            let values: Vec<f64> = grid.iter().map(|&x| value_at(x)).collect();
+        for (variant, points) in &self.variants {
+            let values: Vec<f64> = points.iter().map(|&(f, z)| objective(f, z)).collect();
             if values.iter().any(|v| !v.is_finite()) {
                 return None;
             }
+            // NaN marks a point without an answer; it spreads through the sums and is caught below.
+            let value_at = |x: f64| {
+                let f = Hertz(math::exp(x));
+                self.load
+                    .impedance(*variant, f)
+                    .map_or(f64::NAN, |z| objective(f, z))
+            };
             let crest = values.iter().copied().fold(f64::NEG_INFINITY, f64::max);
-            for (k, (&x, &value)) in grid.iter().zip(&values).enumerate() {
-                let left = k
-                    .checked_sub(1)
-                    .and_then(|k| Some((*grid.get(k)?, *values.get(k)?)));
-                let right = grid.get(k + 1).copied().zip(values.get(k + 1).copied());
+            for (k, (&x, &value)) in self.grid.iter().zip(&values).enumerate() {
+                let neighbour = |k: usize| self.grid.get(k).copied().zip(values.get(k).copied());
+                let (left, right) = (k.checked_sub(1).and_then(neighbour), neighbour(k + 1));
                 let higher = |side: Option<(f64, f64)>| side.is_some_and(|(_, v)| v > value);
                 if higher(left) || higher(right) {
                     continue;
                 }
                 let mut found = (x, value);
-                if grid.len() > 1 && reach(left, (x, value), right) >= crest {
+                if self.grid.len() > 1 && reach(left, (x, value), right) >= crest {
                     let (lo, hi) = (left.map_or(x, |l| l.0), right.map_or(x, |r| r.0));
                     let narrowed = math::maximum(value_at, lo, hi, NARROWED);
                     if !narrowed.1.is_finite() {
@@ -748,20 +782,30 @@ impl Load {
                         found = narrowed;
                     }
                 }
-                let better = best.is_none_or(|b| found.1 > b.value + TIE * b.value.abs());
-                if better {
+                if best.is_none_or(|b| found.1 > b.value + TIE * b.value.abs()) {
                     let frequency = Hertz(math::exp(found.0));
-                    let impedance = self.impedance(variant, frequency)?;
+                    let impedance = self.load.impedance(*variant, frequency)?;
                     best = Some(Worst {
                         value: found.1,
                         frequency,
                         impedance,
-                        variant,
+                        variant: *variant,
                     });
                 }
             }
         }
         best
+    }
+
+    /// Minimum modulus, extremes of phase, and equivalent peak dissipation resistance.
+    #[must_use]
+    pub fn survey(&self) -> Option<Survey> {
+        Some(Survey {
+            minimum: self.worst(|_, z| -z.modulus().0)?,
+            most_lagging: self.worst(|_, z| z.angle_rad())?,
+            most_leading: self.worst(|_, z| -z.angle_rad())?,
+            dissipation: self.worst(|_, z| -z.peak_dissipation_resistance().0)?,
+        })
     }
 }
 
@@ -856,7 +900,7 @@ mod tests {
         ) {
             let load = woofer((qms, qes), fs, le, n);
             let at = |shift: f64, objective: fn(Hertz, Impedance) -> f64| {
-                load.worst_on(&load.grid(audio(), shift).unwrap(), objective).unwrap()
+                Sampled::on(&load, load.grid(audio(), shift).unwrap()).unwrap().worst(objective).unwrap()
             };
             let objectives: [fn(Hertz, Impedance) -> f64; 3] = [
                 |_, z| -z.modulus().0,

@@ -224,6 +224,18 @@ impl Signal {
         self.output
     }
 
+    /// Mean of |i| in the load.
+    #[must_use]
+    pub fn mean_current(&self) -> Amp {
+        self.mean_current
+    }
+
+    /// √(mean of i²) in the load; each rail feeds half of the square, a half-sine of Î/2 r.m.s.
+    #[must_use]
+    pub fn rms_current(&self) -> Amp {
+        Amp(self.mean_square.sqrt())
+    }
+
     /// Mean current drawn from each rail: mean|i|/2 + N·Iq, Iq the idle current of one device.
     #[must_use]
     pub fn supply_current(&self, bank: &Bank, idle: Amp) -> Amp {

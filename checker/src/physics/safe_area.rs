@@ -8,7 +8,7 @@
 use crate::physics::math;
 use crate::physics::sharing::Bank;
 use crate::physics::unit::{Amp, Celsius, Hertz, Kelvin, Second, Volt, Watt};
-use crate::physics::waveform::{Locus, Point};
+use crate::physics::waveform::{Locus, Point, Spot};
 
 /// A log-log slope steeper than this (negative) is second breakdown: a power limit has -1.
 const SECOND_BREAKDOWN_SLOPE: f64 = 1.05;
@@ -406,7 +406,7 @@ impl Allowance {
     /// the current. So callers need one amplitude.
     #[must_use]
     pub fn usage(&self, locus: &Locus<'_>) -> Usage {
-        let (t, used, limit) = self.worst_position(locus);
+        let (spot, used, limit) = self.worst_spot(locus);
         let beyond = match locus.position(self.end) {
             t if t >= 1.0 => 1.0,
             t => 2.0 * t / (1.0 + t * t),
@@ -414,32 +414,60 @@ impl Allowance {
         let above = locus.greatest_voltage().0 > self.breakdown;
         Usage {
             used,
-            at: locus.point(t),
+            at: locus.point(spot),
             limit,
             coverage: self.coverage(beyond, above),
         }
     }
 
-    fn worst_position(&self, locus: &Locus<'_>) -> (f64, f64, Limit) {
-        let mut best = (1.0, 0.0, Limit::Current);
+    /// The worst spot, its use and its limit.
+    ///
+    /// A share is costly to solve, so each limit is first tried with even sharing: the greatest share
+    /// times that is more than it can come to. The most promising limit is solved first, and then
+    /// only those that could still beat it.
+    fn worst_spot(&self, locus: &Locus<'_>) -> (Spot, f64, Limit) {
         let highest = locus.highest_with_volts();
-        for bound in &self.bounds {
-            let (from, to) = if bound.limit == Limit::Current {
-                (0.0, 1.0)
+        let range = |bound: &Bound| {
+            let to = if bound.from.is_finite() {
+                locus.position(bound.from).min(highest)
             } else {
-                (
-                    locus.position(bound.to),
-                    locus.position(bound.from).min(highest),
-                )
+                1.0
             };
-            if from >= to {
+            (locus.position(bound.to), to)
+        };
+        let solved = |bound: &Bound| {
+            let (from, to) = range(bound);
+            (from < to).then(|| {
+                let spot = locus.worst(bound.s, from, to);
+                (spot, bound.used(spot.volts, spot.amps), bound.limit)
+            })
+        };
+        // What each limit comes to with even sharing; beyond the array no limit is ruled out.
+        let mut even = [f64::INFINITY; 16];
+        let mut first = (0, 0.0);
+        for (index, (slot, bound)) in even.iter_mut().zip(&self.bounds).enumerate() {
+            let (from, to) = range(bound);
+            let t = locus.worst_if_even(bound.s, from, to);
+            *slot = if from < to {
+                bound.used(locus.volts(t), locus.even_part(t))
+            } else {
+                0.0
+            };
+            if *slot > first.1 {
+                first = (index, *slot);
+            }
+        }
+        let mut best = (locus.at(1.0), 0.0, Limit::Current);
+        let share = locus.greatest_share();
+        let others = (0..self.bounds.len()).filter(|index| *index != first.0);
+        for index in std::iter::once(first.0).chain(others) {
+            if even.get(index).is_some_and(|used| used * share <= best.1) {
                 continue;
             }
-            let t = locus.worst(bound.s, from, to);
-            let (volts, amps) = locus.at(t);
-            let used = bound.used(volts, amps);
-            if used > best.1 {
-                best = (t, used, bound.limit);
+            if let Some(found) = self.bounds.get(index).and_then(solved)
+                && found.1 > best.1
+            {
+                best = found;
             }
         }
         best
@@ -464,21 +492,33 @@ impl Allowance {
         marks.retain(|v| (0.0..=to.0).contains(v));
         marks.sort_by(f64::total_cmp);
         marks.dedup();
-        let mut best: Option<(f64, f64, Limit)> = None;
+        let mut scans = Vec::new();
         let (mut peak, mut beyond, mut above) = (0.0_f64, 0.0_f64, false);
         for pair in marks.windows(2) {
             let [lo, hi] = *pair else { continue };
-            let current = highest(|v| line(Volt(v)).0, lo, hi)?.1.max(0.0);
+            let samples = sample(|v| line(Volt(v)).0, lo, hi)?;
+            let current = samples.iter().map(|s| s.1).fold(0.0, f64::max);
             peak = peak.max(current);
             if lo >= self.end {
                 beyond = beyond.max(current);
             }
             above |= lo >= self.breakdown && current > 0.0;
             for bound in self.bounds.iter().filter(|b| b.from <= lo && b.to >= hi) {
-                let (v, used) = highest(|v| bound.used(v, line(Volt(v)).0), lo, hi)?;
+                scans.push((*bound, samples.map(|(v, i)| (v, bound.used(v, i)))));
+            }
+        }
+        let mut best: Option<(f64, f64, Limit)> = None;
+        for (bound, samples) in &scans {
+            for &(v, used) in samples {
                 if best.is_none_or(|b| used > b.1) {
                     best = Some((v, used, bound.limit));
                 }
+            }
+        }
+        for (bound, samples) in &scans {
+            let used = |v: f64| bound.used(v, line(Volt(v)).0);
+            if let Some((v, value)) = narrowed(used, samples, best.map_or(0.0, |b| b.1)) {
+                best = Some((v, value, bound.limit));
             }
         }
         let (v, used, limit) = best?;
@@ -505,7 +545,7 @@ impl Allowance {
             let (volts, amps) = locus.at_phase(beta);
             self.used_at(volts, amps).0 - allowance
         };
-        let worst = 2.0 * math::atan(self.worst_position(locus).0);
+        let worst = 2.0 * math::atan(self.worst_spot(locus).0.t);
         let step = math::PI / f64::from(SAMPLES);
         let mut marks: Vec<f64> = (0..=SAMPLES).map(|k| step * f64::from(k)).collect();
         marks.extend([worst, math::PI - worst]);
@@ -574,29 +614,43 @@ fn thermal_factor(rating: Rating, case: Celsius) -> Result<f64, Refused> {
     Ok(headroom / (rating.junction - STATED_AT))
 }
 
-/// Where a function that is smooth between `lo` and `hi` is greatest: eight steps, then the best
-/// bracket narrowed. `None` if it is not finite.
-fn highest(f: impl Fn(f64) -> f64, lo: f64, hi: f64) -> Option<(f64, f64)> {
-    const STEPS: u32 = 8;
-    let step = (hi - lo) / f64::from(STEPS);
-    let mut best = (lo, f(lo));
-    for k in 0..=STEPS {
-        let x = if k == STEPS {
-            hi
-        } else {
-            lo + step * f64::from(k)
+/// A smooth function on nine points from `lo` to `hi`. `None` if it is not finite.
+fn sample(f: impl Fn(f64) -> f64, lo: f64, hi: f64) -> Option<[(f64, f64); 9]> {
+    let mut samples = [(0.0, 0.0); 9];
+    for (k, slot) in samples.iter_mut().enumerate() {
+        let weight = k as f64 / 8.0;
+        let x = lo * (1.0 - weight) + hi * weight;
+        *slot = (x, f(x));
+    }
+    samples.iter().all(|s| s.1.is_finite()).then_some(samples)
+}
+
+/// The greatest value of a sampled function between its samples, if it beats `best`. Each local
+/// maximum is narrowed whose neighbours let it rise so far: by twice their difference at most.
+fn narrowed(f: impl Fn(f64) -> f64, samples: &[(f64, f64); 9], best: f64) -> Option<(f64, f64)> {
+    let mut found: Option<(f64, f64)> = None;
+    for window in samples.windows(3) {
+        let [left, middle, right] = window else {
+            continue;
         };
-        let value = f(x);
-        if !value.is_finite() {
-            return None;
-        }
-        if value > best.1 {
-            best = (x, value);
+        let rise = 2.0 * (2.0 * middle.1 - left.1.min(right.1) - middle.1);
+        let crest = middle.1 >= left.1 && middle.1 >= right.1;
+        // At either end of the samples the maximum may lie in the first or the last step.
+        let edge = (left.0 <= samples[0].0 && left.1 >= middle.1)
+            || (right.0 >= samples[8].0 && right.1 >= middle.1);
+        let reach = if edge {
+            left.1.max(right.1) + (left.1 - right.1).abs()
+        } else {
+            middle.1 + rise
+        };
+        if (crest || edge) && reach > found.map_or(best, |f| f.1) {
+            let top = math::maximum(&f, left.0, right.0, 1e-9 * (right.0 - left.0));
+            if top.1 > found.map_or(best, |f| f.1) {
+                found = Some(top);
+            }
         }
     }
-    let (left, right) = ((best.0 - step).max(lo), (best.0 + step).min(hi));
-    let narrowed = math::maximum(&f, left, right, 1e-9 * (hi - lo).max(1e-9));
-    Some(if narrowed.1 > best.1 { narrowed } else { best })
+    found
 }
 
 /// A limit on the current of one device against its v_CE: straight lines through stated points,
@@ -685,35 +739,31 @@ impl LimitLine {
         if self.at(start) <= Amp::ZERO {
             return Clearance {
                 ratio: 0.0,
-                at: locus.point(0.0),
+                at: locus.point(locus.at(0.0)),
             };
         }
-        let mut best: Option<(f64, f64)> = None;
+        // The end of the quarter always counts; some stretch mostly holds something worse.
+        let end = locus.at(1.0);
+        let mut best = (end, self.at(Volt(end.volts)).0 / end.amps);
         for (from, to, p, q) in self.stretches() {
             let (first, last) = (locus.position(to), locus.position(from));
-            if first >= last {
-                continue;
-            }
-            let t = locus.worst_against_line(p, q, first, last);
-            let (volts, amps) = locus.at(t);
-            let ratio = (p + q * volts) / amps;
-            if ratio.is_finite() && best.is_none_or(|b| ratio < b.1) {
-                best = Some((t, ratio));
+            if first < last {
+                let spot = locus.worst_against_line(p, q, first, last);
+                let ratio = (p + q * spot.volts) / spot.amps;
+                if ratio < best.1 {
+                    best = (spot, ratio);
+                }
             }
         }
-        // Some stretch always covers part of the quarter; the end of it is the fallback.
-        let (t, ratio) = best.unwrap_or_else(|| {
-            let (volts, amps) = locus.at(1.0);
-            (1.0, self.at(Volt(volts)).0 / amps)
-        });
         Clearance {
-            ratio,
-            at: locus.point(t),
+            ratio: best.1,
+            at: locus.point(best.0),
         }
     }
 }
 
-/// What the most loaded device carries when a limiter lets `sensed` through the least loaded one.
+/// What the most loaded device carries when a limiter senses one of the others and holds it to the
+/// line.
 /// `None` where no finite current answers.
 #[must_use]
 pub fn most_loaded_on_line(line: &LimitLine, bank: &Bank, volts: Volt) -> Option<Amp> {
@@ -802,7 +852,7 @@ fn between(
     coverage: Coverage,
 ) -> Usage {
     let used = |t: f64| {
-        let (volts, amps) = locus.at(t);
+        let Spot { volts, amps, .. } = locus.at(t);
         math::pow(longer.used_at(volts, amps).0, 1.0 - weight)
             * math::pow(shorter.used_at(volts, amps).0, weight)
     };
@@ -816,7 +866,7 @@ fn between(
         );
     let (from, to) = ((best.0 - step).max(0.0), (best.0 + step).min(1.0));
     let (t, value) = math::maximum(used, from, to, 1e-9);
-    let at = locus.point(t);
+    let at = locus.point(locus.at(t));
     let limit = shorter.used_at(at.volts.0, at.amps.0).1;
     Usage {
         used: value,
@@ -1108,6 +1158,38 @@ mod tests {
             let _ = Curve::new(&[(Volt(v), Amp(i)), (Volt(a), Amp(b))]);
             let _ = LimitLine::new(&[(Volt(v), Amp(i)), (Volt(a), Amp(b))]);
         }
+    }
+
+    #[test]
+    fn a_curve_of_many_points_is_walked_to_its_end() {
+        // i = 400/v² in 60 segments gives what two points give.
+        let power_law = |n: u32| {
+            let points: Vec<_> = (0..=n)
+                .map(|k| 10.0 * 10f64.powf(f64::from(k) / f64::from(n)))
+                .map(|v| (v, 400.0 / (v * v)))
+                .collect();
+            curve(&points)
+        };
+        let bank = Bank::bipolar(3, Ohm(0.22), 0.05, Volt(0.02), Volt(0.0257)).unwrap();
+        let locus = Locus::new(
+            &bank,
+            Volt(55.0),
+            Volt(45.0),
+            Impedance::polar(Ohm(4.0), 0.8),
+        )
+        .unwrap();
+        let used = |n: u32| {
+            Allowance::dc(
+                rating(),
+                Some(&power_law(n)),
+                Celsius(60.0),
+                SecondBreakdown::AsThermal,
+            )
+            .unwrap()
+            .usage(&locus)
+            .used
+        };
+        assert!((used(60) / used(1) - 1.0).abs() < 1e-9);
     }
 
     #[test]

@@ -313,7 +313,8 @@ impl Bank {
             };
             let moved = (kept - y).abs();
             y = kept;
-            if moved <= 1e-14 {
+            // Newton squares what is left of the error.
+            if moved <= 1e-8 {
                 break;
             }
         }

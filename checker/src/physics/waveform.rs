@@ -46,6 +46,14 @@ impl Point {
     }
 }
 
+/// A position of a locus with what the most loaded device stands there, in volts and amps.
+#[derive(Clone, Copy, Debug)]
+pub(crate) struct Spot {
+    pub(crate) t: f64,
+    pub(crate) volts: f64,
+    pub(crate) amps: f64,
+}
+
 /// Sine and cosine of β from t = tan(β/2).
 fn rational(t: f64) -> (f64, f64) {
     let square = t * t;
@@ -96,9 +104,9 @@ impl<'a> Locus<'a> {
         self.point(self.worst(1.0, 0.0, self.highest_with_volts()))
     }
 
-    /// The point at position t.
-    pub(crate) fn point(&self, t: f64) -> Point {
-        let (volts, amps) = self.at(t);
+    /// A spot as a report shows it.
+    pub(crate) fn point(&self, spot: Spot) -> Point {
+        let Spot { t, volts, amps } = spot;
         // The first quarter of β is the beginning of the half-cycle for a leading load and its
         // mirrored end for a lagging one.
         let beta = 2.0 * math::atan(t);
@@ -114,14 +122,15 @@ impl<'a> Locus<'a> {
         }
     }
 
-    /// v_CE and current of the most loaded device at position t of the first quarter.
-    pub(crate) fn at(&self, t: f64) -> (f64, f64) {
+    /// The most loaded device at position t of the first quarter.
+    pub(crate) fn at(&self, t: f64) -> Spot {
+        self.spot(t).0
+    }
+
+    /// v_CE at position t of the first quarter.
+    pub(crate) fn volts(&self, t: f64) -> f64 {
         let (sin, cos) = rational(t);
-        let total = self.peak * sin;
-        (
-            self.rail - self.a * sin + self.b * cos,
-            total * self.bank.split(total).fraction,
-        )
+        self.rail - self.a * sin + self.b * cos
     }
 
     /// v_CE and current of the most loaded device at a phase β of the whole half-cycle, 0 to π.
@@ -159,31 +168,122 @@ impl<'a> Locus<'a> {
     /// current).
     ///
     /// The slope of ln(i·v^s) vanishes where e·v·cos β = s·sin β·(A·cos β + B·sin β), e the
-    /// elasticity of the device's current. Divided by cos β this is a falling function against a
-    /// rising one, so there is one stationary point and it is a maximum; an e that drifts with the
-    /// current does so too slowly to add another (checked by brute force in the tests). With B = 0
-    /// the factor cos β is common, and β = 90° a false root, so it is divided out.
-    pub(crate) fn worst(&self, s: f64, from: f64, to: f64) -> f64 {
+    /// elasticity of the device's current. For a given e there is one such point (see `stationary`),
+    /// so on part of the quarter it is that point or the nearer end. As e drifts with the current
+    /// only slowly, taking it from the last point and solving again closes in by a factor of ten or
+    /// more each time; at a kink of a transfer curve it may not, and the slope itself is solved.
+    pub(crate) fn worst(&self, s: f64, from: f64, to: f64) -> Spot {
+        const ROUNDS: usize = 12;
+        if s <= 0.0 || to <= from {
+            return self.spot(to.max(from)).0;
+        }
+        let (mut elasticity, mut before) = (1.0, f64::NAN);
+        for _ in 0..ROUNDS {
+            let t = self.stationary(s, elasticity).clamp(from, to);
+            let (spot, here) = self.spot(t);
+            // An error of 1e-6 in e moves t by less than that, and the value by its square. At an
+            // end of the range two e that agree on it are enough.
+            let settled = (here - elasticity).abs() < 1e-6 || (t - before).abs() <= f64::EPSILON;
+            if settled {
+                return spot;
+            }
+            (elasticity, before) = (here, t);
+        }
+        let slope = |t: f64| self.slope(t, s, self.spot(t).1).0;
+        let t = if slope(to) >= 0.0 {
+            to
+        } else if slope(from) <= 0.0 {
+            from
+        } else {
+            math::root(slope, from, to, NARROWED).unwrap_or(to)
+        };
+        self.spot(t).0
+    }
+
+    /// The position where i·v_CE^s would be greatest with every device carrying its even part: the
+    /// true maximum is at most the greatest share times the value there.
+    pub(crate) fn worst_if_even(&self, s: f64, from: f64, to: f64) -> f64 {
         if s <= 0.0 || to <= from {
             return to.max(from);
         }
-        let slope = |t: f64| {
-            let (sin, cos) = rational(t);
-            let volts = self.rail - self.a * sin + self.b * cos;
-            let elasticity = self.bank.split(self.peak * sin).elasticity;
-            if self.b > 0.0 {
-                elasticity * volts * cos - s * sin * (self.a * cos + self.b * sin)
+        self.stationary(s, 1.0).clamp(from, to)
+    }
+
+    /// The bank's current at position t over N.
+    pub(crate) fn even_part(&self, t: f64) -> f64 {
+        self.peak * rational(t).0 / f64::from(self.bank.devices())
+    }
+
+    /// The greatest share that occurs on the locus: a share moves one way only with the current.
+    pub(crate) fn greatest_share(&self) -> f64 {
+        self.bank
+            .share(Amp::ZERO)
+            .max(self.bank.share(Amp(self.peak)))
+    }
+
+    /// The most loaded device at position t, and the elasticity of its current.
+    fn spot(&self, t: f64) -> (Spot, f64) {
+        let (sin, cos) = rational(t);
+        let total = self.peak * sin;
+        let split = self.bank.split(total);
+        let volts = self.rail - self.a * sin + self.b * cos;
+        (
+            Spot {
+                t,
+                volts,
+                amps: total * split.fraction,
+            },
+            split.elasticity,
+        )
+    }
+
+    /// (1 + t²)²·(e·v·cos β - s·sin β·(A·cos β + B·sin β)), a quartic in t, and its derivative.
+    /// With B = 0 the factor 1 - t² is common, and t = 1 a false root, so it is divided out.
+    fn slope(&self, t: f64, s: f64, e: f64) -> (f64, f64) {
+        let square = t * t;
+        let (direct, sine) = (e * self.rail, 2.0 * (e + s) * self.a);
+        if self.b <= 0.0 {
+            return (direct * (1.0 + square) - sine * t, 2.0 * direct * t - sine);
+        }
+        let fall = 1.0 - square;
+        (
+            direct * fall * (1.0 + square) - sine * t * fall
+                + self.b * (e * fall * fall - 4.0 * s * square),
+            -4.0 * direct * t * square
+                - sine * (1.0 - 3.0 * square)
+                - self.b * (4.0 * e * t * fall + 8.0 * s * t),
+        )
+    }
+
+    /// The one root of `slope` in 0 to 1, or 1 if it stays positive.
+    ///
+    /// Divided by cos β the slope is e·V + B·(e·cos β - s·sin β·tan β), which falls with β, less
+    /// (e + s)·A·sin β, which rises: they cross once at most. Newton, kept inside a bracket.
+    fn stationary(&self, s: f64, e: f64) -> f64 {
+        if self.slope(1.0, s, e).0 >= 0.0 {
+            return 1.0;
+        }
+        let (mut lo, mut hi, mut t) = (0.0, 1.0, 0.5);
+        for _ in 0..100 {
+            let (value, derivative) = self.slope(t, s, e);
+            if value > 0.0 {
+                lo = t;
             } else {
-                elasticity * volts - s * sin * self.a
+                hi = t;
             }
-        };
-        if slope(to) >= 0.0 {
-            return to;
+            let next = t - value / derivative;
+            let kept = if next > lo && next < hi {
+                next
+            } else {
+                0.5 * (lo + hi)
+            };
+            let moved = (kept - t).abs();
+            t = kept;
+            if moved <= NARROWED {
+                break;
+            }
         }
-        if slope(from) <= 0.0 {
-            return from;
-        }
-        math::root(slope, from, to, NARROWED).unwrap_or(to)
+        t
     }
 
     /// The position in `[from, to]` where i/(p + q·v_CE) is greatest for the most loaded device: a
@@ -191,20 +291,20 @@ impl<'a> Locus<'a> {
     ///
     /// Stationary where e·cos β·(p + q·v) + q·sin β·(A·cos β + B·sin β) = 0; for an even share
     /// cos β = -qB/(p + qV).
-    pub(crate) fn worst_against_line(&self, p: f64, q: f64, from: f64, to: f64) -> f64 {
+    pub(crate) fn worst_against_line(&self, p: f64, q: f64, from: f64, to: f64) -> Spot {
         let slope = |t: f64| {
             let (sin, cos) = rational(t);
-            let volts = self.rail - self.a * sin + self.b * cos;
-            let elasticity = self.bank.split(self.peak * sin).elasticity;
-            elasticity * cos * (p + q * volts) + q * sin * (self.a * cos + self.b * sin)
+            let (spot, elasticity) = self.spot(t);
+            elasticity * cos * (p + q * spot.volts) + q * sin * (self.a * cos + self.b * sin)
         };
-        if to <= from || slope(to) >= 0.0 {
-            return to.max(from);
-        }
-        if slope(from) <= 0.0 {
-            return from;
-        }
-        math::root(slope, from, to, NARROWED).unwrap_or(to)
+        let t = if to <= from || slope(to) >= 0.0 {
+            to.max(from)
+        } else if slope(from) <= 0.0 {
+            from
+        } else {
+            math::root(slope, from, to, NARROWED).unwrap_or(to)
+        };
+        self.spot(t).0
     }
 }
 
@@ -240,8 +340,7 @@ mod tests {
             let rail = Volt(50.0);
             // Keep the volts positive: the stage saturates before.
             let locus = Locus::new(&bank, rail, rail * (swing / (1.0 + re / z)), load).unwrap();
-            let t = locus.worst(s, 0.0, locus.highest_with_volts());
-            let (v, i) = locus.at(t);
+            let Spot { volts: v, amps: i, .. } = locus.worst(s, 0.0, locus.highest_with_volts());
             let (found, fine) = (i * math::pow(v.max(0.0), s), brute(&locus, s));
             prop_assert!(found >= fine * (1.0 - 1e-12), "{found} {fine}");
             // A grid of 40 000 steps misses a smooth maximum by (curvature)·h²/8, about 1e-8.
@@ -256,7 +355,7 @@ mod tests {
             let load = Impedance::polar(Ohm(8.0), degrees.to_radians());
             let locus = Locus::new(&bank, Volt(40.0), Volt(40.0 * swing), load).unwrap();
             let volts = locus.rail + locus.b - w * (locus.a + locus.b);
-            prop_assert!((locus.at(locus.position(volts)).0 - volts).abs() < 1e-9);
+            prop_assert!((locus.at(locus.position(volts)).volts - volts).abs() < 1e-9);
         }
 
         #[test]
@@ -269,7 +368,7 @@ mod tests {
             let load = Impedance::polar(Ohm(8.0), phi);
             let amplitude = 40.0 * swing;
             let locus = Locus::new(&bank, Volt(40.0), Volt(amplitude), load).unwrap();
-            let point = locus.point(t);
+            let point = locus.point(locus.at(t));
             let current = amplitude / 8.0 * (point.angle_rad - phi).sin();
             let volts = 40.0 - amplitude * point.angle_rad.sin() - current * 0.11;
             prop_assert!((point.amps.0 - current / 2.0).abs() < 1e-9);
