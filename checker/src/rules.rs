@@ -64,9 +64,36 @@ macro_rules! rule {
     };
 }
 
+pub mod current {
+    //! Amperes and the watts they make.
+    pub mod device_peak;
+    pub mod device_share;
+    pub mod emitter_mean;
+    pub mod emitter_pulse;
+}
+pub mod soa {
+    //! Loci and limit lines against derated safe-area curves.
+    pub mod idle;
+    pub mod limiter_music;
+    pub mod limiter_soa;
+    pub mod low_frequency;
+    pub mod pulse_dwell;
+    pub mod reactive;
+    pub mod resistive;
+    pub mod short_circuit;
+}
 pub mod thermal {
     //! Temperatures and hours.
+    pub mod cutout_nuisance;
+    pub mod cutout_protects;
+    pub mod driver;
+    pub mod enclosure;
+    pub mod junction;
+    pub mod junction_peak;
+    pub mod reservoir_life;
+    pub mod resistor;
     pub mod sink;
+    pub mod touch;
 }
 pub mod voltage {
     //! Volts against breakdown and rated volts.
@@ -80,7 +107,28 @@ macro_rules! build {
 /// Every rule.
 pub static ALL: &[Registered] = &[
     build!(voltage::device),
+    build!(current::device_peak),
+    build!(current::device_share),
+    build!(current::emitter_mean),
+    build!(current::emitter_pulse),
+    build!(soa::resistive),
+    build!(soa::reactive),
+    build!(soa::idle),
+    build!(soa::pulse_dwell),
+    build!(soa::low_frequency),
+    build!(soa::short_circuit),
+    build!(soa::limiter_soa),
+    build!(soa::limiter_music),
+    build!(thermal::junction),
+    build!(thermal::junction_peak),
     build!(thermal::sink),
+    build!(thermal::touch),
+    build!(thermal::driver),
+    build!(thermal::cutout_protects),
+    build!(thermal::cutout_nuisance),
+    build!(thermal::reservoir_life),
+    build!(thermal::resistor),
+    build!(thermal::enclosure),
 ];
 
 /// Every rule's record, in report order.

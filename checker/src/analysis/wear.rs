@@ -4,7 +4,6 @@
 
 use super::case::Case;
 use super::heat::Heat;
-use super::loads::Driven;
 use super::rails::{Mains, Reservoir};
 use crate::build::Needs;
 use crate::build::parts::{Reservoir as Stated, both, three};
@@ -97,7 +96,7 @@ impl Case<'_> {
     ///
     /// # Errors
     /// What output stage or build do not state.
-    pub fn emitter_resistor(&self, heat: &Heat, _load: &Driven) -> Result<(Warm, f64, Watt), Needs> {
+    pub fn emitter_resistor(&self, heat: &Heat) -> Result<(Warm, f64, Watt), Needs> {
         let stage = self.output();
         let (resistor, (bench, idle), air) = three(stage.emitter.need(), both(self.bench(), self.idle()), self.air_inside())?;
         let rated = stage.emitter.part("W", |r| r.watt)?;
