@@ -24,7 +24,7 @@ rule! {
         Remedy { key: "protection.limiter", slot: "rail", series: Series::E24, up: true },
         Remedy { key: "stage.pairs", slot: "n", series: Series::Count, up: true },
     ],
-    example: "tern60", [("11 A at 0 V, 11 A at 15 V", "6 A at 0 V, 6 A at 15 V")],
+    example: "tern60", [("10 A at 0 V, 10 A at 15 V, 6.4 A at 30 V, 3.6 A at 50 V", "3 A at 0 V, 3 A at 50 V")],
 }
 
 /// One margin for the limiter: the declared load that comes nearest. A limiter known not to be fitted
@@ -55,7 +55,7 @@ mod tests {
     use crate::finding::Verdict::{Ok, Over, Thin};
     use crate::testing::{margin, tern60, verdict};
 
-    const LINE: &str = "    limit-line         bank 11 A at 0 V, 11 A at 15 V, 4 A at 50 V, 1 A at 95 V\n";
+    const LINE: &str = "    limit-line         bank 10 A at 0 V, 10 A at 15 V, 6.4 A at 30 V, 3.6 A at 50 V, 1.8 A at 70 V, 1 A at 95 V\n";
     const ALONE: (&str, &str) = ("loads              hall-8, bench-8", "loads              bench-8");
 
     /// A flat line of the bank is nearest at the peak: bench-8 at -5 % draws (41.3699 - 1.8)/(7.6 + 0.285714) =

@@ -22,7 +22,7 @@ rule! {
         Remedy { key: "protection.limiter", slot: "rail", series: Series::E24, up: false },
         Remedy { key: "stage.pairs", slot: "n", series: Series::Count, up: true },
     ],
-    example: "tern60", [("1 A at 95 V", "2 A at 95 V")],
+    example: "tern60", [("1 A at 95 V", "1.7 A at 95 V")],
 }
 
 /// One margin for each declared output device. A limiter known not to be fitted has none.
@@ -45,7 +45,7 @@ mod tests {
     use crate::finding::Verdict::{Ok, Over, Unchecked};
     use crate::testing::{margin, report, tern60};
 
-    const LINE: &str = "    limit-line         bank 11 A at 0 V, 11 A at 15 V, 4 A at 50 V, 1 A at 95 V\n";
+    const LINE: &str = "    limit-line         bank 10 A at 0 V, 10 A at 15 V, 6.4 A at 30 V, 3.6 A at 50 V, 1.8 A at 70 V, 1 A at 95 V\n";
     const ONE: (&str, &str) = ("pairs               2", "pairs               1");
 
     /// A flat line of the device meets the curve where it is lowest, at both rails: 2·45.6068 = 91.2136 V.

@@ -24,7 +24,7 @@ rule! {
         Remedy { key: "protection.limiter", slot: "base", series: Series::E24, up: true },
         Remedy { key: "stage.pairs", slot: "n", series: Series::Count, up: true },
     ],
-    example: "tern60", [("4 A at 50 V", "11 A at 50 V")],
+    example: "tern60", [("3.6 A at 50 V, 1.8 A at 70 V", "6.4 A at 70 V")],
 }
 
 /// One margin for each declared output device.
@@ -70,22 +70,22 @@ mod tests {
     use crate::finding::Verdict::{Ok, Over, Unchecked};
     use crate::testing::{margin, tern60, verdict};
 
-    const LINE: &str = "    limit-line         bank 11 A at 0 V, 11 A at 15 V, 4 A at 50 V, 1 A at 95 V\n";
+    const LINE: &str = "    limit-line         bank 10 A at 0 V, 10 A at 15 V, 6.4 A at 30 V, 3.6 A at 50 V, 1.8 A at 70 V, 1 A at 95 V\n";
 
     /// A flat line of 4 A for the device, one pair: v = 45.6068 - 4·0.22 = 44.7268 V. The curve allows
-    /// k·3.6·(50/44.7268)^0.98515 = k·4.0177 A and the power k·180/44.7268 = k·4.0244 A. Mean heat ½·45.6068·4 =
-    /// 91.2136 W on a sink at the cutout's latest, 80 + 5 + 4 = 89 degC: Tj = 89 + 91.2136·(0.35 + 0.69) = 183.862
-    /// degC; Tj,max allows 4·(150 - 89)/(183.862 - 89) = 2.57216 A, the lesser. Hand calculation.
+    /// k·3.6·(50/44.7268)^0.98515 = k·4.0177 A, some 2.5 A. Mean heat ½·45.6068·4 = 91.2136 W on a sink at
+    /// the cutout's latest, 85 + 5 + 4 = 94 degC: Tj = 94 + 91.2136·(0.35 + 0.69) = 188.862 degC; Tj,max allows
+    /// 4·(150 - 94)/(188.862 - 94) = 2.36133 A, the lesser. Hand calculation.
     #[test]
     fn the_mean_heat_decides_by_hand() {
-        let text = tern60(&[("pairs               2", "pairs               1"), (LINE, "    limit-line         device 4 A at 0 V\n")]);
+        let text = tern60(&[("pairs               2", "pairs               1"), (LINE, "    limit-line         device 4 A at 0 V\n"), ("cutout             80 degC", "cutout             85 degC")]);
         let m = margin(&text, RULE.name, "n16");
         assert!((m.stress.unwrap().value - 4.0).abs() < 1e-9);
-        assert!((m.rating.unwrap().value - 2.57216).abs() < 1e-4, "{:?}", m.rating);
+        assert!((m.rating.unwrap().value - 2.36133).abs() < 1e-4, "{:?}", m.rating);
         assert!((m.witness.device_v.unwrap() - 44.7268).abs() < 1e-3);
         assert_eq!(m.verdict, Over);
-        // 2.5 A: Tj = 89 + 57.0085·1.04 = 148.29 degC, and the curve has more
-        assert_eq!(verdict(&text.replace("device 4 A at 0 V", "device 2.5 A at 0 V"), RULE.name, "n16"), Ok);
+        // 2.3 A: Tj = 94 + 52.4478·1.04 = 148.55 degC, and the curve has more
+        assert_eq!(verdict(&text.replace("device 4 A at 0 V", "device 2.3 A at 0 V"), RULE.name, "n16"), Ok);
     }
 
     #[test]

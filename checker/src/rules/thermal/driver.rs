@@ -29,7 +29,7 @@ rule! {
         Remedy { key: "stage.own-sink", slot: "K/W", series: Series::Heatsink, up: false },
         Remedy { key: "stage.pairs", slot: "n", series: Series::Count, up: true },
     ],
-    example: "tern60", [("own-sink           6 K/W per device", "own-sink           90 K/W per device")],
+    example: "tern60", [("own-sink           6 K/W per device", "own-sink           99 K/W per stage")],
 }
 
 /// One margin for each declared driver device: the load that heats it most.
