@@ -7,6 +7,8 @@
 
 pub mod case;
 pub mod chain;
+pub mod clip;
+pub mod derived;
 pub mod devices;
 pub mod heat;
 pub mod limits;
@@ -15,6 +17,8 @@ pub mod margins;
 pub mod rails;
 pub mod safe_area;
 pub mod signal;
+pub mod supply;
+pub mod switch_on;
 pub mod temperatures;
 pub mod wear;
 

@@ -8,6 +8,7 @@ pub mod explain;
 pub mod figure;
 pub mod html;
 pub mod json;
+pub mod language;
 pub mod margins;
 pub mod markdown;
 pub mod message;
@@ -24,10 +25,23 @@ mod tests;
 
 use std::fmt::Write;
 
+use crate::rule::Rule;
+use crate::rules;
+
 /// The caution that stands under every margin summary and every page.
 pub const CAUTION: &str = "Caution: mains wiring and charged reservoirs kill. Isolate, discharge and \
 measure before touching; fuse and earth as the local wiring code demands; have mains work done or checked by \
 someone licensed where the law says so. A clean report is arithmetic on the numbers given, not a certificate.";
+
+/// The record of a rule. Tests of the forms bring records of their own, so that what they show does
+/// not change with every rule.
+fn rule(name: &str) -> Option<&'static Rule> {
+    #[cfg(test)]
+    if let Some(rule) = sample::rule(name) {
+        return Some(rule);
+    }
+    rules::find(name)
+}
 
 /// What stands over a build whose solution did not converge.
 const UNSETTLED: &str = "The coupled solution did not settle: nothing here is to be relied on.";

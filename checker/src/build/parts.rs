@@ -378,6 +378,8 @@ pub struct Stage {
     pub pairs: Field<u32>,
     /// Emitter resistor.
     pub emitter: Field<Resistor>,
+    /// What the bill of materials says of the emitter resistors.
+    pub emitter_bought: Option<Bought>,
     /// Base-emitter resistor of the bank.
     pub base_emitter: Field<Resistor>,
     /// Bias as stated.
@@ -939,6 +941,7 @@ impl<'v, 'a> Reader<'v, 'a> {
             connection,
             bought: group.map(|g| g.bought.clone()).unwrap_or_default(),
             emitter: p.one("emitter", resistor),
+            emitter_bought: p.seen.group("emitter").map(|g| g.bought.clone()),
             base_emitter: p.one("base-emitter", resistor),
             idle: p.field("idle", |groups| Some(groups.iter().map(idle).collect())),
             insulator: p.si("insulator", "K/W"),

@@ -1,9 +1,11 @@
 //! Which files a command works on, and their texts. Must not know what is done with them.
 
+use std::collections::{HashMap, HashSet};
 use std::io::Read;
 use std::path::{Path, PathBuf};
-use std::sync::Arc;
+use std::sync::{Arc, Mutex, PoisonError};
 
+use ampspec_grammar::{Tree, parse};
 use derate::source::{Disk, Files, MAX_BYTES, normal, text_of};
 
 /// The file name ending that is looked for in folders.
@@ -32,6 +34,13 @@ impl Input {
             shown(&path)
         };
         Self { path, name }
+    }
+
+    /// The folder that what it uses may not leave: the one derate was started in, or, for a file
+    /// from elsewhere, its own.
+    pub(crate) fn root(&self) -> Option<PathBuf> {
+        let elsewhere = self.path.is_absolute() || normal(&self.path).starts_with("..");
+        (!elsewhere).then(|| PathBuf::from("."))
     }
 
     /// The text.
@@ -85,7 +94,7 @@ pub(crate) fn inputs(paths: &[PathBuf]) -> (Vec<Input>, Vec<String>) {
         }
         found.extend(below);
     }
-    let mut seen = std::collections::HashSet::new();
+    let mut seen = HashSet::new();
     found.retain(|path| seen.insert(normal(path)));
     (found.into_iter().map(Input::new).collect(), notes)
 }
@@ -107,20 +116,46 @@ fn below(folder: &Path, notes: &mut Vec<String>) -> Vec<PathBuf> {
     found
 }
 
-/// A text that is already read, over the disk for all that it uses.
-pub(crate) struct Given {
-    /// Its path.
-    pub(crate) path: PathBuf,
-    /// The text.
-    pub(crate) text: Arc<str>,
+/// Trees of the files that several specs use, each parsed once in a run.
+#[derive(Default)]
+pub(crate) struct Shelf(Mutex<HashMap<PathBuf, Arc<Tree>>>);
+
+impl Shelf {
+    fn tree(&self, path: &Path) -> Result<Arc<Tree>, String> {
+        let shelf = || self.0.lock().unwrap_or_else(PoisonError::into_inner);
+        if let Some(tree) = shelf().get(path) {
+            return Ok(Arc::clone(tree));
+        }
+        // parsed with the shelf free: twice now and then, but nobody waits
+        let tree = Disk.tree(path)?;
+        shelf().insert(path.to_owned(), Arc::clone(&tree));
+        Ok(tree)
+    }
 }
 
-impl Files for Given {
+/// A text that is already read, over the disk for all that it uses.
+pub(crate) struct Given<'a> {
+    /// Its path.
+    pub(crate) path: &'a Path,
+    /// The text.
+    pub(crate) text: Arc<str>,
+    /// Trees of the others.
+    pub(crate) shelf: &'a Shelf,
+}
+
+impl Files for Given<'_> {
     fn read(&self, path: &Path) -> Result<Arc<str>, String> {
         if path == self.path {
             Ok(Arc::clone(&self.text))
         } else {
             Disk.read(path)
+        }
+    }
+    fn tree(&self, path: &Path) -> Result<Arc<Tree>, String> {
+        if path == self.path {
+            Ok(Arc::new(parse(Arc::clone(&self.text))))
+        } else {
+            self.shelf.tree(path)
         }
     }
     fn resolve(&self, path: &Path) -> PathBuf {

@@ -9,7 +9,7 @@ use derate::render::terminal::Style;
 use derate::{Options, Outcome};
 use rayon::prelude::*;
 
-use super::input::{Given, Input, inputs};
+use super::input::{Given, Input, Shelf, inputs};
 use super::today::today;
 use super::{Colour, NOT_RUN};
 
@@ -67,9 +67,10 @@ impl Solve {
             policy: self.policy.clone(),
             build: self.build.clone(),
             today: today(),
-            changes: true,
+            ..Options::default()
         };
-        let results = self.each(&files, |file| outcome(file, &options));
+        let shelf = Shelf::default();
+        let results = self.each(&files, |file| outcome(file, &shelf, &options));
         let mut outcomes = Vec::with_capacity(results.len());
         for result in results {
             match result {
@@ -77,12 +78,7 @@ impl Solve {
                 Err(note) => notes.push(note),
             }
         }
-        if let Some(name) = &self.build
-            && !outcomes.is_empty()
-            && outcomes.iter().all(|o| o.report.builds.is_empty())
-        {
-            notes.push(format!("no build is named {name}"));
-        }
+        notes.extend(self.unheeded(&outcomes));
         let fail_on = match self.fail_on {
             Level::Error => FailOn::Error,
             Level::Warning => FailOn::Warning,
@@ -95,6 +91,27 @@ impl Solve {
             NOT_RUN
         };
         (run, notes, status)
+    }
+
+    /// Names on the command line that name nothing.
+    fn unheeded(&self, outcomes: &[Outcome]) -> Vec<String> {
+        let mut notes = Vec::new();
+        let builds = || outcomes.iter().flat_map(|o| &o.report.builds);
+        if let Some(name) = &self.build
+            && !outcomes.is_empty()
+            && builds().next().is_none()
+        {
+            notes.push(format!("no build is named {name}"));
+        }
+        if let Some(name) = &self.policy
+            && let Some(build) = builds().find(|b| b.policy != *name)
+        {
+            notes.push(format!(
+                "no policy is named {name}; build {} was checked under {}",
+                build.name, build.policy
+            ));
+        }
+        notes
     }
 
     /// One result for each file, in the order of the files, whatever the number of threads. A pool
@@ -114,13 +131,16 @@ impl Solve {
     }
 }
 
-fn outcome(file: &Input, options: &Options) -> Result<Outcome, String> {
-    let text = file
-        .read()
-        .map_err(|why| format!("cannot read {}: {why}", file.name))?;
-    let given = Given {
-        path: file.path.clone(),
-        text,
+/// One file read and checked, or why it cannot be read.
+fn outcome(file: &Input, shelf: &Shelf, options: &Options) -> Result<Outcome, String> {
+    let cannot = |why| format!("cannot read {}: {why}", file.name);
+    let text = file.read().map_err(cannot)?;
+    let path = file.path.as_path();
+    let given = Given { path, text, shelf };
+    let root = file.root();
+    let options = Options {
+        root,
+        ..options.clone()
     };
-    Ok(derate::check(&given, &file.path, &file.name, options))
+    derate::check(&given, path, &file.name, &options).map_err(cannot)
 }

@@ -127,6 +127,15 @@ pub fn csv(text: &str) -> String {
     text
 }
 
+/// For a message of SARIF, in which `[text](target)` would be a link; lines stay lines.
+#[must_use]
+pub fn sarif(text: &str) -> String {
+    text.lines()
+        .map(|line| terminal(line).replace("](", "] ("))
+        .collect::<Vec<_>>()
+        .join("\n")
+}
+
 /// The message of a workflow command of a build service.
 #[must_use]
 pub fn annotation(text: &str) -> String {

@@ -106,8 +106,7 @@ impl Row {
                 a.map(figure).unwrap_or_default(),
             ),
         };
-        let none_left = margin.used_percent.is_none() && margin.verdict != Verdict::Unchecked;
-        let used = if none_left {
+        let used = if message::nothing_left(margin) {
             "no rating left".to_owned()
         } else {
             margin.used_percent.map(percent).unwrap_or_default()
@@ -120,17 +119,10 @@ impl Row {
         } else if information {
             verdict.push_str(", information");
         }
-        let needs = listed(&margin.needs);
-        let missing = if needs.is_empty() {
-            margin.note.clone()
-        } else {
-            format!("needs {needs}")
-        };
-        let at = if margin.verdict == Verdict::Unchecked {
-            missing
-        } else {
-            worst_at(&margin.witness)
-        };
+        let needs = (!margin.needs.is_empty()).then(|| format!("needs {}", listed(&margin.needs)));
+        let said = [worst_at(&margin.witness), margin.note.clone()];
+        let said = needs.into_iter().chain(said).filter(|s| !s.is_empty());
+        let at = said.collect::<Vec<_>>().join("; ");
         Self {
             rule: margin.rule,
             stress,
@@ -201,7 +193,7 @@ pub fn assumptions(build: &BuildReport) -> Vec<String> {
 #[must_use]
 pub fn purchase(margin: &Margin) -> String {
     let part = &margin.part;
-    let refs = (!part.refs.is_empty()).then(|| listed(&part.refs));
+    let refs = (!part.refs.is_empty()).then(|| listed(&runs(&part.refs)));
     let count = part.quantity.map(|n| format!("{n} in the build"));
     let said: Vec<String> = refs
         .into_iter()
@@ -209,6 +201,36 @@ pub fn purchase(margin: &Margin) -> String {
         .chain(part.order_code.clone())
         .collect();
     said.join("; ")
+}
+
+/// `Q7-Q10` for designators that follow each other.
+fn runs(refs: &[String]) -> Vec<String> {
+    let split = |name: &str| {
+        let letters = name.trim_end_matches(|c: char| c.is_ascii_digit()).len();
+        let (letters, number) = name.split_at_checked(letters)?;
+        Some((letters.to_owned(), number.parse::<u32>().ok()?))
+    };
+    let mut out: Vec<String> = Vec::new();
+    // where the run that is open began, and the letters and number it has come to
+    let mut open: Option<(&String, String, u32)> = None;
+    for name in refs {
+        match (split(name), &mut open) {
+            (Some((letters, number)), Some((first, same, last)))
+                if letters == *same && Some(number) == last.checked_add(1) =>
+            {
+                *last = number;
+                let run = format!("{first}-{name}");
+                if let Some(end) = out.last_mut() {
+                    *end = run;
+                }
+            }
+            (now, open) => {
+                out.push(name.clone());
+                *open = now.map(|(letters, number)| (name, letters, number));
+            }
+        }
+    }
+    out
 }
 
 /// The reason each waived margin of a build was accepted for: `thermal.touch: inside a rack`.

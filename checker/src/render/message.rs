@@ -57,12 +57,7 @@ pub fn headline(rule: &Rule, margin: &Margin, build: &BuildReport) -> String {
     let (Some(stress), Some(rating), Some(allowance)) =
         (margin.stress, margin.rating, margin.allowance)
     else {
-        let why = if margin.note.is_empty() {
-            format!("needs {}", listed(&margin.needs))
-        } else {
-            margin.note.clone()
-        };
-        return format!("{who}: {} is unchecked: {why}", rule.compares);
+        return format!("{who}: {}", without_numbers(rule, margin));
     };
     let (value, bound) = apart(stress, allowance);
     let limit = limit(rule, &bound, allowance, rating);
@@ -78,6 +73,28 @@ pub fn headline(rule: &Rule, margin: &Margin, build: &BuildReport) -> String {
     )
 }
 
+/// What is said where nothing was compared: what is missing, or what does not agree.
+fn without_numbers(rule: &Rule, margin: &Margin) -> String {
+    let verdict = verdict(margin.verdict);
+    match (margin.note.as_str(), margin.verdict) {
+        ("", Verdict::Unchecked) => format!(
+            "{} is unchecked: needs {}",
+            rule.compares,
+            listed(&margin.needs)
+        ),
+        ("", _) => format!("{}: {verdict}", rule.compares),
+        (note, Verdict::Unchecked) => format!("{} is unchecked: {note}", rule.compares),
+        (note, _) => format!("{note}: {verdict}"),
+    }
+}
+
+/// Whether something is asked of a part of which nothing is allowed, so that no share can be named.
+#[must_use]
+pub fn nothing_left(margin: &Margin) -> bool {
+    let past = matches!(margin.verdict, Verdict::Over | Verdict::Thin);
+    past && margin.used_percent.is_none() && margin.stress.is_some()
+}
+
 /// `118 % used, margin -18 points: over`.
 #[must_use]
 pub fn used(margin: &Margin) -> String {
@@ -88,8 +105,8 @@ pub fn used(margin: &Margin) -> String {
             percent(used),
             points(left)
         ),
-        _ if margin.verdict == Verdict::Unchecked => verdict.to_owned(),
-        _ => format!("no rating left: {verdict}"),
+        _ if nothing_left(margin) => format!("no rating left: {verdict}"),
+        _ => verdict.to_owned(),
     }
 }
 
@@ -98,8 +115,8 @@ pub fn used(margin: &Margin) -> String {
 pub fn brief(margin: &Margin) -> String {
     match margin.used_percent {
         Some(used) => format!("{} used", percent(used)),
-        None if margin.verdict == Verdict::Unchecked => "unchecked".to_owned(),
-        None => "no rating left".to_owned(),
+        None if nothing_left(margin) => "no rating left".to_owned(),
+        None => verdict(margin.verdict).to_owned(),
     }
 }
 

@@ -9,9 +9,149 @@ use ampspec_grammar::{Span, parse};
 use crate::Outcome;
 use crate::finding::*;
 use crate::render::run::{FailOn, Run};
-use crate::rule::compare;
-use crate::rules;
+use crate::rule::{Allow, Example, Rule, Sense, compare};
 use crate::source::Sources;
+
+const BASE: Rule = Rule {
+    name: "",
+    compares: "",
+    why: "",
+    stress: "",
+    rating: "",
+    formula: "",
+    source: "",
+    reads: &[],
+    sense: Sense::AtMost,
+    unit: "V",
+    allow: Allow::Percent(90.0),
+    allow_source: "common practice, no source",
+    remedies: &[],
+    example: Example {
+        kit: "",
+        edits: &[],
+    },
+};
+static RULES: &[Rule] = &[
+    Rule {
+        name: "voltage.device",
+        compares: "collector-emitter voltage against V(BR)CEO",
+        why: "Without load the rails rise, and a device that is off sees both of them. Past V(BR)CEO it breaks down at the first full swing and takes the loudspeaker with it.",
+        stress: "rail to rail, no load, high mains",
+        rating: "V(BR)CEO",
+        formula: "V = V0+ + V0-",
+        source: "common practice, no source",
+        reads: &["device.vceo"],
+        ..BASE
+    },
+    Rule {
+        name: "soa.reactive",
+        compares: "load locus against the derated safe area, reactive load",
+        why: "A reactive load asks for current while the device still holds most of the rail. That is where devices fail.",
+        stress: "through the device",
+        rating: "safe area at that voltage",
+        unit: "A",
+        allow: Allow::Percent(80.0),
+        reads: &["device.soa", "load.minimum", "load.angle"],
+        formula: "max i(t) / I_SOA(v(t))",
+        ..BASE
+    },
+    Rule {
+        name: "thermal.junction",
+        compares: "mean junction temperature against Tj,max",
+        why: "Every 10 K costs half the life.",
+        stress: "junction, mean, at the duty",
+        rating: "Tj,max",
+        unit: "degC",
+        sense: Sense::Temperature,
+        allow: Allow::Below(25.0, f64::INFINITY),
+        formula: "Tj = Ta + P Rth",
+        ..BASE
+    },
+    Rule {
+        name: "thermal.sink",
+        compares: "heatsink temperature",
+        why: "A hot sink cooks what stands beside it.",
+        stress: "sink at the duty",
+        rating: "hard limit",
+        unit: "degC",
+        sense: Sense::Temperature,
+        allow: Allow::Fixed(80.0, 100.0),
+        ..BASE
+    },
+    Rule {
+        name: "power.rated-power",
+        compares: "power delivered against power claimed",
+        why: "A claim that the board cannot meet comes back as returns.",
+        stress: "delivered at clip",
+        rating: "claimed power",
+        unit: "W",
+        sense: Sense::AtLeast,
+        allow: Allow::Percent(100.0),
+        ..BASE
+    },
+    Rule {
+        name: "voltage.reservoir",
+        compares: "off-load rail against the capacitor's rating",
+        why: "An electrolytic past its voltage leaks, heats and vents.",
+        stress: "off-load crest, high mains",
+        rating: "rated voltage",
+        unit: "V",
+        ..BASE
+    },
+    Rule {
+        name: "thermal.touch",
+        compares: "touchable temperature",
+        why: "Skin burns at 60 degC in seconds.",
+        stress: "on the sink at 25 degC ambient",
+        rating: "hard limit",
+        unit: "degC",
+        sense: Sense::Temperature,
+        allow: Allow::Fixed(60.0, 60.0),
+        ..BASE
+    },
+    Rule {
+        name: "bom.quantity",
+        compares: "designators with the count worked out",
+        why: "Kits are packed wrong.",
+        sense: Sense::Fault,
+        allow: Allow::None,
+        unit: "1",
+        ..BASE
+    },
+    Rule {
+        name: "sample.rule",
+        compares: "a figure with another, <b>in words</b>",
+        why: " Because it says so, over\n two lines. And a second sentence that is long enough to be wrapped where a terminal ends.",
+        formula: "a = b·c, *d*",
+        source: "common practice, no source",
+        reads: &["device.vceo", "load.nominal"],
+        rating: "V(BR)CEO",
+        ..BASE
+    },
+    Rule {
+        name: "data.missing",
+        compares: "what a rule needs against what is stated",
+        why: "What is not stated cannot be checked.",
+        sense: Sense::Fault,
+        allow: Allow::None,
+        unit: "",
+        ..BASE
+    },
+    Rule {
+        name: "data.unit-suspect",
+        compares: "a value against the plausible band",
+        why: "A slip of a thousand survives review because it parses.",
+        sense: Sense::Fault,
+        allow: Allow::None,
+        unit: "",
+        ..BASE
+    },
+];
+
+/// One of the invented rules.
+pub(crate) fn rule(name: &str) -> Option<&'static Rule> {
+    RULES.iter().find(|r| r.name == name)
+}
 
 /// A kit with something wrong on most lines.
 const KIT: &str = "\
@@ -41,7 +181,7 @@ const PART: &str = "device n16 npn {\n    vceo 240 V\n    soa dc 16 A at 11 V, 3
 
 /// Names that try to break out of HTML, XML, Markdown, CSV, a workflow command and a terminal.
 pub(crate) const HOSTILE: &str =
-    "<script>alert(1)</script>=cmd|'/c calc'!A1]]>`x`\u{1b}[31m\u{202e}@all::error::%0A";
+    "<script>alert(1)</script>=cmd|'/c calc'!A1]]>`x`\u{1b}[31m\u{202e}[a](b)@all::error::%0A";
 
 pub(crate) struct Kit {
     pub(crate) sources: Sources,
@@ -90,7 +230,7 @@ impl Kit {
         numbers: Option<(f64, f64)>,
         site: &str,
     ) -> Margin {
-        let record = rules::find(rule);
+        let record = super::rule(rule);
         let compared = record
             .zip(numbers)
             .and_then(|(r, (stress, rating))| compare(r, r.allow, stress, rating, 40.0));
@@ -259,6 +399,17 @@ fn margins(kit: &Kit) -> Vec<Margin> {
             "devices   n16 p16",
         )
     };
+    let count = Margin {
+        verdict: Verdict::Over,
+        severity: Severity::Error,
+        note: "the line names 6; 4 are needed (2 x pairs)".to_owned(),
+        ..kit.margin(
+            "bom.quantity",
+            whole("out", "emitter"),
+            None,
+            "emitter   22 ohm",
+        )
+    };
     let no_rating = Margin {
         note: "the case is at Tj,max".to_owned(),
         ..kit.margin(
@@ -294,6 +445,7 @@ fn margins(kit: &Kit) -> Vec<Margin> {
         waits("voltage.device", "p16"),
         ends,
         no_rating,
+        count,
     ]
 }
 

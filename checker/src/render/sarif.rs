@@ -12,7 +12,7 @@ use crate::rule::Rule;
 use crate::rules;
 use crate::source::Sources;
 
-use super::escape::uri;
+use super::escape::{sarif as plain, uri};
 use super::message;
 use super::run::Run;
 use super::shown::{Origin, Placed, Shown, margin_fingerprint, shown};
@@ -68,7 +68,7 @@ fn result(rule: &str, severity: Severity, text: String, fingerprint: String) -> 
             Severity::Warning => "warning",
             Severity::Information => "note",
         },
-        "message": { "text": text },
+        "message": { "text": plain(&text) },
         "partialFingerprints": { "derate/v1": fingerprint },
     });
     if let Some(index) = rules::all().position(|r| r.name == rule) {
@@ -104,7 +104,7 @@ fn finding(outcome: &Outcome, one: &Shown<'_>) -> Value {
 
 fn margin(outcome: &Outcome, Placed { build, margin: m }: Placed<'_>) -> Value {
     let (sources, report) = (&outcome.sources, &outcome.report);
-    let text = message::whole(rules::find(m.rule), m, build);
+    let text = message::whole(super::rule(m.rule), m, build);
     let severity = if m.verdict == Verdict::Unchecked {
         Severity::Information
     } else {
@@ -116,9 +116,9 @@ fn margin(outcome: &Outcome, Placed { build, margin: m }: Placed<'_>) -> Value {
         &mut result,
         "properties",
         json!({
-            "build": build.name,
-            "alternate": build.alternate,
-            "part": m.part.name,
+            "build": plain(&build.name),
+            "alternate": build.alternate.as_deref().map(plain),
+            "part": plain(&m.part.name),
             "usedPercent": m.used_percent.map(super::json::nine_digits),
             "verdict": message::verdict(m.verdict),
         }),
@@ -146,7 +146,7 @@ fn place(result: &mut Value, sources: &Sources, site: Site, related: &[Related])
     let others: Vec<Value> = related
         .iter()
         .enumerate()
-        .map(|(id, r)| json!({ "id": id, "message": { "text": r.message }, "physicalLocation": location(sources, r.site) }))
+        .map(|(id, r)| json!({ "id": id, "message": { "text": plain(&r.message) }, "physicalLocation": location(sources, r.site) }))
         .collect();
     if !others.is_empty() {
         put(result, "relatedLocations", Value::Array(others));
@@ -158,8 +158,7 @@ fn finish(result: &mut Value, fixes: Vec<Value>, waiver: Option<&Waiver>) {
         put(result, "fixes", Value::Array(fixes));
     }
     if let Some(waiver) = waiver {
-        let accepted =
-            json!([{ "kind": "inSource", "status": "accepted", "justification": waiver.reason }]);
+        let accepted = json!([{ "kind": "inSource", "status": "accepted", "justification": plain(&waiver.reason) }]);
         put(result, "suppressions", accepted);
     }
 }
@@ -200,5 +199,5 @@ fn fix(sources: &Sources, title: &str, edits: &[TextEdit]) -> Value {
         .into_iter()
         .map(|(site, replacements)| json!({ "artifactLocation": artifact(sources, site), "replacements": replacements }))
         .collect();
-    json!({ "description": { "text": title }, "artifactChanges": changes })
+    json!({ "description": { "text": plain(title) }, "artifactChanges": changes })
 }

@@ -10,7 +10,6 @@ use sha2::{Digest, Sha256};
 use crate::finding::{
     BuildReport, Finding, Margin, Related, Report, Severity, Site, TextEdit, Verdict, Waiver,
 };
-use crate::rules;
 use crate::source::Sources;
 
 use super::figure::percent;
@@ -277,7 +276,15 @@ fn clusters(report: &Report) -> Vec<Shown<'_>> {
 /// The order in which margins govern: over, thin, ok by used; then unchecked.
 #[must_use]
 pub fn governing(a: &Margin, b: &Margin) -> Ordering {
-    let used = |m: &Margin| m.used_percent.unwrap_or(f64::INFINITY);
+    // past a rating of which nothing is left comes before any share, agreement without numbers last
+    let none = |m: &Margin| {
+        if message::nothing_left(m) {
+            f64::INFINITY
+        } else {
+            f64::NEG_INFINITY
+        }
+    };
+    let used = |m: &Margin| m.used_percent.unwrap_or_else(|| none(m));
     rank(b.verdict)
         .cmp(&rank(a.verdict))
         .then(used(b).total_cmp(&used(a)))
@@ -328,14 +335,10 @@ fn cluster<'a>(report: &'a Report, mut group: Vec<Placed<'a>>) -> Option<Shown<'
 }
 
 /// The message of a cluster and the lines under it.
-fn words(
-    lead: Placed<'_>,
-    group: &[Placed<'_>],
-    waiver: Option<&Waiver>,
-) -> (String, Vec<Detail>) {
+fn words(lead: Placed<'_>, group: &[Placed<'_>], waiver: Option<&Waiver>) -> (String, Vec<Detail>) {
     let mut details = Vec::new();
     let worst = message::worst_at(&lead.margin.witness);
-    let rule = rules::find(lead.margin.rule);
+    let rule = super::rule(lead.margin.rule);
     let message = match rule {
         Some(rule) => message::headline(rule, lead.margin, lead.build),
         None => format!(

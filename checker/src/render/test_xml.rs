@@ -6,7 +6,6 @@ use std::fmt::{self, Write};
 
 use crate::Outcome;
 use crate::finding::{BuildReport, Margin, Severity, Verdict, Waiver};
-use crate::rules;
 
 use super::escape::xml as plain;
 use super::message::{self, build_name, part_name};
@@ -146,7 +145,7 @@ fn end(severity_of: Severity, waiver: Option<&Waiver>, fail_on: FailOn, text: St
 
 fn case(outcome: &Outcome, suite: &str, build: &BuildReport, m: &Margin, fail_on: FailOn) -> Case {
     let report = &outcome.report;
-    let text = || message::whole(rules::find(m.rule), m, build);
+    let text = || message::whole(super::rule(m.rule), m, build);
     let waiver = m.waiver.and_then(|at| report.waivers.get(at));
     let end = match (m.verdict, waiver) {
         (Verdict::Ok, _) => End::Pass,

@@ -29,7 +29,7 @@ rule! {
         Remedy { key: "device.current", slot: "A", series: Series::TwoDigits, up: true },
         Remedy { key: "transformer.secondary", slot: "V", series: Series::SecondaryVolts, up: false },
     ],
-    example: "tern60", [("pairs               2", "pairs               1"), ("resistive 8 ohm", "resistive 3 ohm")],
+    example: "tern60", [("pairs              2", "pairs              1"), ("resistive 8 ohm", "resistive 3 ohm")],
 }
 
 /// One margin for each declared output device: the load that draws most.
@@ -105,7 +105,7 @@ mod tests {
     /// 43.8068/7.885714 = 5.55521 A. Hand calculation.
     #[test]
     fn one_pair_carries_the_whole_peak() {
-        let text = tern60(&[("pairs               2", "pairs               1"), ("loads              hall-8, bench-8", "loads              bench-8")]);
+        let text = tern60(&[("pairs              2", "pairs              1"), ("loads              hall-8, bench-8", "loads              bench-8")]);
         let m = margin(&text, RULE.name, "n16");
         assert!((m.stress.unwrap().value - 5.55521).abs() < 1e-4, "{:?}", m.stress);
         assert!((m.allowance.unwrap().value - 12.8).abs() < 1e-12);
@@ -117,7 +117,7 @@ mod tests {
     fn thin_and_over_meet_at_the_limits() {
         let with = |amps: &str| {
             tern60(&[
-                ("pairs               2", "pairs               1"),
+                ("pairs              2", "pairs              1"),
                 ("loads              hall-8, bench-8", "loads              bench-8"),
                 ("current            16 A peak 28 A", amps),
             ])
@@ -143,7 +143,7 @@ mod tests {
     #[test]
     fn bridged_sees_half_the_load() {
         let text = tern60(&[
-            ("pairs               2", "pairs               1"),
+            ("pairs              2", "pairs              1"),
             ("loads              hall-8, bench-8", "loads              bench-8"),
             ("channels           1", "channels           2 bridged"),
         ]);
@@ -155,7 +155,7 @@ mod tests {
     fn what_is_missing_is_named() {
         let m = margin(&tern60(&[("    current            16 A peak 28 A\n", "")]), RULE.name, "n16");
         assert_eq!((m.verdict, m.needs.as_slice()), (Unchecked, &["device n16 current".to_owned()][..]));
-        let m = margin(&tern60(&[("    drop               1.8 V at 0 A, 3.8 V at 7 A        # loaded rail to peak output\n", "")]), RULE.name, "n16");
+        let m = margin(&tern60(&[("    drop               1.8 V at 0 A, 3.8 V at 7 A  # loaded rail to peak output\n", "")]), RULE.name, "n16");
         assert_eq!((m.verdict, m.needs.as_slice()), (Unchecked, &["amplifier tern60 drop".to_owned()][..]));
     }
 }

@@ -27,7 +27,7 @@ rule! {
     remedies: [
         Remedy { key: "stage.emitter", slot: "ohm", series: Series::E12, up: true },
     ],
-    example: "tern60", [("emitter             0R22 ±5 % 5 W", "emitter             0R01 ±5 % 5 W"), ("vbe-spread          20 mV", "vbe-spread          60 mV")],
+    example: "tern60", [("emitter            0R22 ±5 % 5 W", "emitter            0R01 ±5 % 5 W"), ("vbe-spread         20 mV", "vbe-spread         60 mV")],
 }
 
 /// One margin for each declared output device, where several are in parallel: at the greatest peak
@@ -105,23 +105,23 @@ mod tests {
     /// 2·3.0079/4.0079 = 1.501: over; at 13 mV 2·1.6584/2.6584 = 1.2477: ok. Hand calculation.
     #[test]
     fn without_resistors_the_junctions_decide() {
-        let with = |spread: &str| tern60(&[("emitter             0R22 ±5 % 5 W pulse 20 A  ref R21-R24  part \"WW5-0R22J\"", "emitter             none"), ("50 mA per device, 11 mV across emitter", "50 mA per device"), ("vbe-spread          20 mV", spread)]);
-        let m = margin(&with("vbe-spread          20 mV"), RULE.name, "n16");
+        let with = |spread: &str| tern60(&[("emitter            0R22 ±5 % 5 W pulse 20 A ref R21-R24 part \"WW5-0R22J\"", "emitter            none"), ("50 mA per device, 11 mV across emitter", "50 mA per device"), ("vbe-spread         20 mV", spread)]);
+        let m = margin(&with("vbe-spread         20 mV"), RULE.name, "n16");
         assert!((m.stress.unwrap().value - 1.3706).abs() < 5e-4, "{:?}", m.stress);
         assert_eq!(m.verdict, Thin);
-        assert_eq!(verdict(&with("vbe-spread          28.3 mV"), RULE.name, "n16"), Over);
-        assert_eq!(verdict(&with("vbe-spread          13 mV"), RULE.name, "n16"), Ok);
+        assert_eq!(verdict(&with("vbe-spread         28.3 mV"), RULE.name, "n16"), Over);
+        assert_eq!(verdict(&with("vbe-spread         13 mV"), RULE.name, "n16"), Ok);
     }
 
     #[test]
     fn one_pair_has_nothing_to_share() {
-        let found = report(&tern60(&[("pairs               2", "pairs               1")]));
+        let found = report(&tern60(&[("pairs              2", "pairs              1")]));
         assert!(!found.builds[0].margins.iter().any(|m| m.rule == RULE.name));
     }
 
     #[test]
     fn an_unstated_resistor_is_named() {
-        let m = margin(&tern60(&[("emitter             0R22 ±5 % 5 W pulse 20 A  ref R21-R24  part \"WW5-0R22J\"", ""), ("50 mA per device, 11 mV across emitter", "50 mA per device")]), RULE.name, "n16");
+        let m = margin(&tern60(&[("emitter            0R22 ±5 % 5 W pulse 20 A ref R21-R24 part \"WW5-0R22J\"", ""), ("50 mA per device, 11 mV across emitter", "50 mA per device")]), RULE.name, "n16");
         assert_eq!((m.verdict, m.needs.as_slice()), (Unchecked, &["stage out emitter".to_owned()][..]));
     }
 }

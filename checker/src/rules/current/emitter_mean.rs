@@ -90,9 +90,9 @@ mod tests {
     #[test]
     fn one_pair_by_hand() {
         let text = tern60(&[
-            ("pairs               2", "pairs               1"),
+            ("pairs              2", "pairs              1"),
             ("loads              hall-8, bench-8", "loads              bench-8"),
-            ("idle                50 mA per device, 11 mV across emitter", "idle                none"),
+            ("idle               50 mA per device, 11 mV across emitter", "idle               none"),
         ]);
         let m = margin(&text, RULE.name, "out emitter");
         assert!((m.stress.unwrap().value - 0.164640).abs() < 2e-5, "{:?}", m.stress);
@@ -116,7 +116,7 @@ mod tests {
     fn watts_not_stated_are_named_and_none_has_no_margin() {
         let m = margin(&tern60(&[("0R22 ±5 % 5 W pulse 20 A", "0R22 ±5 % pulse 20 A")]), RULE.name, "out emitter");
         assert_eq!((m.verdict, m.needs.as_slice()), (Unchecked, &["stage out emitter W".to_owned()][..]));
-        let none = report(&tern60(&[("emitter             0R22 ±5 % 5 W pulse 20 A  ref R21-R24  part \"WW5-0R22J\"", "emitter             none"), ("50 mA per device, 11 mV across emitter", "50 mA per device")]));
+        let none = report(&tern60(&[("emitter            0R22 ±5 % 5 W pulse 20 A ref R21-R24 part \"WW5-0R22J\"", "emitter            none"), ("50 mA per device, 11 mV across emitter", "50 mA per device")]));
         assert!(!none.builds[0].margins.iter().any(|m| m.rule == RULE.name));
     }
 }

@@ -93,7 +93,7 @@ mod tests {
     fn the_peak_against_the_stated_pulse() {
         let with = |pulse: &str| {
             tern60(&[
-                ("pairs               2", "pairs               1"),
+                ("pairs              2", "pairs              1"),
                 ("loads              hall-8, bench-8", "loads              bench-8"),
                 ("pulse 20 A", pulse),
             ])

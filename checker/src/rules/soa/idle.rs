@@ -43,7 +43,7 @@ mod tests {
     /// power 180/45.6068 = 3.9468 A of k. Hand calculation.
     #[test]
     fn the_idle_point_by_hand() {
-        let m = margin(&tern60(&[("pairs               2", "pairs               1")]), RULE.name, "n16");
+        let m = margin(&tern60(&[("pairs              2", "pairs              1")]), RULE.name, "n16");
         let k = (150.0 - m.witness.case_c.unwrap()) / 125.0;
         assert!((m.stress.unwrap().value - 0.05).abs() < 1e-12);
         assert!((m.rating.unwrap().value - 3.9413 * k).abs() < 1e-3, "{:?} {k}", m.rating);
@@ -60,7 +60,7 @@ mod tests {
 
     #[test]
     fn an_unstated_idle_is_named() {
-        let m = margin(&tern60(&[("    idle                50 mA per device, 11 mV across emitter\n", "")]), RULE.name, "n16");
+        let m = margin(&tern60(&[("    idle               50 mA per device, 11 mV across emitter\n", "")]), RULE.name, "n16");
         assert_eq!((m.verdict, m.needs.as_slice()), (Unchecked, &["stage out idle".to_owned()][..]));
     }
 }

@@ -55,7 +55,7 @@ mod tests {
     use crate::finding::Verdict::{Ok, Over, Thin};
     use crate::testing::{margin, tern60, verdict};
 
-    const LINE: &str = "    limit-line         bank 10 A at 0 V, 10 A at 15 V, 6.4 A at 30 V, 3.6 A at 50 V, 1.8 A at 70 V, 1 A at 95 V\n";
+    const LINE: &str = "    limit-line bank    10 A at 0 V, 10 A at 15 V, 6.4 A at 30 V, 3.6 A at 50 V, 1.8 A at 70 V, 1 A at 95 V\n";
     const ALONE: (&str, &str) = ("loads              hall-8, bench-8", "loads              bench-8");
 
     /// A flat line of the bank is nearest at the peak: bench-8 at -5 % draws (41.3699 - 1.8)/(7.6 + 0.285714) =
@@ -63,17 +63,17 @@ mod tests {
     #[test]
     fn a_flat_line_against_the_peak() {
         let with = |line: &str| tern60(&[ALONE, (LINE, line)]);
-        let m = margin(&with("    limit-line         bank 5.52 A at 0 V\n"), RULE.name, "guard limit-line");
+        let m = margin(&with("    limit-line bank    5.52 A at 0 V\n"), RULE.name, "guard limit-line");
         assert!((m.stress.unwrap().value - 5.52 / 5.01792).abs() < 1e-5, "{:?}", m.stress);
         assert_eq!(m.verdict, Ok);
-        assert_eq!(verdict(&with("    limit-line         bank 5.51 A at 0 V\n"), RULE.name, "guard limit-line"), Thin);
-        assert_eq!(verdict(&with("    limit-line         bank 5.01 A at 0 V\n"), RULE.name, "guard limit-line"), Over);
+        assert_eq!(verdict(&with("    limit-line bank    5.51 A at 0 V\n"), RULE.name, "guard limit-line"), Thin);
+        assert_eq!(verdict(&with("    limit-line bank    5.01 A at 0 V\n"), RULE.name, "guard limit-line"), Over);
     }
 
     /// A line of the device is compared with the most loaded device, which carries more than half.
     #[test]
     fn a_device_line_meets_the_most_loaded() {
-        let m = margin(&tern60(&[ALONE, (LINE, "    limit-line         device 3 A at 0 V\n")]), RULE.name, "guard limit-line");
+        let m = margin(&tern60(&[ALONE, (LINE, "    limit-line device   3 A at 0 V\n")]), RULE.name, "guard limit-line");
         let ratio = m.stress.unwrap().value;
         assert!(ratio < 3.0 / (5.01792 / 2.0) && ratio > 3.0 / (5.01792 * 0.55), "{ratio}");
     }

@@ -45,14 +45,14 @@ mod tests {
     use crate::finding::Verdict::{Ok, Over, Unchecked};
     use crate::testing::{margin, report, tern60};
 
-    const LINE: &str = "    limit-line         bank 10 A at 0 V, 10 A at 15 V, 6.4 A at 30 V, 3.6 A at 50 V, 1.8 A at 70 V, 1 A at 95 V\n";
-    const ONE: (&str, &str) = ("pairs               2", "pairs               1");
+    const LINE: &str = "    limit-line bank    10 A at 0 V, 10 A at 15 V, 6.4 A at 30 V, 3.6 A at 50 V, 1.8 A at 70 V, 1 A at 95 V\n";
+    const ONE: (&str, &str) = ("pairs              2", "pairs              1");
 
     /// A flat line of the device meets the curve where it is lowest, at both rails: 2·45.6068 = 91.2136 V.
     /// Between (50 V, 3.6 A) and (100 V, 0.9 A) the slope is -2 exactly: 3.6·(50/91.2136)² = 1.08175 A of k.
     #[test]
     fn a_flat_line_is_worst_at_both_rails() {
-        let m = margin(&tern60(&[ONE, (LINE, "    limit-line         device 0.5 A at 0 V\n")]), RULE.name, "n16");
+        let m = margin(&tern60(&[ONE, (LINE, "    limit-line device   0.5 A at 0 V\n")]), RULE.name, "n16");
         let k = (150.0 - m.witness.case_c.unwrap()) / 125.0;
         assert!((m.witness.device_v.unwrap() - 91.2136).abs() < 1e-3, "{:?}", m.witness);
         assert!((m.stress.unwrap().value - 0.5).abs() < 1e-9);

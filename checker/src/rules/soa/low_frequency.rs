@@ -24,7 +24,7 @@ rule! {
         Remedy { key: "heatsink.resistance", slot: "K/W", series: Series::Heatsink, up: false },
         Remedy { key: "transformer.secondary", slot: "V", series: Series::SecondaryVolts, up: false },
     ],
-    example: "tern60", [("pairs               2", "pairs               1"), ("resistive 8 ohm ±5 %", "nominal 4 ohm")],
+    example: "tern60", [("pairs              2", "pairs              1"), ("resistive 8 ohm ±5 %", "nominal 4 ohm")],
 }
 
 /// One margin for each declared output device: every load, at the bottom of the band.

@@ -29,7 +29,7 @@ rule! {
         Remedy { key: "stage.pairs", slot: "n", series: Series::Count, up: true },
     ],
     example: "tern60", [
-        ("pairs               2", "pairs               1"),
+        ("pairs              2", "pairs              1"),
         ("resistive 8 ohm ±5 %", "nominal 4 ohm"),
         ("soa 100 ms ", "soa 1 ms "),
         ("    duty               1/8\n", "    duty               1/8\n    policy quick\n"),
@@ -108,7 +108,7 @@ mod tests {
     /// drives a hard load; a 100 ms curve covers it, a 1 ms curve does not.
     #[test]
     fn the_longest_pulse_must_last() {
-        let hard = edited(&tern60(&QUICK), &[("pairs               2", "pairs               1"), ("resistive 8 ohm ±5 %", "nominal 4 ohm")]);
+        let hard = edited(&tern60(&QUICK), &[("pairs              2", "pairs              1"), ("resistive 8 ohm ±5 %", "nominal 4 ohm")]);
         let m = margin(&hard, RULE.name, "n16");
         let dwell = m.stress.unwrap().value;
         assert!(dwell > 1e-3 && dwell < 0.025, "{dwell}");

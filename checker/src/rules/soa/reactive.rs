@@ -24,7 +24,7 @@ rule! {
         Remedy { key: "heatsink.resistance", slot: "K/W", series: Series::Heatsink, up: false },
         Remedy { key: "transformer.secondary", slot: "V", series: Series::SecondaryVolts, up: false },
     ],
-    example: "tern60", [("pairs               2", "pairs               1"), ("resistive 8 ohm ±5 %", "nominal 4 ohm")],
+    example: "tern60", [("pairs              2", "pairs              1"), ("resistive 8 ohm ±5 %", "nominal 4 ohm")],
 }
 
 /// One margin for each declared output device: every load, over the band, both signs of angle.
@@ -48,7 +48,7 @@ mod tests {
     use crate::finding::Verdict::{Ok, Over, Unchecked};
     use crate::testing::{margin, tern60};
 
-    const ONE: (&str, &str) = ("pairs               2", "pairs               1");
+    const ONE: (&str, &str) = ("pairs              2", "pairs              1");
 
     fn only(load: &'static str) -> [(&'static str, &'static str); 2] {
         [("resistive 8 ohm ±5 %", load), ("loads              hall-8, bench-8", "loads              bench-8")]
@@ -64,7 +64,7 @@ mod tests {
         let curve = "soa dc             16 A at 11 V, 3.6 A at 50 V, 0.9 A at 100 V, 110 mA at 240 V";
         let text = tern60(&[
             ONE, a, b,
-            ("emitter             0R22 ±5 % 5 W pulse 20 A  ref R21-R24  part \"WW5-0R22J\"", "emitter             none"),
+            ("emitter            0R22 ±5 % 5 W pulse 20 A ref R21-R24 part \"WW5-0R22J\"", "emitter            none"),
             ("50 mA per device, 11 mV across emitter", "50 mA per device"),
             ("drop               1.8 V at 0 A, 3.8 V at 7 A", "drop               0 V"),
             (curve, "soa dc             36 A at 10 V, 1.5 A at 240 V"),

@@ -24,7 +24,7 @@ rule! {
         Remedy { key: "heatsink.resistance", slot: "K/W", series: Series::Heatsink, up: false },
         Remedy { key: "transformer.secondary", slot: "V", series: Series::SecondaryVolts, up: false },
     ],
-    example: "tern60", [("pairs               2", "pairs               1"), ("resistive 8 ohm", "resistive 2 ohm")],
+    example: "tern60", [("pairs              2", "pairs              1"), ("resistive 8 ohm", "resistive 2 ohm")],
 }
 
 /// One margin for each declared output device: the worst load taken as a resistor.
@@ -48,7 +48,7 @@ mod tests {
     use crate::finding::Verdict::{Over, Unchecked};
     use crate::testing::{margin, tern60};
 
-    const ALONE: [(&str, &str); 2] = [("pairs               2", "pairs               1"), ("loads              hall-8, bench-8", "loads              bench-8")];
+    const ALONE: [(&str, &str); 2] = [("pairs              2", "pairs              1"), ("loads              hall-8, bench-8", "loads              bench-8")];
 
     /// One pair into 7.6 ohm (8 ohm - 5 %), Vu 41.3699 V as in current.emitter-mean. The line is
     /// v = 41.3699 - i·(7.6 + 0.22). From 11 V to 50 V the curve falls as v^-s, s = ln(16/3.6)/ln(50/11) =
@@ -84,7 +84,7 @@ mod tests {
 
     #[test]
     fn what_is_missing_is_named() {
-        for (line, key) in [("    junction           150 degC\n    junction-case      0.69 K/W\n", "device n16 junction"), ("    insulator           0.35 K/W \"mica and grease\"\n", "stage out insulator")] {
+        for (line, key) in [("    junction           150 degC\n    junction-case      0.69 K/W\n", "device n16 junction"), ("    insulator          0.35 K/W \"mica and grease\"\n", "stage out insulator")] {
             let m = margin(&tern60(&[(line, "")]), RULE.name, "n16");
             assert_eq!(m.verdict, Unchecked, "{key}");
             assert!(m.needs.iter().any(|n| n == key), "{key}: {:?}", m.needs);

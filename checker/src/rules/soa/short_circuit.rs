@@ -70,7 +70,7 @@ mod tests {
     use crate::finding::Verdict::{Ok, Over, Unchecked};
     use crate::testing::{margin, tern60, verdict};
 
-    const LINE: &str = "    limit-line         bank 10 A at 0 V, 10 A at 15 V, 6.4 A at 30 V, 3.6 A at 50 V, 1.8 A at 70 V, 1 A at 95 V\n";
+    const LINE: &str = "    limit-line bank    10 A at 0 V, 10 A at 15 V, 6.4 A at 30 V, 3.6 A at 50 V, 1.8 A at 70 V, 1 A at 95 V\n";
 
     /// A flat line of 4 A for the device, one pair: v = 45.6068 - 4·0.22 = 44.7268 V. The curve allows
     /// k·3.6·(50/44.7268)^0.98515 = k·4.0177 A, some 2.5 A. Mean heat ½·45.6068·4 = 91.2136 W on a sink at
@@ -78,7 +78,7 @@ mod tests {
     /// 4·(150 - 94)/(188.862 - 94) = 2.36133 A, the lesser. Hand calculation.
     #[test]
     fn the_mean_heat_decides_by_hand() {
-        let text = tern60(&[("pairs               2", "pairs               1"), (LINE, "    limit-line         device 4 A at 0 V\n"), ("cutout             80 degC", "cutout             85 degC")]);
+        let text = tern60(&[("pairs              2", "pairs              1"), (LINE, "    limit-line device   4 A at 0 V\n"), ("cutout             80 degC", "cutout             85 degC")]);
         let m = margin(&text, RULE.name, "n16");
         assert!((m.stress.unwrap().value - 4.0).abs() < 1e-9);
         assert!((m.rating.unwrap().value - 2.36133).abs() < 1e-4, "{:?}", m.rating);

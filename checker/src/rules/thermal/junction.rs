@@ -114,7 +114,7 @@ mod tests {
 
     #[test]
     fn an_unstated_insulator_is_named() {
-        let m = margin(&tern60(&[("    insulator           0.35 K/W \"mica and grease\"\n", "")]), RULE.name, "n16");
+        let m = margin(&tern60(&[("    insulator          0.35 K/W \"mica and grease\"\n", "")]), RULE.name, "n16");
         assert_eq!((m.verdict, m.needs.as_slice()), (Unchecked, &["stage out insulator".to_owned()][..]));
     }
 }

@@ -29,7 +29,7 @@ rule! {
         Remedy { key: "stage.pairs", slot: "n", series: Series::Count, up: true },
         Remedy { key: "heatsink.resistance", slot: "K/W", series: Series::Heatsink, up: false },
     ],
-    example: "tern60", [("pairs               2", "pairs               1"), ("resistance         0.45 K/W at 50 K", "resistance         1.2 K/W at 50 K"), ("resistive 8 ohm", "resistive 3 ohm")],
+    example: "tern60", [("pairs              2", "pairs              1"), ("resistance         0.45 K/W at 50 K", "resistance         1.2 K/W at 50 K"), ("resistive 8 ohm", "resistive 3 ohm")],
 }
 
 /// One margin for each declared output device: the load that drives it hottest.
@@ -88,9 +88,9 @@ mod tests {
 
     const TERMS: &str = "foster             0.07 K/W 1 ms, 0.22 K/W 12 ms, 0.40 K/W 110 ms";
     const ALONE: [(&str, &str); 3] = [
-        ("pairs               2", "pairs               1"),
+        ("pairs              2", "pairs              1"),
         ("loads              hall-8, bench-8", "loads              bench-8"),
-        ("idle                50 mA per device, 11 mV across emitter", "idle                none"),
+        ("idle               50 mA per device, 11 mV across emitter", "idle               none"),
     ];
 
     fn rise(terms: &str) -> f64 {

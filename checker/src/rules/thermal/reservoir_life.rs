@@ -1,12 +1,11 @@
 //! thermal.reservoir-life: hours until the reservoir capacitors have dried out.
 
-use crate::analysis::case::{line_part, solved, stated};
-use crate::analysis::heat::Heat;
+use crate::analysis::case::{solved, stated};
 use crate::analysis::loads::Driven;
-use crate::analysis::rails::Mains;
-use crate::analysis::wear::Life;
+use crate::analysis::supply::Bank;
 use crate::analysis::{Case, Margins, Stress};
-use crate::finding::{Related, Witness};
+use crate::build::Needs;
+use crate::finding::Witness;
 use crate::rule::{Allow, Remedy, Series};
 
 rule! {
@@ -30,55 +29,42 @@ rule! {
     example: "tern60", [("life 5000 h life-at 105 degC", "life 1000 h life-at 85 degC"), ("enclosure          5 K", "enclosure          25 K")],
 }
 
-/// One margin for the reservoir: its shortest-lived capacitor under the worst load. Given rails come
-/// from a supply that is not described, and have none.
+/// One margin for each kind of capacitor: the load that warms it most.
 pub fn check(case: &Case<'_>, out: &mut Margins<'_>) {
-    let field = &case.build.supply;
-    let Some((supply, _)) = field.get() else {
-        if case.build.rails.get().is_none() {
-            out.compare(&RULE, line_part(field), field.site(), Err(field.missing()));
-        }
-        return;
-    };
-    let (part, site) = (|| line_part(&supply.reservoir), supply.reservoir.site());
-    for played in case.played() {
-        match played.and_then(|(load, heat)| Ok((load, heat, case.reservoir_lives(heat)?))) {
-            Err(needs) => out.compare(&RULE, part(), site, Err(needs)),
-            Ok((load, heat, lives)) => {
-                for life in &lives {
-                    out.compare(&RULE, part(), site, Ok(stress(case, load, heat, life)));
-                }
-            }
+    let banks = case.banks();
+    if banks.iter().all(|b| b.on_board)
+        && let Some(supply) = case.fitted(&RULE, out)
+    {
+        out.compare(&RULE, case.supply_part(supply, "reservoir", 1), supply.reservoir.site(), Err(supply.reservoir.missing()));
+    }
+    let shares = case.ripple_shares(&banks);
+    for (at, bank) in banks.iter().enumerate() {
+        let share = shares.as_ref().map_err(Clone::clone).map(|all| all.get(at).copied().unwrap_or(1.0));
+        for found in case.per_load(|load| stress(case, load, bank, share.clone()?)) {
+            out.compare(&RULE, bank.part.clone(), bank.stated.site, found);
         }
     }
 }
 
-fn stress(case: &Case<'_>, load: &Driven, heat: &Heat, life: &Life) -> Stress {
-    let lines = case.supply().ok().and_then(|s| s.reservoir.stated_at());
-    Stress {
+fn stress(case: &Case<'_>, load: &Driven, bank: &Bank<'_>, share: f64) -> Result<Stress, Needs> {
+    let life = case.reservoir_life(load, bank, share)?;
+    let flow = case.duty_flow(load)?;
+    let line = [bank.stated.site];
+    Ok(Stress {
         value: life.hours,
         rating: f64::NAN,
-        witness: Witness {
-            mains_v: case.mains_volts(Mains::Nominal),
-            load: Some(load.name.clone()),
-            frequency_hz: Some(1000.0),
-            amplitude_v: Some(heat.duty.amplitude.0),
-            duty: Some(case.duty().shown.clone()),
-            ambient_c: case.hottest().ok().map(|t| t.0),
-            rail_v: Some(heat.rail.0),
-            ..case.witness()
-        },
+        witness: Witness { ambient_c: case.hottest().ok().map(|t| t.0), ..case.at_flow(load, &flow, Some(&case.duty().shown)) },
         working: vec![
-            stated("L0", "hours as stated", life.stated_hours, "h", lines),
-            stated("T0", "at", life.stated_at.0, "degC", lines),
+            stated("L0", "hours as stated", life.stated_hours, "h", line),
+            stated("T0", "at", life.stated_at.0, "degC", line),
             solved("T", "air round them, hottest room", "Ta + Tencl", life.air.0, "degC", ""),
-            solved("I", "ripple current of one at the duty, charging and signal", "√(Ich² + Iaf²), shared by 1/ESR", life.ripple.0, "A", "rectifier steady state; r.m.s. of a half-sine"),
+            solved("I", "ripple current of one at the duty, charging and signal", "share·√(Ich² + Iaf²)", life.ripple.0, "A", "charge balance; r.m.s. of half-sines"),
             solved("Tcore", "its core", "T + ΔT·(I/Irated)²", life.core.0, "degC", "10 K rule holds for the core"),
             solved("L", "hours expected", "L0·2^((T0 - Tcore)/10)", life.hours, "h", "10 K rule"),
         ],
-        related: vec![Related { message: "into this load".to_owned(), site: load.site }],
+        related: case.loading_sites(load),
         ..Stress::default()
-    }
+    })
 }
 
 #[cfg(test)]

@@ -31,7 +31,7 @@ rule! {
 
 /// One margin for the bleeder. None fitted, or rails that are given, have none.
 pub fn check(case: &Case<'_>, out: &mut Margins<'_>) {
-    let Some((supply, _)) = case.build.supply.get() else { return };
+    let Some(supply) = case.fitted(&RULE, out) else { return };
     let field = &supply.bleeder;
     if !field.none {
         out.compare(&RULE, line_part(field), field.site(), stress(case));
