@@ -11,12 +11,16 @@ pub mod clip;
 pub mod derived;
 pub mod devices;
 pub mod heat;
+pub mod limits;
 pub mod loads;
 pub mod margins;
 pub mod rails;
+pub mod safe_area;
 pub mod signal;
 pub mod supply;
 pub mod switch_on;
+pub mod temperatures;
+pub mod wear;
 
 pub use case::{Case, Tables};
 pub use margins::{Margins, Stress};

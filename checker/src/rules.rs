@@ -96,6 +96,10 @@ pub mod bom {
 }
 pub mod current {
     //! Amperes and volt-amperes against ratings.
+    pub mod device_peak;
+    pub mod device_share;
+    pub mod emitter_mean;
+    pub mod emitter_pulse;
     pub mod fuse_rms;
     pub mod rectifier_mean;
     pub mod rectifier_surge;
@@ -115,6 +119,17 @@ pub mod power {
     pub mod rated_power;
     pub mod ripple_headroom;
 }
+pub mod soa {
+    //! Loci and limit lines against derated safe-area curves.
+    pub mod idle;
+    pub mod limiter_music;
+    pub mod limiter_soa;
+    pub mod low_frequency;
+    pub mod pulse_dwell;
+    pub mod reactive;
+    pub mod resistive;
+    pub mod short_circuit;
+}
 pub mod supply {
     //! The mains side: taps, fuses, switch-on, sharing.
     pub mod bypass_stuck;
@@ -131,7 +146,16 @@ pub mod supply {
 pub mod syntax;
 pub mod thermal {
     //! Temperatures and hours.
+    pub mod cutout_nuisance;
+    pub mod cutout_protects;
+    pub mod driver;
+    pub mod enclosure;
+    pub mod junction;
+    pub mod junction_peak;
+    pub mod reservoir_life;
+    pub mod resistor;
     pub mod sink;
+    pub mod touch;
 }
 pub mod voltage {
     //! Volts against breakdown and rated volts.
@@ -167,13 +191,34 @@ pub static ALL: &[Registered] = &[
     build!(power::rails_stated),
     build!(power::ripple_headroom),
     build!(power::low_frequency_sag),
+    build!(current::device_peak),
+    build!(current::device_share),
+    build!(current::emitter_mean),
+    build!(current::emitter_pulse),
     build!(current::rectifier_mean),
     build!(current::rectifier_surge),
     build!(current::reservoir_ripple),
     build!(current::transformer_duty),
     build!(current::transformer_sine),
     build!(current::fuse_rms),
+    build!(soa::resistive),
+    build!(soa::reactive),
+    build!(soa::idle),
+    build!(soa::pulse_dwell),
+    build!(soa::low_frequency),
+    build!(soa::short_circuit),
+    build!(soa::limiter_soa),
+    build!(soa::limiter_music),
+    build!(thermal::junction),
+    build!(thermal::junction_peak),
     build!(thermal::sink),
+    build!(thermal::touch),
+    build!(thermal::driver),
+    build!(thermal::cutout_protects),
+    build!(thermal::cutout_nuisance),
+    build!(thermal::reservoir_life),
+    build!(thermal::resistor),
+    build!(thermal::enclosure),
     build!(supply::mains_tap),
     build!(supply::core_flux),
     build!(supply::shared_count),
@@ -254,6 +299,21 @@ mod tests {
                     println!("{:?} {} {} stress {:?} rating {:?} used {:?} | {} {:?} | {:?} {:?} V {:?} ch {:?}", m.verdict, m.rule, m.part.name, m.stress.map(|s| (s.value, s.unit)), m.rating.map(|s| s.value), m.used_percent, m.note, m.needs, m.witness.load, m.witness.mains_v, m.witness.amplitude_v, m.witness.channels_driven);
                     if kit == "tern60" { for s in &m.working { println!("      {} = {} {} [{}]", s.symbol, s.value, s.unit, s.meaning); } }
                 }
+            }
+        }
+    }
+
+    #[test]
+    fn zz_dump() {
+        let Ok(path) = std::env::var("DUMP_KIT") else { return };
+        let text = std::fs::read_to_string(path).unwrap();
+        let report = testing::report(&text);
+        for f in &report.findings { eprintln!("FINDING {} {}", f.rule, f.message); }
+        for b in &report.builds {
+            eprintln!("BUILD {} settled {}", b.name, b.settled);
+            for m in &b.margins {
+                eprintln!("{:28} {:18} {:?} used {:?} stress {:?} rating {:?} load {:?} f {:?} v {:?} i {:?} case {:?} sink {:?} | {} {:?}", m.rule, m.part.name, m.verdict, m.used_percent.map(|u| (u*10.0).round()/10.0), m.stress.map(|s| s.value), m.rating.map(|s| s.value), m.witness.load, m.witness.frequency_hz, m.witness.device_v, m.witness.device_a, m.witness.case_c, m.witness.sink_c, m.note, m.needs);
+                if std::env::var("DUMP_WORK").is_ok() { for s in &m.working { eprintln!("      {} = {} {}  ({})", s.symbol, s.value, s.unit, s.meaning); } }
             }
         }
     }

@@ -210,9 +210,9 @@ pub const BLOCKS: &[Block] = &[
             "limiter",
             "sense:ohm base:ohm shunt:ohm? rail:ohm? on:V?",
             "-",
-            "of one device: sense to base, base to output, base to rail; turn-on 0.6 V",
+            "of one device: sense to base, base to output, shunt in parallel with base, base to rail; turn-on 0.6 V",
         ),
-        key("limiter-break", "V ohm", "none", "second slope: a zener and its resistor"),
+        key("limiter-break", "V ohm? from-rail:ohm? to-base:ohm?", "none", "second slope: zener volts, rail to zener, zener to base"),
         key("detector", "V below:V? ohm F watches{output both-halves across-load}", "-", "d.c. threshold and filter; symmetrical unless below")
             .band("V", 0.3, 20.0)
             .band("ohm", 100.0, 10e6)
