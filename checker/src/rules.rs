@@ -90,12 +90,23 @@ macro_rules! fault {
     };
 }
 
+pub mod bias {
+    //! The idle current.
+    pub mod consistency;
+    pub mod sensor_place;
+    pub mod stability;
+}
 pub mod bom {
     //! The spec against its own bill of materials.
+    pub mod polarity;
     pub mod quantity;
 }
 pub mod current {
     //! Amperes and volt-amperes against ratings.
+    pub mod device_peak;
+    pub mod device_share;
+    pub mod emitter_mean;
+    pub mod emitter_pulse;
     pub mod fuse_rms;
     pub mod rectifier_mean;
     pub mod rectifier_surge;
@@ -105,8 +116,24 @@ pub mod current {
 }
 pub mod data {
     //! The spec against itself.
+    pub mod curve_against_power;
+    pub mod curve_order;
+    pub mod gain_order;
     pub mod reading;
+    pub mod source;
+    pub mod substitute_speed;
+    pub mod thermal_against_power;
     pub mod unused;
+}
+pub mod drive {
+    //! What the output stage asks of the stages before it.
+    pub mod driver_current;
+    pub mod driver_dissipation;
+    pub mod driver_soa;
+    pub mod input_level;
+    pub mod output_gain_droop;
+    pub mod slew;
+    pub mod standing_current;
 }
 pub mod power {
     //! Claimed watts and stated rails against solved ones.
@@ -114,6 +141,30 @@ pub mod power {
     pub mod rails_stated;
     pub mod rated_power;
     pub mod ripple_headroom;
+}
+pub mod protection {
+    //! A rail on the loudspeaker, and what stays charged.
+    pub mod absent;
+    pub mod bleed_down;
+    pub mod bridge_detector;
+    pub mod dc_fault_energy;
+    pub mod dc_fault_false_trip;
+    pub mod dc_fault_time;
+    pub mod fuse_fault;
+    pub mod offset_undetected;
+    pub mod relay_dc;
+    pub mod zobel;
+}
+pub mod soa {
+    //! Loci and limit lines against derated safe-area curves.
+    pub mod idle;
+    pub mod limiter_music;
+    pub mod limiter_soa;
+    pub mod low_frequency;
+    pub mod pulse_dwell;
+    pub mod reactive;
+    pub mod resistive;
+    pub mod short_circuit;
 }
 pub mod supply {
     //! The mains side: taps, fuses, switch-on, sharing.
@@ -131,7 +182,16 @@ pub mod supply {
 pub mod syntax;
 pub mod thermal {
     //! Temperatures and hours.
+    pub mod cutout_nuisance;
+    pub mod cutout_protects;
+    pub mod driver;
+    pub mod enclosure;
+    pub mod junction;
+    pub mod junction_peak;
+    pub mod reservoir_life;
+    pub mod resistor;
     pub mod sink;
+    pub mod touch;
 }
 pub mod voltage {
     //! Volts against breakdown and rated volts.
@@ -167,13 +227,44 @@ pub static ALL: &[Registered] = &[
     build!(power::rails_stated),
     build!(power::ripple_headroom),
     build!(power::low_frequency_sag),
+    build!(current::device_peak),
+    build!(current::device_share),
+    build!(current::emitter_mean),
+    build!(current::emitter_pulse),
     build!(current::rectifier_mean),
     build!(current::rectifier_surge),
     build!(current::reservoir_ripple),
     build!(current::transformer_duty),
     build!(current::transformer_sine),
     build!(current::fuse_rms),
+    build!(soa::resistive),
+    build!(soa::reactive),
+    build!(soa::idle),
+    build!(soa::pulse_dwell),
+    build!(soa::low_frequency),
+    build!(soa::short_circuit),
+    build!(soa::limiter_soa),
+    build!(soa::limiter_music),
+    build!(thermal::junction),
+    build!(thermal::junction_peak),
     build!(thermal::sink),
+    build!(thermal::touch),
+    build!(thermal::driver),
+    build!(thermal::cutout_protects),
+    build!(thermal::cutout_nuisance),
+    build!(thermal::reservoir_life),
+    build!(thermal::resistor),
+    build!(thermal::enclosure),
+    build!(bias::stability),
+    build!(bias::consistency),
+    build!(bias::sensor_place),
+    build!(drive::output_gain_droop),
+    build!(drive::driver_current),
+    build!(drive::driver_dissipation),
+    build!(drive::driver_soa),
+    build!(drive::standing_current),
+    build!(drive::slew),
+    build!(drive::input_level),
     build!(supply::mains_tap),
     build!(supply::core_flux),
     build!(supply::shared_count),
@@ -184,6 +275,20 @@ pub static ALL: &[Registered] = &[
     build!(supply::soft_start_timing),
     build!(supply::bypass_stuck),
     build!(supply::inrush_resistor_energy),
+    build!(protection::dc_fault_time),
+    build!(protection::dc_fault_energy),
+    build!(protection::dc_fault_false_trip),
+    build!(protection::offset_undetected),
+    build!(protection::relay_dc),
+    build!(protection::bridge_detector),
+    build!(protection::fuse_fault),
+    build!(protection::bleed_down),
+    build!(protection::absent),
+    build!(protection::zobel),
+    build!(data::curve_order),
+    build!(data::curve_against_power),
+    build!(data::thermal_against_power),
+    build!(data::gain_order),
     reading!(data::reading::unit_suspect),
     text!(data::unused),
     reading!(data::reading::duplicate),
@@ -193,7 +298,10 @@ pub static ALL: &[Registered] = &[
     reading!(data::reading::cycle),
     reading!(data::reading::table),
     reading!(data::reading::unknown_rule),
+    build!(data::source),
+    text!(data::substitute_speed),
     build!(bom::quantity),
+    build!(bom::polarity),
     reading!(syntax::text),
     reading!(syntax::version),
     reading!(syntax::statement),
@@ -254,6 +362,21 @@ mod tests {
                     println!("{:?} {} {} stress {:?} rating {:?} used {:?} | {} {:?} | {:?} {:?} V {:?} ch {:?}", m.verdict, m.rule, m.part.name, m.stress.map(|s| (s.value, s.unit)), m.rating.map(|s| s.value), m.used_percent, m.note, m.needs, m.witness.load, m.witness.mains_v, m.witness.amplitude_v, m.witness.channels_driven);
                     if kit == "tern60" { for s in &m.working { println!("      {} = {} {} [{}]", s.symbol, s.value, s.unit, s.meaning); } }
                 }
+            }
+        }
+    }
+
+    #[test]
+    fn zz_dump() {
+        let Ok(path) = std::env::var("DUMP_KIT") else { return };
+        let text = std::fs::read_to_string(path).unwrap();
+        let report = testing::report(&text);
+        for f in &report.findings { eprintln!("FINDING {} {}", f.rule, f.message); }
+        for b in &report.builds {
+            eprintln!("BUILD {} settled {}", b.name, b.settled);
+            for m in &b.margins {
+                eprintln!("{:28} {:18} {:?} used {:?} stress {:?} rating {:?} load {:?} f {:?} v {:?} i {:?} case {:?} sink {:?} | {} {:?}", m.rule, m.part.name, m.verdict, m.used_percent.map(|u| (u*10.0).round()/10.0), m.stress.map(|s| s.value), m.rating.map(|s| s.value), m.witness.load, m.witness.frequency_hz, m.witness.device_v, m.witness.device_a, m.witness.case_c, m.witness.sink_c, m.note, m.needs);
+                if std::env::var("DUMP_WORK").is_ok() { for s in &m.working { eprintln!("      {} = {} {}  ({})", s.symbol, s.value, s.unit, s.meaning); } }
             }
         }
     }

@@ -103,6 +103,13 @@ impl Case<'_> {
         Err(protection.limiter.missing())
     }
 
+    /// The line that sets the limit.
+    #[must_use]
+    pub fn limiter_site(&self) -> Site {
+        let field = &self.build.protection;
+        field.get().map_or(field.site(), |p| if p.limiter.get().is_none() && p.limit_line.get().is_some() { p.limit_line.site() } else { p.limiter.site() })
+    }
+
     /// Known not to be fitted: nothing limits.
     #[must_use]
     pub fn no_limiter(&self) -> bool {
@@ -365,8 +372,7 @@ impl Case<'_> {
 }
 
 /// Neither a limiter nor a limit line is stated.
-#[must_use]
-pub fn absent(protection: &Protection) -> bool {
+fn absent(protection: &Protection) -> bool {
     protection.limiter.get().is_none() && protection.limit_line.get().is_none()
 }
 

@@ -266,6 +266,25 @@ impl Case<'_> {
         if self.policy.soa_at_high_mains { Mains::High } else { Mains::Nominal }
     }
 
+    /// The sides whose devices share differently: one where both are alike.
+    #[must_use]
+    pub fn unlike_banks(&self) -> &'static [Side] {
+        match self.bench() {
+            Ok(bench) if bench.bank(Side::Upper) != bench.bank(Side::Lower) => &Side::BOTH,
+            _ => &Side::BOTH[..1],
+        }
+    }
+
+    /// The longest time above the derated d.c. curve in one period, over the band, and where.
+    ///
+    /// # Errors
+    /// When it cannot be worked out.
+    pub fn longest_dwell(&self, ready: &Ready<'_>, load: &Driven) -> Result<(Spot, Second), Needs> {
+        let spot = load.worst(self.band()?, |f, z| ready.dwell(f, z).map_or(f64::NAN, |s| s.0));
+        let spot = spot.ok_or_else(|| Needs::because(format!("load {} cannot be driven on the {:.1} V rail", load.name, ready.rail.0)))?;
+        Ok((spot, Second(spot.value)))
+    }
+
     /// One side ready to be driven, its hottest case at a temperature, `watts` its mean heat.
     ///
     /// # Errors

@@ -11,7 +11,7 @@ use crate::build::parts::{Flavour, Stage, both, three};
 use crate::physics::foster::{Foster, HalfCycle, Term};
 use crate::physics::heat::{Mounting, sink_temperature};
 use crate::physics::protection::Cutout;
-use crate::physics::unit::{Amp, Celsius, Hertz, Kelvin, Volt, Watt};
+use crate::physics::unit::{Celsius, Hertz, Kelvin, Volt, Watt};
 
 /// Tolerance of a cutout that states none; common practice, no source.
 const UNSTATED_TOLERANCE: Kelvin = Kelvin(3.0);
@@ -55,6 +55,21 @@ pub struct DriverHeat {
 }
 
 impl Case<'_> {
+    /// Each load with the heat of the duty in it, in order of declaration, or what it lacks.
+    #[must_use]
+    pub fn played(&self) -> Vec<Result<(&Driven, &Heat), Needs>> {
+        match both(self.loads(), self.heats()) {
+            Err(needs) => vec![Err(needs)],
+            Ok((loads, heats)) => loads.iter().zip(heats).map(|(load, heat)| both(load.as_ref().map_err(Clone::clone), heat.as_ref().map_err(Clone::clone))).collect(),
+        }
+    }
+
+    /// That a load's table leaves part of the band unknown.
+    #[must_use]
+    pub fn unknown_part(&self, load: &Driven) -> Option<Needs> {
+        load.uncovered(self.band().ok()?)
+    }
+
     /// Peak of the most loaded junction of a side under a sine at V(burst) at the bottom of the band,
     /// repeated for ever, from the case at the duty.
     ///
@@ -154,14 +169,5 @@ impl Case<'_> {
     pub fn held(&self, heat: &Heat, side: Side, sink: Celsius) -> Result<(Celsius, Celsius), Needs> {
         let found = mounting(self.output(), side)?.temperatures(sink, heat.device[at(side)]);
         found.map(|t| (t.case, t.junction)).ok_or_else(|| Needs::because("thermal resistances must not be negative"))
-    }
-
-    /// Mean current of one device of a bank at the duty, idle included.
-    ///
-    /// # Errors
-    /// What the output stage does not state.
-    pub fn mean_device_current(&self, heat: &Heat) -> Result<Amp, Needs> {
-        let (idle, pairs) = both(self.idle(), self.output().pairs.need().copied())?;
-        Ok(heat.duty.peak / crate::physics::math::PI / f64::from(pairs.max(1)) + idle)
     }
 }

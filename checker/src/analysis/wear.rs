@@ -5,11 +5,12 @@
 use super::case::Case;
 use super::heat::Heat;
 use super::loads::Driven;
-use super::rails::{Mains, Reservoir};
+use super::rails::Mains;
+use super::supply::Bank;
 use crate::build::Needs;
-use crate::build::parts::{Reservoir as Stated, both, three};
+use crate::build::parts::{both, three};
 use crate::finding::Measure;
-use crate::physics::supply::{self, Draw, RippleMultipliers};
+use crate::physics::supply::{RippleMultipliers, reservoir_ripple};
 use crate::physics::unit::{Amp, Celsius, Kelvin, Volt, Watt};
 use crate::physics::wear::{core_temperature, electrolytic_life_hours, resistor_rating};
 
@@ -45,49 +46,29 @@ pub struct Warm {
 }
 
 impl Case<'_> {
-    /// The capacitors of one rail of a supply: its own, then those of the boards it feeds.
-    fn capacitors(&self) -> Result<Vec<(u32, &Stated)>, Needs> {
-        let (supply, carried) = self.build.supply.need()?;
-        let boards = carried.div_ceil(self.build.amplifier.channels_per_board.get().copied().unwrap_or(1).max(1));
-        let mut all: Vec<(u32, &Stated)> = supply.reservoir.need()?.iter().map(|r| (r.count, r)).collect();
-        all.extend(self.build.amplifier.board_reservoir.get().map(|r| (r.count * boards, r)));
-        Ok(all)
-    }
-
-    /// Ripple current of one rail's reservoir at the duty: charging and audio.
-    fn rail_ripple(&self, heat: &Heat) -> Result<Amp, Needs> {
-        let loaded = self.loaded(Mains::Nominal, Reservoir::Nominal, heat.duty.rail_current)?;
-        let cycle = loaded.cycle.ok_or_else(|| self.build.supply.missing())?;
-        let channels = f64::from(self.channels_per_supply()?);
-        let audio = if self.build.bridged { Draw::BothHalves.ripple(heat.duty.peak * channels / 2.0) } else { Draw::OneHalf.ripple(heat.duty.peak * channels) };
-        let plain = RippleMultipliers { charging: 1.0, audio: 1.0 };
-        supply::reservoir_ripple(cycle.reservoir_rms(), audio, plain).ok_or_else(|| Needs::because("the ripple current cannot be worked out"))
-    }
-
-    /// Life of every kind of reservoir capacitor at the duty into a load, hottest room, in the order
-    /// in which they are stated.
+    /// Life of one kind of reservoir capacitor, `share` of its rail's ripple current, at the duty into a
+    /// load, hottest room.
     ///
     /// # Errors
     /// What supply or capacitors do not state.
-    pub fn reservoir_lives(&self, heat: &Heat) -> Result<Vec<Life>, Needs> {
-        let (all, total, air) = three(self.capacitors(), self.rail_ripple(heat), self.air_inside())?;
-        let groups: Vec<supply::Reservoir> = all.iter().map(|(n, r)| supply::Reservoir { count: *n, capacitance: r.farad.nominal, esr: r.esr }).collect();
-        let shares = supply::ripple_shares(&groups).ok_or_else(|| Needs::because("the reservoir has no capacitance"))?;
-        let field = &self.supply()?.reservoir;
-        let mut out = Vec::new();
-        for ((_, stated), share) in all.iter().zip(shares) {
-            let (life, rated) = both(stated.life.ok_or_else(|| field.missing_part("life")), stated.ripple.ok_or_else(|| field.missing_part("ripple")))?;
-            let (length, at) = life;
-            let rise = if at >= LONG_LIFE_TYPE { Kelvin(5.0) } else { Kelvin(10.0) };
-            let key = format!("supply {} reservoir core rise at rated ripple", field.owner().name);
-            self.assume(key, Measure::new(rise.0, "K"), "usual for this temperature class", stated.site);
-            let ripple = total * share;
-            let core = core_temperature(air, ripple, rated, rise);
-            let hours = core.and_then(|core| electrolytic_life_hours(length.0 / 3600.0, at, core).map(|h| (core, h)));
-            let (core, hours) = hours.ok_or_else(|| Needs::because("the life of the reservoir cannot be worked out"))?;
-            out.push(Life { ripple, air, core, stated_hours: length.0 / 3600.0, stated_at: at, hours });
-        }
-        Ok(out)
+    pub fn reservoir_life(&self, load: &Driven, bank: &Bank<'_>, share: f64) -> Result<Life, Needs> {
+        let missing = |part: &str| match (bank.on_board, self.build.supply.get()) {
+            (false, Some((supply, _))) => supply.reservoir.missing_part(part),
+            _ => self.build.amplifier.board_reservoir.missing_part(part),
+        };
+        let stated = bank.stated;
+        let rated = both(stated.life.ok_or_else(|| missing("life")), stated.ripple.ok_or_else(|| missing("ripple")));
+        let (((length, at), rating), flow, air) = three(rated, self.duty_flow(load), self.air_inside())?;
+        let rise = if at >= LONG_LIFE_TYPE { Kelvin(5.0) } else { Kelvin(10.0) };
+        self.assume(format!("{} core rise at rated ripple", bank.part.name), Measure::new(rise.0, "K"), "usual for this temperature class", stated.site);
+        let plain = RippleMultipliers { charging: 1.0, audio: 1.0 };
+        let ripple = reservoir_ripple(flow.ripple_charging, flow.ripple_audio, plain).map(|all| all * share);
+        let life = ripple.and_then(|ripple| {
+            let core = core_temperature(air, ripple, rating, rise)?;
+            let stated_hours = length.0 / 3600.0;
+            Some(Life { ripple, air, core, stated_hours, stated_at: at, hours: electrolytic_life_hours(stated_hours, at, core)? })
+        });
+        life.ok_or_else(|| Needs::because("the life of the reservoir cannot be worked out"))
     }
 
     /// The most loaded emitter resistor of either side at the duty.
@@ -97,7 +78,7 @@ impl Case<'_> {
     ///
     /// # Errors
     /// What output stage or build do not state.
-    pub fn emitter_resistor(&self, heat: &Heat, _load: &Driven) -> Result<(Warm, f64, Watt), Needs> {
+    pub fn emitter_resistor(&self, heat: &Heat) -> Result<(Warm, f64, Watt), Needs> {
         let stage = self.output();
         let (resistor, (bench, idle), air) = three(stage.emitter.need(), both(self.bench(), self.idle()), self.air_inside())?;
         let rated = stage.emitter.part("W", |r| r.watt)?;
