@@ -304,21 +304,6 @@ mod tests {
     }
 
     #[test]
-    fn zz_dump() {
-        let Ok(path) = std::env::var("DUMP_KIT") else { return };
-        let text = std::fs::read_to_string(path).unwrap();
-        let report = testing::report(&text);
-        for f in &report.findings { eprintln!("FINDING {} {}", f.rule, f.message); }
-        for b in &report.builds {
-            eprintln!("BUILD {} settled {}", b.name, b.settled);
-            for m in &b.margins {
-                eprintln!("{:28} {:18} {:?} used {:?} stress {:?} rating {:?} load {:?} f {:?} v {:?} i {:?} case {:?} sink {:?} | {} {:?}", m.rule, m.part.name, m.verdict, m.used_percent.map(|u| (u*10.0).round()/10.0), m.stress.map(|s| s.value), m.rating.map(|s| s.value), m.witness.load, m.witness.frequency_hz, m.witness.device_v, m.witness.device_a, m.witness.case_c, m.witness.sink_c, m.note, m.needs);
-                if std::env::var("DUMP_WORK").is_ok() { for s in &m.working { eprintln!("      {} = {} {}  ({})", s.symbol, s.value, s.unit, s.meaning); } }
-            }
-        }
-    }
-
-    #[test]
     fn names_are_unique_and_every_record_is_whole() {
         for (at, registered) in ALL.iter().enumerate() {
             let r = registered.rule;
