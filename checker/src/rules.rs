@@ -90,8 +90,15 @@ macro_rules! fault {
     };
 }
 
+pub mod bias {
+    //! The idle current.
+    pub mod consistency;
+    pub mod sensor_place;
+    pub mod stability;
+}
 pub mod bom {
     //! The spec against its own bill of materials.
+    pub mod polarity;
     pub mod quantity;
 }
 pub mod current {
@@ -109,8 +116,24 @@ pub mod current {
 }
 pub mod data {
     //! The spec against itself.
+    pub mod curve_against_power;
+    pub mod curve_order;
+    pub mod gain_order;
     pub mod reading;
+    pub mod source;
+    pub mod substitute_speed;
+    pub mod thermal_against_power;
     pub mod unused;
+}
+pub mod drive {
+    //! What the output stage asks of the stages before it.
+    pub mod driver_current;
+    pub mod driver_dissipation;
+    pub mod driver_soa;
+    pub mod input_level;
+    pub mod output_gain_droop;
+    pub mod slew;
+    pub mod standing_current;
 }
 pub mod power {
     //! Claimed watts and stated rails against solved ones.
@@ -118,6 +141,19 @@ pub mod power {
     pub mod rails_stated;
     pub mod rated_power;
     pub mod ripple_headroom;
+}
+pub mod protection {
+    //! A rail on the loudspeaker, and what stays charged.
+    pub mod absent;
+    pub mod bleed_down;
+    pub mod bridge_detector;
+    pub mod dc_fault_energy;
+    pub mod dc_fault_false_trip;
+    pub mod dc_fault_time;
+    pub mod fuse_fault;
+    pub mod offset_undetected;
+    pub mod relay_dc;
+    pub mod zobel;
 }
 pub mod soa {
     //! Loci and limit lines against derated safe-area curves.
@@ -219,6 +255,16 @@ pub static ALL: &[Registered] = &[
     build!(thermal::reservoir_life),
     build!(thermal::resistor),
     build!(thermal::enclosure),
+    build!(bias::stability),
+    build!(bias::consistency),
+    build!(bias::sensor_place),
+    build!(drive::output_gain_droop),
+    build!(drive::driver_current),
+    build!(drive::driver_dissipation),
+    build!(drive::driver_soa),
+    build!(drive::standing_current),
+    build!(drive::slew),
+    build!(drive::input_level),
     build!(supply::mains_tap),
     build!(supply::core_flux),
     build!(supply::shared_count),
@@ -229,6 +275,20 @@ pub static ALL: &[Registered] = &[
     build!(supply::soft_start_timing),
     build!(supply::bypass_stuck),
     build!(supply::inrush_resistor_energy),
+    build!(protection::dc_fault_time),
+    build!(protection::dc_fault_energy),
+    build!(protection::dc_fault_false_trip),
+    build!(protection::offset_undetected),
+    build!(protection::relay_dc),
+    build!(protection::bridge_detector),
+    build!(protection::fuse_fault),
+    build!(protection::bleed_down),
+    build!(protection::absent),
+    build!(protection::zobel),
+    build!(data::curve_order),
+    build!(data::curve_against_power),
+    build!(data::thermal_against_power),
+    build!(data::gain_order),
     reading!(data::reading::unit_suspect),
     text!(data::unused),
     reading!(data::reading::duplicate),
@@ -238,7 +298,10 @@ pub static ALL: &[Registered] = &[
     reading!(data::reading::cycle),
     reading!(data::reading::table),
     reading!(data::reading::unknown_rule),
+    build!(data::source),
+    text!(data::substitute_speed),
     build!(bom::quantity),
+    build!(bom::polarity),
     reading!(syntax::text),
     reading!(syntax::version),
     reading!(syntax::statement),

@@ -803,6 +803,8 @@ pub struct Build {
     pub heatsink: Field<(Rc<Heatsink>, u32)>,
     /// The protection.
     pub protection: Field<Rc<Protection>>,
+    /// How many channels each protection serves, where the build says so.
+    pub protected: Option<u32>,
     /// Mains regions.
     pub mains: Field<Vec<Region>>,
     /// Loads, tried in turn.
@@ -1349,6 +1351,7 @@ impl<'v, 'a> Reader<'v, 'a> {
             }),
             heatsink,
             protection: p.one("protection", |g| self.protection(g.name("protection")?)),
+            protected: p.seen.group("protection").and_then(carried),
             mains,
             loads: p.field("loads", |groups| groups.iter().map(|g| self.load(g.name("load")?, 0)).collect()),
             ambient: p.one("ambient", |g| match &g.get("degC")?.value {
