@@ -336,7 +336,7 @@ mod tests {
     /// Every rule finds fault with its own example, and not with the kit the example starts from.
     #[test]
     fn every_rule_trips_on_its_example_only() {
-        let mut faults = Vec::new();
+        let mut wrong = Vec::new();
         for registered in ALL {
             let rule = registered.rule;
             let kit = testing::kit(rule.example.kit);
@@ -347,13 +347,44 @@ mod tests {
                     || report.findings.iter().any(|f| f.rule == rule.name)
             };
             if fires(&kit) {
-                faults.push(format!("{} fires on the sound kit {}", rule.name, rule.example.kit));
+                wrong.push(format!("{} fires on the sound kit {}", rule.name, rule.example.kit));
             }
             if !fires(&testing::edited(&kit, rule.example.edits)) {
-                faults.push(format!("{} does not fire on its example", rule.name));
+                wrong.push(format!("{} does not fire on its example", rule.name));
             }
         }
-        assert!(faults.is_empty(), "{faults:#?}");
+        assert!(wrong.is_empty(), "{wrong:#?}");
+    }
+
+    #[test]
+    fn zz_print() {
+        for kit in ["tern60", "tern60-revisions", "tern-family", "tern-fet", "heron80-mosfet", "tern100-limiter"] {
+            let start = std::time::Instant::now();
+            let report = testing::report(&testing::kit(kit));
+            println!("==== {kit} {:?} findings {:#?}", start.elapsed(), report.findings.iter().map(|f| (&f.rule, &f.message)).collect::<Vec<_>>());
+            for b in &report.builds {
+                println!("-- {}", b.name);
+                for m in &b.margins {
+                    println!("{:?} {} {} stress {:?} rating {:?} used {:?} | {} {:?} | {:?} {:?} V {:?} ch {:?}", m.verdict, m.rule, m.part.name, m.stress.map(|s| (s.value, s.unit)), m.rating.map(|s| s.value), m.used_percent, m.note, m.needs, m.witness.load, m.witness.mains_v, m.witness.amplitude_v, m.witness.channels_driven);
+                    if kit == "tern60" { for s in &m.working { println!("      {} = {} {} [{}]", s.symbol, s.value, s.unit, s.meaning); } }
+                }
+            }
+        }
+    }
+
+    #[test]
+    fn zz_dump() {
+        let Ok(path) = std::env::var("DUMP_KIT") else { return };
+        let text = std::fs::read_to_string(path).unwrap();
+        let report = testing::report(&text);
+        for f in &report.findings { eprintln!("FINDING {} {}", f.rule, f.message); }
+        for b in &report.builds {
+            eprintln!("BUILD {} settled {}", b.name, b.settled);
+            for m in &b.margins {
+                eprintln!("{:28} {:18} {:?} used {:?} stress {:?} rating {:?} load {:?} f {:?} v {:?} i {:?} case {:?} sink {:?} | {} {:?}", m.rule, m.part.name, m.verdict, m.used_percent.map(|u| (u*10.0).round()/10.0), m.stress.map(|s| s.value), m.rating.map(|s| s.value), m.witness.load, m.witness.frequency_hz, m.witness.device_v, m.witness.device_a, m.witness.case_c, m.witness.sink_c, m.note, m.needs);
+                if std::env::var("DUMP_WORK").is_ok() { for s in &m.working { eprintln!("      {} = {} {}  ({})", s.symbol, s.value, s.unit, s.meaning); } }
+            }
+        }
     }
 
     #[test]
