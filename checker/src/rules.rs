@@ -357,37 +357,6 @@ mod tests {
     }
 
     #[test]
-    fn zz_print() {
-        for kit in ["tern60", "tern60-revisions", "tern-family", "tern-fet", "heron80-mosfet", "tern100-limiter"] {
-            let start = std::time::Instant::now();
-            let report = testing::report(&testing::kit(kit));
-            println!("==== {kit} {:?} findings {:#?}", start.elapsed(), report.findings.iter().map(|f| (&f.rule, &f.message)).collect::<Vec<_>>());
-            for b in &report.builds {
-                println!("-- {}", b.name);
-                for m in &b.margins {
-                    println!("{:?} {} {} stress {:?} rating {:?} used {:?} | {} {:?} | {:?} {:?} V {:?} ch {:?}", m.verdict, m.rule, m.part.name, m.stress.map(|s| (s.value, s.unit)), m.rating.map(|s| s.value), m.used_percent, m.note, m.needs, m.witness.load, m.witness.mains_v, m.witness.amplitude_v, m.witness.channels_driven);
-                    if kit == "tern60" { for s in &m.working { println!("      {} = {} {} [{}]", s.symbol, s.value, s.unit, s.meaning); } }
-                }
-            }
-        }
-    }
-
-    #[test]
-    fn zz_dump() {
-        let Ok(path) = std::env::var("DUMP_KIT") else { return };
-        let text = std::fs::read_to_string(path).unwrap();
-        let report = testing::report(&text);
-        for f in &report.findings { eprintln!("FINDING {} {}", f.rule, f.message); }
-        for b in &report.builds {
-            eprintln!("BUILD {} settled {}", b.name, b.settled);
-            for m in &b.margins {
-                eprintln!("{:28} {:18} {:?} used {:?} stress {:?} rating {:?} load {:?} f {:?} v {:?} i {:?} case {:?} sink {:?} | {} {:?}", m.rule, m.part.name, m.verdict, m.used_percent.map(|u| (u*10.0).round()/10.0), m.stress.map(|s| s.value), m.rating.map(|s| s.value), m.witness.load, m.witness.frequency_hz, m.witness.device_v, m.witness.device_a, m.witness.case_c, m.witness.sink_c, m.note, m.needs);
-                if std::env::var("DUMP_WORK").is_ok() { for s in &m.working { eprintln!("      {} = {} {}  ({})", s.symbol, s.value, s.unit, s.meaning); } }
-            }
-        }
-    }
-
-    #[test]
     fn names_are_unique_and_every_record_is_whole() {
         for (at, registered) in ALL.iter().enumerate() {
             let r = registered.rule;
