@@ -121,9 +121,14 @@ mod tests {
         assert!(between > 11.628 && between < 37.753, "{between}");
     }
 
+    /// A junction without heat capacity is hotter than any real one: where even that is cool enough, no
+    /// transient terms are needed; where it is not, they are named.
     #[test]
-    fn unstated_terms_are_named() {
+    fn unstated_terms_are_bounded_or_named() {
         let m = margin(&tern60(&[(TERMS, "")]), RULE.name, "n16");
-        assert_eq!((m.verdict, m.needs.as_slice()), (Unchecked, &["device n16 foster".to_owned()][..]));
+        assert_eq!(m.verdict, Ok, "{m:#?}");
+        assert!(m.note.contains("upper bound"));
+        let hot = margin(&tern60(&[(TERMS, ""), ("junction-case      0.69 K/W", "junction-case      3 K/W")]), RULE.name, "n16");
+        assert_eq!((hot.verdict, hot.needs.as_slice()), (Unchecked, &["device n16 foster".to_owned()][..]));
     }
 }
