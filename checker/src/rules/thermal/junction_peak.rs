@@ -21,7 +21,7 @@ rule! {
     rating: "Tj,max",
     formula: "Tj,pk = Tcase + max Σ Rk·(first-order answer of p(t)) + Vu·Iq·θjc, p = i·(Vu - v_out - i·RE) at V(burst)",
     source: "periodic steady state of a Foster network, closed form, own derivation",
-    reads: ["device.foster", "device.junction", "stage.insulator", "stage.pairs", "stage.emitter", "stage.idle", "amplifier.band", "amplifier.drop", "build.loads", "build.duty", "build.ambient", "heatsink.resistance"],
+    reads: ["device.foster", "device.junction-case", "device.junction", "stage.insulator", "stage.pairs", "stage.emitter", "stage.idle", "amplifier.band", "amplifier.drop", "build.loads", "build.duty", "build.ambient", "heatsink.resistance"],
     sense: Temperature,
     unit: "degC",
     allow: Allow::Below(0.0, f64::INFINITY), "the data sheet's own limit",
@@ -46,6 +46,10 @@ pub fn check(case: &Case<'_>, out: &mut Margins<'_>) {
 fn stress(case: &Case<'_>, load: &Driven, heat: &Heat, side: Side) -> Result<Stress, Needs> {
     let device = case.output().device(side);
     let (limit, peak) = both(device.junction.need().copied(), case.peak_junction(heat, load, side))?;
+    // a bound that fits proves it; one that does not proves nothing
+    if peak.bounded && peak.junction > limit {
+        return Err(device.foster.missing());
+    }
     let mut related = vec![Related { message: "into this load".to_owned(), site: load.site }];
     related.extend(device.foster.stated_at().map(|site| Related { message: "transient thermal terms".to_owned(), site }));
     Ok(Stress {
@@ -76,6 +80,7 @@ fn stress(case: &Case<'_>, load: &Driven, heat: &Heat, side: Side) -> Result<Str
             stated("Tj,max", "limit", limit.0, "degC", device.junction.stated_at()),
         ],
         related,
+        note: if peak.bounded { "no transient terms are stated: an upper bound, by a junction without heat capacity".to_owned() } else { String::new() },
         ..Stress::default()
     })
 }
