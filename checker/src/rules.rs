@@ -176,18 +176,14 @@ mod tests {
         }
     }
 
+    /// A false alarm costs as much trust as a miss: the demo kits come out with nothing to say.
     #[test]
-    fn zz_print() {
+    fn the_demo_kits_are_sound() {
         for kit in ["tern60", "tern-family", "tern-fet"] {
-            let start = std::time::Instant::now();
             let report = testing::report(&testing::kit(kit));
-            println!("==== {kit} {:?} findings {:#?}", start.elapsed(), report.findings.iter().map(|f| (&f.rule, &f.message)).collect::<Vec<_>>());
-            for b in &report.builds {
-                println!("-- {}", b.name);
-                for m in &b.margins {
-                    println!("{:?} {} {} stress {:?} rating {:?} used {:?} | {} {:?} | {:?} {:?} V {:?} ch {:?}", m.verdict, m.rule, m.part.name, m.stress.map(|s| (s.value, s.unit)), m.rating.map(|s| s.value), m.used_percent, m.note, m.needs, m.witness.load, m.witness.mains_v, m.witness.amplitude_v, m.witness.channels_driven);
-                    if kit == "tern60" { for s in &m.working { println!("      {} = {} {} [{}]", s.symbol, s.value, s.unit, s.meaning); } }
-                }
+            assert_eq!(report.findings, [], "{kit}");
+            for margin in report.builds.iter().flat_map(|b| &b.margins) {
+                assert_eq!(margin.verdict, Verdict::Ok, "{kit}: {} {:?}", margin.id, margin.needs);
             }
         }
     }
