@@ -6,6 +6,7 @@ pub mod build;
 pub mod finding;
 pub mod physics;
 pub mod policy;
+pub mod proposal;
 pub mod quantity;
 pub mod render;
 pub mod rule;
@@ -14,13 +15,14 @@ pub mod source;
 pub mod tables;
 #[cfg(test)]
 pub(crate) mod testing;
+pub mod tidy;
 pub mod vocabulary;
 pub mod waiver;
 
 use std::collections::BTreeSet;
 use std::path::{Path, PathBuf};
 
-use analysis::{Case, Margins, Tables};
+use analysis::{Case, Margins, Tables, derived};
 use build::parts::Reader;
 use build::statement::Declared;
 use build::{Project, View, project};
@@ -38,6 +40,8 @@ pub struct Options {
     pub build: Option<String>,
     /// Today, `2030-01-31`, for waivers with a date.
     pub today: String,
+    /// Look for changes that clear what is over or thin. Each is re-solved, which takes time.
+    pub changes: bool,
     /// The folder that no path may leave; the folder of the file where not given.
     pub root: Option<PathBuf>,
 }
@@ -78,7 +82,16 @@ pub fn check(files: &dyn Files, path: &Path, shown: &str, options: &Options) -> 
             check(&project, &mut findings);
         }
     }
-    let waivers = waiver::apply(&project, &options.today, &mut builds, &mut findings);
+    let waivers = waiver::apply(&project, options, &mut builds, &mut findings);
+    if options.changes {
+        for ((build, alternate), report) in variants(&project, options.build.as_deref()).into_iter().zip(&mut builds) {
+            let view = View::new(&project, build, alternate, &[]);
+            proposal::fill(&view, &mut report.margins, &|changes| {
+                let view = View::new(&project, build, alternate, changes);
+                solve(&view, options, &tables, &mut Vec::new()).0.margins
+            });
+        }
+    }
     findings.sort_by_key(|f| (f.site, f.rule));
     findings.dedup();
     let policies = policies.iter().map(Policy::report).collect();
@@ -133,6 +146,7 @@ fn solve(view: &View<'_>, options: &Options, tables: &Tables, findings: &mut Vec
                         check(&case, &mut margins);
                     }
                 }
+                derived::note(&case, &mut report.derived);
                 extend(&mut assumed, case.assumed());
             }
             report.margins = in_rule_order(margins.into_margins());

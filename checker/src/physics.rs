@@ -3,6 +3,7 @@
 
 pub mod bias;
 pub mod drive;
+pub mod foster;
 pub mod fuse;
 pub mod heat;
 pub mod heatsink;
@@ -12,7 +13,9 @@ pub mod math;
 pub mod network;
 pub mod output_stage;
 pub mod protection;
+pub mod safe_area;
 pub mod sharing;
 pub mod supply;
 pub mod unit;
+pub mod waveform;
 pub mod wear;

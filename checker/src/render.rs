@@ -8,6 +8,7 @@ pub mod explain;
 pub mod figure;
 pub mod html;
 pub mod json;
+pub mod language;
 pub mod margins;
 pub mod markdown;
 pub mod message;

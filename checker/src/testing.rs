@@ -25,17 +25,31 @@ impl Files for Beside<'_> {
     }
 }
 
-/// The text of a demo kit.
+/// The text of a demo kit, its columns closed up, so that an edit need not count blanks.
 pub(crate) fn kit(name: &str) -> String {
-    std::fs::read_to_string(kits().join(name).with_extension("ampspec")).unwrap()
+    closed_up(&std::fs::read_to_string(kits().join(name).with_extension("ampspec")).unwrap())
+}
+
+/// Runs of blanks inside lines as one.
+fn closed_up(text: &str) -> String {
+    let line = |line: &str| {
+        let indent = line.len() - line.trim_start().len();
+        format!("{}{}", &line[..indent], line.split_whitespace().collect::<Vec<_>>().join(" "))
+    };
+    let mut out = text.split('\n').map(line).collect::<Vec<_>>().join("\n");
+    if text.starts_with(' ') {
+        out = out.trim_start().to_owned();
+    }
+    out
 }
 
 /// The text with replacements made; each must be found.
 pub(crate) fn edited(text: &str, edits: &[(&str, &str)]) -> String {
     let mut out = text.to_owned();
     for (old, new) in edits {
-        assert!(out.contains(old), "`{old}` is not in the kit");
-        out = out.replace(old, new);
+        let old = closed_up(old);
+        assert!(out.contains(&old), "`{old}` is not in the kit");
+        out = out.replace(&old, new);
     }
     out
 }
@@ -63,4 +77,22 @@ pub(crate) fn margin(text: &str, rule: &str, part: &str) -> Margin {
 /// Verdict of a rule for a part in the first build.
 pub(crate) fn verdict(text: &str, rule: &str, part: &str) -> Verdict {
     margin(text, rule, part).verdict
+}
+
+/// Every demo kit and part file.
+pub(crate) fn all_kits() -> Vec<PathBuf> {
+    let mut out = Vec::new();
+    let mut folders = vec![kits()];
+    while let Some(folder) = folders.pop() {
+        for entry in std::fs::read_dir(folder).unwrap() {
+            let path = entry.unwrap().path();
+            if path.is_dir() {
+                folders.push(path);
+            } else if path.extension().is_some_and(|e| e == "ampspec") {
+                out.push(path);
+            }
+        }
+    }
+    out.sort();
+    out
 }

@@ -1,6 +1,7 @@
 //! Waivers: findings accepted in the file, with a written reason.
 //! Must not know what a rule compares.
 
+use crate::Options;
 use crate::build::Project;
 use crate::finding::{BuildReport, Finding, Margin, Severity, Verdict, Waiver, WaiverState};
 use crate::policy::unknown_rule;
@@ -8,7 +9,7 @@ use crate::rules;
 
 /// Apply every waiver of the project. Margins and findings they accept are marked, and stay. Waivers
 /// that accept nothing are findings.
-pub fn apply(project: &Project, today: &str, builds: &mut [BuildReport], findings: &mut Vec<Finding>) -> Vec<Waiver> {
+pub fn apply(project: &Project, options: &Options, builds: &mut [BuildReport], findings: &mut Vec<Finding>) -> Vec<Waiver> {
     let mut waivers = Vec::new();
     for text in &project.waivers {
         let Some(site) = text.site else { continue };
@@ -33,11 +34,12 @@ pub fn apply(project: &Project, today: &str, builds: &mut [BuildReport], finding
         } else if waiver.until.as_deref().is_some_and(|d| !is_date(d)) {
             waiver.state = WaiverState::Refused;
             findings.push(refuse("this waiver's date is not understood, so it waives nothing".to_owned(), "write `until 2030-01-31`"));
-        } else if waiver.until.as_deref().is_some_and(|d| d < today) {
+        } else if waiver.until.as_deref().is_some_and(|d| d < options.today.as_str()) {
             waiver.state = WaiverState::Expired;
             let date = waiver.until.as_deref().unwrap_or_default();
             findings.push(refuse(format!("this waiver ran out on {date}, so it waives nothing"), "settle the finding, or look again and set a later date"));
-        } else if !accept(&waiver, waivers.len(), builds, findings) {
+        } else if !accept(&waiver, waivers.len(), builds, findings) && options.build.is_none() {
+            // with one build picked out, what waives another matches nothing and is not stale
             waiver.state = WaiverState::Stale;
             let hint = "remove it, or correct the names: a waiver that matches nothing hides nothing, but misleads";
             findings.push(refuse("this waiver matches no finding any more".to_owned(), hint).at(Severity::Warning));

@@ -47,6 +47,9 @@ pub struct Lowered {
     pub waivers: Vec<WaiverText>,
     /// What could not be read.
     pub findings: Vec<Finding>,
+    /// The usual spelling of texts that were read in another, by place. Several of one place belong
+    /// together, in order.
+    pub spellings: Vec<(Span, String)>,
 }
 
 /// Names and kinds of the blocks a tree declares, without reading their lines.
@@ -98,6 +101,8 @@ struct Atom<'a> {
     text: &'a str,
     kind: TokenKind,
     span: Span,
+    /// It is a part of the token at `span`.
+    split: bool,
 }
 
 impl Lowering<'_> {
@@ -226,11 +231,8 @@ impl Lowering<'_> {
             self.unknown("syntax.block", block.kind, format!("`{word}` is no kind of block"), hint, &near);
             return;
         };
-        let Some(name) = block.name() else {
-            let message = format!("this {word} has no name");
-            self.error("syntax.name", block.header_span, message, format!("write `{word} NAME {{`"));
-            return;
-        };
+        // a block without a name is a problem that the grammar has told
+        let Some(name) = block.name() else { return };
         let mut declared = Declared {
             kind,
             name: name.text(self.text).to_owned(),
@@ -305,8 +307,22 @@ impl Lowering<'_> {
 
     /// A line of a block of this kind.
     fn line(&mut self, kind: &'static Block, line: &grammar::Line) -> Option<Statement> {
+        // the grammar has told what is wrong with this line; its values are not complete
+        if self.tree.is_faulty(line.span) {
+            return None;
+        }
         let groups: Vec<&[Token]> = line.groups.iter().map(|g| g.tokens.as_slice()).collect();
-        self.statement(kind, line.key, &groups, line.span)
+        let said = self.out.findings.len();
+        let statement = self.statement(kind, line.key, &groups, line.span);
+        // one fault of the text a line: what follows the first is often only its echo
+        let mut first = true;
+        let mut at = 0;
+        self.out.findings.retain(|f| {
+            at += 1;
+            let fault = at > said && f.severity == Severity::Error && f.rule.starts_with("syntax.");
+            !fault || std::mem::take(&mut first)
+        });
+        statement
     }
 
     fn statement(&mut self, kind: &'static Block, key: Token, groups: &[&[Token]], span: Span) -> Option<Statement> {
@@ -441,6 +457,7 @@ impl Lowering<'_> {
             _ => (tokens, &tokens[tokens.len()..]),
         };
         let atoms = atoms(self.text, values, shape);
+        let spelled = self.out.spellings.len();
         let mut group = Group { slots: Vec::new(), bought: self.bought(bought), site: self.site(span) };
         let mut faulty = false;
         let mut next = 0;
@@ -448,7 +465,9 @@ impl Lowering<'_> {
             let used = self.item(key, shape, &atoms[next..], &mut group, &mut faulty);
             next += used.max(1);
         }
-        if !faulty {
+        if faulty {
+            self.out.spellings.truncate(spelled);
+        } else {
             self.lacking(key, shape, &group, span);
         }
         Some(group)
@@ -509,7 +528,12 @@ impl Lowering<'_> {
             && let Some(item) = shape.items.iter().find(|i| i.takes == Takes::Count && free(i, group))
         {
             match whole(word) {
-                Some(n) => self.fill(group, item, Value::Count(n), atom.span),
+                Some(n) => {
+                    if atom.split {
+                        self.out.spellings.push((atom.span, format!("{n} x")));
+                    }
+                    self.fill(group, item, Value::Count(n), atom.span);
+                }
                 None => {
                     *faulty = true;
                     let message = format!("`{word}` is no whole number");
@@ -647,6 +671,7 @@ impl Lowering<'_> {
                 Ok(windings) => {
                     let used = windings.each.used.max(1);
                     let span = atoms.get(used - 1).map_or(first.span, |a| first.span.cover(a.span));
+                    self.out.spellings.push((span, windings.canonical));
                     self.fill(group, count, Value::Count(2), span);
                     self.fill(group, volts, Value::Quantity(windings.each), span);
                     return Some(used);
@@ -664,6 +689,7 @@ impl Lowering<'_> {
                 FuseSpeed::Fast => "fast",
                 FuseSpeed::Slow => "slow",
             };
+            self.out.spellings.push((first.span, found.canonical));
             self.fill(group, amps, Value::Quantity(found.current), first.span);
             self.fill(group, speed, Value::Word(word), first.span);
             return Some(1);
@@ -731,6 +757,7 @@ impl Lowering<'_> {
         let Takes::Quantity { dimension, tolerance, extent, .. } = item.takes else { return used };
         let Some(first) = atoms.first() else { return used };
         let span = atoms.get(used - 1).map_or(first.span, |a| first.span.cover(a.span));
+        self.spell(&notes, &atoms[..used.min(atoms.len())], span);
         for note in notes {
             self.note(note, span);
         }
@@ -751,6 +778,7 @@ impl Lowering<'_> {
                 Reading::Read { quantity: high, notes } => {
                     let more = high.used.max(1);
                     let end = rest.get(more - 1).map_or(span, |a| a.span);
+                    self.spell(&notes, &rest[..more.min(rest.len())], end);
                     for note in notes {
                         self.note(note, end);
                     }
@@ -781,6 +809,17 @@ impl Lowering<'_> {
         self.plausible(key, item, quantity.value, span);
         self.fill(group, item, Value::Quantity(quantity), span);
         used
+    }
+
+    /// Keep the usual spelling of a quantity that was written otherwise, or that is a part of a token.
+    /// Every remark on one text carries the same usual spelling.
+    fn spell(&mut self, notes: &[quantity::Note], atoms: &[Atom<'_>], span: Span) {
+        if let Some(note) = notes.first() {
+            self.out.spellings.push((span, note.canonical.clone()));
+        } else if atoms.iter().any(|a| a.split) {
+            let texts: Vec<&str> = atoms.iter().map(|a| a.text).collect();
+            self.out.spellings.push((span, texts.join(" ")));
+        }
     }
 
     fn note(&mut self, note: quantity::Note, span: Span) {
@@ -862,12 +901,17 @@ fn atoms<'a>(text: &'a str, tokens: &[Token], shape: &Shape) -> Vec<Atom<'a>> {
     let mut out = Vec::with_capacity(tokens.len() + 2);
     let counts = shape.item("x").is_some();
     for token in tokens {
+        let span = token.span;
         let word = token.text(text);
         let mut rest = word;
-        if counts && token.kind == TokenKind::Number && let Some((_, after)) = quantity::split_count(word) {
+        let part = |text, kind| Atom { text, kind, span, split: true };
+        if counts
+            && token.kind == TokenKind::Number
+            && let Some((_, after)) = quantity::split_count(word)
+        {
             let digits = word.find(|c: char| !c.is_ascii_digit()).unwrap_or(word.len());
-            out.push(Atom { text: &word[..digits], kind: TokenKind::Number, span: token.span });
-            out.push(Atom { text: "x", kind: TokenKind::Times, span: token.span });
+            out.push(part(&word[..digits], TokenKind::Number));
+            out.push(part("x", TokenKind::Times));
             rest = after;
         }
         if rest.is_empty() {
@@ -875,10 +919,10 @@ fn atoms<'a>(text: &'a str, tokens: &[Token], shape: &Shape) -> Vec<Atom<'a>> {
         }
         match quantity::split_slash(rest) {
             Some((a, b)) if token.kind == TokenKind::Number => {
-                out.push(Atom { text: a, kind: TokenKind::Number, span: token.span });
-                out.push(Atom { text: b, kind: TokenKind::Number, span: token.span });
+                out.push(part(a, TokenKind::Number));
+                out.push(part(b, TokenKind::Number));
             }
-            _ => out.push(Atom { text: rest, kind: token.kind, span: token.span }),
+            _ => out.push(Atom { text: rest, kind: token.kind, span, split: rest.len() < word.len() }),
         }
     }
     out

@@ -43,6 +43,10 @@ const MOST_SAMPLES: usize = 18;
 /// Most patterns marched through to find the steady state; three or four are usual.
 const MAX_MARCHES: u32 = 100;
 
+/// How much the load may bend the drive before spans are kept short, and how short.
+const STEEP: f64 = 0.1;
+const SHORT_SPAN: f64 = PI / 32.0;
+
 /// Most pieces between two break points of source and load; one or two are usual.
 const MOST_PIECES: u32 = 16;
 
@@ -156,6 +160,8 @@ struct March<'a> {
     pace: f64,
     /// Signal periods after which everything repeats.
     periods: u32,
+    /// Longest span searched for switching at once, radians of the mains.
+    longest: f64,
 }
 
 /// What is carried from piece to piece.
@@ -209,13 +215,23 @@ impl<'a> March<'a> {
             && half_cycles > 0.0
             && half_cycles <= MOST_HALF_CYCLES;
         let (pattern, periods) = sound.then(|| next_ratio(half_cycles))?;
+        let pace = 2.0 * f64::from(periods) / pattern;
+        // The drive bends by -sin θ from the source and by up to l1·ν/x from the load. While the
+        // source rules, the rectifier switches on once and off once between break points; a
+        // steep load can make it stutter, which only short spans are sure to see.
+        let steep = peak * pace / rail.x > STEEP;
         Some(Self {
             rail,
             standing,
             peak,
             draw: load.draw,
-            pace: 2.0 * f64::from(periods) / pattern,
+            pace,
             periods,
+            longest: if steep {
+                SHORT_SPAN / pace.max(1.0)
+            } else {
+                PI
+            },
         })
     }
 
@@ -285,10 +301,10 @@ impl<'a> March<'a> {
                 }
             };
             let spare = |after| headroom(after).least.0;
-            let longest = SAMPLING / self.pace.max(1.0);
+            let spacing = SAMPLING / self.pace.max(1.0);
             // The rail may turn soon after the rectifier has: samples crowd there, as n² does.
             let crowding = if piece.on { 2 } else { 1 };
-            let parts = (crowding * (length / longest).ceil() as usize).clamp(2, MOST_SAMPLES - 1);
+            let parts = (crowding * (length / spacing).ceil() as usize).clamp(2, MOST_SAMPLES - 1);
             let mut samples = [(0.0, f64::INFINITY); MOST_SAMPLES];
             let mut lowest = 0;
             for n in 0..=parts {
@@ -334,13 +350,13 @@ impl<'a> March<'a> {
         while half_waves < 2 * self.periods {
             let negative = half_waves % 2 == 1;
             let (to_crossing, to_zero) = (PI - angle, (PI - signal) / self.pace);
-            let span = to_crossing.min(to_zero);
+            let span = to_crossing.min(to_zero).min(self.longest);
             state = self.span(state, (angle, signal, negative), span, &mut visit)?;
             (angle, signal) = (angle + span, signal + self.pace * span);
-            if to_zero <= to_crossing {
+            if to_zero <= span {
                 (signal, half_waves) = (0.0, half_waves + 1);
             }
-            if to_crossing <= to_zero {
+            if to_crossing <= span {
                 angle = 0.0;
                 if state.on {
                     return None; // conducting at a zero crossing: the rail is below zero
@@ -593,7 +609,13 @@ mod tests {
         };
         let count = (5000.0 * (parts.mains / load.frequency).max(1.0)) as usize;
         let h = 1.0 / load.frequency.0 / count as f64;
-        let start = (begin, parts.no_load_crest.0);
+        // Any start will do, but the mean of the load is near where it settles.
+        let mean = load.standing + load.draw.mean(load.peak);
+        let cycle = Rail::new(parts).unwrap().loaded(mean);
+        let start = (
+            begin,
+            cycle.map_or(0.5 * parts.no_load_crest.0, |c| c.mean().0),
+        );
         let mut least = f64::INFINITY;
         twin.march(
             &drawn,
@@ -728,13 +750,15 @@ mod tests {
                 draw: if both { Draw::BothHalves } else { Draw::OneHalf },
             };
             let needed = needed(swing * parts.no_load_crest.0);
-            let settle = 3 + ((10.0 + 12.0 * rail.x) * frequency) as usize;
+            let settle = 3 + ((10.0 + 20.0 * rail.x) * frequency) as usize;
             prop_assume!(settle < 500);
             if let Some(found) = rail.least_headroom_at(load, phase, &needed) {
                 prop_assume!(found.rail.0 > 0.1 * parts.no_load_crest.0);
                 let steps = by_steps(parts, load, phase, &needed, (settle, 4));
+                // Steps miss the corner at turn-on by what the load takes off in one of them.
+                let corner = amps / parts.reservoir.0 / parts.mains.0 / 5000.0;
                 prop_assert!(
-                    (found.least.0 - steps).abs() < 1e-3 * parts.no_load_crest.0,
+                    (found.least.0 - steps).abs() < 1e-3 * parts.no_load_crest.0 + corner,
                     "{found:?} {steps}",
                 );
             }
