@@ -356,6 +356,21 @@ mod tests {
         assert!(wrong.is_empty(), "{wrong:#?}");
     }
 
+    /// A false alarm costs as much trust as a miss: no demo kit that is meant to be sound is found
+    /// fault with, in any of its builds.
+    #[test]
+    fn the_demo_kits_are_sound() {
+        let mut wrong = Vec::new();
+        for kit in ["tern60", "tern-family", "heron80-mosfet", "tern100-limiter"] {
+            let report = testing::report(&testing::kit(kit));
+            wrong.extend(report.findings.iter().map(|f| format!("{kit}: {} {}", f.rule, f.message)));
+            let margins = report.builds.iter().flat_map(|b| &b.margins);
+            let faults = margins.filter(|m| matches!(m.verdict, Verdict::Over | Verdict::Thin));
+            wrong.extend(faults.map(|m| format!("{kit}: {} {:?}", m.id, m.used_percent)));
+        }
+        assert!(wrong.is_empty(), "{wrong:#?}");
+    }
+
     #[test]
     fn names_are_unique_and_every_record_is_whole() {
         for (at, registered) in ALL.iter().enumerate() {
