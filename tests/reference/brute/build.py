@@ -137,6 +137,7 @@ def _load(rng, name, folder, kinds, base=None):
             _load(rng, f"{name}-{x}", folder, ["resistive", "voice-coil"] if x == "b" else ["voice-coil"], size * 2)
             for x in "ab"
         ]
+        load["nominal"] = size
     return load
 
 
@@ -326,7 +327,7 @@ def _load_text(load):
     elif load["kind"] == "parallel":
         for part in load["parts"]:
             out.append(_load_text(part))
-        lines = ["parallel " + ", ".join(p["name"] for p in load["parts"])]
+        lines = [f"nominal {num(load['nominal'])} ohm", "parallel " + ", ".join(p["name"] for p in load["parts"])]
     body = "\n".join("    " + x for x in lines)
     out.append(f"load {load['name']} {{\n{body}\n}}")
     return "\n".join(out)

@@ -49,8 +49,6 @@ def nominal(load):
     """The resistance the load is rated at."""
     if load["kind"] == "resistive":
         return load["ohms"]
-    if load["kind"] == "parallel":
-        return 1 / sum(1 / nominal(part) for part in load["parts"])
     return load["nominal"]
 
 

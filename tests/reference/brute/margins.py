@@ -53,8 +53,9 @@ class Case:
         return supply_.Rail(
             peak=m[level] / m["tap"] * math.sqrt(2) * s["vs"] * (1 + s["rho"]),
             drop=s["bridges"] * s["diode"],
+            # One lead carries a winding's current to a centre tap's bridge, two to a bridge of its own.
             # Both windings of every supply of the build draw through the one mains loop.
-            source=s["rho"] * s["vs"] ** 2 / (s["va"] / 2) + s["wiring"] + 2 * self.supplies * m["loop"] * turns**2,
+            source=s["rho"] * s["vs"] ** 2 / (s["va"] / 2) + s["bridges"] * s["wiring"] + 2 * self.supplies * m["loop"] * turns**2,
             farads=s["cap_n"] * s["cap"] * cap,
             esr=s["esr"] / s["cap_n"],
             hertz=m["hertz"],
@@ -188,10 +189,10 @@ class Case:
 
 
 def gain_at(points, amps):
-    """Least gain at a current: logarithm of current, flat below the first point, none past the last."""
+    """Least gain at a current: straight against its logarithm, flat below the first point, none past the last."""
     gain, at = np.array(points, float).T
     x = np.log(np.maximum(np.asarray(amps, float), 1e-12))
-    return np.where(np.asarray(amps) > at[-1] * (1 + 1e-12), np.nan, np.exp(np.interp(x, np.log(at), np.log(gain))))
+    return np.where(np.asarray(amps) > at[-1] * (1 + 1e-12), np.nan, np.interp(x, np.log(at), gain))
 
 
 def standing(out):
@@ -280,7 +281,8 @@ def means(case, worst):
             worst.below("current.reservoir-ripple", "psu reservoir", ripple, s["ripple"], 0.9)
             worst.below("current.transformer-duty", "t1", 2 * s["vs"] * state.rms, s["va"], 0.8)
             core = case.hottest + 5.0 * (ripple / s["ripple"]) ** 2
-            hours = s["life"] * 2 ** ((s["life_at"] - core) / 10)
+            # Makers' life figures stop at 40 degC.
+            hours = s["life"] * 2 ** ((s["life_at"] - max(core, 40.0)) / 10)
             worst.note("thermal.reservoir-life", "psu reservoir", hours, 2000.0, 100 * 10_000 / hours)
         peak = case.duty_amplitude(load) / case.resistance(load) / case.pairs
         share = stage_.share_one(peak / math.pi, case.stage)
@@ -376,27 +378,23 @@ def bias(case, worst):
 
 
 def drive(case, worst):
-    b, out, drv, vas = case.b, case.b["out"], case.b["drv"], case.b["vas"]
+    b, drv, vas = case.b, case.b["drv"], case.b["vas"]
     for load in b["loads"]:
         least = case.least_modulus(load)
-        volts = case.burst("volts", least)
-        amps = volts / least
-        carried = float(case.driver_current(np.array([amps]))[0])
-        if math.isnan(carried):
-            continue
-        worst.below("drive.driver-current", "d1", carried, drv["up"]["ic"], 0.8)
-        gain = float(gain_at(drv["up"]["hfe"], np.array([carried]))[0])
-        if not math.isnan(gain):
-            base = carried / gain + (drv["up"]["vbe"] / drv["be"] if drv["be"] else 0.0)
-            worst.below("drive.output-gain-droop", "vas", base, vas["current"], 0.8)
-    top = max(case.burst("volts", abs(z(np.array([f]))[0])) for load in b["loads"] for z in case.sides(load) for f in loads_.grid(b["band"], 201))
-    need = 2 * math.pi * b["band"][1] * top
-    has = vas["tail"] / vas["comp"]
-    worst.note("drive.slew", "vas", need, has, 100 * need * 1.2 / has)
+        amps = case.burst("high", least) / least
+        worst.below("drive.driver-current", "d1", float(case.driver_current(amps)), drv["up"]["ic"], 0.8)
+        amps = case.burst("volts", least) / least
+        carried = float(case.driver_current(amps))
+        base = carried / float(gain_at(drv["up"]["hfe"], carried)) + standing(drv)
+        worst.below("drive.output-gain-droop", "vas output-current", base, vas["current"] - standing(drv), 0.8)
+        need = 2 * math.pi * b["band"][1] * case.burst("volts", case.resistance(load))
+        has = min(vas["tail"], vas["current"]) / vas["comp"]
+        worst.note("drive.slew", "vas tail", has / need, 1.0, 100 * 1.2 * need / has)
     n = b["net"]
+    top = max(case.burst("volts", float(abs(z(b["band"][1])))) for load in b["loads"] for z in case.sides(load))
     x = 1 / (2 * math.pi * b["band"][1] * n["c"])
     watts = top**2 / 2 * n["r"] / (n["r"] ** 2 + x**2)
-    worst.below("protection.zobel", "net", watts, n["watts"], 0.6)
+    worst.below("protection.zobel", "net zobel", watts, n["watts"], 0.6)
 
 
 def protection(case, worst):
@@ -405,10 +403,10 @@ def protection(case, worst):
     rail = case.unsagged("volts")
     got = solve_ivp(lambda _t, y: [(rail - y[0]) / tau], (0, tau * 3), [0.0], events=_reach(g["vth"]), rtol=1e-12, atol=1e-13, max_step=tau / 200)
     rest = float(got.t_events[0][0])
-    worst.note("protection.dc-fault-time", "guard", rest + g["release"], 0.2, 100 * (rest + g["release"]) / 0.05)
+    worst.note("protection.dc-fault-time", "guard detector", rest + g["release"], 0.2, 100 * (rest + g["release"]) / 0.05)
     top = max(case.burst("high", abs(z(np.array([b["band"][0]]))[0])) for load in b["loads"] for z in case.sides(load))
     swing = detector_swing(top, b["band"][0], tau)
-    worst.note("protection.dc-fault-false-trip", "guard", swing, g["vth"], 100 * swing / g["vth"])
+    worst.note("protection.dc-fault-false-trip", "guard detector", swing, g["vth"], 100 * swing / g["vth"])
     bleed_down(case, worst)
     worst.note("supply.core-flux", "t1", case.mains["high"] / case.mains["tap"] * 50 / case.mains["hertz"], 1.12, 100 * case.mains["high"] / case.mains["tap"] * 50 / case.mains["hertz"] / 1.1)
 
@@ -454,7 +452,7 @@ def bleed_down(case, worst):
         down = lambda _t, y: [-y[0] / tau]
         got = solve_ivp(down, (0, 10 * tau), [v], events=_reach(60.0), rtol=1e-12, atol=1e-12)
         seconds = float(got.t_events[0][0])
-    worst.note("protection.bleed-down", "psu", seconds, 300.0, 100 * seconds / 60)
+    worst.note("protection.bleed-down", "psu bleeder", seconds, 300.0, 100 * seconds / 60)
 
 
 def safe_areas(case, worst):
@@ -493,7 +491,7 @@ def locus(case, z, rail, f, level, angle):
     return rail - volts * np.sin(angle + phi) - each * case.re, hog, each * case.pairs
 
 
-def search(function, band, knots=(), flat=False):
+def search(function, band, knots=(), flat=False, turn=np.pi):
     """Greatest value over frequency, amplitude and angle: a dense grid, then zoom on the best cells.
 
     A load that is the same at every frequency (`flat`) is searched at one.
@@ -501,7 +499,7 @@ def search(function, band, knots=(), flat=False):
     middle = math.sqrt(band[0] * band[1])
     f = np.array([middle]) if flat else np.unique(np.concatenate([np.geomspace(*band, 91), [k for k in knots if band[0] <= k <= band[1]]]))
     a = np.array([0.3, 0.6, 0.8, 0.93, 1.0])
-    t = np.linspace(0.01, np.pi - 0.01, 91)
+    t = np.linspace(0.01, turn - 0.01, 91 if turn < 4 else 181)
     grid = np.meshgrid(f, a, t, indexing="ij")
     got = function(*grid)
     got = np.where(np.isnan(got), -np.inf, got)
@@ -514,7 +512,7 @@ def search(function, band, knots=(), flat=False):
         else:
             span = max(f[min(k + 1, len(f) - 1)] - f[k], f[k] - f[max(k - 1, 0)])
             lower, upper = band
-        boxes.append(((f[k], a[j], t[m]), (span, 0.15, 0.06), (lower, 0.02, 1e-4), (upper, 1.0, np.pi - 1e-4)))
+        boxes.append(((f[k], a[j], t[m]), (span, 0.15, 0.06), (lower, 0.02, 1e-4), (upper, 1.0, turn - 1e-4)))
     return safe_area.zoom(function, boxes, points=(1 if flat else 7, 5, 9), rounds=24, shrink=0.5)
 
 
@@ -532,12 +530,12 @@ def driver_soa(case, load, z, rail):
     def function(f, level, angle):
         at = z(f)
         volts = stage_.burst_array(rail, case.b["drop"], np.abs(at)) * level
-        bank = volts / np.abs(at) * np.sin(angle)
+        bank = np.maximum(volts / np.abs(at) * np.sin(angle), 0)
         v = rail - volts * np.sin(angle + np.angle(at)) - case.b["out"]["up"]["vbe"]
         return case.driver_current(bank) / safe_area.allowed(d, case.hottest_driver, v)
 
     if math.isfinite(case.hottest_driver):
-        used, where = search(function, case.b["band"], loads_.knots(load), loads_.flat(load))
+        used, where = search(function, case.b["band"], loads_.knots(load), loads_.flat(load), 2 * np.pi)
         if where is not None:
             yield used, where, d
 
