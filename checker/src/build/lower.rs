@@ -386,6 +386,13 @@ impl Lowering<'_> {
                 break;
             }
         }
+        if found.repeats && shape.selector.is_none() {
+            let first = statement.groups.first().and_then(|g| g.slots.first());
+            statement.select = first.and_then(|s| match &s.value {
+                Value::Quantity(q) => Some(Select::First(q.value)),
+                _ => None,
+            });
+        }
         if statement.groups.is_empty() { None } else { Some(statement) }
     }
 

@@ -69,7 +69,7 @@ fn stress(case: &Case<'_>, supply: &Supply, fuse: &FuseLine, load: &Driven) -> R
         }
     };
     let factor = temperature_factor(air);
-    let mut working = case.rail_steps(&flow, "√(2PR), no more than is sustained");
+    let mut working = case.rail_steps(&flow, "√(2PR) of the claimed power, else what is sustained");
     working.push(step);
     working.push(stated("IN", "rated current", fuse.rating.0, "A", [fuse.site]));
     working.push(solved("IT", "rated current in the air inside", "IN·(1 - 0.005·(T - 25))", fuse.rating.0 * factor, "A", "0.5 %/K above 25 degC"));

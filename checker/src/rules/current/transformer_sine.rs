@@ -58,7 +58,7 @@ pub fn check(case: &Case<'_>, out: &mut Margins<'_>) {
 fn stress(case: &Case<'_>, supply: &Supply, load: &Driven) -> Result<Stress, Needs> {
     let field = &supply.transformer.rating;
     let (rating, flow) = both(field.need().copied(), case.sine_flow(load))?;
-    let mut working = case.rail_steps(&flow, "√(2PR), no more than is sustained");
+    let mut working = case.rail_steps(&flow, "√(2PR) of the claimed power, else what is sustained");
     working.push(solved("Irms", "one winding", "periodic solution of the rectifier", flow.winding.0, "A", ""));
     working.push(solved("VA", "one transformer", "Σ windings Vs·Irms", flow.volt_amps, "VA", "rated volts stand for the heating of the copper"));
     working.push(stated("rating", "one transformer", rating, "VA", field.stated_at()));

@@ -121,9 +121,15 @@ mod tests {
         assert!(between > 11.628 && between < 37.753, "{between}");
     }
 
+    /// Without terms the junction follows every instant, the 37.753 K of above: a bound that fits passes and
+    /// says so; one that does not proves nothing, and names the terms.
     #[test]
-    fn unstated_terms_are_named() {
+    fn unstated_terms_are_bounded_or_named() {
+        assert!((rise("") - 37.753).abs() < 0.01, "{}", rise(""));
         let m = margin(&tern60(&[(TERMS, "")]), RULE.name, "n16");
+        assert!(m.verdict == Ok && m.note.contains("upper bound"), "{}", m.note);
+        let hot = [RULE.example.edits, &[(TERMS, "")]].concat();
+        let m = margin(&tern60(&hot), RULE.name, "n16");
         assert_eq!((m.verdict, m.needs.as_slice()), (Unchecked, &["device n16 foster".to_owned()][..]));
     }
 }
