@@ -271,6 +271,15 @@ impl<'a> Case<'a> {
         Ok(fuses)
     }
 
+    /// The fuses of the rails in circuit. Empty where none is fitted.
+    ///
+    /// # Errors
+    /// When none is stated.
+    pub fn rail_fuses(&self) -> Result<Vec<&'a FuseLine>, Needs> {
+        let field = &self.supply()?.rail_fuse;
+        if field.unstated() { Err(field.missing()) } else { self.fuses("rail") }
+    }
+
     /// Transformers that one mains fuse feeds.
     #[must_use]
     pub fn transformers_behind(supply: &Supply, fuse: &FuseLine) -> u32 {

@@ -38,8 +38,13 @@ pub fn check(case: &Case<'_>, out: &mut Margins<'_>) {
     let Some(supply) = case.fitted(&RULE, out) else { return };
     for place in ["mains", "secondary", "rail", "speaker"] {
         let part = case.fuse_part(supply, place);
-        // only a mains fuse is missed where none is stated
-        match if place == "mains" { case.mains_fuses() } else { case.fuses(place) } {
+        // fuses of other places are not missed where none is stated
+        let fuses = match place {
+            "mains" => case.mains_fuses(),
+            "rail" => case.rail_fuses(),
+            _ => case.fuses(place),
+        };
+        match fuses {
             Err(needs) => out.compare(&RULE, part, supply.mains_fuse.site(), Err(needs)),
             Ok(fuses) => {
                 for fuse in fuses {
@@ -134,6 +139,8 @@ mod tests {
 
     #[test]
     fn says_what_is_missing() {
+        let m = margin(&tern60(&[("    fuse rail          5 A fast\n", "")]), super::RULE.name, "toroid fuse rail");
+        assert_eq!((m.verdict, m.needs), (Verdict::Unchecked, vec!["supply toroid fuse rail".to_owned()]));
         let m = margin(&tern60(&[("    fuse mains         2.5 A slow melts 90 A2s tap 230 V\n", "")]), super::RULE.name, "toroid fuse mains");
         assert_eq!((m.verdict, m.needs), (Verdict::Unchecked, vec!["supply toroid fuse mains".to_owned()]));
         let none = crate::testing::report(&tern60(&[("fuse mains         2.5 A slow melts 90 A2s tap 230 V", "fuse none")]));

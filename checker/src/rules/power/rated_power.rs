@@ -175,7 +175,7 @@ mod tests {
 
     #[test]
     fn says_what_is_missing_and_none_claims_nothing() {
-        let m = margin(&tern60(&[("    drop               1.8 V at 0 A, 3.8 V at 7 A        # loaded rail to peak output\n", "")]), super::RULE.name, "tern60 rated");
+        let m = margin(&tern60(&[("    drop               1.8 V at 0 A, 3.8 V at 7 A  # loaded rail to peak output\n", "")]), super::RULE.name, "tern60 rated");
         assert_eq!((m.verdict, m.needs), (Verdict::Unchecked, vec!["amplifier tern60 drop".to_owned()]));
         let silent = report(&tern60(&[(CLAIMS, "none")]));
         assert!(silent.builds[0].margins.iter().all(|m| m.rule != super::RULE.name));

@@ -34,8 +34,12 @@ rule! {
 /// One margin for a bypassed resistor: the load that draws most.
 pub fn check(case: &Case<'_>, out: &mut Margins<'_>) {
     let Some(supply) = case.fitted(&RULE, out) else { return };
-    let Some(soft) = supply.soft_start.get().filter(|s| s.hot.is_none()) else { return };
-    let (part, site) = (case.supply_part(supply, "soft-start", 1), supply.soft_start.site());
+    let field = &supply.soft_start;
+    if field.unstated() {
+        return out.compare(&RULE, case.supply_part(supply, "soft-start", 1), field.site(), Err(field.missing()));
+    }
+    let Some(soft) = field.get().filter(|s| s.hot.is_none()) else { return };
+    let (part, site) = (case.supply_part(supply, "soft-start", 1), field.site());
     if let Some(opens) = soft.thermal_fuse {
         let note = format!("the thermal fuse opens at {:.0} degC", opens.0);
         return out.judge(&RULE, part, site, Verdict::Ok, Stress { note, ..Stress::default() });

@@ -37,9 +37,13 @@ const OVERLOAD_S: f64 = 5.0;
 /// One margin for the soft start.
 pub fn check(case: &Case<'_>, out: &mut Margins<'_>) {
     let Some(supply) = case.fitted(&RULE, out) else { return };
-    let Some(soft) = supply.soft_start.get() else { return };
+    let field = &supply.soft_start;
+    if field.unstated() {
+        return out.compare(&RULE, case.supply_part(supply, "soft-start", 1), field.site(), Err(field.missing()));
+    }
+    let Some(soft) = field.get() else { return };
     let found = if soft.hot.is_some() { thermistor(case, supply) } else { resistor(case, supply, soft) };
-    out.compare(&RULE, case.supply_part(supply, "soft-start", 1), supply.soft_start.site(), found);
+    out.compare(&RULE, case.supply_part(supply, "soft-start", 1), field.site(), found);
 }
 
 fn resistor(case: &Case<'_>, supply: &Supply, soft: &SoftStart) -> Result<Stress, Needs> {

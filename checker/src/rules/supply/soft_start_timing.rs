@@ -33,13 +33,17 @@ rule! {
 /// One margin for a soft start that is bypassed.
 pub fn check(case: &Case<'_>, out: &mut Margins<'_>) {
     let Some(supply) = case.fitted(&RULE, out) else { return };
-    let Some(soft) = supply.soft_start.get() else { return };
+    let field = &supply.soft_start;
+    if field.unstated() {
+        return out.compare(&RULE, case.supply_part(supply, "soft-start", 1), field.site(), Err(field.missing()));
+    }
+    let Some(soft) = field.get() else { return };
     // an NTC may stay in circuit for good
     if soft.hot.is_some() && soft.bypass.is_none() {
         return;
     }
     for mains in [Mains::High, Mains::Low] {
-        out.compare(&RULE, case.supply_part(supply, "soft-start", 1), supply.soft_start.site(), stress(case, supply, mains));
+        out.compare(&RULE, case.supply_part(supply, "soft-start", 1), field.site(), stress(case, supply, mains));
     }
 }
 
@@ -102,6 +106,8 @@ mod tests {
     fn says_what_is_missing_and_leaves_a_thermistor_alone() {
         let m = soft("27R 10 W");
         assert_eq!((m.verdict, m.needs), (Verdict::Unchecked, vec!["supply toroid soft-start bypass".to_owned()]));
+        let m = margin(&tern60(&[("    soft-start         27R 10 W bypass 400 ms thermal-fuse 130 degC\n", "")]), super::RULE.name, "toroid soft-start");
+        assert_eq!((m.verdict, m.needs), (Verdict::Unchecked, vec!["supply toroid soft-start".to_owned()]));
         let ntc = tern60(&[("27R 10 W bypass 400 ms", "ntc 10 ohm hot 0.2 ohm energy 100 J")]);
         assert!(report(&ntc).builds[0].margins.iter().all(|m| m.rule != super::RULE.name));
     }
