@@ -356,35 +356,19 @@ mod tests {
         assert!(wrong.is_empty(), "{wrong:#?}");
     }
 
+    /// A false alarm costs as much trust as a miss: no demo kit that is meant to be sound is found
+    /// fault with, in any of its builds.
     #[test]
-    fn zz_print() {
-        for kit in ["tern60", "tern60-revisions", "tern-family", "tern-fet", "heron80-mosfet", "tern100-limiter"] {
-            let start = std::time::Instant::now();
+    fn the_demo_kits_are_sound() {
+        let mut wrong = Vec::new();
+        for kit in ["tern60", "tern-family", "heron80-mosfet", "tern100-limiter"] {
             let report = testing::report(&testing::kit(kit));
-            println!("==== {kit} {:?} findings {:#?}", start.elapsed(), report.findings.iter().map(|f| (&f.rule, &f.message)).collect::<Vec<_>>());
-            for b in &report.builds {
-                println!("-- {}", b.name);
-                for m in &b.margins {
-                    println!("{:?} {} {} stress {:?} rating {:?} used {:?} | {} {:?} | {:?} {:?} V {:?} ch {:?}", m.verdict, m.rule, m.part.name, m.stress.map(|s| (s.value, s.unit)), m.rating.map(|s| s.value), m.used_percent, m.note, m.needs, m.witness.load, m.witness.mains_v, m.witness.amplitude_v, m.witness.channels_driven);
-                    if kit == "tern60" { for s in &m.working { println!("      {} = {} {} [{}]", s.symbol, s.value, s.unit, s.meaning); } }
-                }
-            }
+            wrong.extend(report.findings.iter().map(|f| format!("{kit}: {} {}", f.rule, f.message)));
+            let margins = report.builds.iter().flat_map(|b| &b.margins);
+            let faults = margins.filter(|m| matches!(m.verdict, Verdict::Over | Verdict::Thin));
+            wrong.extend(faults.map(|m| format!("{kit}: {} {:?}", m.id, m.used_percent)));
         }
-    }
-
-    #[test]
-    fn zz_dump() {
-        let Ok(path) = std::env::var("DUMP_KIT") else { return };
-        let text = std::fs::read_to_string(path).unwrap();
-        let report = testing::report(&text);
-        for f in &report.findings { eprintln!("FINDING {} {}", f.rule, f.message); }
-        for b in &report.builds {
-            eprintln!("BUILD {} settled {}", b.name, b.settled);
-            for m in &b.margins {
-                eprintln!("{:28} {:18} {:?} used {:?} stress {:?} rating {:?} load {:?} f {:?} v {:?} i {:?} case {:?} sink {:?} | {} {:?}", m.rule, m.part.name, m.verdict, m.used_percent.map(|u| (u*10.0).round()/10.0), m.stress.map(|s| s.value), m.rating.map(|s| s.value), m.witness.load, m.witness.frequency_hz, m.witness.device_v, m.witness.device_a, m.witness.case_c, m.witness.sink_c, m.note, m.needs);
-                if std::env::var("DUMP_WORK").is_ok() { for s in &m.working { eprintln!("      {} = {} {}  ({})", s.symbol, s.value, s.unit, s.meaning); } }
-            }
-        }
+        assert!(wrong.is_empty(), "{wrong:#?}");
     }
 
     #[test]

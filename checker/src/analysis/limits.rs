@@ -74,6 +74,8 @@ struct Short {
     volts: Volt,
     /// Through it.
     amps: Amp,
+    /// Through each device at the least.
+    least: Amp,
     /// Rail to ground.
     rail: Volt,
 }
@@ -177,7 +179,6 @@ impl Case<'_> {
                 mains_v: self.mains_volts(Mains::High),
                 load: Some(load.name.clone()),
                 duty: Some(self.duty().shown.clone()),
-                ambient_c: self.coldest().ok().map(|t| t.0),
                 case_c: Some(case.0),
                 sink_c: Some(heat.hot_spot.0),
                 rail_v: Some(rail.0),
@@ -309,7 +310,7 @@ impl Case<'_> {
         by_curve.push(solved("Iallowed", "allowed at that voltage", "min(IC, k·P/v, kseg·C(v))", allowed.0, "A", "log-log curve of the data sheet, derated"));
 
         let watts = short.rail * short.amps * 0.5;
-        let (sink, until) = self.sink_in_a_short(heat, watts, short.amps)?;
+        let (sink, until) = self.sink_in_a_short(heat, watts, short.least)?;
         let limit_at = *device.junction.need()?;
         let junction = mounting(self.output(), side)?.temperatures(sink, watts).ok_or_else(|| Needs::because("thermal resistances must not be negative"))?.junction;
         let room = (limit_at - sink) / (junction - sink);
@@ -324,8 +325,8 @@ impl Case<'_> {
         Ok(vec![stress(allowed, by_curve, String::new()), stress(by_heat, working, note)])
     }
 
-    /// How hot the sink is when something ends a short, and what does: the cutout, else a rail fuse,
-    /// else nothing, and the sink settles.
+    /// How hot the sink is when something ends a short, and what does: the cutout, else a rail fuse at
+    /// the latest for the least current, else nothing, and the sink settles.
     fn sink_in_a_short(&self, heat: &Heat, watts: Watt, current: Amp) -> Result<(Celsius, &'static str), Needs> {
         let (sink, channels) = self.heatsink()?;
         let (model, air, pairs) = three(sink_model(sink), self.air_inside(), self.output().pairs.need().copied())?;
@@ -386,7 +387,11 @@ fn shorted(limit: &Limit, bank: &Bank, rail: Volt) -> Result<Short, Needs> {
     let worst = points.and_then(|p| p.into_iter().max_by(|a, b| a.amps.0.total_cmp(&b.amps.0)));
     let worst = worst.ok_or_else(|| Needs::because("the limit line never meets the short: nothing is limited"))?;
     let amps = limit.most_loaded(bank, worst.amps).ok_or_else(|| Needs::because("the devices do not share at the limit"))?;
-    Ok(Short { volts: worst.volts, amps, rail })
+    let least = match limit.senses {
+        Senses::Device => worst.amps,
+        Senses::Bank => worst.amps / f64::from(bank.devices()),
+    };
+    Ok(Short { volts: worst.volts, amps, least, rail })
 }
 
 /// A limit line by its points up to a voltage; `None` where it rises.

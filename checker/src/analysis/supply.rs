@@ -191,21 +191,22 @@ impl<'a> Case<'a> {
     }
 
     /// The supply's currents at the continuous rated sine into a load: the greatest power claimed of
-    /// all channels into its nominal resistance, or what they sustain where nothing is claimed or
-    /// the claim is more than that.
+    /// all channels into its nominal resistance, clipping or not, or what they sustain where nothing
+    /// is claimed or the supply collapses under the claim.
     ///
     /// # Errors
     /// As [`Case::sustained`] and [`Case::flow`].
     pub fn sine_flow(&self, load: &Driven) -> Result<Flow, Needs> {
         let seen = load.nominal_seen();
-        let mut amplitude = self.sustained(Mains::Nominal, self.channels_per_supply()?, seen)?;
         let claims = self.build.amplifier.rated.get().into_iter().flatten();
         let same = claims.filter(|c| c.all_channels && (c.load / load.nominal - 1.0).abs() < 0.02);
         let claimed = same.map(|c| self.asked(c).map(|a| a.amplitude)).collect::<Result<Vec<_>, _>>()?;
-        if let Some(most) = claimed.into_iter().reduce(Volt::max) {
-            amplitude = amplitude.min(most);
+        if let Some(most) = claimed.into_iter().reduce(Volt::max)
+            && let Ok(flow) = self.flow(most, seen)
+        {
+            return Ok(flow);
         }
-        self.flow(amplitude, seen)
+        self.flow(self.sustained(Mains::Nominal, self.channels_per_supply()?, seen)?, seen)
     }
 
     /// Channels that a supply carries at the duty into a load without overloading its transformer,

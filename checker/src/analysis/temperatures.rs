@@ -11,7 +11,10 @@ use crate::build::parts::{Flavour, Stage, both, three};
 use crate::physics::foster::{Foster, HalfCycle, Term};
 use crate::physics::heat::{Mounting, sink_temperature};
 use crate::physics::protection::Cutout;
-use crate::physics::unit::{Celsius, Hertz, Kelvin, Volt, Watt};
+use crate::physics::unit::{Celsius, Hertz, Kelvin, Second, Volt, Watt};
+
+/// Time constant, s, of a junction that follows every instant of an audio signal.
+const NO_CAPACITY: Second = Second(1e-6);
 
 /// Tolerance of a cutout that states none; common practice, no source.
 const UNSTATED_TOLERANCE: Kelvin = Kelvin(3.0);
@@ -37,6 +40,9 @@ pub struct PeakJunction {
     pub share: f64,
     /// The junction.
     pub junction: Celsius,
+    /// No transient terms are stated: the junction is taken to have no heat capacity, which no real one
+    /// is hotter than.
+    pub bounded: bool,
 }
 
 /// A driver at the duty.
@@ -77,8 +83,14 @@ impl Case<'_> {
     /// When the Foster terms, or anything else it takes, are not stated.
     pub fn peak_junction(&self, heat: &Heat, load: &Driven, side: Side) -> Result<PeakJunction, Needs> {
         let device = self.output().device(side);
+        // a junction without heat capacity follows every instant: no network is hotter
+        let bounded = device.foster.get().is_none();
+        let terms = match device.foster.get() {
+            Some(terms) => Ok(terms.clone()),
+            None => device.junction_case.need().map(|r| vec![(*r, NO_CAPACITY)]),
+        };
         let ((terms, case), (bench, idle), (rail, drop)) =
-            three(both(device.foster.need(), self.case_temperature(heat, side)), both(self.bench(), self.idle()), both(self.unsagged(Mains::Nominal), self.drop()))?;
+            three(both(terms, self.case_temperature(heat, side)), both(self.bench(), self.idle()), both(self.unsagged(Mains::Nominal), self.drop()))?;
         let terms: Vec<Term> = terms.iter().map(|(r, tau)| Term { resistance: *r, time_constant: *tau }).collect();
         let foster = Foster::new(&terms).ok_or_else(|| Needs::because(format!("the foster terms of {} must be positive, 32 at most", device.owner.name)))?;
         let frequency = self.band()?.bottom();
@@ -94,7 +106,7 @@ impl Case<'_> {
                 let share = bank.share(amplitude / z.modulus() / crate::physics::math::PI);
                 let half = HalfCycle::new(rail, amplitude, z, bank.emitters_in_parallel(), (share / devices).min(1.0))?;
                 let rise = foster.periodic_peak(&half, frequency)?;
-                Some(PeakJunction { rail, amplitude, frequency, case, rise, idle_rise, share, junction: case + rise + idle_rise })
+                Some(PeakJunction { rail, amplitude, frequency, case, rise, idle_rise, share, junction: case + rise + idle_rise, bounded })
             });
             match found {
                 Some(found) if worst.is_none_or(|w| found.junction > w.junction) => worst = Some(found),

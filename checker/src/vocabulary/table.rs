@@ -44,12 +44,14 @@ pub const BLOCKS: &[Block] = &[
         key("channels-per-board", "n", "1", "for counts and `per board`").band("n", 1.0, 16.0),
         key(
             "board-reservoir",
-            "nx? F± V esr:ohm? ripple:A? per{rail} +bom",
+            "nx? F± V esr:ohm? ripple:A? life:h? life-at:degC? per{rail} +bom",
             "none",
             "capacitors on each board, added to the supply's",
         )
         .band("F", 20e-6, 0.5)
-        .band("V", 6.0, 450.0),
+        .band("V", 6.0, 450.0)
+        .band("life", 200.0 * 3600.0, 500e3 * 3600.0)
+        .band("life-at", 40.0, 150.0),
         key("network", "<network>", "-", "output network"),
     ]),
     block("stage", &[], "one stage of the board", &[

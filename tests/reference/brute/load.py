@@ -84,3 +84,8 @@ def refined_least(function, band, extra=()):
     if y.min() < best[0]:
         best = (float(y.min()), float(f[int(np.argmin(y))]))
     return best
+
+
+def flat(load):
+    """Whether the load is the same at every frequency."""
+    return load["kind"] in ("resistive", "nominal")

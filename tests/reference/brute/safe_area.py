@@ -30,7 +30,7 @@ def allowed(device, case, volts):
     return np.where(volts > points[-1][1], np.nan, limit)
 
 
-def zoom(function, boxes, points=9, rounds=18, shrink=0.35):
+def zoom(function, boxes, points, rounds, shrink):
     """Greatest value of a vectorised function near each start: (centre, half widths, lower, upper).
 
     A small grid is laid round the best point so far, again and again, ever finer.
@@ -39,7 +39,7 @@ def zoom(function, boxes, points=9, rounds=18, shrink=0.35):
     for centre, half, lower, upper in boxes:
         centre, half = np.array(centre, float), np.array(half, float)
         for _ in range(rounds):
-            axes = [np.clip(np.linspace(c - h, c + h, points), a, b) for c, h, a, b in zip(centre, half, lower, upper)]
+            axes = [np.clip(np.linspace(c - h, c + h, n), a, b) for c, h, a, b, n in zip(centre, half, lower, upper, points)]
             mesh = np.meshgrid(*axes, indexing="ij")
             got = function(*mesh)
             got = np.where(np.isnan(got), -np.inf, got)

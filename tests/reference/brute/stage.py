@@ -31,7 +31,7 @@ def burst(rail, drop, ohms):
 def burst_array(rail, drop, ohms):
     """`burst` for an array of moduli, by bisection on every one at once."""
     lo, hi = np.zeros_like(ohms), np.full_like(ohms, rail)
-    for _ in range(60):
+    for _ in range(50):
         mid = 0.5 * (lo + hi)
         over = mid - rail + drop_at(drop, mid / ohms) > 0
         hi, lo = np.where(over, mid, hi), np.where(over, lo, mid)
@@ -48,7 +48,7 @@ def share(mean, count, spread, ohms, low):
         return np.ones_like(mean)
     first = ohms * (1 - low)
     lo, hi = np.ones_like(mean), np.full_like(mean, float(count) * (1 - 1e-15))
-    for _ in range(70):
+    for _ in range(48):
         s = 0.5 * (lo + hi)
         i1 = s * mean
         i2 = (count - s) * mean / (count - 1)

@@ -170,72 +170,121 @@ def with_resistive_load(rail, ohms):
     return s, np.sqrt(q2) / q, amps.max() / q, np.sqrt(max(s2 - s * s, 0.0))
 
 
-def switch_on(rail, at_crest, until):
-    """Empty reservoir: (greatest amps, I2t of the first pulse, I2t of all, volts reached, joules per ohm).
+@dataclass(frozen=True)
+class Start:
+    """One switching on: the rail, its extra source ohms until the bypass, seconds of it, idle amps."""
 
-    The source is closed at its crest or at its zero; nothing is drawn.
+    rail: Rail
+    extra: float
+    bypass: float
+    idle: float
+    until: float
+
+
+def switch_on(starts, at_crest, per_cycle=1600):
+    """Empty reservoirs, many supplies marched side by side in small equal steps of the mains.
+
+    The source closes at its crest or at its zero; `idle` is drawn above 10 V. Returns arrays: the
+    greatest amps before and after the bypass, the square of the charging current integrated before
+    the bypass, to the end of the first half-cycle, and to the end, and the rail volts at the bypass.
     """
-    w, total = 2 * np.pi * rail.hertz, rail.source + rail.esr
-    phase = np.pi / 2 if at_crest else 0.0
+    get = lambda f: np.array([f(s) for s in starts])
+    peak, fall, source = get(lambda s: s.rail.peak), get(lambda s: s.rail.drop), get(lambda s: s.rail.source)
+    farads, esr, hertz = get(lambda s: s.rail.farads), get(lambda s: s.rail.esr), get(lambda s: s.rail.hertz)
+    extra, bypass, idle, until = (get(lambda s, n=n: getattr(s, n)) for n in ("extra", "bypass", "idle", "until"))
+    h = 1 / (hertz * per_cycle)
+    w = 2 * np.pi * hertz
+    shift = np.pi / 2 if at_crest else 0.0
+    v = np.zeros(len(starts))
+    early, late, square, before, first, volts = (np.zeros(len(starts)) for _ in range(6))
+    switched = np.round(bypass / h).astype(int)
+    end = np.round(until / h).astype(int)
 
-    def motion(t, y):
-        i = max(rail.peak * abs(np.sin(w * t + phase)) - rail.drop - y[0], 0.0) / total
-        return [i / rail.farads, i * i]
+    for k in range(int(end.max()) + 1):
+        t = k * h
+        soft = k < switched
+        total = source + esr + np.where(soft, extra, 0.0)
 
-    step = 1 / (rail.hertz * 400)
-    got = solve_ivp(motion, (0, until), [0.0, 0.0], max_step=step, rtol=1e-9, atol=1e-11, dense_output=True)
-    t = np.linspace(0, min(until, 3 / rail.hertz), 60001)
-    v, square = got.sol(t)
-    i = np.maximum(rail.peak * np.abs(np.sin(w * t + phase)) - rail.drop - v, 0) / total
-    first = square[np.argmax((i <= 0) & (t > 0.05 / rail.hertz))] if np.any((i <= 0) & (t > 0.05 / rail.hertz)) else square[-1]
-    return i.max(), first, got.y[1, -1], got.y[0, -1]
+        def flow(t, v):
+            drawn = np.where(v > 10.0, idle, 0.0)
+            i = np.maximum(peak * np.abs(np.sin(w * t + shift)) - fall - v + esr * drawn, 0.0) / total
+            return i, (i - drawn) / farads
+
+        alive = k <= end
+        i0, a = flow(t, v)
+        volts = np.where(k == switched, v - esr * np.where(v > 10.0, idle, 0.0) * (i0 <= 0) + esr * (i0 - np.where(v > 10.0, idle, 0.0)) * (i0 > 0), volts)
+        i1, b = flow(t + h / 2, v + h / 2 * a)
+        i2, c = flow(t + h / 2, v + h / 2 * b)
+        i3, d = flow(t + h, v + h * c)
+        early = np.where(soft & alive, np.maximum(early, i0), early)
+        late = np.where(~soft & alive, np.maximum(late, i0), late)
+        part = h / 6 * (i0**2 + 2 * i1**2 + 2 * i2**2 + i3**2) * alive
+        square = square + part
+        before = before + np.where(soft, part, 0.0)
+        first = first + (part if k < per_cycle // 2 else 0.0)
+        v = np.maximum(v + h / 6 * (a + 2 * b + 2 * c + d), 0.0)
+    return dict(early=early, late=late, square=square, before=before, first=first, volts=volts)
 
 
-def sag_batch(rails, idles, peaks, ohms, drops, bottom, band_phases=32, per_cycle=1500):
-    """Greatest clean amplitude at the bottom of the band, for many builds at once.
+def sag_batch(rails, idles, channels, ohms, need, bottom, judge, bridged, per_cycle=1000, settle=14):
+    """Greatest clean amplitude at the bottom of the band, for many builds at once, by marching.
 
-    Every array has one entry per build: the rail, the standing current (A, of the whole supply), the
-    channels in phase, the load (ohm), the drop as a function, the lowest frequency (Hz). Each rail is
-    marched in small equal steps with half-sine currents, for many phases of the signal against the
-    mains side by side; the amplitude is brought by secant to where the least headroom is zero.
+    One entry per build: the rail, the standing current (A), the channels in phase, the load (ohm), a
+    function from (V of output) to the rail it needs, the lowest frequency (Hz), the periods to judge.
+    Each rail is marched in small equal steps with half-sine currents, for many phases of the signal
+    against the mains side by side; the amplitude is brought to where the least headroom is zero.
     """
-    n = len(rails)
     col = lambda name: np.array([getattr(r, name) for r in rails])[:, None]
     peak, fall, source, farads, esr, mains = (col(x) for x in ("peak", "drop", "source", "farads", "esr", "hertz"))
-    idle, many, ohm, low = (np.asarray(x, float)[:, None] for x in (idles, peaks, ohms, bottom))
+    idle, many, ohm, low = (np.asarray(x, float)[:, None] for x in (idles, channels, ohms, bottom))
+    # The halves of a bridge draw on a rail in turn.
+    halves = np.asarray(bridged)[:, None]
     total = source + esr
+    h = 1 / (low * per_cycle)
+    w = 2 * np.pi * mains
+    table = np.sin(2 * np.pi * np.arange(2 * per_cycle + 1) / (2 * per_cycle))
 
-    def headroom(volts, phases):
-        """Least of rail - output - drop over the last common period, per build and phase."""
+    def headroom(volts, phases, loads):
+        """Least of rail less what the output needs, per build and phase."""
+        level = loads * volts[:, None] / ohm
+        wanted = np.array([need[b](volts[b] * np.maximum(table[::2], 0)) for b in range(len(need))])
         v = peak - fall + 0 * phases
-        h = 1 / (low * per_cycle)
-        ws, wm = 2 * np.pi * low, 4 * np.pi * mains
-
-        def amps_in(t, v, out):
-            e = peak * np.abs(np.sin(0.5 * wm * t + phases)) - fall
-            return np.maximum(e - v + esr * out, 0) / total
-
-        def amps_out(t):
-            return idle + many * np.maximum(volts / ohm * np.sin(ws * t), 0)
-
         least = np.full_like(v, np.inf)
-        settle, judge = 6, 10
         for k in range(per_cycle * (settle + judge)):
+            j = k % per_cycle
             t = k * h
-            out, mid, nxt = amps_out(t), amps_out(t + h / 2), amps_out(t + h)
-            a = (amps_in(t, v, out) - out) / farads
-            if k >= per_cycle * settle:
-                rail = v + esr * farads * a
-                swing = volts * np.sin(ws * t)
-                room = rail - swing - np.array([d(x) for d, x in zip(drops, np.abs(swing / ohm)[:, 0])])[:, None]
-                least = np.where(swing > 0, np.minimum(least, room), least)
-            b = (amps_in(t + h / 2, v + h / 2 * a, mid) - mid) / farads
-            c = (amps_in(t + h / 2, v + h / 2 * b, mid) - mid) / farads
-            d = (amps_in(t + h, v + h * c, nxt) - nxt) / farads
+            at = lambda n: idle + level * np.where(halves, 0.5 * abs(table[n]), max(table[n], 0.0))
+            wave = [peak * np.abs(np.sin(w * (t + x * h) + phases)) - fall for x in (0, 0.5, 1)]
+            out, mid, nxt = at(2 * j), at(2 * j + 1), at(2 * j + 2)
+            i = np.maximum(wave[0] - v + esr * out, 0) / total
+            a = (i - out) / farads
+            if k >= per_cycle * settle and 0 < 2 * j < per_cycle:
+                least = np.minimum(least, v + esr * (i - out) - wanted[:, j : j + 1])
+            b = (np.maximum(wave[1] - v - h / 2 * a + esr * mid, 0) / total - mid) / farads
+            c = (np.maximum(wave[1] - v - h / 2 * b + esr * mid, 0) / total - mid) / farads
+            d = (np.maximum(wave[2] - v - h * c + esr * nxt, 0) / total - nxt) / farads
             v = v + h / 6 * (a + 2 * b + 2 * c + d)
         return least
 
-    return headroom
+    count = len(rails)
+    centre, width = np.full((count, 1), np.pi / 2), np.pi
+    guess = np.array([r.unsagged for r in rails]) * 0.75
+    for spread in (12, 9, 9):
+        phases = centre + width * (np.arange(spread) - (spread - 1) / 2)[None, :] / spread
+        x0, x1 = guess, guess * 0.995
+        y0 = headroom(x0, phases, many).min(axis=1)
+        for _ in range(4):
+            rooms = headroom(x1, phases, many)
+            y1 = rooms.min(axis=1)
+            safe = np.where(np.abs(y1 - y0) > 1e-12, y1 - y0, 1.0)
+            step = np.where(np.abs(y1 - y0) > 1e-12, -y1 * (x1 - x0) / safe, 0.0)
+            x0, y0, x1 = x1, y1, np.maximum(x1 + np.clip(step, -0.3 * x1, 0.3 * x1), 0.1)
+            if np.max(np.abs(step) / x1) < 1e-9:
+                break
+        guess = x1
+        centre = phases[np.arange(count), np.argmin(rooms, axis=1)][:, None] + np.zeros((count, 1))
+        width = 2.5 * width / spread
+    return guess
 
 
 def scaled(rail, **changes):

@@ -24,7 +24,7 @@ rule! {
     remedies: [
         Remedy { key: "supply.rectifier", slot: "A", series: Series::TwoDigits, up: true },
     ],
-    example: "tern60", [("bridge 400 V 25 A", "bridge 400 V 1 A")],
+    example: "tern60", [("bridge 400 V 25 A", "bridge 400 V 0.6 A")],
 }
 
 /// What a capacitor load leaves of the rating.
@@ -58,4 +58,30 @@ fn stress(case: &Case<'_>, supply: &Supply, load: &Driven) -> Result<Stress, Nee
         related: case.loading_sites(load),
         ..Stress::default()
     })
+}
+
+#[cfg(test)]
+mod tests {
+    use crate::finding::Verdict;
+    use crate::testing::{margin, tern60, verdict};
+
+    /// V(burst) = (41.370 - 1.8)/(1 + 2/7/8) = 38.205 V, 91.228 W; an eighth of it 13.508 V, 1.6885 A;
+    /// Idc = 1.6885/π + 0.1 = 0.63745 A; one diode 0.31873 A. Rating 0.8·25/2 = 10 A. By hand.
+    #[test]
+    fn half_of_each_rail() {
+        let m = margin(&tern60(&[]), super::RULE.name, "toroid rectifier");
+        assert!((m.stress.unwrap().value - 0.318_73).abs() < 1e-4);
+        assert!((m.rating.unwrap().value - 10.0).abs() < 1e-9);
+        // 80 % of 0.4 A/A: 0.31873 A is inside at 1 A, outside at 0.99 A, past the rating at 0.79 A
+        let at = |amps: &str| verdict(&tern60(&[("400 V 25 A", &format!("400 V {amps} A"))]), super::RULE.name, "toroid rectifier");
+        assert_eq!(at("1"), Verdict::Ok);
+        assert_eq!(at("0.99"), Verdict::Thin);
+        assert_eq!(at("0.79"), Verdict::Over);
+    }
+
+    #[test]
+    fn says_what_is_missing() {
+        let m = margin(&tern60(&[("400 V 25 A", "400 V")]), super::RULE.name, "toroid rectifier");
+        assert_eq!((m.verdict, m.needs), (Verdict::Unchecked, vec!["supply toroid rectifier A".to_owned()]));
+    }
 }

@@ -46,7 +46,7 @@ pub fn check(case: &Case<'_>, out: &mut Margins<'_>) {
 mod tests {
     use super::RULE;
     use crate::finding::Verdict::{Ok, Over, Unchecked};
-    use crate::testing::{margin, tern60};
+    use crate::testing::{edited, kit, margin, tern60};
 
     const ONE: (&str, &str) = ("pairs              2", "pairs              1");
 
@@ -107,6 +107,67 @@ mod tests {
         let m = margin(&tern60(&[a, b, ("vceo               240 V", "vceo               60 V")]), RULE.name, "n16");
         assert_eq!(m.verdict, Over);
         assert!(m.note.contains("breakdown"), "{}", m.note);
+    }
+
+    const LATERAL: &str = "structure          lateral";
+    const MOSFET_POWER: &str = "power              250 W at 25 degC";
+
+    fn heron80(edits: &[(&str, &str)]) -> crate::finding::Margin {
+        margin(&edited(&kit("heron80-mosfet"), edits), RULE.name, "ln16")
+    }
+
+    /// A lateral MOSFET has no second breakdown: power and current are its whole safe area, no curve due.
+    /// At the witness' own voltage the rating is k·250 W/v.
+    #[test]
+    fn a_lateral_mosfet_needs_no_curve() {
+        let m = heron80(&[]);
+        let k = (150.0 - m.witness.case_c.unwrap()) / 125.0;
+        assert_eq!(m.verdict, Ok);
+        assert!((m.rating.unwrap().value - 250.0 * k / m.witness.device_v.unwrap()).abs() < 1e-9);
+    }
+
+    /// A vertical one passes only on a d.c. curve that is more than the power hyperbola above 30 V.
+    #[test]
+    fn a_vertical_mosfet_needs_linear_mode_data() {
+        let vertical = |soa: &str| heron80(&[(LATERAL, &format!("structure vertical\n    {soa}"))]);
+        for soa in ["", "soa dc 16 A at 15.625 V, 5 A at 50 V, 1.25 A at 200 V", "soa 10 ms 30 A at 20 V, 3 A at 200 V"] {
+            let m = vertical(soa);
+            assert_eq!(m.verdict, Unchecked, "{soa}");
+            assert!(m.note.contains("no linear-mode data") && m.note.contains('%'), "{}", m.note);
+        }
+        assert_eq!(vertical("soa dc 16 A at 15.625 V, 5 A at 50 V, 0.9 A at 200 V").verdict, Ok);
+        assert_eq!(vertical("soa dc 16 A at 10 V, 1 A at 50 V, 0.1 A at 200 V").verdict, Over);
+    }
+
+    /// What the hyperbola alone already forbids is over, whatever the data lack.
+    #[test]
+    fn the_hyperbola_condemns_without_a_curve() {
+        assert_eq!(heron80(&[(LATERAL, "structure vertical"), (MOSFET_POWER, "power 60 W at 25 degC")]).verdict, Over);
+    }
+
+    #[test]
+    fn an_unstated_structure_is_named() {
+        let m = heron80(&[(LATERAL, "")]);
+        assert_eq!((m.verdict, m.needs.as_slice()), (Unchecked, &["device ln16 structure".to_owned()][..]));
+    }
+
+    /// Power stated at another case temperature lies on the same derating line: 180 W at 25 degC to nothing at
+    /// 150 degC is 144 W at 50 degC.
+    #[test]
+    fn power_at_another_case_is_the_same_line() {
+        let used = |power: &str| margin(&tern60(&[("power              180 W at 25 degC", power)]), RULE.name, "n16").used_percent.unwrap();
+        assert!((used("power 180 W at 25 degC") - used("power 144 W at 50 degC")).abs() < 1e-9);
+    }
+
+    /// Pulse credit is off unless the policy takes it, and then it only helps.
+    #[test]
+    fn pulse_credit_only_where_the_policy_says() {
+        let hard = tern60(&[ONE, ("resistive 8 ohm ±5 %", "nominal 6 ohm")]);
+        let quick = edited(&hard, &[("duty               1/8", "duty 1/8\n    policy quick"), ("network net {", "policy quick from bench { curve pulse }\n\nnetwork net {")]);
+        let (dc, pulse) = (margin(&hard, RULE.name, "n16"), margin(&quick, RULE.name, "n16"));
+        assert_eq!(dc.witness.curve.as_deref(), Some("dc"));
+        assert!(pulse.used_percent < dc.used_percent, "{:?} {:?}", pulse.used_percent, dc.used_percent);
+        assert!(pulse.witness.curve.unwrap().ends_with("ms"));
     }
 
     #[test]

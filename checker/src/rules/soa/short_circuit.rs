@@ -68,7 +68,7 @@ fn without(case: &Case<'_>) -> Option<(Needs, Site)> {
 mod tests {
     use super::RULE;
     use crate::finding::Verdict::{Ok, Over, Unchecked};
-    use crate::testing::{margin, tern60, verdict};
+    use crate::testing::{edited, margin, tern60, verdict};
 
     const LINE: &str = "    limit-line bank    10 A at 0 V, 10 A at 15 V, 6.4 A at 30 V, 3.6 A at 50 V, 1.8 A at 70 V, 1 A at 95 V\n";
 
@@ -85,7 +85,7 @@ mod tests {
         assert!((m.witness.device_v.unwrap() - 44.7268).abs() < 1e-3);
         assert_eq!(m.verdict, Over);
         // 2.3 A: Tj = 94 + 52.4478·1.04 = 148.55 degC, and the curve has more
-        assert_eq!(verdict(&text.replace("device 4 A at 0 V", "device 2.3 A at 0 V"), RULE.name, "n16"), Ok);
+        assert_eq!(verdict(&text.replace("device   4 A at 0 V", "device   2.3 A at 0 V"), RULE.name, "n16"), Ok);
     }
 
     #[test]
@@ -95,7 +95,7 @@ mod tests {
         assert_eq!(m.verdict, Unchecked);
         assert_eq!(m.needs, ["protection guard limiter"]);
         assert!(m.note.contains("5.000 A rail fuse"), "{}", m.note);
-        let claimed = bare.replace("    duty               1/8\n", "    duty               1/8\n    survives-short     yes\n");
+        let claimed = edited(&bare, &[("duty               1/8", "duty 1/8\n    survives-short yes")]);
         assert_eq!(verdict(&claimed, RULE.name, "n16"), Over);
         let none = tern60(&[(LINE, "    limit-line         none\n    limiter            none\n")]);
         let m = margin(&none, RULE.name, "n16");

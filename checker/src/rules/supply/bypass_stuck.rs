@@ -70,3 +70,41 @@ fn stress(case: &Case<'_>, supply: &Supply, soft: &SoftStart, load: &Driven) -> 
         ..Stress::default()
     })
 }
+
+#[cfg(test)]
+mod tests {
+    use crate::finding::Verdict;
+    use crate::testing::{margin, tern60};
+
+    fn soft(text: &str) -> crate::finding::Margin {
+        margin(&tern60(&[("27R 10 W bypass 400 ms thermal-fuse 130 degC", text)]), super::RULE.name, "toroid soft-start")
+    }
+
+    /// At the 0.63745 A of the duty a small-step integration written apart from this program has
+    /// 1.3165 A in each winding behind 27 ohm, high mains: 3.176 W.
+    #[test]
+    fn against_small_steps() {
+        let m = soft("27R 10 W bypass 400 ms");
+        assert_eq!(m.verdict, Verdict::Ok);
+        assert!((m.stress.unwrap().value / 3.176 - 1.0).abs() < 5e-3);
+        assert_eq!(soft("27R 3 W bypass 400 ms").verdict, Verdict::Over);
+    }
+
+    #[test]
+    fn a_thermal_fuse_ends_it() {
+        let m = soft("27R 1 W bypass 400 ms thermal-fuse 130 degC");
+        assert_eq!((m.verdict, m.note.as_str()), (Verdict::Ok, "the thermal fuse opens at 130 degC"));
+    }
+
+    /// So much resistance that the rail gives out before the duty is reached still has an answer.
+    #[test]
+    fn a_rail_that_gives_out() {
+        assert_eq!(soft("1k 5 W bypass 400 ms").verdict, Verdict::Over);
+    }
+
+    #[test]
+    fn says_what_is_missing() {
+        let m = soft("27R bypass 400 ms");
+        assert_eq!((m.verdict, m.needs), (Verdict::Unchecked, vec!["supply toroid soft-start W".to_owned()]));
+    }
+}

@@ -87,3 +87,39 @@ fn at(case: &Case<'_>, supply: &Supply, value: f64, rating: f64, working: Vec<cr
         ..Stress::default()
     }
 }
+
+#[cfg(test)]
+mod tests {
+    use crate::finding::Verdict;
+    use crate::testing::{margin, tern60};
+
+    fn soft(text: &str) -> crate::finding::Margin {
+        margin(&tern60(&[("27R 10 W bypass 400 ms thermal-fuse 130 degC", text)]), super::RULE.name, "toroid soft-start")
+    }
+
+    /// A saturated core puts 27·10.6895²/200 = 15.426 J into the resistor: by hand. Empty reservoirs
+    /// put 12.9 J by a small-step integration written apart from this program. 10 W stand 250 J.
+    #[test]
+    fn core_or_reservoirs() {
+        let m = soft("27R 10 W bypass 400 ms");
+        assert!((m.stress.unwrap().value - 15.426).abs() < 1e-2);
+        assert!((m.rating.unwrap().value - 250.0).abs() < 1e-9);
+        let empty = m.working.iter().find(|s| s.symbol == "E").unwrap().value;
+        assert!((empty / 12.93 - 1.0).abs() < 0.02, "{empty}");
+        // 80 % of 25·0.8 W is 16 J, of 25·0.75 W 15 J, and 25·0.6 W is 15 J
+        assert_eq!(soft("27R 0.8 W bypass 400 ms").verdict, Verdict::Ok);
+        assert_eq!(soft("27R 0.75 W bypass 400 ms").verdict, Verdict::Thin);
+        assert_eq!(soft("27R 0.6 W bypass 400 ms").verdict, Verdict::Over);
+    }
+
+    /// Two rails of 11.28 mF at 46.6068 V hold 2·½·0.01128·46.6068² = 24.502 J. By hand.
+    #[test]
+    fn a_thermistor_takes_what_the_reservoirs_hold() {
+        let m = soft("ntc 10 ohm hot 0.2 ohm energy 100 J");
+        assert!((m.stress.unwrap().value - 24.502).abs() < 1e-2);
+        assert_eq!(m.verdict, Verdict::Ok);
+        assert_eq!(soft("ntc 10 ohm hot 0.2 ohm energy 20 J").verdict, Verdict::Over);
+        let m = soft("ntc 10 ohm hot 0.2 ohm");
+        assert_eq!((m.verdict, m.needs), (Verdict::Unchecked, vec!["supply toroid soft-start energy".to_owned()]));
+    }
+}

@@ -62,3 +62,41 @@ fn stress(case: &Case<'_>, load: &Driven) -> Result<Stress, Needs> {
         ..Stress::default()
     })
 }
+
+#[cfg(test)]
+mod tests {
+    use crate::finding::Verdict;
+    use crate::testing::{margin, tern60};
+
+    /// One channel takes 88.5 VA at the duty by a small-step integration written apart from this
+    /// program, further ones a little less each as the pulses widen: 300 VA carry three or four.
+    #[test]
+    fn how_many_it_carries() {
+        let m = margin(&tern60(&[]), super::RULE.name, "toroid");
+        let most = m.rating.unwrap().value;
+        assert!((3.0..=4.0).contains(&most), "{most}");
+        let with = |channels: u32| {
+            let text = tern60(&[("    channels           1\n", &format!("    channels           {channels}\n"))]);
+            margin(&text, super::RULE.name, "toroid").verdict
+        };
+        assert_eq!(with(most as u32), Verdict::Ok);
+        assert_eq!(with(most as u32 + 1), Verdict::Over);
+    }
+
+    /// Over exactly where the transformer is past its rating.
+    #[test]
+    fn agrees_with_the_transformer() {
+        for channels in 1..=5 {
+            let text = tern60(&[("    channels           1\n", &format!("    channels           {channels}\n"))]);
+            let over = margin(&text, super::RULE.name, "toroid").verdict == Verdict::Over;
+            let transformer = margin(&text, "current.transformer-duty", "t300");
+            assert_eq!(over, transformer.verdict == Verdict::Over, "{channels} channels");
+        }
+    }
+
+    #[test]
+    fn not_even_one() {
+        let m = margin(&tern60(&[("300 VA", "30 VA")]), super::RULE.name, "toroid");
+        assert_eq!((m.verdict, m.used_percent), (Verdict::Over, None));
+    }
+}

@@ -75,3 +75,40 @@ fn stress(case: &Case<'_>, supply: &Supply, fuse: &FuseLine, volt_amps: f64) -> 
         ..Stress::default()
     })
 }
+
+#[cfg(test)]
+mod tests {
+    use crate::finding::Verdict;
+    use crate::testing::{margin, report, tern60};
+
+    const SOFT: &str = "    soft-start         27R 10 W bypass 400 ms thermal-fuse 130 degC\n";
+    const NONE: &str = "    soft-start         none\n";
+
+    fn big(soft: &str, melts: &str) -> crate::finding::Margin {
+        margin(&tern60(&[(SOFT, soft), ("300 VA", "500 VA"), ("90 A2s", melts)]), super::RULE.name, "toroid soft-start")
+    }
+
+    /// Rpri = 0.07·230²/1000 = 3.703 ohm, √2·253/4.003 = 89.382 A, I²t = 39.946 A²s. By hand.
+    #[test]
+    fn up_to_the_fuse() {
+        let m = big(NONE, "90 A2s");
+        assert_eq!(m.verdict, Verdict::Ok);
+        assert!((m.stress.unwrap().value - 39.946).abs() < 0.01);
+        assert!(m.note.starts_with("500 VA without soft start: 89 A"));
+        assert_eq!(big(NONE, "60 A2s").verdict, Verdict::Thin);
+        assert_eq!(big(NONE, "39 A2s").verdict, Verdict::Over);
+    }
+
+    #[test]
+    fn not_stated_is_unchecked() {
+        let m = big("", "90 A2s");
+        assert_eq!((m.verdict, m.needs), (Verdict::Unchecked, vec!["supply toroid soft-start".to_owned()]));
+    }
+
+    #[test]
+    fn small_ones_go_without() {
+        for text in [tern60(&[(SOFT, NONE)]), tern60(&[(SOFT, "")]), tern60(&[("300 VA", "500 VA")])] {
+            assert!(report(&text).builds[0].margins.iter().all(|m| m.rule != super::RULE.name));
+        }
+    }
+}

@@ -68,3 +68,41 @@ fn stress(case: &Case<'_>, supply: &Supply, mains: Mains) -> Result<Stress, Need
         ..Stress::default()
     })
 }
+
+#[cfg(test)]
+mod tests {
+    use crate::finding::Verdict;
+    use crate::testing::{margin, report, tern60};
+
+    fn soft(text: &str) -> crate::finding::Margin {
+        margin(&tern60(&[("27R 10 W bypass 400 ms", text)]), super::RULE.name, "toroid soft-start")
+    }
+
+    /// A small-step integration written apart from this program reaches 44.18 V of 45.607 V at high
+    /// mains and 35.83 V of 37.133 V at low, 96.5 %, after 400 ms; 22.84 V, 61.5 %, after 30 ms.
+    #[test]
+    fn against_small_steps() {
+        let m = soft("27R 10 W bypass 400 ms");
+        assert_eq!(m.verdict, Verdict::Ok);
+        assert!((m.stress.unwrap().value - 96.5).abs() < 0.3);
+        let m = soft("27R 10 W bypass 30 ms");
+        assert_eq!(m.verdict, Verdict::Thin);
+        assert!((m.stress.unwrap().value - 61.5).abs() < 0.5, "{:?}", m.stress);
+    }
+
+    /// 1k seen from a rail is 2·(28·1.07/230)²·1000 = 33.9 ohm; 1 A of idle current would lose 33.9 V in
+    /// it if it flowed all the time, and more in pulses: of some 37 V at low mains little is left.
+    #[test]
+    fn too_much_resistance_never_gets_there() {
+        let text = tern60(&[("27R 10 W bypass 400 ms", "1k 10 W bypass 10 s"), ("50 mA per device, 11 mV across emitter", "500 mA per device")]);
+        assert_eq!(margin(&text, super::RULE.name, "toroid soft-start").verdict, Verdict::Over);
+    }
+
+    #[test]
+    fn says_what_is_missing_and_leaves_a_thermistor_alone() {
+        let m = soft("27R 10 W");
+        assert_eq!((m.verdict, m.needs), (Verdict::Unchecked, vec!["supply toroid soft-start bypass".to_owned()]));
+        let ntc = tern60(&[("27R 10 W bypass 400 ms", "ntc 10 ohm hot 0.2 ohm energy 100 J")]);
+        assert!(report(&ntc).builds[0].margins.iter().all(|m| m.rule != super::RULE.name));
+    }
+}

@@ -40,7 +40,7 @@ fn stress(case: &Case<'_>) -> Result<Stress, Needs> {
         value: inside.0,
         rating: f64::NAN,
         ambient: hottest.0,
-        witness: Witness { ambient_c: Some(hottest.0), channels_driven: None, mains_hz: None, ..Witness::default() },
+        witness: Witness { ambient_c: Some(hottest.0), ..Witness::default() },
         working: vec![
             stated("Ta", "hottest air round the case", hottest.0, "degC", case.build.ambient.stated_at()),
             stated("Tencl", "rise inside", (inside - hottest).0, "K", field.stated_at()),
@@ -48,7 +48,6 @@ fn stress(case: &Case<'_>) -> Result<Stress, Needs> {
         ],
         related: vec![Related { message: "the hottest room".to_owned(), site: case.build.ambient.site() }],
         note: if field.assumed { "no rise inside is stated: none is assumed".to_owned() } else { String::new() },
-        ..Stress::default()
     })
 }
 

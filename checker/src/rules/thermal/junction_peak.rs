@@ -21,7 +21,7 @@ rule! {
     rating: "Tj,max",
     formula: "Tj,pk = Tcase + max Σ Rk·(first-order answer of p(t)) + Vu·Iq·θjc, p = i·(Vu - v_out - i·RE) at V(burst)",
     source: "periodic steady state of a Foster network, closed form, own derivation",
-    reads: ["device.foster", "device.junction", "stage.insulator", "stage.pairs", "stage.emitter", "stage.idle", "amplifier.band", "amplifier.drop", "build.loads", "build.duty", "build.ambient", "heatsink.resistance"],
+    reads: ["device.foster", "device.junction-case", "device.junction", "stage.insulator", "stage.pairs", "stage.emitter", "stage.idle", "amplifier.band", "amplifier.drop", "build.loads", "build.duty", "build.ambient", "heatsink.resistance"],
     sense: Temperature,
     unit: "degC",
     allow: Allow::Below(0.0, f64::INFINITY), "the data sheet's own limit",
@@ -46,6 +46,10 @@ pub fn check(case: &Case<'_>, out: &mut Margins<'_>) {
 fn stress(case: &Case<'_>, load: &Driven, heat: &Heat, side: Side) -> Result<Stress, Needs> {
     let device = case.output().device(side);
     let (limit, peak) = both(device.junction.need().copied(), case.peak_junction(heat, load, side))?;
+    // a bound that fits proves it; one that does not proves nothing
+    if peak.bounded && peak.junction > limit {
+        return Err(device.foster.missing());
+    }
     let mut related = vec![Related { message: "into this load".to_owned(), site: load.site }];
     related.extend(device.foster.stated_at().map(|site| Related { message: "transient thermal terms".to_owned(), site }));
     Ok(Stress {
@@ -76,6 +80,7 @@ fn stress(case: &Case<'_>, load: &Driven, heat: &Heat, side: Side) -> Result<Str
             stated("Tj,max", "limit", limit.0, "degC", device.junction.stated_at()),
         ],
         related,
+        note: if peak.bounded { "no transient terms are stated: an upper bound, by a junction without heat capacity".to_owned() } else { String::new() },
         ..Stress::default()
     })
 }
@@ -116,9 +121,15 @@ mod tests {
         assert!(between > 11.628 && between < 37.753, "{between}");
     }
 
+    /// Without terms the junction follows every instant, the 37.753 K of above: a bound that fits passes and
+    /// says so; one that does not proves nothing, and names the terms.
     #[test]
-    fn unstated_terms_are_named() {
+    fn unstated_terms_are_bounded_or_named() {
+        assert!((rise("") - 37.753).abs() < 0.01, "{}", rise(""));
         let m = margin(&tern60(&[(TERMS, "")]), RULE.name, "n16");
+        assert!(m.verdict == Ok && m.note.contains("upper bound"), "{}", m.note);
+        let hot = [RULE.example.edits, &[(TERMS, "")]].concat();
+        let m = margin(&tern60(&hot), RULE.name, "n16");
         assert_eq!((m.verdict, m.needs.as_slice()), (Unchecked, &["device n16 foster".to_owned()][..]));
     }
 }

@@ -26,7 +26,7 @@ rule! {
     remedies: [
         Remedy { key: "stage.gate-zener", slot: "V", series: Series::E24, up: false },
     ],
-    example: "tern-fet", [("gate-zener          12 V", "gate-zener          none")],
+    example: "heron80-mosfet", [("gate-zener          12 V", "gate-zener          none")],
 }
 
 /// One margin for each declared MOSFET of the output stage.
@@ -65,30 +65,30 @@ mod tests {
     use crate::testing::{edited, kit, margin, report, tern60};
 
     fn fet(edits: &[(&str, &str)]) -> String {
-        edited(&kit("tern-fet"), edits)
+        edited(&kit("heron80-mosfet"), edits)
     }
 
     /// 12 V across a 14 V gate is 95 % of 12.6 V; 13 V is past 12.6 V; 15 V past the limit. By hand.
     #[test]
     fn the_zener_holds_it() {
-        let at = |zener: &str| margin(&fet(&[("gate-zener          12 V", &format!("gate-zener          {zener} V"))]), super::RULE.name, "fn8");
+        let at = |zener: &str| margin(&fet(&[("gate-zener          12 V", &format!("gate-zener          {zener} V"))]), super::RULE.name, "ln16");
         assert!((at("12").used_percent.unwrap() - 95.238).abs() < 1e-3);
         assert_eq!(at("13").verdict, Verdict::Thin);
         assert_eq!(at("15").verdict, Verdict::Over);
     }
 
-    /// No zener: the whole rail, 253/230·√2·35·1.06 = 57.7087 V. By hand.
+    /// No zener: the whole rail, 253/230·√2·32·1.06 = 52.7671 V. By hand.
     #[test]
     fn without_a_zener_the_rail_stands_on_the_gate() {
-        let m = margin(&fet(&[("gate-zener          12 V", "gate-zener          none")]), super::RULE.name, "fn8");
-        assert!((m.stress.unwrap().value - 57.7087).abs() < 1e-3);
+        let m = margin(&fet(&[("gate-zener          12 V", "gate-zener          none")]), super::RULE.name, "ln16");
+        assert!((m.stress.unwrap().value - 52.7671).abs() < 1e-3);
         assert_eq!(m.verdict, Verdict::Over);
     }
 
     #[test]
     fn says_what_is_missing_and_leaves_bipolar_stages_alone() {
-        let m = margin(&fet(&[("    vgs                14 V\n", "")]), super::RULE.name, "fn8");
-        assert_eq!(m.needs, ["device fn8 vgs"]);
+        let m = margin(&fet(&[("    vgs                14 V\n", "")]), super::RULE.name, "ln16");
+        assert_eq!(m.needs, ["device ln16 vgs"]);
         assert!(report(&tern60(&[])).builds[0].margins.iter().all(|m| m.rule != super::RULE.name));
     }
 }
