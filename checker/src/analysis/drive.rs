@@ -70,7 +70,14 @@ impl Case<'_> {
     pub fn greatest_output(&self, mains: Mains) -> Result<Volt, Needs> {
         let (rail, drop) = both(self.unsagged(mains), self.drop())?;
         let volts = rail - drop.at(Amp::ZERO);
-        if volts > Volt::ZERO { Ok(volts) } else { Err(Needs::because(format!("the drop takes all of the {:.1} V rail", rail.0))) }
+        if volts > Volt::ZERO {
+            Ok(volts)
+        } else {
+            Err(Needs::because(format!(
+                "the drop takes all of the {:.1} V rail",
+                rail.0
+            )))
+        }
     }
 
     /// The greatest peak current into a load, and where.
@@ -80,7 +87,13 @@ impl Case<'_> {
     pub fn peak_into(&self, load: &Driven, mains: Mains) -> Result<Peak, Needs> {
         let spot = load.minimum_seen();
         let (rail, (volts, amps)) = both(self.unsagged(mains), self.greatest_current(mains, load))?;
-        Ok(Peak { rail, volts, modulus: spot.seen.modulus(), frequency: spot.frequency, amps })
+        Ok(Peak {
+            rail,
+            volts,
+            modulus: spot.seen.modulus(),
+            frequency: spot.frequency,
+            amps,
+        })
     }
 
     /// The gates of a MOSFET stage take no steady current: there is no chain of base currents.
@@ -101,8 +114,15 @@ impl Case<'_> {
         let mut links = Vec::new();
         for stage in self.followers() {
             let bank = self.follower(stage, side)?;
-            let asks = bank.greatest_demand(carries).map_err(|e| no_gain(&stage.device(side).owner.name, &e))?;
-            links.push(Link { stage: stage.clone(), carries, asks, standing: bank.standing });
+            let asks = bank
+                .greatest_demand(carries)
+                .map_err(|e| no_gain(&stage.device(side).owner.name, &e))?;
+            links.push(Link {
+                stage: stage.clone(),
+                carries,
+                asks,
+                standing: bank.standing,
+            });
             carries = asks;
         }
         Ok(links)
@@ -113,7 +133,11 @@ impl Case<'_> {
     /// # Errors
     /// When it is not stated.
     pub fn driver(&self) -> Result<&Rc<Stated>, Needs> {
-        self.build.amplifier.driver.as_ref().ok_or_else(|| self.build.amplifier.driver_field.missing())
+        self.build
+            .amplifier
+            .driver
+            .as_ref()
+            .ok_or_else(|| self.build.amplifier.driver_field.missing())
     }
 
     /// The worst point of the driver's locus in a load at full drive, nominal mains, the drivers of a
@@ -125,26 +149,58 @@ impl Case<'_> {
     ///
     /// # Errors
     /// What chain, load or supply do not state.
-    pub fn driver_use(&self, load: &Driven, side: Side, allowance: &Allowance) -> Result<DriverUse, Needs> {
+    pub fn driver_use(
+        &self,
+        load: &Driven,
+        side: Side,
+        allowance: &Allowance,
+    ) -> Result<DriverUse, Needs> {
         let output = self.output();
-        let (bank, (drivers, drop), rail) = three(self.follower(output, side), both(self.driver()?.pairs.need().copied(), self.drop()), self.unsagged(Mains::Nominal))?;
+        let (bank, (drivers, drop), rail) = three(
+            self.follower(output, side),
+            both(self.driver()?.pairs.need().copied(), self.drop()),
+            self.unsagged(Mains::Nominal),
+        )?;
         let drivers = f64::from(drivers.max(1));
         let peak = self.peak_into(load, Mains::Nominal)?;
-        let base = bank.demand(peak.amps).map_err(|e| no_gain(&output.device(side).owner.name, &e))?;
+        let base = bank
+            .demand(peak.amps)
+            .map_err(|e| no_gain(&output.device(side).owner.name, &e))?;
         let gain = peak.amps / base * drivers;
         let vbe = Self::vbe(output.device(side));
-        let nothing = || Needs::because(format!("load {} cannot be driven on the {:.1} V rail", load.name, rail.0));
+        let nothing = || {
+            Needs::because(format!(
+                "load {} cannot be driven on the {:.1} V rail",
+                load.name, rail.0
+            ))
+        };
         let alone = Bank::even(1, Ohm::ZERO).ok_or_else(nothing)?;
         let used = |z: Impedance| {
             let amplitude = drop.burst(rail, z.modulus())?;
-            let scaled = Impedance { resistance: z.resistance * gain, reactance: z.reactance * gain };
-            Some(allowance.usage(&Locus::new(&alone, rail - vbe, amplitude, scaled)?).used)
+            let scaled = Impedance {
+                resistance: z.resistance * gain,
+                reactance: z.reactance * gain,
+            };
+            Some(
+                allowance
+                    .usage(&Locus::new(&alone, rail - vbe, amplitude, scaled)?)
+                    .used,
+            )
         };
-        let found = load.worst(self.band()?, |_, z| used(z).unwrap_or(f64::NAN)).ok_or_else(nothing)?;
+        let found = load
+            .worst(self.band()?, |_, z| used(z).unwrap_or(f64::NAN))
+            .ok_or_else(nothing)?;
         let mut worst: Option<DriverUse> = None;
         for spot in [found, load.minimum_seen()] {
             let amplitude = drop.burst(rail, spot.seen.modulus()).ok_or_else(nothing)?;
-            let here = self.driver_locus(&bank, spot, (rail, vbe, amplitude), drivers, allowance, side)?;
+            let here = self.driver_locus(
+                &bank,
+                spot,
+                (rail, vbe, amplitude),
+                drivers,
+                allowance,
+                side,
+            )?;
             if worst.is_none_or(|w| here.point.used > w.point.used) {
                 worst = Some(here);
             }
@@ -152,12 +208,24 @@ impl Case<'_> {
         worst.ok_or_else(nothing)
     }
 
-    fn driver_locus(&self, bank: &Stage, spot: Spot, (rail, vbe, amplitude): (Volt, Volt, Volt), drivers: f64, allowance: &Allowance, side: Side) -> Result<DriverUse, Needs> {
+    fn driver_locus(
+        &self,
+        bank: &Stage,
+        spot: Spot,
+        (rail, vbe, amplitude): (Volt, Volt, Volt),
+        drivers: f64,
+        allowance: &Allowance,
+        side: Side,
+    ) -> Result<DriverUse, Needs> {
         let wrong = || Needs::because("the rail leaves the driver no voltage");
-        let model = Driver::new(bank, rail, vbe, spot.seen.modulus(), spot.seen.angle_rad()).ok_or_else(wrong)?;
+        let model = Driver::new(bank, rail, vbe, spot.seen.modulus(), spot.seen.angle_rad())
+            .ok_or_else(wrong)?;
         // the other half-cycle leaves the standing current at the greatest voltage
         let highest = rail - vbe + amplitude;
-        let reach = allowance.point_usage(highest, bank.standing / drivers).ok_or_else(wrong)?.coverage;
+        let reach = allowance
+            .point_usage(highest, bank.standing / drivers)
+            .ok_or_else(wrong)?
+            .coverage;
         let end = match reach {
             Coverage::EndsAt { volts, .. } => volts,
             _ => Volt(f64::INFINITY),
@@ -172,15 +240,27 @@ impl Case<'_> {
             amps / allowance.allowed(volts)
         };
         let name = &self.output().device(side).owner.name;
-        let point = model.worst_on_locus(amplitude, used).map_err(|e| no_gain(name, &e))?;
+        let point = model
+            .worst_on_locus(amplitude, used)
+            .map_err(|e| no_gain(name, &e))?;
         let coverage = match reach {
             // one per cent of the peak current beyond the end of a curve does not matter
             Coverage::EndsAt { .. } if beyond.get() <= 0.01 * most.get() => Coverage::Whole,
-            Coverage::EndsAt { volts, .. } => Coverage::EndsAt { volts, fraction: beyond.get() / most.get() },
+            Coverage::EndsAt { volts, .. } => Coverage::EndsAt {
+                volts,
+                fraction: beyond.get() / most.get(),
+            },
             Coverage::AboveBreakdown if bank.standing <= Amp::ZERO => Coverage::Whole,
             other => other,
         };
         let amps = point.amps / drivers;
-        Ok(DriverUse { spot, amplitude, point, amps, allowed: allowance.allowed(point.volts), coverage })
+        Ok(DriverUse {
+            spot,
+            amplitude,
+            point,
+            amps,
+            allowed: allowance.allowed(point.volts),
+            coverage,
+        })
     }
 }

@@ -65,7 +65,10 @@ pub struct Alone {
 /// The load, or its member, that does not state a d.c. resistance.
 fn without_dc(load: &Rc<Load>) -> Needs {
     match &load.kind {
-        LoadKind::Parallel(members) => members.iter().find(|m| !has_dc(m)).map_or_else(|| load.dc.missing(), without_dc),
+        LoadKind::Parallel(members) => members
+            .iter()
+            .find(|m| !has_dc(m))
+            .map_or_else(|| load.dc.missing(), without_dc),
         _ => load.dc.missing(),
     }
 }
@@ -97,11 +100,20 @@ impl Case<'_> {
     /// What load, output stage or supply do not state.
     pub fn fault(&self, load: &Driven, rail: Volt) -> Result<Fault, Needs> {
         let stage = self.output();
-        let re = stage.emitter.get().map_or_else(|| emitter(stage), |r| Ok(r.ohm.low));
+        let re = stage
+            .emitter
+            .get()
+            .map_or_else(|| emitter(stage), |r| Ok(r.ohm.low));
         let (coil, re, pairs) = three(self.coil(load), re, stage.pairs.need().copied())?;
         let series = re / f64::from(pairs.max(1));
-        let model = DcFault::new(rail, coil, series).ok_or_else(|| Needs::because(format!("load {} makes no d.c. fault", load.name)))?;
-        Ok(Fault { rail, coil, series, model })
+        let model = DcFault::new(rail, coil, series)
+            .ok_or_else(|| Needs::because(format!("load {} makes no d.c. fault", load.name)))?;
+        Ok(Fault {
+            rail,
+            coil,
+            series,
+            model,
+        })
     }
 
     /// The protection and its detector; `None` where it is known that there is none.
@@ -125,13 +137,25 @@ impl Case<'_> {
         if let Some(time) = contacts.and_then(|c| c.release) {
             return Ok(time);
         }
-        if let Some(time) = protection.switch.get().and_then(|s| s.3).filter(|_| contacts.is_none()) {
+        if let Some(time) = protection
+            .switch
+            .get()
+            .and_then(|s| s.3)
+            .filter(|_| contacts.is_none())
+        {
             return Ok(time);
         }
-        let opens = contacts.is_some() || protection.relay.get().is_some() || protection.switch.get().is_some();
+        let opens = contacts.is_some()
+            || protection.relay.get().is_some()
+            || protection.switch.get().is_some();
         if opens {
             let key = format!("protection {} contacts release", protection.owner.name);
-            self.assume(key, Measure::new(RELEASE.0, "s"), "usual for small power relays", protection.contacts.site());
+            self.assume(
+                key,
+                Measure::new(RELEASE.0, "s"),
+                "usual for small power relays",
+                protection.contacts.site(),
+            );
             return Ok(RELEASE);
         }
         if protection.crowbar.get().is_some() {
@@ -146,7 +170,9 @@ impl Case<'_> {
     /// # Errors
     /// What protection or supply do not state.
     pub fn off(&self, mains: Mains) -> Result<Option<Off>, Needs> {
-        let Some((protection, stated)) = self.detector()? else { return Ok(None) };
+        let Some((protection, stated)) = self.detector()? else {
+            return Ok(None);
+        };
         let (rail, release) = both(self.unsagged(mains), self.release(protection))?;
         let threshold = stated.above.max(stated.below);
         let model = detector_model(protection, stated, threshold)?;
@@ -170,7 +196,11 @@ impl Case<'_> {
         }
         let supply = self.supply()?;
         let mut best: Option<Alone> = None;
-        for fuse in supply.fuses.iter().filter(|f| matches!(f.place, "rail" | "speaker")) {
+        for fuse in supply
+            .fuses
+            .iter()
+            .filter(|f| matches!(f.place, "rail" | "speaker"))
+        {
             let speed = if fuse.slow { Speed::Slow } else { Speed::Fast };
             let melted = melting(speed, fuse.rating, current).and_then(|m| m.most);
             let sooner = match (&best, melted) {
@@ -179,7 +209,10 @@ impl Case<'_> {
                 (Some(_), None) => false,
             };
             if sooner {
-                best = Some(Alone { fuse: fuse.clone(), melted });
+                best = Some(Alone {
+                    fuse: fuse.clone(),
+                    melted,
+                });
             }
         }
         Ok(best)
@@ -196,6 +229,15 @@ impl Case<'_> {
 ///
 /// # Errors
 /// When its values are not positive.
-pub fn detector_model(protection: &Protection, stated: &Stated, threshold: Volt) -> Result<Detector, Needs> {
-    Detector::new(stated.ohm, stated.farad, threshold).ok_or_else(|| Needs::because(format!("the detector of protection {} needs positive values", protection.owner.name)))
+pub fn detector_model(
+    protection: &Protection,
+    stated: &Stated,
+    threshold: Volt,
+) -> Result<Detector, Needs> {
+    Detector::new(stated.ohm, stated.farad, threshold).ok_or_else(|| {
+        Needs::because(format!(
+            "the detector of protection {} needs positive values",
+            protection.owner.name
+        ))
+    })
 }

@@ -34,5 +34,11 @@ impl Case<'_> {
 /// A line of a device as a part.
 #[must_use]
 pub fn data_part(device: &Device, key: &'static str) -> Part {
-    Part { name: device.owner.name.clone(), block: device.owner.name.clone(), key, order_code: device.codes.first().cloned(), ..Part::default() }
+    Part {
+        name: device.owner.name.clone(),
+        block: device.owner.name.clone(),
+        key,
+        order_code: device.codes.first().cloned(),
+        ..Part::default()
+    }
 }

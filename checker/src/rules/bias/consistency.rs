@@ -31,7 +31,12 @@ pub fn check(case: &Case<'_>, out: &mut Margins<'_>) {
         let groups = stage.idle.get().map(Vec::as_slice).unwrap_or_default();
         for (n, a) in groups.iter().enumerate() {
             for b in groups.iter().skip(n + 1) {
-                out.compare(&RULE, line_part(&stage.idle), stage.idle.site(), idle_apart(stage, a, b));
+                out.compare(
+                    &RULE,
+                    line_part(&stage.idle),
+                    stage.idle.site(),
+                    idle_apart(stage, a, b),
+                );
             }
         }
     }
@@ -43,13 +48,20 @@ mod tests {
     use crate::testing::{margin, report, tern60};
 
     fn idle(text: &str) -> crate::finding::Margin {
-        margin(&tern60(&[("50 mA per device, 11 mV across emitter", text)]), "bias.consistency", "out idle")
+        margin(
+            &tern60(&[("50 mA per device, 11 mV across emitter", text)]),
+            "bias.consistency",
+            "out idle",
+        )
     }
 
     #[test]
     fn figures_that_agree_are_silent() {
         // 11 mV/0.22 ohm = 50 mA
-        assert_eq!(idle("50 mA per device, 11 mV across emitter").verdict, Verdict::Ok);
+        assert_eq!(
+            idle("50 mA per device, 11 mV across emitter").verdict,
+            Verdict::Ok
+        );
         // 12 mV/0.22 = 54.5 mA; at 0.22·1.05 it is 51.9 mA: 3.9 % beyond the resistor
         let m = idle("50 mA per device, 12 mV across emitter");
         assert!((m.stress.unwrap().value - (12.0 / 0.231 / 50.0 - 1.0) * 100.0).abs() < 1e-9);
@@ -69,19 +81,33 @@ mod tests {
     #[test]
     fn a_quarter_more_is_thin() {
         // 50/40 - 1 = 25 %
-        assert_eq!(idle("50 mA per device, 80 mA per channel").verdict, Verdict::Thin);
+        assert_eq!(
+            idle("50 mA per device, 80 mA per channel").verdict,
+            Verdict::Thin
+        );
     }
 
     #[test]
     fn one_statement_is_not_compared() {
         let kit = tern60(&[("50 mA per device, 11 mV across emitter", "50 mA per device")]);
-        assert!(report(&kit).builds[0].margins.iter().all(|m| m.rule != "bias.consistency"));
+        assert!(
+            report(&kit).builds[0]
+                .margins
+                .iter()
+                .all(|m| m.rule != "bias.consistency")
+        );
     }
 
     #[test]
     fn volts_across_a_resistor_that_is_not_stated_are_unchecked() {
-        let kit = tern60(&[("    emitter             0R22 ±5 % 5 W pulse 20 A  ref R21-R24  part \"WW5-0R22J\"\n", "")]);
+        let kit = tern60(&[(
+            "    emitter             0R22 ±5 % 5 W pulse 20 A  ref R21-R24  part \"WW5-0R22J\"\n",
+            "",
+        )]);
         let m = margin(&kit, "bias.consistency", "out idle");
-        assert_eq!((m.verdict, m.needs), (Verdict::Unchecked, vec!["stage out emitter".to_owned()]));
+        assert_eq!(
+            (m.verdict, m.needs),
+            (Verdict::Unchecked, vec!["stage out emitter".to_owned()])
+        );
     }
 }

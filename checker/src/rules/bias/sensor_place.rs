@@ -35,8 +35,21 @@ pub fn check(case: &Case<'_>, out: &mut Margins<'_>) {
     match place(case) {
         Err(needs) => out.compare(&RULE, part, site, Err(needs)),
         Ok(wrong) => {
-            let verdict = if wrong.is_some() { Verdict::Thin } else { Verdict::Ok };
-            out.judge(&RULE, part, site, verdict, Stress { note: wrong.unwrap_or_default().to_owned(), ..Stress::default() });
+            let verdict = if wrong.is_some() {
+                Verdict::Thin
+            } else {
+                Verdict::Ok
+            };
+            out.judge(
+                &RULE,
+                part,
+                site,
+                verdict,
+                Stress {
+                    note: wrong.unwrap_or_default().to_owned(),
+                    ..Stress::default()
+                },
+            );
         }
     }
 }
@@ -44,26 +57,37 @@ pub fn check(case: &Case<'_>, out: &mut Margins<'_>) {
 /// What is wrong with the place; `None` where it is right.
 fn place(case: &Case<'_>) -> Result<Option<&'static str>, Needs> {
     let stage = case.output();
-    if stage.upper.structure.get() == Some(&"lateral") && stage.lower.structure.get() == Some(&"lateral") {
+    if stage.upper.structure.get() == Some(&"lateral")
+        && stage.lower.structure.get() == Some(&"lateral")
+    {
         // a lateral MOSFET turns itself down
         return Ok(None);
     }
     if stage.sensor.none {
-        return Ok(Some("no sensor is fitted: nothing turns the idle current down as the devices warm"));
+        return Ok(Some(
+            "no sensor is fitted: nothing turns the idle current down as the devices warm",
+        ));
     }
     let on = stage.sensor.need()?.0;
     if stage.connection != "compound-pair" {
         let wrong = "the output devices set the idle current, and the sensor is not on their sink";
         return Ok((!case.sensor_on_sink()?).then_some(wrong));
     }
-    let driver = case.build.amplifier.driver.as_ref().ok_or_else(|| case.build.amplifier.driver_field.missing())?;
+    let driver = case
+        .build
+        .amplifier
+        .driver
+        .as_ref()
+        .ok_or_else(|| case.build.amplifier.driver_field.missing())?;
     let together = case.on_output_sink(driver);
     let right = match on {
         "driver" => true,
         "sink" | "device" => together,
         _ => false,
     };
-    Ok((!right).then_some("the drivers of a compound pair set the idle current, and the sensor is not on them"))
+    Ok((!right).then_some(
+        "the drivers of a compound pair set the idle current, and the sensor is not on them",
+    ))
 }
 
 #[cfg(test)]
@@ -72,7 +96,10 @@ mod tests {
     use crate::testing::{margin, tern60};
 
     fn on(place: &str, connection: &str) -> crate::finding::Margin {
-        let kit = tern60(&[("sensor              on sink", place), ("connection          emitter-follower", connection)]);
+        let kit = tern60(&[
+            ("sensor              on sink", place),
+            ("connection          emitter-follower", connection),
+        ]);
         margin(&kit, "bias.sensor-place", "out sensor")
     }
 
@@ -96,7 +123,14 @@ mod tests {
 
     #[test]
     fn a_place_that_is_not_stated_is_unchecked() {
-        let m = margin(&tern60(&[("    sensor              on sink\n", "")]), "bias.sensor-place", "out sensor");
-        assert_eq!((m.verdict, m.needs), (Verdict::Unchecked, vec!["stage out sensor".to_owned()]));
+        let m = margin(
+            &tern60(&[("    sensor              on sink\n", "")]),
+            "bias.sensor-place",
+            "out sensor",
+        );
+        assert_eq!(
+            (m.verdict, m.needs),
+            (Verdict::Unchecked, vec!["stage out sensor".to_owned()])
+        );
     }
 }

@@ -39,7 +39,12 @@ pub fn check(case: &Case<'_>, out: &mut Margins<'_>) {
         return;
     }
     for side in stage.sides() {
-        out.compare(&RULE, case.device_part(stage, *side), stage.emitter.site(), case.bias_loop(*side));
+        out.compare(
+            &RULE,
+            case.device_part(stage, *side),
+            stage.emitter.site(),
+            case.bias_loop(*side),
+        );
     }
 }
 
@@ -54,7 +59,11 @@ mod tests {
         // 1/gm + RE = 25.7 mV/50 mA + 0.22·0.95 = 0.514 + 0.209 = 0.723 ohm
         // S = 45.6068·2.1 mV/K·1.04/0.723 = 0.137768
         let m = margin(&tern60(&[]), "bias.stability", "n16");
-        assert!((m.stress.unwrap().value - 0.137_768).abs() < 2e-6, "{:?}", m.stress);
+        assert!(
+            (m.stress.unwrap().value - 0.137_768).abs() < 2e-6,
+            "{:?}",
+            m.stress
+        );
         assert_eq!(m.verdict, Verdict::Ok);
     }
 
@@ -64,27 +73,62 @@ mod tests {
         // ΔT = P·0.45·(ΔT/50)^-1/4 -> ΔT^(5/4) = 4.104614·50^(1/4) = 10.91478 -> ΔT = 6.767244 K,
         // Rsa = 0.741911 K/W; θeff = 1.04 + 4·0.741911 = 4.007646 K/W
         // S = 45.60682·0.0021·4.007646/0.723 = 0.530885
-        let kit = tern60(&[("sensor              on sink", "sensor              on board")]);
+        let kit = tern60(&[(
+            "sensor              on sink",
+            "sensor              on board",
+        )]);
         let m = margin(&kit, "bias.stability", "n16");
-        assert!((m.stress.unwrap().value - 0.530_885).abs() < 2e-6, "{:?}", m.stress);
+        assert!(
+            (m.stress.unwrap().value - 0.530_885).abs() < 2e-6,
+            "{:?}",
+            m.stress
+        );
     }
 
     #[test]
     fn more_idle_current_without_a_resistor_runs_away() {
-        let edits = [("sensor              on sink", "sensor              on board"), ("0R22 ±5 % 5 W pulse 20 A", "R05 5 W pulse 20 A"), ("50 mA per device, 11 mV across emitter", "200 mA per device")];
-        assert_eq!(verdict(&tern60(&edits), "bias.stability", "n16"), Verdict::Over);
+        let edits = [
+            (
+                "sensor              on sink",
+                "sensor              on board",
+            ),
+            ("0R22 ±5 % 5 W pulse 20 A", "R05 5 W pulse 20 A"),
+            (
+                "50 mA per device, 11 mV across emitter",
+                "200 mA per device",
+            ),
+        ];
+        assert_eq!(
+            verdict(&tern60(&edits), "bias.stability", "n16"),
+            Verdict::Over
+        );
     }
 
     #[test]
     fn a_sensor_that_is_not_stated_passes_nothing() {
-        let m = margin(&tern60(&[("    sensor              on sink\n", "")]), "bias.stability", "n16");
-        assert_eq!((m.verdict, m.needs), (Verdict::Unchecked, vec!["stage out sensor".to_owned()]));
+        let m = margin(
+            &tern60(&[("    sensor              on sink\n", "")]),
+            "bias.stability",
+            "n16",
+        );
+        assert_eq!(
+            (m.verdict, m.needs),
+            (Verdict::Unchecked, vec!["stage out sensor".to_owned()])
+        );
     }
 
     #[test]
     fn class_b_has_no_loop() {
-        let kit = tern60(&[("idle                50 mA per device, 11 mV across emitter", "idle                none")]);
+        let kit = tern60(&[(
+            "idle                50 mA per device, 11 mV across emitter",
+            "idle                none",
+        )]);
         let report = crate::testing::report(&kit);
-        assert!(report.builds[0].margins.iter().all(|m| m.rule != "bias.stability"));
+        assert!(
+            report.builds[0]
+                .margins
+                .iter()
+                .all(|m| m.rule != "bias.stability")
+        );
     }
 }

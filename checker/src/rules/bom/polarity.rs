@@ -30,12 +30,34 @@ pub fn check(case: &Case<'_>, out: &mut Margins<'_>) {
     for stage in case.followers() {
         for side in Side::BOTH {
             let device = stage.device(side);
-            let Some(kind) = device.kind.filter(|k| *k != "complementary") else { continue };
+            let Some(kind) = device.kind.filter(|k| *k != "complementary") else {
+                continue;
+            };
             let wanted = wanted(stage, side);
             let right = wanted.contains(&kind);
-            let note = if right { String::new() } else { format!("{} is {kind}; the {} place of a {} wants {} or {}", device.owner.name, side.name(), stage.connection, wanted[0], wanted[1]) };
+            let note = if right {
+                String::new()
+            } else {
+                format!(
+                    "{} is {kind}; the {} place of a {} wants {} or {}",
+                    device.owner.name,
+                    side.name(),
+                    stage.connection,
+                    wanted[0],
+                    wanted[1]
+                )
+            };
             let verdict = if right { Verdict::Ok } else { Verdict::Over };
-            out.judge(&RULE, case.device_part(stage, side), stage.devices.site(), verdict, Stress { note, ..Stress::default() });
+            out.judge(
+                &RULE,
+                case.device_part(stage, side),
+                stage.devices.site(),
+                verdict,
+                Stress {
+                    note,
+                    ..Stress::default()
+                },
+            );
         }
     }
 }
@@ -44,7 +66,11 @@ pub fn check(case: &Case<'_>, out: &mut Margins<'_>) {
 fn wanted(stage: &Stage, side: Side) -> [&'static str; 2] {
     let upper = matches!(side, Side::Upper);
     // the collector, not the emitter, of a compound pair's output device goes to the output
-    if upper != matches!(stage.connection, "compound-pair" | "common-emitter") { ["npn", "nmos"] } else { ["pnp", "pmos"] }
+    if upper != matches!(stage.connection, "compound-pair" | "common-emitter") {
+        ["npn", "nmos"]
+    } else {
+        ["pnp", "pmos"]
+    }
 }
 
 #[cfg(test)]
@@ -56,9 +82,21 @@ mod tests {
     fn followers_and_compound_pairs_stand_opposite_ways() {
         assert_eq!(verdict(&tern60(&[]), "bom.polarity", "n16"), Verdict::Ok);
         assert_eq!(verdict(&tern60(&[]), "bom.polarity", "p16"), Verdict::Ok);
-        let swapped = tern60(&[("devices             n16 p16  ref", "devices             p16 n16  ref")]);
+        let swapped = tern60(&[(
+            "devices             n16 p16  ref",
+            "devices             p16 n16  ref",
+        )]);
         assert_eq!(verdict(&swapped, "bom.polarity", "n16"), Verdict::Over);
-        let pair = tern60(&[("devices             n16 p16  ref", "devices             p16 n16  ref"), ("connection          emitter-follower", "connection          compound-pair")]);
+        let pair = tern60(&[
+            (
+                "devices             n16 p16  ref",
+                "devices             p16 n16  ref",
+            ),
+            (
+                "connection          emitter-follower",
+                "connection          compound-pair",
+            ),
+        ]);
         assert_eq!(verdict(&pair, "bom.polarity", "p16"), Verdict::Ok);
     }
 }

@@ -32,7 +32,14 @@ const ROUNDING: f64 = 1.02;
 /// One margin for each device that states a d.c. curve and its power.
 pub fn check(case: &Case<'_>, out: &mut Margins<'_>) {
     for device in case.devices() {
-        let Some((line, power)) = device.soa.iter().find(|l| l.pulse.is_none()).zip(power_at_25(device)) else { continue };
+        let Some((line, power)) = device
+            .soa
+            .iter()
+            .find(|l| l.pulse.is_none())
+            .zip(power_at_25(device))
+        else {
+            continue;
+        };
         let (verdict, stress) = judged(device, line, power);
         out.judge(&RULE, data_part(device, "soa"), line.site, verdict, stress);
     }
@@ -50,14 +57,37 @@ fn power_at_25(device: &Device) -> Option<Watt> {
 }
 
 fn judged(device: &Device, line: &SoaLine, power: Watt) -> (Verdict, Stress) {
-    let worst = line.points.iter().copied().map(|(v, i)| (v * i, v, i)).max_by(|a, b| a.0.0.total_cmp(&b.0.0));
-    let Some((watts, volts, amps)) = worst else { return (Verdict::Ok, Stress::default()) };
+    let worst = line
+        .points
+        .iter()
+        .copied()
+        .map(|(v, i)| (v * i, v, i))
+        .max_by(|a, b| a.0.0.total_cmp(&b.0.0));
+    let Some((watts, volts, amps)) = worst else {
+        return (Verdict::Ok, Stress::default());
+    };
     let over = watts > power * ROUNDING;
-    let note = format!("{} A at {} V is {:.0} W, Ptot is {:.0} W: likely a pulse curve under the name of the d.c. one", amps.0, volts.0, watts.0, power.0);
+    let note = format!(
+        "{} A at {} V is {:.0} W, Ptot is {:.0} W: likely a pulse curve under the name of the d.c. one",
+        amps.0, volts.0, watts.0, power.0
+    );
     let stress = Stress {
         working: vec![
-            solved("v·i", "the greatest of the curve", "", watts.0, "W", "definition of power"),
-            stated("Ptot", "rated power, case at 25 degC", power.0, "W", device.power.stated_at()),
+            solved(
+                "v·i",
+                "the greatest of the curve",
+                "",
+                watts.0,
+                "W",
+                "definition of power",
+            ),
+            stated(
+                "Ptot",
+                "rated power, case at 25 degC",
+                power.0,
+                "W",
+                device.power.stated_at(),
+            ),
         ],
         note: if over { note } else { String::new() },
         ..Stress::default()
@@ -73,7 +103,13 @@ mod tests {
     #[test]
     fn two_per_cent_above_the_power_is_rounding() {
         // 180 W·1.02 = 183.6 W = 3.672 A at 50 V
-        let at = |text: &str| margin(&tern60(&[("3.6 A at 50 V, 0.9 A", text)]), "data.curve-against-power", "n16");
+        let at = |text: &str| {
+            margin(
+                &tern60(&[("3.6 A at 50 V, 0.9 A", text)]),
+                "data.curve-against-power",
+                "n16",
+            )
+        };
         assert_eq!(at("3.67 A at 50 V, 0.9 A").verdict, Verdict::Ok);
         let m = at("3.68 A at 50 V, 0.9 A");
         assert_eq!(m.verdict, Verdict::Over);
@@ -84,6 +120,9 @@ mod tests {
     fn power_stated_warm_is_more_at_25_degrees() {
         // 144 W at 50 degC and 150 degC: 144·125/100 = 180 W at 25 degC
         let kit = tern60(&[("180 W at 25 degC", "144 W at 50 degC")]);
-        assert_eq!(margin(&kit, "data.curve-against-power", "n16").verdict, Verdict::Ok);
+        assert_eq!(
+            margin(&kit, "data.curve-against-power", "n16").verdict,
+            Verdict::Ok
+        );
     }
 }

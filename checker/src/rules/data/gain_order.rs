@@ -30,7 +30,16 @@ pub fn check(case: &Case<'_>, out: &mut Margins<'_>) {
     for device in case.devices() {
         for line in &device.hfe {
             let (verdict, note) = disorder(line).unwrap_or((Verdict::Ok, String::new()));
-            out.judge(&RULE, data_part(device, "hfe"), line.site, verdict, Stress { note, ..Stress::default() });
+            out.judge(
+                &RULE,
+                data_part(device, "hfe"),
+                line.site,
+                verdict,
+                Stress {
+                    note,
+                    ..Stress::default()
+                },
+            );
         }
     }
 }
@@ -38,7 +47,9 @@ pub fn check(case: &Case<'_>, out: &mut Margins<'_>) {
 /// The worst that is wrong with the points.
 fn disorder(line: &GainLine) -> Option<(Verdict, String)> {
     let mut points = line.points.clone();
-    let ascending = points.windows(2).all(|pair| matches!(pair, [a, b] if a.0 < b.0));
+    let ascending = points
+        .windows(2)
+        .all(|pair| matches!(pair, [a, b] if a.0 < b.0));
     points.sort_by(|a, b| a.0.0.total_cmp(&b.0.0));
     let mut fallen = false;
     let mut thin = (!ascending).then(|| "the points are not in order of current".to_owned());
@@ -49,7 +60,10 @@ fn disorder(line: &GainLine) -> Option<(Verdict, String)> {
             return Some((Verdict::Over, format!("{both}: two gains at one current")));
         }
         if i1.0 / h1 <= i0.0 / h0 {
-            return Some((Verdict::Over, format!("{both}: base current would fall while the current rises")));
+            return Some((
+                Verdict::Over,
+                format!("{both}: base current would fall while the current rises"),
+            ));
         }
         if fallen && h1 > h0 {
             thin = Some(format!("{both}: the gain rises again after it has fallen"));
@@ -66,14 +80,32 @@ mod tests {
 
     #[test]
     fn slips_of_the_pen_are_named() {
-        let with = |text: &str| margin(&tern60(&[("80 at 1 A, 60 at 5 A, 38 at 8 A, 16 at 16 A", text)]), "data.gain-order", "n16");
-        assert_eq!(with("60 at 0.5 A, 80 at 1 A, 60 at 5 A, 16 at 16 A").verdict, Verdict::Ok);
+        let with = |text: &str| {
+            margin(
+                &tern60(&[("80 at 1 A, 60 at 5 A, 38 at 8 A, 16 at 16 A", text)]),
+                "data.gain-order",
+                "n16",
+            )
+        };
+        assert_eq!(
+            with("60 at 0.5 A, 80 at 1 A, 60 at 5 A, 16 at 16 A").verdict,
+            Verdict::Ok
+        );
         // 8 A/380 = 21 mA is less base current than 5 A/60 = 83 mA
         let steep = with("80 at 1 A, 60 at 5 A, 380 at 8 A, 16 at 16 A");
         assert_eq!(steep.verdict, Verdict::Over);
         assert!(steep.note.contains("base current"), "{}", steep.note);
-        assert_eq!(with("80 at 1 A, 60 at 5 A, 65 at 8 A, 16 at 16 A").verdict, Verdict::Thin);
-        assert_eq!(with("60 at 5 A, 80 at 1 A, 16 at 16 A").verdict, Verdict::Thin);
-        assert_eq!(with("80 at 1 A, 60 at 1 A, 16 at 16 A").verdict, Verdict::Over);
+        assert_eq!(
+            with("80 at 1 A, 60 at 5 A, 65 at 8 A, 16 at 16 A").verdict,
+            Verdict::Thin
+        );
+        assert_eq!(
+            with("60 at 5 A, 80 at 1 A, 16 at 16 A").verdict,
+            Verdict::Thin
+        );
+        assert_eq!(
+            with("80 at 1 A, 60 at 1 A, 16 at 16 A").verdict,
+            Verdict::Over
+        );
     }
 }

@@ -37,7 +37,16 @@ pub fn check(case: &Case<'_>, out: &mut Margins<'_>) {
             Err(needs) => out.compare(&RULE, part, site, Err(needs)),
             Ok(&"open-market") => {
                 let note = "bought on the open market and not tested: its data sheet may be of another part".to_owned();
-                out.judge(&RULE, part, site, Verdict::Thin, Stress { note, ..Stress::default() });
+                out.judge(
+                    &RULE,
+                    part,
+                    site,
+                    Verdict::Thin,
+                    Stress {
+                        note,
+                        ..Stress::default()
+                    },
+                );
             }
             Ok(_) => out.judge(&RULE, part, site, Verdict::Ok, Stress::default()),
         }
@@ -50,15 +59,38 @@ mod tests {
     use crate::testing::{margin, tern60};
 
     fn source(text: &str) -> crate::finding::Margin {
-        margin(&tern60(&[("\"N16-Y\"\n    source             authorised \"franchised distributor\"\n", text)]), "data.source", "n16")
+        margin(
+            &tern60(&[(
+                "\"N16-Y\"\n    source             authorised \"franchised distributor\"\n",
+                text,
+            )]),
+            "data.source",
+            "n16",
+        )
     }
 
     #[test]
     fn open_market_warns_and_silence_is_advice() {
-        assert_eq!(source("\"N16-Y\"\n    source authorised \"franchised distributor\"\n").verdict, Verdict::Ok);
-        assert_eq!(source("\"N16-Y\"\n    source tested\n").verdict, Verdict::Ok);
-        assert_eq!(source("\"N16-Y\"\n    source open-market\n").severity, Severity::Warning);
+        assert_eq!(
+            source("\"N16-Y\"\n    source authorised \"franchised distributor\"\n").verdict,
+            Verdict::Ok
+        );
+        assert_eq!(
+            source("\"N16-Y\"\n    source tested\n").verdict,
+            Verdict::Ok
+        );
+        assert_eq!(
+            source("\"N16-Y\"\n    source open-market\n").severity,
+            Severity::Warning
+        );
         let m = source("\"N16-Y\"\n");
-        assert_eq!((m.verdict, m.severity, m.needs), (Verdict::Unchecked, Severity::Information, vec!["device n16 source".to_owned()]));
+        assert_eq!(
+            (m.verdict, m.severity, m.needs),
+            (
+                Verdict::Unchecked,
+                Severity::Information,
+                vec!["device n16 source".to_owned()]
+            )
+        );
     }
 }

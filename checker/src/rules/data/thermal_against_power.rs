@@ -33,15 +33,29 @@ const ANOTHER: f64 = 0.5;
 
 /// One margin for each device that states all three.
 pub fn check(case: &Case<'_>, out: &mut Margins<'_>) {
-    for device in case.devices().into_iter().filter(|d| !d.junction_case.assumed) {
+    for device in case
+        .devices()
+        .into_iter()
+        .filter(|d| !d.junction_case.assumed)
+    {
         if let Some((verdict, stress)) = judged(device) {
-            out.judge(&RULE, data_part(device, "junction-case"), device.junction_case.site(), verdict, stress);
+            out.judge(
+                &RULE,
+                data_part(device, "junction-case"),
+                device.junction_case.site(),
+                verdict,
+                stress,
+            );
         }
     }
 }
 
 fn judged(device: &Device) -> Option<(Verdict, Stress)> {
-    let (own, (power, at), junction) = (*device.junction_case.get()?, *device.power.get()?, *device.junction.get()?);
+    let (own, (power, at), junction) = (
+        *device.junction_case.get()?,
+        *device.power.get()?,
+        *device.junction.get()?,
+    );
     let implied = junction_case(power, at, junction)?;
     let apart = own / implied - 1.0;
     let verdict = match apart.abs() {
@@ -50,13 +64,33 @@ fn judged(device: &Device) -> Option<(Verdict, Stress)> {
         _ => Verdict::Over,
     };
     let direction = if apart < 0.0 { "cooler" } else { "hotter" };
-    let note = format!("{:.0} W and {:.0} degC make it {:.3} K/W; {:.3} K/W shows junctions {direction} than that", power.0, junction.0, implied.0, own.0);
+    let note = format!(
+        "{:.0} W and {:.0} degC make it {:.3} K/W; {:.3} K/W shows junctions {direction} than that",
+        power.0, junction.0, implied.0, own.0
+    );
     let stress = Stress {
         working: vec![
-            stated("Rth(j-c)", "as stated", own.0, "K/W", device.junction_case.stated_at()),
-            solved("Rimplied", "from power and Tj,max", "(Tj,max - T0)/Ptot", implied.0, "K/W", "definition of rated power"),
+            stated(
+                "Rth(j-c)",
+                "as stated",
+                own.0,
+                "K/W",
+                device.junction_case.stated_at(),
+            ),
+            solved(
+                "Rimplied",
+                "from power and Tj,max",
+                "(Tj,max - T0)/Ptot",
+                implied.0,
+                "K/W",
+                "definition of rated power",
+            ),
         ],
-        note: if verdict == Verdict::Ok { String::new() } else { note },
+        note: if verdict == Verdict::Ok {
+            String::new()
+        } else {
+            note
+        },
         ..Stress::default()
     };
     Some((verdict, stress))
@@ -70,7 +104,14 @@ mod tests {
     #[test]
     fn makers_round_and_packages_differ() {
         // (150 - 25)/180 = 0.69444 K/W; 5 % is 0.6597 to 0.7292, half is 0.3472 to 1.0417
-        let with = |text: &str| margin(&tern60(&[("junction-case      0.69 K/W", text)]), "data.thermal-against-power", "n16").verdict;
+        let with = |text: &str| {
+            margin(
+                &tern60(&[("junction-case      0.69 K/W", text)]),
+                "data.thermal-against-power",
+                "n16",
+            )
+            .verdict
+        };
         assert_eq!(with("junction-case 0.66 K/W"), Verdict::Ok);
         assert_eq!(with("junction-case 0.72 K/W"), Verdict::Ok);
         assert_eq!(with("junction-case 0.65 K/W"), Verdict::Thin);
@@ -80,6 +121,11 @@ mod tests {
     #[test]
     fn a_figure_worked_out_from_the_power_agrees_with_itself() {
         let kit = tern60(&[("    junction-case      0.69 K/W\n", "")]);
-        assert!(report(&kit).builds[0].margins.iter().all(|m| m.rule != "data.thermal-against-power"));
+        assert!(
+            report(&kit).builds[0]
+                .margins
+                .iter()
+                .all(|m| m.rule != "data.thermal-against-power")
+        );
     }
 }

@@ -42,7 +42,10 @@ pub fn check(case: &Case<'_>, out: &mut Margins<'_>) {
                 Err(needs) => out.compare(&RULE, part, site, Err(needs)),
                 Ok(loads) => {
                     for load in loads {
-                        let stress = load.as_ref().map_err(Clone::clone).and_then(|load| stress(case, stage, depth, load, side));
+                        let stress = load
+                            .as_ref()
+                            .map_err(Clone::clone)
+                            .and_then(|load| stress(case, stage, depth, load, side));
                         out.compare(&RULE, part.clone(), site, stress);
                     }
                 }
@@ -51,22 +54,59 @@ pub fn check(case: &Case<'_>, out: &mut Margins<'_>) {
     }
 }
 
-fn stress(case: &Case<'_>, stage: &Stage, depth: usize, load: &Driven, side: Side) -> Result<Stress, Needs> {
+fn stress(
+    case: &Case<'_>,
+    stage: &Stage,
+    depth: usize,
+    load: &Driven,
+    side: Side,
+) -> Result<Stress, Needs> {
     if !case.has_base_current() {
-        return Err(Needs::because("the driver charges the gates of MOSFETs, and their charge is not stated"));
+        return Err(Needs::because(
+            "the driver charges the gates of MOSFETs, and their charge is not stated",
+        ));
     }
     let device = stage.device(side);
-    let (peak, rating, sharing) = three(case.peak_into(load, Mains::High), device.current.need().copied(), bank(stage, side))?;
+    let (peak, rating, sharing) = three(
+        case.peak_into(load, Mains::High),
+        device.current.need().copied(),
+        bank(stage, side),
+    )?;
     let links = case.chain(side, peak.amps)?;
     let (before, here) = both(
-        depth.checked_sub(1).and_then(|d| links.get(d)).ok_or_else(|| case.build.amplifier.driver_field.missing()),
-        links.get(depth).ok_or_else(|| case.build.amplifier.driver_field.missing()),
+        depth
+            .checked_sub(1)
+            .and_then(|d| links.get(d))
+            .ok_or_else(|| case.build.amplifier.driver_field.missing()),
+        links
+            .get(depth)
+            .ok_or_else(|| case.build.amplifier.driver_field.missing()),
     )?;
     let most = sharing.most_loaded(here.carries);
     let mut working = peak_working(&peak);
-    working.push(solved("id", "asked of this stage", "i/hFE(i/N) + VBE/Rbe", here.carries.0, "A", "definition of current gain"));
-    working.push(solved("i", "its most loaded device", "share·id/N", most.0, "A", "current sharing"));
-    working.push(stated("IC", "rated current", rating.0, "A", device.current.stated_at()));
+    working.push(solved(
+        "id",
+        "asked of this stage",
+        "i/hFE(i/N) + VBE/Rbe",
+        here.carries.0,
+        "A",
+        "definition of current gain",
+    ));
+    working.push(solved(
+        "i",
+        "its most loaded device",
+        "share·id/N",
+        most.0,
+        "A",
+        "current sharing",
+    ));
+    working.push(stated(
+        "IC",
+        "rated current",
+        rating.0,
+        "A",
+        device.current.stated_at(),
+    ));
     Ok(Stress {
         value: most.0,
         rating: rating.0,
@@ -82,8 +122,14 @@ fn stress(case: &Case<'_>, stage: &Stage, depth: usize, load: &Driven, side: Sid
         },
         working,
         related: vec![
-            Related { message: "draws the current".to_owned(), site: load.site },
-            Related { message: "its base current".to_owned(), site: before.stage.devices.site() },
+            Related {
+                message: "draws the current".to_owned(),
+                site: load.site,
+            },
+            Related {
+                message: "its base current".to_owned(),
+                site: before.stage.devices.site(),
+            },
         ],
         ..Stress::default()
     })
@@ -95,7 +141,16 @@ mod tests {
     use crate::testing::{margin, tern60};
 
     fn bench(edits: &[(&str, &str)]) -> crate::finding::Margin {
-        let mut all = vec![("loads              hall-8, bench-8", "loads              bench-8"), ("bench-8 { resistive 8 ohm ±5 % }", "bench-8 { resistive 8 ohm }")];
+        let mut all = vec![
+            (
+                "loads              hall-8, bench-8",
+                "loads              bench-8",
+            ),
+            (
+                "bench-8 { resistive 8 ohm ±5 % }",
+                "bench-8 { resistive 8 ohm }",
+            ),
+        ];
         all.extend_from_slice(edits);
         margin(&tern60(&all), "drive.driver-current", "d3")
     }
@@ -106,7 +161,11 @@ mod tests {
         // Î = 5.287030 A, 2.643515 A each: hFE = 80 - 20·ln(2.643515)/ln(5) = 67.92023
         // id = 77.84176 mA + 6.5 mA = 84.34176 mA
         let m = bench(&[]);
-        assert!((m.stress.unwrap().value - 84.341_8e-3).abs() < 1e-6, "{:?}", m.stress);
+        assert!(
+            (m.stress.unwrap().value - 84.341_8e-3).abs() < 1e-6,
+            "{:?}",
+            m.stress
+        );
         assert_eq!(m.verdict, Verdict::Ok);
     }
 
@@ -122,6 +181,9 @@ mod tests {
     #[test]
     fn a_rating_that_is_not_stated_is_unchecked() {
         let m = bench(&[("    current            4 A\n", "")]);
-        assert_eq!((m.verdict, m.needs), (Verdict::Unchecked, vec!["device d3 current".to_owned()]));
+        assert_eq!(
+            (m.verdict, m.needs),
+            (Verdict::Unchecked, vec!["device d3 current".to_owned()])
+        );
     }
 }

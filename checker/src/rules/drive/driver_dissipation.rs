@@ -47,11 +47,25 @@ pub fn check(case: &Case<'_>, out: &mut Margins<'_>) {
             }
         };
         for (load, heat) in loads.iter().zip(heats) {
-            let found = both(load.as_ref().map_err(Clone::clone), heat.as_ref().map_err(Clone::clone));
+            let found = both(
+                load.as_ref().map_err(Clone::clone),
+                heat.as_ref().map_err(Clone::clone),
+            );
             // where both sides are one declared part the hotter half stands for it
-            let halves: &[Side] = if driver.sides().len() == 1 { &Side::BOTH } else { std::slice::from_ref(side) };
+            let halves: &[Side] = if driver.sides().len() == 1 {
+                &Side::BOTH
+            } else {
+                std::slice::from_ref(side)
+            };
             for half in halves {
-                out.compare(&RULE, part.clone(), site, found.clone().and_then(|(load, heat)| stress(case, load, heat, *half)));
+                out.compare(
+                    &RULE,
+                    part.clone(),
+                    site,
+                    found
+                        .clone()
+                        .and_then(|(load, heat)| stress(case, load, heat, *half)),
+                );
             }
         }
     }
@@ -60,10 +74,22 @@ pub fn check(case: &Case<'_>, out: &mut Margins<'_>) {
 fn stress(case: &Case<'_>, load: &Driven, heat: &Heat, side: Side) -> Result<Stress, Needs> {
     let driver = case.driver()?;
     let device = driver.device(side);
-    let (found, (rated, stated_at), junction) = three(case.driver_temperatures(driver, heat, side), device.power.need().copied(), device.junction.need().copied())?;
+    let (found, (rated, stated_at), junction) = three(
+        case.driver_temperatures(driver, heat, side),
+        device.power.need().copied(),
+        device.junction.need().copied(),
+    )?;
     let (own, hot) = (found.watts, found.case);
-    let left = crate::physics::heat::derated(rated, stated_at, junction, hot).ok_or_else(|| Needs::because(format!("the power of {} is stated at its junction limit", device.owner.name)))?;
-    let sink = driver.own_sink.stated_at().unwrap_or_else(|| case.build.heatsink.site());
+    let left = crate::physics::heat::derated(rated, stated_at, junction, hot).ok_or_else(|| {
+        Needs::because(format!(
+            "the power of {} is stated at its junction limit",
+            device.owner.name
+        ))
+    })?;
+    let sink = driver
+        .own_sink
+        .stated_at()
+        .unwrap_or_else(|| case.build.heatsink.site());
     Ok(Stress {
         value: own.0,
         rating: left.0,
@@ -79,13 +105,56 @@ fn stress(case: &Case<'_>, load: &Driven, heat: &Heat, side: Side) -> Result<Str
             ..case.witness()
         },
         working: vec![
-            solved("Vm", "mean rail at the duty", "rectifier steady state", heat.rail.0, "V", "periodic solution of the rectifier"),
-            solved("P", "mean heat of one driver", "mean of i_d·v_CE", own.0, "W", "energy balance"),
-            solved("Tcase", "its case, hottest room", "Tsink + P·θcs", hot.0, "degC", "energy balance"),
-            stated("Ptot", "rated power", rated.0, "W", device.power.stated_at()),
-            solved("Pleft", "what is left of it", "Ptot·(Tj,max - Tcase)/(Tj,max - T0)", left.0, "W", "straight-line derating of the data sheet"),
+            solved(
+                "Vm",
+                "mean rail at the duty",
+                "rectifier steady state",
+                heat.rail.0,
+                "V",
+                "periodic solution of the rectifier",
+            ),
+            solved(
+                "P",
+                "mean heat of one driver",
+                "mean of i_d·v_CE",
+                own.0,
+                "W",
+                "energy balance",
+            ),
+            solved(
+                "Tcase",
+                "its case, hottest room",
+                "Tsink + P·θcs",
+                hot.0,
+                "degC",
+                "energy balance",
+            ),
+            stated(
+                "Ptot",
+                "rated power",
+                rated.0,
+                "W",
+                device.power.stated_at(),
+            ),
+            solved(
+                "Pleft",
+                "what is left of it",
+                "Ptot·(Tj,max - Tcase)/(Tj,max - T0)",
+                left.0,
+                "W",
+                "straight-line derating of the data sheet",
+            ),
         ],
-        related: vec![Related { message: "what it stands on".to_owned(), site: sink }, Related { message: "the load of the duty".to_owned(), site: load.site }],
+        related: vec![
+            Related {
+                message: "what it stands on".to_owned(),
+                site: sink,
+            },
+            Related {
+                message: "the load of the duty".to_owned(),
+                site: load.site,
+            },
+        ],
         ..Stress::default()
     })
 }
@@ -99,12 +168,23 @@ mod tests {
     fn a_standing_current_alone_is_the_rail_times_it() {
         // with the signal's part below a quarter of a watt, 2R2 across the output bases makes
         // 0.65/2.2 = 295.5 mA at Vm - VBE; Vm lies between 36 V and 41.4 V at the duty
-        let m = margin(&tern60(&[("base-emitter        100R", "base-emitter        2R2")]), "drive.driver-dissipation", "d3");
+        let m = margin(
+            &tern60(&[("base-emitter        100R", "base-emitter        2R2")]),
+            "drive.driver-dissipation",
+            "d3",
+        );
         let watts = m.stress.unwrap().value;
-        assert!(watts > 0.2955 * 35.35 && watts < 0.2955 * 40.72 + 0.5, "{watts}");
+        assert!(
+            watts > 0.2955 * 35.35 && watts < 0.2955 * 40.72 + 0.5,
+            "{watts}"
+        );
         // its case: 45 degC of air + P·(6 + 1) K/W, Ptot 30 W falling to nothing at 150 degC
         let left = 30.0 * (150.0 - (45.0 + watts * 7.0)) / 125.0;
-        assert!((m.rating.unwrap().value - left).abs() < 1e-9, "{:?} {left}", m.rating);
+        assert!(
+            (m.rating.unwrap().value - left).abs() < 1e-9,
+            "{:?} {left}",
+            m.rating
+        );
         assert_eq!(m.verdict, Verdict::Over);
     }
 
@@ -113,12 +193,23 @@ mod tests {
         // 6.5 mA standing at about 40 V is 0.26 W, the signal adds about as much
         let m = margin(&tern60(&[]), "drive.driver-dissipation", "d3");
         assert_eq!(m.verdict, Verdict::Ok);
-        assert!((0.26..1.2).contains(&m.stress.unwrap().value), "{:?}", m.stress);
+        assert!(
+            (0.26..1.2).contains(&m.stress.unwrap().value),
+            "{:?}",
+            m.stress
+        );
     }
 
     #[test]
     fn a_driver_without_mounting_is_unchecked() {
-        let m = margin(&tern60(&[("    insulator          1 K/W\n", "")]), "drive.driver-dissipation", "d3");
-        assert_eq!((m.verdict, m.needs), (Verdict::Unchecked, vec!["stage drv insulator".to_owned()]));
+        let m = margin(
+            &tern60(&[("    insulator          1 K/W\n", "")]),
+            "drive.driver-dissipation",
+            "d3",
+        );
+        assert_eq!(
+            (m.verdict, m.needs),
+            (Verdict::Unchecked, vec!["stage drv insulator".to_owned()])
+        );
     }
 }

@@ -42,7 +42,12 @@ pub fn check(case: &Case<'_>, out: &mut Margins<'_>) {
         Err(needs) => out.compare(&RULE, part, site, Err(needs)),
         Ok((gain, claims)) => {
             for claim in claims {
-                out.compare(&RULE, part.clone(), site, Ok::<_, Needs>(stress(case, gain, claim)));
+                out.compare(
+                    &RULE,
+                    part.clone(),
+                    site,
+                    Ok::<_, Needs>(stress(case, gain, claim)),
+                );
             }
         }
     }
@@ -52,16 +57,44 @@ fn stress(case: &Case<'_>, gain_db: f64, claim: &Claim) -> Stress {
     let halves = if case.build.bridged { 2.0 } else { 1.0 };
     let output = (claim.power.0 * claim.load.0).sqrt() / halves;
     let input = output / pow(10.0, gain_db / 20.0);
-    let note = if input > DOMESTIC { "more than the 2 V of a domestic source" } else { "" };
+    let note = if input > DOMESTIC {
+        "more than the 2 V of a domestic source"
+    } else {
+        ""
+    };
     Stress {
         value: input,
         rating: f64::NAN,
-        witness: Witness { amplitude_v: Some(output * std::f64::consts::SQRT_2), power_w: Some(claim.power.0), ..case.witness() },
+        witness: Witness {
+            amplitude_v: Some(output * std::f64::consts::SQRT_2),
+            power_w: Some(claim.power.0),
+            ..case.witness()
+        },
         working: vec![
             stated("P", "rated power", claim.power.0, "W", [claim.site]),
-            stated("G", "closed-loop gain", gain_db, "dB", case.build.amplifier.gain.stated_at()),
-            solved("Vout", "output of one channel, r.m.s.", "√(P·R)", output, "V", "definition of power"),
-            solved("Vin", "input, r.m.s.", "Vout/10^(G/20)", input, "V", "definition of gain"),
+            stated(
+                "G",
+                "closed-loop gain",
+                gain_db,
+                "dB",
+                case.build.amplifier.gain.stated_at(),
+            ),
+            solved(
+                "Vout",
+                "output of one channel, r.m.s.",
+                "√(P·R)",
+                output,
+                "V",
+                "definition of power",
+            ),
+            solved(
+                "Vin",
+                "input, r.m.s.",
+                "Vout/10^(G/20)",
+                input,
+                "V",
+                "definition of gain",
+            ),
         ],
         note: note.to_owned(),
         ..Stress::default()
@@ -74,14 +107,22 @@ mod tests {
     use crate::testing::{margin, tern60};
 
     fn gain(text: &str) -> crate::finding::Margin {
-        margin(&tern60(&[("gain               28 dB", text)]), "drive.input-level", "tern60 gain")
+        margin(
+            &tern60(&[("gain               28 dB", text)]),
+            "drive.input-level",
+            "tern60 gain",
+        )
     }
 
     #[test]
     fn the_claim_that_needs_most_decides() {
         // 60 W into 8 ohm is √480 = 21.9089 V, 100 W into 4 ohm only 20 V; 28 dB is 25.11886
         let m = gain("gain               28 dB");
-        assert!((m.stress.unwrap().value - 21.908_902 / 25.118_864).abs() < 1e-6, "{:?}", m.stress);
+        assert!(
+            (m.stress.unwrap().value - 21.908_902 / 25.118_864).abs() < 1e-6,
+            "{:?}",
+            m.stress
+        );
         assert!(m.note.is_empty());
     }
 
@@ -97,7 +138,14 @@ mod tests {
 
     #[test]
     fn a_gain_that_is_not_stated_is_unchecked() {
-        let m = margin(&tern60(&[("    gain               28 dB\n", "")]), "drive.input-level", "tern60 gain");
-        assert_eq!((m.verdict, m.needs), (Verdict::Unchecked, vec!["amplifier tern60 gain".to_owned()]));
+        let m = margin(
+            &tern60(&[("    gain               28 dB\n", "")]),
+            "drive.input-level",
+            "tern60 gain",
+        );
+        assert_eq!(
+            (m.verdict, m.needs),
+            (Verdict::Unchecked, vec!["amplifier tern60 gain".to_owned()])
+        );
     }
 }

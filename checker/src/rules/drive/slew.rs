@@ -38,7 +38,12 @@ pub fn check(case: &Case<'_>, out: &mut Margins<'_>) {
         return;
     }
     let Some(stage) = &amplifier.voltage_amplifier else {
-        return out.compare(&RULE, line_part(&amplifier.voltage_field), amplifier.voltage_field.site(), Err(amplifier.voltage_field.missing()));
+        return out.compare(
+            &RULE,
+            line_part(&amplifier.voltage_field),
+            amplifier.voltage_field.site(),
+            Err(amplifier.voltage_field.missing()),
+        );
     };
     if stage.tail.none {
         return;
@@ -48,7 +53,10 @@ pub fn check(case: &Case<'_>, out: &mut Margins<'_>) {
         Err(needs) => out.compare(&RULE, part, site, Err(needs)),
         Ok(loads) => {
             for load in loads {
-                let stress = load.as_ref().map_err(Clone::clone).and_then(|load| stress(case, stage, load));
+                let stress = load
+                    .as_ref()
+                    .map_err(Clone::clone)
+                    .and_then(|load| stress(case, stage, load));
                 out.compare(&RULE, part.clone(), site, stress);
             }
         }
@@ -56,10 +64,17 @@ pub fn check(case: &Case<'_>, out: &mut Margins<'_>) {
 }
 
 fn stress(case: &Case<'_>, stage: &Stage, load: &Driven) -> Result<Stress, Needs> {
-    let ((tail, farad), band, volts) = three(stage.tail.need().copied(), case.band(), case.burst(Mains::Nominal, load.nominal_seen()))?;
+    let ((tail, farad), band, volts) = three(
+        stage.tail.need().copied(),
+        case.band(),
+        case.burst(Mains::Nominal, load.nominal_seen()),
+    )?;
     let weaker = stage.output_current.get().map_or(tail, |i| tail.min(*i));
     let wrong = || Needs::because("tail current, compensation and band make no slew rate");
-    let (given, needed) = both(slew_given(weaker, farad).ok_or_else(wrong), slew_needed(band.top(), volts).ok_or_else(wrong))?;
+    let (given, needed) = both(
+        slew_given(weaker, farad).ok_or_else(wrong),
+        slew_needed(band.top(), volts).ok_or_else(wrong),
+    )?;
     Ok(Stress {
         value: given / needed,
         rating: f64::NAN,
@@ -73,11 +88,35 @@ fn stress(case: &Case<'_>, stage: &Stage, load: &Driven) -> Result<Stress, Needs
         working: vec![
             stated("Itail", "tail current", tail.0, "A", stage.tail.stated_at()),
             stated("C", "compensation", farad.0, "F", stage.tail.stated_at()),
-            solved("SRgiven", "slew rate given", "min(Itail, Ivas)/C", given.0, "V/s", "charge on a capacitor"),
-            solved("V̂", "peak output into the rated load", "Vu - drop(V̂/R)", volts.0, "V", "drop as stated"),
-            solved("SRneeded", "slew rate of a sine", "2π·f·V̂", needed.0, "V/s", "steepest point of a sine"),
+            solved(
+                "SRgiven",
+                "slew rate given",
+                "min(Itail, Ivas)/C",
+                given.0,
+                "V/s",
+                "charge on a capacitor",
+            ),
+            solved(
+                "V̂",
+                "peak output into the rated load",
+                "Vu - drop(V̂/R)",
+                volts.0,
+                "V",
+                "drop as stated",
+            ),
+            solved(
+                "SRneeded",
+                "slew rate of a sine",
+                "2π·f·V̂",
+                needed.0,
+                "V/s",
+                "steepest point of a sine",
+            ),
         ],
-        related: vec![Related { message: "the top of the band".to_owned(), site: case.build.amplifier.band.site() }],
+        related: vec![Related {
+            message: "the top of the band".to_owned(),
+            site: case.build.amplifier.band.site(),
+        }],
         ..Stress::default()
     })
 }
@@ -88,7 +127,11 @@ mod tests {
     use crate::testing::{margin, tern60};
 
     fn tail(text: &str) -> crate::finding::Margin {
-        margin(&tern60(&[("3 mA compensation 100 pF", text)]), "drive.slew", "vas tail")
+        margin(
+            &tern60(&[("3 mA compensation 100 pF", text)]),
+            "drive.slew",
+            "vas tail",
+        )
     }
 
     #[test]
@@ -110,12 +153,22 @@ mod tests {
     #[test]
     fn the_voltage_stage_limits_the_other_edge() {
         // 7 mA gives less than a tail of 10 mA: 70 V/us
-        assert!((tail("10 mA compensation 100 pF").stress.unwrap().value - 70.0 / 4.801_027).abs() < 1e-3);
+        assert!(
+            (tail("10 mA compensation 100 pF").stress.unwrap().value - 70.0 / 4.801_027).abs()
+                < 1e-3
+        );
     }
 
     #[test]
     fn a_tail_that_is_not_stated_is_unchecked() {
-        let m = margin(&tern60(&[("    tail               3 mA compensation 100 pF\n", "")]), "drive.slew", "vas tail");
-        assert_eq!((m.verdict, m.needs), (Verdict::Unchecked, vec!["stage vas tail".to_owned()]));
+        let m = margin(
+            &tern60(&[("    tail               3 mA compensation 100 pF\n", "")]),
+            "drive.slew",
+            "vas tail",
+        );
+        assert_eq!(
+            (m.verdict, m.needs),
+            (Verdict::Unchecked, vec!["stage vas tail".to_owned()])
+        );
     }
 }

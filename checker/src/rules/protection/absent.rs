@@ -30,8 +30,21 @@ pub fn check(case: &Case<'_>, out: &mut Margins<'_>) {
     match absent(case) {
         Err(needs) => out.compare(&RULE, line_part(field), field.site(), Err(needs)),
         Ok(why) => {
-            let verdict = if why.is_some() { Verdict::Over } else { Verdict::Ok };
-            out.judge(&RULE, line_part(field), field.site(), verdict, Stress { note: why.unwrap_or_default().to_owned(), ..Stress::default() });
+            let verdict = if why.is_some() {
+                Verdict::Over
+            } else {
+                Verdict::Ok
+            };
+            out.judge(
+                &RULE,
+                line_part(field),
+                field.site(),
+                verdict,
+                Stress {
+                    note: why.unwrap_or_default().to_owned(),
+                    ..Stress::default()
+                },
+            );
         }
     }
 }
@@ -39,14 +52,23 @@ pub fn check(case: &Case<'_>, out: &mut Margins<'_>) {
 /// What is missing for certain; `None` where there is protection.
 fn absent(case: &Case<'_>) -> Result<Option<&'static str>, Needs> {
     if case.build.protection.none {
-        return Ok(Some("no protection: a failed output device puts its rail on the loudspeaker"));
+        return Ok(Some(
+            "no protection: a failed output device puts its rail on the loudspeaker",
+        ));
     }
     let protection = case.protection()?;
     if protection.detector.none {
-        return Ok(Some("no d.c. detector: nothing sees a rail on the loudspeaker"));
+        return Ok(Some(
+            "no d.c. detector: nothing sees a rail on the loudspeaker",
+        ));
     }
     protection.detector.need()?;
-    let opens = [protection.relay.get().is_some(), protection.contacts.get().is_some(), protection.switch.get().is_some(), protection.crowbar.get().is_some()];
+    let opens = [
+        protection.relay.get().is_some(),
+        protection.contacts.get().is_some(),
+        protection.switch.get().is_some(),
+        protection.crowbar.get().is_some(),
+    ];
     if opens.contains(&true) {
         return Ok(None);
     }
@@ -65,22 +87,52 @@ mod tests {
 
     #[test]
     fn none_is_over_and_left_out_is_unchecked() {
-        let m = margin(&tern60(&[(LINE, "    protection         none\n")]), "protection.absent", "mono protection");
+        let m = margin(
+            &tern60(&[(LINE, "    protection         none\n")]),
+            "protection.absent",
+            "mono protection",
+        );
         assert_eq!((m.verdict, m.severity), (Verdict::Over, Severity::Error));
-        let m = margin(&tern60(&[(LINE, "")]), "protection.absent", "mono protection");
-        assert_eq!((m.verdict, m.needs), (Verdict::Unchecked, vec!["build mono protection".to_owned()]));
+        let m = margin(
+            &tern60(&[(LINE, "")]),
+            "protection.absent",
+            "mono protection",
+        );
+        assert_eq!(
+            (m.verdict, m.needs),
+            (Verdict::Unchecked, vec!["build mono protection".to_owned()])
+        );
     }
 
     #[test]
     fn a_limiter_alone_does_not_see_a_rail_on_the_loudspeaker() {
-        let kit = tern60(&[("detector           1.5 V 22k 22 uF watches output", "detector           none")]);
-        assert_eq!(margin(&kit, "protection.absent", "mono protection").verdict, Verdict::Over);
-        assert_eq!(margin(&tern60(&[]), "protection.absent", "mono protection").verdict, Verdict::Ok);
+        let kit = tern60(&[(
+            "detector           1.5 V 22k 22 uF watches output",
+            "detector           none",
+        )]);
+        assert_eq!(
+            margin(&kit, "protection.absent", "mono protection").verdict,
+            Verdict::Over
+        );
+        assert_eq!(
+            margin(&tern60(&[]), "protection.absent", "mono protection").verdict,
+            Verdict::Ok
+        );
     }
 
     #[test]
     fn a_none_can_be_waived_with_a_reason() {
-        let kit = tern60(&[(LINE, "    protection         none\n"), ("ampspec 1\n", "ampspec 1\nwaive protection.absent because \"drives a dummy load only\"\n")]);
-        assert!(margin(&kit, "protection.absent", "mono protection").waiver.is_some());
+        let kit = tern60(&[
+            (LINE, "    protection         none\n"),
+            (
+                "ampspec 1\n",
+                "ampspec 1\nwaive protection.absent because \"drives a dummy load only\"\n",
+            ),
+        ]);
+        assert!(
+            margin(&kit, "protection.absent", "mono protection")
+                .waiver
+                .is_some()
+        );
     }
 }

@@ -36,15 +36,29 @@ const TOUCHABLE: f64 = 2.0;
 
 /// One margin for the bleeder.
 pub fn check(case: &Case<'_>, out: &mut Margins<'_>) {
-    let Some((supply, _)) = case.build.supply.get() else { return };
+    let Some((supply, _)) = case.build.supply.get() else {
+        return;
+    };
     let (part, site) = (line_part(&supply.bleeder), supply.bleeder.site());
     if supply.bleeder.none {
         let note = "no bleeder: nothing that can be counted on empties the reservoirs".to_owned();
-        return out.judge(&RULE, part, site, Verdict::Unchecked, Stress { note, ..Stress::default() });
+        return out.judge(
+            &RULE,
+            part,
+            site,
+            Verdict::Unchecked,
+            Stress {
+                note,
+                ..Stress::default()
+            },
+        );
     }
     match stress(case, supply) {
         Ok(mut stress) if supply.touchable && stress.value > TOUCHABLE => {
-            stress.note = format!("terminals that can be touched must be below 60 V in 2 s, this takes {:.1} s", stress.value);
+            stress.note = format!(
+                "terminals that can be touched must be below 60 V in 2 s, this takes {:.1} s",
+                stress.value
+            );
             out.judge(&RULE, part, site, Verdict::Over, stress);
         }
         found => out.compare(&RULE, part, site, found),
@@ -52,29 +66,74 @@ pub fn check(case: &Case<'_>, out: &mut Margins<'_>) {
 }
 
 fn stress(case: &Case<'_>, supply: &Supply) -> Result<Stress, Needs> {
-    let ((resistor, across), rail, made) = three(supply.bleeder.need().copied(), case.no_load(Mains::High), case.made())?;
+    let ((resistor, across), rail, made) = three(
+        supply.bleeder.need().copied(),
+        case.no_load(Mains::High),
+        case.made(),
+    )?;
     // the slowest: greatest resistor and capacitors
     let (ohm, farad) = (resistor.ohm.high, made.reservoir[2]);
-    let bleeder = if across { Bleeder::RailToRail(ohm) } else { Bleeder::PerRail(ohm) };
+    let bleeder = if across {
+        Bleeder::RailToRail(ohm)
+    } else {
+        Bleeder::PerRail(ohm)
+    };
     let start = rail * 2.0;
-    let time = bleeder.discharge_time(farad, start, SAFE).ok_or_else(|| Needs::because(format!("bleeder and reservoir of supply {} give no time", supply.owner.name)))?;
+    let time = bleeder.discharge_time(farad, start, SAFE).ok_or_else(|| {
+        Needs::because(format!(
+            "bleeder and reservoir of supply {} give no time",
+            supply.owner.name
+        ))
+    })?;
     let mut related = case.rail_sites(None);
-    related.push(Related { message: "what it empties".to_owned(), site: supply.reservoir.site() });
+    related.push(Related {
+        message: "what it empties".to_owned(),
+        site: supply.reservoir.site(),
+    });
     Ok(Stress {
         value: time.0,
         rating: f64::NAN,
         witness: Witness {
             mains_v: case.mains_volts(Mains::High),
             rail_v: Some(rail.0),
-            tolerance: vec![(format!("{} bleeder", supply.owner.name), "high"), (format!("{} reservoir", supply.owner.name), "high")],
+            tolerance: vec![
+                (format!("{} bleeder", supply.owner.name), "high"),
+                (format!("{} reservoir", supply.owner.name), "high"),
+            ],
             channels_driven: None,
             ..case.witness()
         },
         working: vec![
-            solved("2·V0", "between the rails, high mains", "2·m·√2·Vs·(1 + ρ)", start.0, "V", "definition of regulation"),
-            stated("R", "bleeder, highest", ohm.0, "ohm", supply.bleeder.stated_at()),
-            stated("C", "reservoir of one rail, greatest", farad.0, "F", supply.reservoir.stated_at()),
-            solved("t", "to 60 V", "τ·ln(2·V0/60)", time.0, "s", "discharge of a capacitor"),
+            solved(
+                "2·V0",
+                "between the rails, high mains",
+                "2·m·√2·Vs·(1 + ρ)",
+                start.0,
+                "V",
+                "definition of regulation",
+            ),
+            stated(
+                "R",
+                "bleeder, highest",
+                ohm.0,
+                "ohm",
+                supply.bleeder.stated_at(),
+            ),
+            stated(
+                "C",
+                "reservoir of one rail, greatest",
+                farad.0,
+                "F",
+                supply.reservoir.stated_at(),
+            ),
+            solved(
+                "t",
+                "to 60 V",
+                "τ·ln(2·V0/60)",
+                time.0,
+                "s",
+                "discharge of a capacitor",
+            ),
         ],
         related,
         ..Stress::default()
@@ -89,39 +148,74 @@ mod tests {
     const LINE: &str = "bleeder            3k3 ±5 % 3 W per rail";
 
     fn bleeder(text: &str) -> crate::finding::Margin {
-        margin(&tern60(&[(LINE, text)]), "protection.bleed-down", "toroid bleeder")
+        margin(
+            &tern60(&[(LINE, text)]),
+            "protection.bleed-down",
+            "toroid bleeder",
+        )
     }
 
     #[test]
     fn greatest_resistor_and_capacitors_decide() {
         // 3k3·1.05 = 3465 ohm; 2·4700 uF·1.2 = 11.28 mF: τ = 39.0852 s; ln(93.21363/60) = 0.440557: 17.219 s
         let m = bleeder(LINE);
-        assert!((m.stress.unwrap().value - 17.219).abs() < 2e-3, "{:?}", m.stress);
+        assert!(
+            (m.stress.unwrap().value - 17.219).abs() < 2e-3,
+            "{:?}",
+            m.stress
+        );
         assert_eq!(m.verdict, Verdict::Ok);
         // rail to rail the two reservoirs are in series: half the time constant
-        let across = bleeder("bleeder            3k3 ±5 % 3 W per supply").stress.unwrap().value;
+        let across = bleeder("bleeder            3k3 ±5 % 3 W per supply")
+            .stress
+            .unwrap()
+            .value;
         assert!((across - 17.219 / 2.0).abs() < 1e-3);
     }
 
     #[test]
     fn minutes_are_thin_and_five_of_them_over() {
         // 5.21790 s for each kilohm of nominal resistance: 12k 62.6 s, 56k 292 s, 68k 355 s
-        assert_eq!(bleeder("bleeder 12k ±5 % 3 W per rail").verdict, Verdict::Thin);
-        assert_eq!(bleeder("bleeder 56k ±5 % 3 W per rail").verdict, Verdict::Thin);
-        assert_eq!(bleeder("bleeder 68k ±5 % 3 W per rail").verdict, Verdict::Over);
+        assert_eq!(
+            bleeder("bleeder 12k ±5 % 3 W per rail").verdict,
+            Verdict::Thin
+        );
+        assert_eq!(
+            bleeder("bleeder 56k ±5 % 3 W per rail").verdict,
+            Verdict::Thin
+        );
+        assert_eq!(
+            bleeder("bleeder 68k ±5 % 3 W per rail").verdict,
+            Verdict::Over
+        );
     }
 
     #[test]
     fn terminals_that_can_be_touched_have_two_seconds() {
-        assert_eq!(bleeder("bleeder            3k3 ±5 % 3 W per rail\n    terminals          touchable").verdict, Verdict::Over);
-        assert_eq!(bleeder("bleeder            330R ±5 % 20 W per rail\n    terminals          touchable").verdict, Verdict::Ok);
+        assert_eq!(
+            bleeder("bleeder            3k3 ±5 % 3 W per rail\n    terminals          touchable")
+                .verdict,
+            Verdict::Over
+        );
+        assert_eq!(
+            bleeder("bleeder            330R ±5 % 20 W per rail\n    terminals          touchable")
+                .verdict,
+            Verdict::Ok
+        );
     }
 
     #[test]
     fn no_bleeder_is_information_and_an_unstated_one_is_named() {
         let m = bleeder("bleeder            none");
         assert_eq!((m.verdict, m.needs.len()), (Verdict::Unchecked, 0));
-        let m = margin(&tern60(&[("    bleeder            3k3 ±5 % 3 W per rail\n", "")]), "protection.bleed-down", "toroid bleeder");
-        assert_eq!((m.verdict, m.needs), (Verdict::Unchecked, vec!["supply toroid bleeder".to_owned()]));
+        let m = margin(
+            &tern60(&[("    bleeder            3k3 ±5 % 3 W per rail\n", "")]),
+            "protection.bleed-down",
+            "toroid bleeder",
+        );
+        assert_eq!(
+            (m.verdict, m.needs),
+            (Verdict::Unchecked, vec!["supply toroid bleeder".to_owned()])
+        );
     }
 }

@@ -35,7 +35,9 @@ rule! {
 pub fn check(case: &Case<'_>, out: &mut Margins<'_>) {
     let Ok(loads) = case.loads() else { return };
     for load in loads.iter().flatten() {
-        let Some(joules) = load.stated.endurance.get().and_then(|e| e.0) else { continue };
+        let Some(joules) = load.stated.endurance.get().and_then(|e| e.0) else {
+            continue;
+        };
         let (part, site) = (line_part(&load.stated.endurance), blamed(case));
         match energy(case, load, joules) {
             Ok(None) => {}
@@ -49,13 +51,21 @@ pub fn check(case: &Case<'_>, out: &mut Margins<'_>) {
 }
 
 fn blamed(case: &Case<'_>) -> crate::finding::Site {
-    let detector = case.build.protection.get().and_then(|p| p.detector.stated_at());
+    let detector = case
+        .build
+        .protection
+        .get()
+        .and_then(|p| p.detector.stated_at());
     detector.unwrap_or_else(|| case.build.protection.site())
 }
 
 /// The energy, or a verdict where it has no end; `None` where nothing ends a fault: that is
 /// `protection.absent`.
-fn energy(case: &Case<'_>, load: &Driven, endurance: Joule) -> Result<Option<(Option<Verdict>, Stress)>, Needs> {
+fn energy(
+    case: &Case<'_>,
+    load: &Driven,
+    endurance: Joule,
+) -> Result<Option<(Option<Verdict>, Stress)>, Needs> {
     let rail = case.unsagged(Mains::High)?;
     let (fault, off) = both(case.fault(load, rail), case.off(Mains::High))?;
     let (time, by): (Option<Second>, _) = match off {
@@ -67,15 +77,59 @@ fn energy(case: &Case<'_>, load: &Driven, endurance: Joule) -> Result<Option<(Op
     };
     let mut stress = Stress {
         rating: endurance.0,
-        witness: Witness { mains_v: case.mains_volts(Mains::High), load: Some(load.name.clone()), rail_v: Some(rail.0), device_a: Some(fault.model.amps().0), power_w: Some(fault.model.coil_watts().0), ..case.witness() },
+        witness: Witness {
+            mains_v: case.mains_volts(Mains::High),
+            load: Some(load.name.clone()),
+            rail_v: Some(rail.0),
+            device_a: Some(fault.model.amps().0),
+            power_w: Some(fault.model.coil_watts().0),
+            ..case.witness()
+        },
         working: vec![
-            solved("Vu", "unsagged rail, high mains", "V0 - Vd", rail.0, "V", "definition of the unsagged rail"),
-            solved("Re", "cold coil", "Re·(1 + 0.0039·(Tmin - 20))", fault.coil.0, "ohm", "temperature coefficient of copper"),
-            solved("I", "fault current", "Vu/(Re + RE/N)", fault.model.amps().0, "A", "Ohm's law"),
-            solved("P", "into the coil", "I²·Re", fault.model.coil_watts().0, "W", "Ohm's law"),
-            stated("Emax", "endurance", endurance.0, "J", load.stated.endurance.stated_at()),
+            solved(
+                "Vu",
+                "unsagged rail, high mains",
+                "V0 - Vd",
+                rail.0,
+                "V",
+                "definition of the unsagged rail",
+            ),
+            solved(
+                "Re",
+                "cold coil",
+                "Re·(1 + 0.0039·(Tmin - 20))",
+                fault.coil.0,
+                "ohm",
+                "temperature coefficient of copper",
+            ),
+            solved(
+                "I",
+                "fault current",
+                "Vu/(Re + RE/N)",
+                fault.model.amps().0,
+                "A",
+                "Ohm's law",
+            ),
+            solved(
+                "P",
+                "into the coil",
+                "I²·Re",
+                fault.model.coil_watts().0,
+                "W",
+                "Ohm's law",
+            ),
+            stated(
+                "Emax",
+                "endurance",
+                endurance.0,
+                "J",
+                load.stated.endurance.stated_at(),
+            ),
         ],
-        related: vec![Related { message: "what the coil stands".to_owned(), site: load.stated.endurance.site() }],
+        related: vec![Related {
+            message: "what the coil stands".to_owned(),
+            site: load.stated.endurance.site(),
+        }],
         ..Stress::default()
     };
     let Some((time, joules)) = time.and_then(|t| Some((t, fault.model.coil_joules(t)?))) else {
@@ -84,7 +138,14 @@ fn energy(case: &Case<'_>, load: &Driven, endurance: Joule) -> Result<Option<(Op
     };
     stress.value = joules.0;
     stress.working.push(solved("t", by, "", time.0, "s", ""));
-    stress.working.push(solved("E", "energy into the coil", "P·t", joules.0, "J", "definition of energy"));
+    stress.working.push(solved(
+        "E",
+        "energy into the coil",
+        "P·t",
+        joules.0,
+        "J",
+        "definition of energy",
+    ));
     Ok(Some((None, stress)))
 }
 
@@ -98,15 +159,26 @@ mod tests {
         // Vu(hi) = 45.60682 V; Re at 10 degC = 5.9·(1 - 0.039) = 5.6699 ohm, RE/N = 0.22·0.95/2 = 0.1045
         // I = 7.898105 A, P = 353.6861 W; t = -0.484·ln(1 - 1.5/45.60682) + 0.012 = 28.18638 ms
         // E = 9.96913 J
-        let m = margin(&tern60(&[]), "protection.dc-fault-energy", "hall-8 endurance");
-        assert!((m.stress.unwrap().value - 9.969_1).abs() < 2e-3, "{:?}", m.stress);
+        let m = margin(
+            &tern60(&[]),
+            "protection.dc-fault-energy",
+            "hall-8 endurance",
+        );
+        assert!(
+            (m.stress.unwrap().value - 9.969_1).abs() < 2e-3,
+            "{:?}",
+            m.stress
+        );
         assert_eq!(m.verdict, Verdict::Ok);
     }
 
     #[test]
     fn a_fuse_below_twice_its_rating_promises_nothing() {
         // 7.9 A through 5 A is 1.58 times
-        let kit = tern60(&[("detector           1.5 V 22k 22 uF watches output", "detector           none")]);
+        let kit = tern60(&[(
+            "detector           1.5 V 22k 22 uF watches output",
+            "detector           none",
+        )]);
         let m = margin(&kit, "protection.dc-fault-energy", "hall-8 endurance");
         assert_eq!(m.verdict, Verdict::Over);
         assert!(m.note.contains("a fuse alone"));
@@ -115,6 +187,11 @@ mod tests {
     #[test]
     fn a_load_without_endurance_is_left_to_the_time() {
         let kit = tern60(&[("    endurance          60 J\n", "")]);
-        assert!(report(&kit).builds[0].margins.iter().all(|m| m.rule != "protection.dc-fault-energy"));
+        assert!(
+            report(&kit).builds[0]
+                .margins
+                .iter()
+                .all(|m| m.rule != "protection.dc-fault-energy")
+        );
     }
 }

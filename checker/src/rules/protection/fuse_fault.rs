@@ -52,31 +52,76 @@ type Judged = (Part, Site, Option<Verdict>, Stress);
 fn stress(case: &Case<'_>, load: &Driven) -> Result<Option<Judged>, Needs> {
     let fault = case.fault(load, case.unsagged(Mains::Nominal)?)?;
     let amps = fault.model.amps();
-    let Some(alone) = case.fuse_alone(amps)? else { return Ok(None) };
+    let Some(alone) = case.fuse_alone(amps)? else {
+        return Ok(None);
+    };
     let name = case.supply()?.owner.name.clone();
-    let part = Part { name: format!("{name} fuse {}", alone.fuse.place), block: name, key: "fuse", ..Part::default() };
+    let part = Part {
+        name: format!("{name} fuse {}", alone.fuse.place),
+        block: name,
+        key: "fuse",
+        ..Part::default()
+    };
     let multiple = amps / alone.fuse.rating;
     let mut stress = Stress {
         rating: f64::NAN,
-        witness: Witness { mains_v: case.mains_volts(Mains::Nominal), load: Some(load.name.clone()), rail_v: Some(fault.rail.0), device_a: Some(amps.0), ..case.witness() },
+        witness: Witness {
+            mains_v: case.mains_volts(Mains::Nominal),
+            load: Some(load.name.clone()),
+            rail_v: Some(fault.rail.0),
+            device_a: Some(amps.0),
+            ..case.witness()
+        },
         working: vec![
-            solved("Vu", "unsagged rail", "V0 - Vd", fault.rail.0, "V", "definition of the unsagged rail"),
-            solved("I", "fault current", "Vu/(Re + RE/N)", amps.0, "A", "Ohm's law"),
-            stated("In", "rating of the fuse", alone.fuse.rating.0, "A", [alone.fuse.site]),
+            solved(
+                "Vu",
+                "unsagged rail",
+                "V0 - Vd",
+                fault.rail.0,
+                "V",
+                "definition of the unsagged rail",
+            ),
+            solved(
+                "I",
+                "fault current",
+                "Vu/(Re + RE/N)",
+                amps.0,
+                "A",
+                "Ohm's law",
+            ),
+            stated(
+                "In",
+                "rating of the fuse",
+                alone.fuse.rating.0,
+                "A",
+                [alone.fuse.site],
+            ),
             solved("I/In", "times its rating", "", multiple, "1", ""),
         ],
-        related: vec![Related { message: "the load of the fault".to_owned(), site: load.site }],
+        related: vec![Related {
+            message: "the load of the fault".to_owned(),
+            site: load.site,
+        }],
         ..Stress::default()
     };
     let verdict = match alone.melted {
         Some(time) => {
             stress.value = time.0;
-            stress.working.push(solved("t", "melted at the latest", "next gate below I/In", time.0, "s", "IEC 60127-2"));
-            stress.note = "a miniature fuse may not even break the arc of direct current".to_owned();
+            stress.working.push(solved(
+                "t",
+                "melted at the latest",
+                "next gate below I/In",
+                time.0,
+                "s",
+                "IEC 60127-2",
+            ));
+            stress.note =
+                "a miniature fuse may not even break the arc of direct current".to_owned();
             None
         }
         None => {
-            stress.note = format!("at {multiple:.2} times its rating nothing is promised: it may never melt");
+            stress.note =
+                format!("at {multiple:.2} times its rating nothing is promised: it may never melt");
             Some(Verdict::Over)
         }
     };
@@ -89,7 +134,17 @@ mod tests {
     use crate::testing::{margin, report, tern60};
 
     fn fuse(rating: &str) -> crate::finding::Margin {
-        let kit = tern60(&[("detector           1.5 V 22k 22 uF watches output", "detector           none"), ("fuse rail          5 A fast", rating), ("loads              hall-8, bench-8", "loads              hall-8")]);
+        let kit = tern60(&[
+            (
+                "detector           1.5 V 22k 22 uF watches output",
+                "detector           none",
+            ),
+            ("fuse rail          5 A fast", rating),
+            (
+                "loads              hall-8, bench-8",
+                "loads              hall-8",
+            ),
+        ]);
         margin(&kit, "protection.fuse-fault", "toroid fuse rail")
     }
 
@@ -102,12 +157,19 @@ mod tests {
         assert!((m.stress.unwrap().value - 2.0).abs() < 1e-12);
         // 14.3 times 0.5 A: 20 ms at 10 times, less above: 20·(10/14.33)^2 = 9.74 ms
         let m = fuse("fuse rail          500 mA fast");
-        assert!((m.stress.unwrap().value - 0.02 * 100.0 / (7.164_353_f64 / 0.5).powi(2)).abs() < 1e-6);
+        assert!(
+            (m.stress.unwrap().value - 0.02 * 100.0 / (7.164_353_f64 / 0.5).powi(2)).abs() < 1e-6
+        );
         assert_eq!(m.verdict, Verdict::Ok);
     }
 
     #[test]
     fn a_detector_leaves_the_fuse_out() {
-        assert!(report(&tern60(&[])).builds[0].margins.iter().all(|m| m.rule != "protection.fuse-fault"));
+        assert!(
+            report(&tern60(&[])).builds[0]
+                .margins
+                .iter()
+                .all(|m| m.rule != "protection.fuse-fault")
+        );
     }
 }

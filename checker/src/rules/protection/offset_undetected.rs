@@ -30,8 +30,13 @@ rule! {
 pub fn check(case: &Case<'_>, out: &mut Margins<'_>) {
     let Ok(loads) = case.loads() else { return };
     for load in loads.iter().flatten() {
-        let Some((_, watts)) = load.stated.endurance.get() else { continue };
-        let (part, site) = (line_part(&load.stated.endurance), load.stated.endurance.site());
+        let Some((_, watts)) = load.stated.endurance.get() else {
+            continue;
+        };
+        let (part, site) = (
+            line_part(&load.stated.endurance),
+            load.stated.endurance.site(),
+        );
         match (undetected(case, load), watts) {
             (Ok(None), _) => {}
             (Ok(Some(mut stress)), Some(watts)) => {
@@ -48,20 +53,51 @@ pub fn check(case: &Case<'_>, out: &mut Margins<'_>) {
 }
 
 fn undetected(case: &Case<'_>, load: &Driven) -> Result<Option<Stress>, Needs> {
-    let Some((protection, detector)) = case.detector()? else { return Ok(None) };
+    let Some((protection, detector)) = case.detector()? else {
+        return Ok(None);
+    };
     let threshold = detector.above.max(detector.below);
     let coil = case.coil(load)?;
-    let watts = detector_model(protection, detector, threshold)?.undetected(coil).ok_or_else(|| Needs::because(format!("load {} has no d.c. resistance", load.name)))?;
+    let watts = detector_model(protection, detector, threshold)?
+        .undetected(coil)
+        .ok_or_else(|| Needs::because(format!("load {} has no d.c. resistance", load.name)))?;
     Ok(Some(Stress {
         value: watts.0,
         rating: f64::NAN,
-        witness: Witness { load: Some(load.name.clone()), power_w: Some(watts.0), ..case.witness() },
+        witness: Witness {
+            load: Some(load.name.clone()),
+            power_w: Some(watts.0),
+            ..case.witness()
+        },
         working: vec![
-            stated("Vth", "threshold, the greater", threshold.0, "V", protection.detector.stated_at()),
-            solved("Re", "cold coil", "Re·(1 + 0.0039·(Tmin - 20))", coil.0, "ohm", "temperature coefficient of copper"),
-            solved("P", "stays in the coil", "Vth²/Re", watts.0, "W", "Ohm's law"),
+            stated(
+                "Vth",
+                "threshold, the greater",
+                threshold.0,
+                "V",
+                protection.detector.stated_at(),
+            ),
+            solved(
+                "Re",
+                "cold coil",
+                "Re·(1 + 0.0039·(Tmin - 20))",
+                coil.0,
+                "ohm",
+                "temperature coefficient of copper",
+            ),
+            solved(
+                "P",
+                "stays in the coil",
+                "Vth²/Re",
+                watts.0,
+                "W",
+                "Ohm's law",
+            ),
         ],
-        related: vec![Related { message: "the threshold".to_owned(), site: protection.detector.site() }],
+        related: vec![Related {
+            message: "the threshold".to_owned(),
+            site: protection.detector.site(),
+        }],
         ..Stress::default()
     }))
 }
@@ -74,7 +110,13 @@ mod tests {
     #[test]
     fn the_threshold_in_the_cold_coil() {
         // 1.5²/5.6699 = 0.396832 W
-        let with = |text: &str| margin(&tern60(&[("endurance          60 J", text)]), "protection.offset-undetected", "hall-8 endurance");
+        let with = |text: &str| {
+            margin(
+                &tern60(&[("endurance          60 J", text)]),
+                "protection.offset-undetected",
+                "hall-8 endurance",
+            )
+        };
         let m = with("endurance          0.4 W");
         assert!((m.stress.unwrap().value - 0.396_832).abs() < 1e-6);
         assert_eq!(m.verdict, Verdict::Ok);
