@@ -378,6 +378,10 @@ impl Lowering<'_> {
                 let (select, used) = self.selector(found, selector, key, tokens)?;
                 statement.select = Some(select);
                 rest = tokens.get(used..).unwrap_or(&[]);
+                if groups.len() == 1 && matches!(rest, [only] if only.text(self.text) == "none") {
+                    statement.none = true;
+                    return Some(statement);
+                }
             }
             if let Some(group) = self.group(found, shape, rest, key) {
                 statement.groups.push(group);

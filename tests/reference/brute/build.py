@@ -182,7 +182,7 @@ def generate(seed, index, folder):
     of_no_load = bool(rng.random() < 0.3)
     rho = reg / (1 - reg) if of_no_load else reg
     peak_watts = (vs * 1.3) ** 2 / 16
-    va = tidy(max(b["per_supply"] * peak_watts * rng.uniform(1.5, 3.5), 100), 2)
+    va = tidy(max(b["per_supply"] * peak_watts * rng.uniform(1.5, 4) * (1.8 if b["bridged"] else 1), 100), 2)
     bridges = int(rng.integers(1, 3))
     diode = tidy(rng.uniform(0.7, 1.1), 2)
     cap_n = int(rng.integers(1, 4))
@@ -267,7 +267,7 @@ def generate(seed, index, folder):
             continue
         half = ohms / 2 if b["bridged"] else ohms
         lost = float(b["drop"][-1][0])
-        volts = max(rail - lost - 1, 5) * rng.uniform(0.78, 0.95)
+        volts = max(rail - lost - 1, 5) * rng.uniform(0.7, 0.9) * (0.8 if b["bridged"] else 1)
         b["rated"].append((tidy((volts * (2 if b["bridged"] else 1)) ** 2 / 2 / ohms, 3), ohms))
 
     # Heat.

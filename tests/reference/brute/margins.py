@@ -285,10 +285,12 @@ def means(case, worst):
             hours = s["life"] * 2 ** ((s["life_at"] - max(core, 40.0)) / 10)
             worst.note("thermal.reservoir-life", "psu reservoir", hours, 2000.0, 100 * 10_000 / hours)
         peak = case.duty_amplitude(load) / case.resistance(load) / case.pairs
-        share = stage_.share_one(peak / math.pi, case.stage)
-        square = float(np.mean(np.maximum(peak * share * np.sin(TURN), 0) ** 2))
-        for ohms in (case.re, case.re * (1 + b["out"]["re_tol"][0])):
-            worst.below("current.emitter-mean", "out emitter", (square + case.idle**2) * ohms, b["out"]["re_watts"], 0.5)
+        # The hogging device's own resistor at either end of its tolerance, and as marked.
+        for off in (-b["out"]["re_low"], 0.0, b["out"]["re_tol"][0]):
+            corner = dict(case.stage, re_low=-off)
+            signal = float(np.mean(np.maximum(peak * stage_.share_one(peak / math.pi, corner) * np.sin(TURN), 0) ** 2))
+            rest = (case.idle * stage_.share_one(case.idle, corner)) ** 2
+            worst.below("current.emitter-mean", "out emitter", (signal + rest) * case.re * (1 + off), b["out"]["re_watts"], 0.5)
     hot = 1 - 0.005 * (case.hottest - 25)
     for claim, ohms in b["rated"]:
         half = case.half(ohms)
@@ -338,9 +340,10 @@ def junction_peaks(case, worst):
             mean = float(np.mean(each))
             hog = stage_.share_one(mean, case.stage)
             power = np.maximum((rail - v - each * case.re) * each, 0) * hog
+            rest = rail * case.idle * stage_.share_one(case.idle, case.stage)
             for d in (out["up"], out["down"]):
                 # The idle current is added whole, as it is to the mean heat.
-                rise = heat.foster_peak(d["foster"], power, 1 / low) + rail * case.idle * sum(r for r, _ in d["foster"])
+                rise = heat.foster_peak(d["foster"], power, 1 / low) + rest * sum(r for r, _ in d["foster"])
                 tj = case.hottest_case + rise
                 worst.note("thermal.junction-peak", d["name"], tj, d["tj"], case.ambient_used(tj, d["tj"]), rise=rise)
 
@@ -385,13 +388,13 @@ def drive(case, worst):
         worst.below("drive.driver-current", "d1", float(case.driver_current(amps)), drv["up"]["ic"], 0.8)
         amps = case.burst("volts", least) / least
         carried = float(case.driver_current(amps))
-        base = carried / float(gain_at(drv["up"]["hfe"], carried)) + standing(drv)
+        base = carried / float(gain_at(drv["up"]["hfe"], carried))
         worst.below("drive.output-gain-droop", "vas output-current", base, vas["current"] - standing(drv), 0.8)
         need = 2 * math.pi * b["band"][1] * case.burst("volts", case.resistance(load))
         has = min(vas["tail"], vas["current"]) / vas["comp"]
         worst.note("drive.slew", "vas tail", has / need, 1.0, 100 * 1.2 * need / has)
     n = b["net"]
-    top = max(case.burst("volts", float(abs(z(b["band"][1])))) for load in b["loads"] for z in case.sides(load))
+    top = case.unsagged("volts") - float(stage_.drop_at(b["drop"], 0.0))
     x = 1 / (2 * math.pi * b["band"][1] * n["c"])
     watts = top**2 / 2 * n["r"] / (n["r"] ** 2 + x**2)
     worst.below("protection.zobel", "net zobel", watts, n["watts"], 0.6)
@@ -404,9 +407,9 @@ def protection(case, worst):
     got = solve_ivp(lambda _t, y: [(rail - y[0]) / tau], (0, tau * 3), [0.0], events=_reach(g["vth"]), rtol=1e-12, atol=1e-13, max_step=tau / 200)
     rest = float(got.t_events[0][0])
     worst.note("protection.dc-fault-time", "guard detector", rest + g["release"], 0.2, 100 * (rest + g["release"]) / 0.05)
-    top = max(case.burst("high", abs(z(np.array([b["band"][0]]))[0])) for load in b["loads"] for z in case.sides(load))
-    swing = detector_swing(top, b["band"][0], tau)
-    worst.note("protection.dc-fault-false-trip", "guard detector", swing, g["vth"], 100 * swing / g["vth"])
+    top = case.unsagged("high") - float(stage_.drop_at(b["drop"], 0.0))
+    hertz = brentq(lambda f: detector_swing(top, f, tau) - g["vth"], 0.02 / tau, 20 * top / g["vth"] / tau, xtol=1e-12, rtol=1e-12)
+    worst.note("protection.dc-fault-false-trip", "guard detector", hertz, 2 * b["band"][0], 100 * hertz / b["band"][0])
     bleed_down(case, worst)
     worst.note("supply.core-flux", "t1", case.mains["high"] / case.mains["tap"] * 50 / case.mains["hertz"], 1.12, 100 * case.mains["high"] / case.mains["tap"] * 50 / case.mains["hertz"] / 1.1)
 
@@ -505,7 +508,7 @@ def search(function, band, knots=(), flat=False, turn=np.pi):
     got = np.where(np.isnan(got), -np.inf, got)
     order = np.argsort(got.max(axis=(1, 2)))[::-1]
     boxes = []
-    for k in order[:3]:
+    for k in order[:5]:
         j, m = np.unravel_index(int(np.argmax(got[k])), got.shape[1:])
         if flat:
             span, lower, upper = 0.0, middle, middle
