@@ -45,6 +45,8 @@ class Case:
         # A tolerance that is not stated is zero, but a reservoir's is then 20 % either way.
         up, down = s["cap_tol"] if any(s["cap_tol"]) else (0.2, 0.2)
         self.cap_corners = [1 - down, 1.0, 1 + up]
+        ends = sorted({1.0, 1 - out["re_low"], 1 + out["re_tol"][0]})
+        self.heat_corners = [(cap, factor) for cap in self.cap_corners for factor in ends]
 
     def rail(self, level, cap=1.0):
         """The rail at `low`, `volts` (nominal) or `high` mains, with a reservoir scaled by `cap`."""
@@ -160,14 +162,14 @@ class Case:
         out, drv = self.b["out"], self.b["drv"]
         for load in self.b["loads"]:
             ohms = self.resistance(load)
-            for cap in self.cap_corners:
-                for factor in {1.0, 1 - out["re_low"], 1 + out["re_tol"][0]}:
-                    for bank, mean_amps, rail, level in self.heat_at(load, cap, self.re * factor):
-                        driver = self.worst_driver_heat(rail, level, ohms)
-                        on_sink = 0.0 if drv["own"] or math.isnan(driver) else 2 * driver
-                        sink = self.sink(2 * bank + on_sink)
-                        watts = bank / self.pairs * stage_.share_one(mean_amps, self.stage)
-                        found.append(dict(load=load["name"], sink=sink, watts=watts, bank=bank, driver=driver, case=self.case_temperature(sink, watts)))
+            for cap, factor in self.heat_corners:
+                for bank, mean_amps, rail, level in self.heat_at(load, cap, self.re * factor):
+                    driver = self.worst_driver_heat(rail, level, ohms)
+                    on_sink = 0.0 if drv["own"] or math.isnan(driver) else 2 * driver
+                    sink = self.sink(2 * bank + on_sink)
+                    watts = bank / self.pairs * stage_.share_one(mean_amps, self.stage)
+                    case = self.case_temperature(sink, watts)
+                    found.append(dict(load=load["name"], sink=sink, watts=watts, bank=bank, driver=driver, case=case))
         return found
 
     @property
@@ -237,7 +239,8 @@ def clip(case, ohms, cap):
     def headroom(volts):
         amps = volts / ohms
         mean = case.drawn(amps)
-        trough = supply_.steady(rail, mean).trough - rail.esr * (case.share_channels * amps - mean)
+        # The halves of a bridge draw on a rail in turn.
+        trough = supply_.steady(rail, mean).trough - rail.esr * (case.share_channels / case.halves * amps - mean)
         return float(np.min(trough - volts * sine - stage_.drop_at(case.b["drop"], amps * sine)))
 
     high = case.burst("volts", ohms)
@@ -353,7 +356,7 @@ def idle_sink(case):
     drv = case.b["drv"]
     found = []
     share = stage_.share_one(case.idle, case.stage)
-    for cap in case.cap_corners:
+    for cap in sorted({cap for cap, _ in case.heat_corners}):
         rail = supply_.steady(case.rail("high", cap), case.drawn(0.0)).mean
         on_sink = 0.0 if drv["own"] else 2 * case.driver_heat(rail, 0.0, 8.0)
         found.append((case.sink(2 * rail * case.pairs * case.idle + on_sink), rail * case.idle * share, share))
@@ -626,7 +629,7 @@ def switching_on(builds):
                 unsagged = case.unsagged(level)
                 full = one["volts"] / unsagged * 100
                 w.note("supply.soft-start-timing", "psu soft-start", full, 40.0, 100 * 80 / max(full, 1e-9), level=level)
-            if level == "high" and not drawn:
+            if level == "high":
                 joules = s["soft"] * (2 * turns) ** 2 * one["before"]
                 w.note("supply.inrush-resistor-energy", "psu soft-start", joules, 250.0 * 10 / 10, 100 * joules / (0.8 * 250))
                 peak = max(one["early"], one["late"])

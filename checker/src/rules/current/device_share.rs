@@ -38,7 +38,12 @@ pub fn check(case: &Case<'_>, out: &mut Margins<'_>) {
         return;
     }
     for side in stage.sides() {
-        out.compare(&RULE, case.device_part(stage, *side), stage.emitter.site(), stress(case, *side));
+        out.compare(
+            &RULE,
+            case.device_part(stage, *side),
+            stage.emitter.site(),
+            stress(case, *side),
+        );
     }
 }
 
@@ -62,20 +67,72 @@ fn stress(case: &Case<'_>, side: Side) -> Result<Stress, Needs> {
     let bank = bench.bank(side);
     let share = bank.share(peak);
     let mut working = vec![
-        solved("Î", "peak current of the bank", "V(burst)/|Z|min", peak.0, "A", "Ohm's law"),
-        stated("N", "devices of one polarity", f64::from(bank.devices()), "1", stage.pairs.stated_at()),
-        stated("RE", "emitter resistor, nominal", bank.emitter().0, "ohm", stage.emitter.stated_at()),
-        solved("I1", "through the most loaded", "", bank.most_loaded(peak).0, "A", "equal base-emitter loops"),
-        solved("I2", "through each other", "", bank.least_loaded(peak).0, "A", "equal base-emitter loops"),
+        solved(
+            "Î",
+            "peak current of the bank",
+            "V(burst)/|Z|min",
+            peak.0,
+            "A",
+            "Ohm's law",
+        ),
+        stated(
+            "N",
+            "devices of one polarity",
+            f64::from(bank.devices()),
+            "1",
+            stage.pairs.stated_at(),
+        ),
+        stated(
+            "RE",
+            "emitter resistor, nominal",
+            bank.emitter().0,
+            "ohm",
+            stage.emitter.stated_at(),
+        ),
+        solved(
+            "I1",
+            "through the most loaded",
+            "",
+            bank.most_loaded(peak).0,
+            "A",
+            "equal base-emitter loops",
+        ),
+        solved(
+            "I2",
+            "through each other",
+            "",
+            bank.least_loaded(peak).0,
+            "A",
+            "equal base-emitter loops",
+        ),
         solved("share", "of the most loaded", "I1·N/Î", share, "1", ""),
     ];
     if let Ok(idle) = case.idle() {
-        working.push(solved("share(idle)", "at the idle current, for information", "I1·N/I", bank.share(idle * f64::from(bank.devices())), "1", "equal base-emitter loops"));
+        working.push(solved(
+            "share(idle)",
+            "at the idle current, for information",
+            "I1·N/I",
+            bank.share(idle * f64::from(bank.devices())),
+            "1",
+            "equal base-emitter loops",
+        ));
     }
     let (spread, _) = both(stage.vbe_spread.need().copied(), Ok(()))?;
-    working.push(stated("ΔVBE", "spread between the devices", spread.0, "V", stage.vbe_spread.stated_at()));
-    let mut related = vec![Related { message: "draws the peak".to_owned(), site: load.site }];
-    related.extend(stage.vbe_spread.stated_at().map(|site| Related { message: "spread between the devices".to_owned(), site }));
+    working.push(stated(
+        "ΔVBE",
+        "spread between the devices",
+        spread.0,
+        "V",
+        stage.vbe_spread.stated_at(),
+    ));
+    let mut related = vec![Related {
+        message: "draws the peak".to_owned(),
+        site: load.site,
+    }];
+    related.extend(stage.vbe_spread.stated_at().map(|site| Related {
+        message: "spread between the devices".to_owned(),
+        site,
+    }));
     Ok(Stress {
         value: share,
         rating: f64::NAN,
@@ -105,12 +162,31 @@ mod tests {
     /// 2·3.0079/4.0079 = 1.501: over; at 13 mV 2·1.6584/2.6584 = 1.2477: ok. Hand calculation.
     #[test]
     fn without_resistors_the_junctions_decide() {
-        let with = |spread: &str| tern60(&[("emitter            0R22 ±5 % 5 W pulse 20 A ref R21-R24 part \"WW5-0R22J\"", "emitter            none"), ("50 mA per device, 11 mV across emitter", "50 mA per device"), ("vbe-spread         20 mV", spread)]);
+        let with = |spread: &str| {
+            tern60(&[
+                (
+                    "emitter            0R22 ±5 % 5 W pulse 20 A ref R21-R24 part \"WW5-0R22J\"",
+                    "emitter            none",
+                ),
+                ("50 mA per device, 11 mV across emitter", "50 mA per device"),
+                ("vbe-spread         20 mV", spread),
+            ])
+        };
         let m = margin(&with("vbe-spread         20 mV"), RULE.name, "n16");
-        assert!((m.stress.unwrap().value - 1.3706).abs() < 5e-4, "{:?}", m.stress);
+        assert!(
+            (m.stress.unwrap().value - 1.3706).abs() < 5e-4,
+            "{:?}",
+            m.stress
+        );
         assert_eq!(m.verdict, Thin);
-        assert_eq!(verdict(&with("vbe-spread         28.3 mV"), RULE.name, "n16"), Over);
-        assert_eq!(verdict(&with("vbe-spread         13 mV"), RULE.name, "n16"), Ok);
+        assert_eq!(
+            verdict(&with("vbe-spread         28.3 mV"), RULE.name, "n16"),
+            Over
+        );
+        assert_eq!(
+            verdict(&with("vbe-spread         13 mV"), RULE.name, "n16"),
+            Ok
+        );
     }
 
     #[test]
@@ -121,7 +197,20 @@ mod tests {
 
     #[test]
     fn an_unstated_resistor_is_named() {
-        let m = margin(&tern60(&[("emitter            0R22 ±5 % 5 W pulse 20 A ref R21-R24 part \"WW5-0R22J\"", ""), ("50 mA per device, 11 mV across emitter", "50 mA per device")]), RULE.name, "n16");
-        assert_eq!((m.verdict, m.needs.as_slice()), (Unchecked, &["stage out emitter".to_owned()][..]));
+        let m = margin(
+            &tern60(&[
+                (
+                    "emitter            0R22 ±5 % 5 W pulse 20 A ref R21-R24 part \"WW5-0R22J\"",
+                    "",
+                ),
+                ("50 mA per device, 11 mV across emitter", "50 mA per device"),
+            ]),
+            RULE.name,
+            "n16",
+        );
+        assert_eq!(
+            (m.verdict, m.needs.as_slice()),
+            (Unchecked, &["stage out emitter".to_owned()][..])
+        );
     }
 }
