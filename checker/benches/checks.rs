@@ -1,5 +1,11 @@
 //! Speed of parsing, solving and checking. Compare within one run: absolute times drift with the machine.
 
+#![allow(
+    clippy::expect_used,
+    missing_docs,
+    reason = "a benchmark that cannot run should stop"
+)]
+
 use std::hint::black_box;
 use std::path::{Path, PathBuf};
 use std::process::Command;

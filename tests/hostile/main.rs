@@ -1,5 +1,11 @@
 //! Any bytes as a spec: no panic, no hang, and positions that lie inside the text.
 
+#![allow(
+    clippy::unwrap_used,
+    clippy::expect_used,
+    reason = "helpers of tests, outside a test function"
+)]
+
 use std::path::{Path, PathBuf};
 use std::sync::Arc;
 

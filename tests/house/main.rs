@@ -1,5 +1,11 @@
 //! The repository tests itself: imports flow one way, documents name what exists, licences are known.
 
+#![allow(
+    clippy::unwrap_used,
+    clippy::expect_used,
+    reason = "helpers of tests, outside a test function"
+)]
+
 use std::collections::BTreeSet;
 use std::path::{Path, PathBuf};
 use std::process::Command;

@@ -1,5 +1,11 @@
 //! Generated pages are as the code says. `UPDATE_PAGES=1 cargo test --test pages` writes them anew.
 
+#![allow(
+    clippy::unwrap_used,
+    clippy::expect_used,
+    reason = "helpers of tests, outside a test function"
+)]
+
 use std::path::Path;
 
 use derate::render::{explain, json, language};

@@ -1,5 +1,11 @@
 //! Every command that the README shows prints what the README shows.
 
+#![allow(
+    clippy::unwrap_used,
+    clippy::expect_used,
+    reason = "helpers of tests, outside a test function"
+)]
+
 use std::path::{Path, PathBuf};
 
 use assert_cmd::Command;

@@ -1,5 +1,11 @@
 //! Missing data is unchecked, never a pass: every single statement of the demo kits is taken away in turn.
 
+#![allow(
+    clippy::unwrap_used,
+    clippy::expect_used,
+    reason = "helpers of tests, outside a test function"
+)]
+
 use std::collections::BTreeMap;
 use std::path::{Path, PathBuf};
 use std::sync::Arc;

@@ -36,13 +36,11 @@ impl Notes<'_, '_> {
         &mut self,
         name: &'static str,
         of: &str,
-        mains: Mains,
-        drive: &'static str,
-        value: f64,
-        unit: &'static str,
+        (mains, drive): (Mains, &'static str),
+        value: Measure,
         site: Site,
     ) {
-        if !value.is_finite() {
+        if !value.value.is_finite() {
             return;
         }
         let of = match (of.is_empty(), self.region.is_empty()) {
@@ -60,7 +58,7 @@ impl Notes<'_, '_> {
             name,
             of,
             corner,
-            value: Measure::new(value, unit),
+            value,
             site,
         });
     }
@@ -73,11 +71,23 @@ impl Notes<'_, '_> {
         };
         for mains in [Mains::Low, Mains::Nominal, Mains::High] {
             if let Ok(volts) = case.unsagged(mains) {
-                self.add("rail-idle", "", mains, "idle", volts.0, "V", site);
+                self.add(
+                    "rail-idle",
+                    "",
+                    (mains, "idle"),
+                    Measure::new(volts.0, "V"),
+                    site,
+                );
             }
         }
         if let Ok(volts) = case.no_load(Mains::High) {
-            self.add("rail-no-load", "", Mains::High, "idle", volts.0, "V", site);
+            self.add(
+                "rail-no-load",
+                "",
+                (Mains::High, "idle"),
+                Measure::new(volts.0, "V"),
+                site,
+            );
         }
         Ok(())
     }
@@ -90,30 +100,24 @@ impl Notes<'_, '_> {
             self.add(
                 "least-modulus",
                 &load.name,
-                Mains::Nominal,
-                "full",
-                survey.minimum.impedance.modulus().0,
-                "ohm",
+                (Mains::Nominal, "full"),
+                Measure::new(survey.minimum.impedance.modulus().0, "ohm"),
                 site,
             );
             let epdr = survey.dissipation.impedance.peak_dissipation_resistance().0;
             self.add(
                 "peak-dissipation-resistance",
                 &load.name,
-                Mains::Nominal,
-                "full",
-                epdr,
-                "ohm",
+                (Mains::Nominal, "full"),
+                Measure::new(epdr, "ohm"),
                 site,
             );
             if let Ok((_, amps)) = case.greatest_current(Mains::Nominal, load) {
                 self.add(
                     "peak-current",
                     &load.name,
-                    Mains::Nominal,
-                    "full",
-                    amps.0,
-                    "A",
+                    (Mains::Nominal, "full"),
+                    Measure::new(amps.0, "A"),
                     site,
                 );
             }
@@ -133,10 +137,8 @@ impl Notes<'_, '_> {
                 self.add(
                     "clean-power",
                     &load.name,
-                    Mains::Nominal,
-                    "full",
-                    watts,
-                    "W",
+                    (Mains::Nominal, "full"),
+                    Measure::new(watts, "W"),
                     site,
                 );
             }
@@ -152,28 +154,25 @@ impl Notes<'_, '_> {
         self.add(
             "rail-loaded",
             &name,
-            Mains::Nominal,
-            "duty",
-            heat.rail.0,
-            "V",
+            (Mains::Nominal, "duty"),
+            Measure::new(heat.rail.0, "V"),
             case.build.supply.site(),
         );
         self.add(
             "heat-per-channel",
             &name,
-            Mains::Nominal,
-            "duty",
-            (heat.bank[0].total() + heat.bank[1].total() + heat.other).0,
-            "W",
+            (Mains::Nominal, "duty"),
+            Measure::new(
+                (heat.bank[0].total() + heat.bank[1].total() + heat.other).0,
+                "W",
+            ),
             case.output().devices.site(),
         );
         self.add(
             "sink",
             &name,
-            Mains::Nominal,
-            "duty",
-            heat.sink.0,
-            "degC",
+            (Mains::Nominal, "duty"),
+            Measure::new(heat.sink.0, "degC"),
             sink.resistance.site(),
         );
         for side in Side::BOTH {
@@ -182,19 +181,15 @@ impl Notes<'_, '_> {
                 self.add(
                     "junction",
                     &of,
-                    Mains::Nominal,
-                    "duty",
-                    t.junction.0,
-                    "degC",
+                    (Mains::Nominal, "duty"),
+                    Measure::new(t.junction.0, "degC"),
                     case.output().devices.site(),
                 );
                 self.add(
                     "device-heat",
                     &of,
-                    Mains::Nominal,
-                    "duty",
-                    heat.device[at(side)].0,
-                    "W",
+                    (Mains::Nominal, "duty"),
+                    Measure::new(heat.device[at(side)].0, "W"),
                     case.output().devices.site(),
                 );
             }

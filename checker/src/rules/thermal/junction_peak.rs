@@ -155,7 +155,6 @@ fn stress(case: &Case<'_>, load: &Driven, heat: &Heat, side: Side) -> Result<Str
         } else {
             String::new()
         },
-        ..Stress::default()
     })
 }
 
