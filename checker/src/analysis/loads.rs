@@ -130,10 +130,14 @@ impl Case<'_> {
                 stated.owner.name
             ))
         })?;
-        let nominal = match (&stated.kind, stated.nominal.get()) {
-            (_, Some(z)) => *z,
-            (LoadKind::Resistive(r), None) => r.nominal,
-            _ => {
+        let nominal = match stated
+            .nominal
+            .get()
+            .copied()
+            .or_else(|| rated(&stated.kind))
+        {
+            Some(z) => z,
+            None => {
                 let least = survey.minimum.impedance.modulus();
                 let key = format!("load {} nominal", stated.owner.name);
                 self.assume(
@@ -158,6 +162,22 @@ impl Case<'_> {
     }
 }
 
+/// The rated resistance of a load that states none of its own: a resistor's, or that of its parts in
+/// parallel where each has one.
+fn rated(kind: &LoadKind) -> Option<Ohm> {
+    match kind {
+        LoadKind::Resistive(r) => Some(r.nominal),
+        LoadKind::Parallel(loads) => {
+            let mut siemens = 0.0;
+            for load in loads {
+                siemens += 1.0 / load.nominal.get().copied().or_else(|| rated(&load.kind))?.0;
+            }
+            (siemens > 0.0).then(|| Ohm(1.0 / siemens))
+        }
+        _ => None,
+    }
+}
+
 /// A declared load as a model, its coil at 20 degC.
 ///
 /// # Errors
@@ -172,8 +192,9 @@ pub fn physics_load(stated: &Stated, policy: &Policy, tables: &Tables) -> Result
     let dc = stated.dc.get().copied();
     match &stated.kind {
         LoadKind::Resistive(r) => {
-            let tolerance = ((r.high - r.nominal) / r.nominal).max((r.nominal - r.low) / r.nominal);
-            Load::resistive(r.nominal, tolerance).ok_or_else(wrong)
+            // the two ends as stated, even where they are not alike
+            let (middle, half) = ((r.low + r.high) / 2.0, (r.high - r.low) / 2.0);
+            Load::resistive(middle, half / middle).ok_or_else(wrong)
         }
         LoadKind::Nominal(_, minimum, angle) => {
             let degrees = angle.get().copied().unwrap_or(policy.angle_deg);

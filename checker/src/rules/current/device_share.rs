@@ -30,8 +30,8 @@ rule! {
     example: "tern60", [("emitter            0R22 ±5 % 5 W", "emitter            0R01 ±5 % 5 W"), ("vbe-spread         20 mV", "vbe-spread         60 mV")],
 }
 
-/// One margin for each declared output device, where several are in parallel: at the greatest peak
-/// that any load draws.
+/// One margin for each declared output device, where several are in parallel: at the peak of the load
+/// at which they share least evenly.
 pub fn check(case: &Case<'_>, out: &mut Margins<'_>) {
     let stage = case.output();
     if stage.pairs.get() == Some(&1) {
@@ -47,14 +47,16 @@ pub fn check(case: &Case<'_>, out: &mut Margins<'_>) {
     }
 }
 
-/// The load that draws the greatest peak.
-fn heaviest<'c>(case: &'c Case<'_>) -> Result<&'c Driven, Needs> {
+/// The load at whose peak the devices of a side share least evenly: a small peak leaves it to the
+/// junctions, a large one to the resistors, and either can be the worse.
+fn least_even<'c>(case: &'c Case<'_>, side: Side) -> Result<&'c Driven, Needs> {
+    let bank = case.bench()?.bank(side);
     let mut worst: Option<(&Driven, f64)> = None;
     for load in case.loads()? {
         let load = load.as_ref().map_err(Clone::clone)?;
-        let peak = case.greatest_current(Mains::High, load)?.1.0;
-        if worst.is_none_or(|(_, w)| peak > w) {
-            worst = Some((load, peak));
+        let share = bank.share(case.greatest_current(Mains::High, load)?.1);
+        if worst.is_none_or(|(_, w)| share > w) {
+            worst = Some((load, share));
         }
     }
     worst.map(|w| w.0).ok_or_else(|| case.build.loads.missing())
@@ -62,7 +64,11 @@ fn heaviest<'c>(case: &'c Case<'_>) -> Result<&'c Driven, Needs> {
 
 fn stress(case: &Case<'_>, side: Side) -> Result<Stress, Needs> {
     let stage = case.output();
-    let (bench, load, rail) = three(case.bench(), heaviest(case), case.unsagged(Mains::High))?;
+    let (bench, load, rail) = three(
+        case.bench(),
+        least_even(case, side),
+        case.unsagged(Mains::High),
+    )?;
     let (volts, peak) = case.greatest_current(Mains::High, load)?;
     let bank = bench.bank(side);
     let share = bank.share(peak);

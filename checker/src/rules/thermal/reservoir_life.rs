@@ -16,7 +16,7 @@ rule! {
     compares: "life of the reservoir capacitors, continuous at the duty, hottest room, with the hours wanted",
     stress: "expected life in hours",
     rating: "least life",
-    formula: "L = L0·2^((T0 - Tcore)/10), Tcore = Ta + Tencl + ΔT·(I/Irated)²",
+    formula: "L = L0·2^((T0 - max(Tcore, 40 degC))/10), Tcore = Ta + Tencl + ΔT·(I/Irated)²",
     source: "10 K rule (Cosel FAQ a0057, read; Cornell Dubilier application guide, from memory); hours common practice, no source",
     reads: ["supply.reservoir", "amplifier.board-reservoir", "build.supply", "build.ambient", "build.enclosure", "build.duty", "build.loads", "stage.idle"],
     sense: AtLeast,
@@ -95,7 +95,7 @@ fn stress(case: &Case<'_>, load: &Driven, bank: &Bank<'_>, share: f64) -> Result
             solved(
                 "L",
                 "hours expected",
-                "L0·2^((T0 - Tcore)/10)",
+                "L0·2^((T0 - max(Tcore, 40))/10)",
                 life.hours,
                 "h",
                 "10 K rule",
