@@ -962,7 +962,8 @@ pub fn expected(key: &Key) -> String {
 }
 
 /// An item with its label, in words.
-fn describe(item: &Item) -> String {
+#[must_use]
+pub fn describe(item: &Item) -> String {
     match (&item.takes, item.label) {
         (Takes::Per(words), _) => {
             let words: Vec<&str> = words.iter().map(|w| if *w == "N" { "N channels" } else { w }).collect();

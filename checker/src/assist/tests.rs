@@ -1,0 +1,1 @@
+//! Answers for the editor, on small texts.
