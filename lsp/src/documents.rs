@@ -70,7 +70,7 @@ pub(crate) enum Event {
 /// A spec that is checked.
 #[derive(Default)]
 struct Root {
-    /// Goes up with every change of anything it reads.
+    /// A new number with every change of anything it reads.
     wanted: u64,
     /// The check that runs.
     running: Option<u64>,
@@ -106,6 +106,8 @@ pub(crate) struct Owner {
     session: Arc<Session>,
     settings: Settings,
     ready: bool,
+    /// The last number given out: no two states of anything ever have the same.
+    stamp: u64,
     paths: HashMap<Url, PathBuf>,
     snapshot: Snapshot,
     roots: BTreeMap<PathBuf, Root>,
@@ -129,6 +131,7 @@ impl Owner {
             session: Arc::new(Session { client, policy: None, folders: Vec::new() }),
             settings: Settings::default(),
             ready: false,
+            stamp: 0,
             paths: HashMap::new(),
             snapshot: Snapshot::default(),
             roots: BTreeMap::new(),
@@ -208,11 +211,18 @@ impl Owner {
         self.touch(path);
     }
 
+    /// The spec at a path, from now on checked.
+    fn root(&mut self, path: PathBuf) -> &mut Root {
+        self.stamp += 1;
+        let wanted = self.stamp;
+        self.roots.entry(path).or_insert_with(|| Root { wanted, ..Root::default() })
+    }
+
     fn open(&mut self, uri: Url, version: i32, text: String) {
         self.snapshot.forget();
         let path = self.snapshot.path_of(&uri);
         self.paths.insert(uri.clone(), path.clone());
-        self.roots.entry(path.clone()).or_default();
+        self.root(path.clone());
         self.put(&path, &uri, version, parse(text));
     }
 
@@ -239,7 +249,8 @@ impl Owner {
     fn touch(&mut self, path: &Path) {
         for (own, root) in &mut self.roots {
             if own == path || root.reads(path) {
-                root.wanted += 1;
+                self.stamp += 1;
+                root.wanted = self.stamp;
             }
         }
     }
@@ -266,7 +277,8 @@ impl Owner {
     /// Everything found so far was found under other settings.
     fn restart(&mut self) {
         for root in self.roots.values_mut() {
-            root.wanted += 1;
+            self.stamp += 1;
+            root.wanted = self.stamp;
             root.result = None;
         }
         self.search();
@@ -294,8 +306,7 @@ impl Owner {
             root.in_workspace = false;
         }
         for path in specs {
-            let root = self.roots.entry(path).or_default();
-            root.in_workspace = true;
+            self.root(path).in_workspace = true;
         }
         let buffers = Arc::clone(&self.snapshot.buffers);
         self.roots.retain(|path, root| root.in_workspace || buffers.contains_key(path));

@@ -14,21 +14,21 @@ use serde_json::{Value, json};
 /// How long an answer may take on a busy machine.
 const PATIENCE: Duration = Duration::from_secs(60);
 
-pub struct Client {
-    pub child: Child,
-    pub input: Option<ChildStdin>,
+pub(crate) struct Client {
+    pub(crate) child: Child,
+    pub(crate) input: Option<ChildStdin>,
     messages: Receiver<Value>,
     next: i64,
-    pub diagnostics: HashMap<String, Value>,
-    pub versions: HashMap<String, i64>,
-    pub answers: HashMap<i64, Value>,
-    pub notes: Vec<Value>,
-    pub settings: Value,
-    pub capabilities: Value,
+    pub(crate) diagnostics: HashMap<String, Value>,
+    pub(crate) versions: HashMap<String, i64>,
+    pub(crate) answers: HashMap<i64, Value>,
+    pub(crate) notes: Vec<Value>,
+    pub(crate) settings: Value,
+    pub(crate) capabilities: Value,
 }
 
 impl Client {
-    pub fn spawn() -> Self {
+    pub(crate) fn spawn() -> Self {
         let mut child = Command::new(env!("CARGO_BIN_EXE_derate-lsp")).stdin(Stdio::piped()).stdout(Stdio::piped()).stderr(Stdio::null()).spawn().unwrap();
         let mut output = BufReader::new(child.stdout.take().unwrap());
         let input = child.stdin.take();
@@ -55,7 +55,7 @@ impl Client {
     }
 
     /// A client that has been through the first exchange. `encodings` are those it offers.
-    pub fn start(root: &Path, encodings: &[&str], options: Value) -> Self {
+    pub(crate) fn start(root: &Path, encodings: &[&str], options: Value) -> Self {
         let mut client = Self::spawn();
         let answer = client.ask("initialize", initialize(root, encodings, options));
         client.capabilities = answer["result"]["capabilities"].clone();
@@ -64,40 +64,40 @@ impl Client {
         client
     }
 
-    pub fn raw(&mut self, bytes: &[u8]) {
+    pub(crate) fn raw(&mut self, bytes: &[u8]) {
         let input = self.input.as_mut().unwrap();
         input.write_all(bytes).unwrap();
         input.flush().unwrap();
     }
 
-    pub fn send(&mut self, message: &Value) {
+    pub(crate) fn send(&mut self, message: &Value) {
         let body = message.to_string();
         self.raw(format!("Content-Length: {}\r\n\r\n{body}", body.len()).as_bytes());
     }
 
-    pub fn tell(&mut self, method: &str, params: Value) {
+    pub(crate) fn tell(&mut self, method: &str, params: Value) {
         self.send(&json!({"jsonrpc": "2.0", "method": method, "params": params}));
     }
 
-    pub fn request(&mut self, method: &str, params: Value) -> i64 {
+    pub(crate) fn request(&mut self, method: &str, params: Value) -> i64 {
         self.next += 1;
         self.send(&json!({"jsonrpc": "2.0", "id": self.next, "method": method, "params": params}));
         self.next
     }
 
-    pub fn ask(&mut self, method: &str, params: Value) -> Value {
+    pub(crate) fn ask(&mut self, method: &str, params: Value) -> Value {
         let id = self.request(method, params);
         self.answer(id)
     }
 
     /// The result of a request, which must have one.
-    pub fn get(&mut self, method: &str, params: Value) -> Value {
+    pub(crate) fn get(&mut self, method: &str, params: Value) -> Value {
         let answer = self.ask(method, params);
         assert!(answer.get("error").is_none(), "{method}: {answer}");
         answer["result"].clone()
     }
 
-    pub fn answer(&mut self, id: i64) -> Value {
+    pub(crate) fn answer(&mut self, id: i64) -> Value {
         let until = Instant::now() + PATIENCE;
         loop {
             if let Some(answer) = self.answers.remove(&id) {
@@ -108,7 +108,7 @@ impl Client {
     }
 
     /// Take one message; whether there was one.
-    pub fn take(&mut self, patience: Duration) -> bool {
+    pub(crate) fn take(&mut self, patience: Duration) -> bool {
         let message = match self.messages.recv_timeout(patience) {
             Ok(message) => message,
             Err(RecvTimeoutError::Timeout | RecvTimeoutError::Disconnected) => return false,
@@ -142,7 +142,7 @@ impl Client {
     }
 
     /// Wait until the findings of this version have come.
-    pub fn settled(&mut self, uri: &str, version: i64) -> Value {
+    pub(crate) fn settled(&mut self, uri: &str, version: i64) -> Value {
         let until = Instant::now() + PATIENCE;
         while self.versions.get(uri).is_none_or(|v| *v < version) {
             assert!(self.take(until.saturating_duration_since(Instant::now())), "no findings for version {version} of {uri}");
@@ -151,7 +151,7 @@ impl Client {
     }
 
     /// Wait until what is told of a file is as wanted.
-    pub fn until(&mut self, uri: &str, wanted: impl Fn(&Value) -> bool) -> Value {
+    pub(crate) fn until(&mut self, uri: &str, wanted: impl Fn(&Value) -> bool) -> Value {
         let until = Instant::now() + PATIENCE;
         loop {
             if let Some(found) = self.diagnostics.get(uri).filter(|d| wanted(d)) {
@@ -161,16 +161,26 @@ impl Client {
         }
     }
 
-    pub fn open(&mut self, uri: &str, text: &str) {
-        self.tell("textDocument/didOpen", json!({"textDocument": {"uri": uri, "languageId": "ampspec", "version": 1, "text": text}}));
+    /// Take messages until something holds, or for so long.
+    pub(crate) fn within(&mut self, patience: Duration, holds: impl Fn(&Self) -> bool) {
+        let until = Instant::now() + patience;
+        while !holds(self) && self.take(until.saturating_duration_since(Instant::now())) {}
     }
 
-    pub fn change(&mut self, uri: &str, version: i64, changes: Value) {
+    pub(crate) fn open(&mut self, uri: &str, text: &str) {
+        self.open_at(uri, 1, text);
+    }
+
+    pub(crate) fn open_at(&mut self, uri: &str, version: i64, text: &str) {
+        self.tell("textDocument/didOpen", json!({"textDocument": {"uri": uri, "languageId": "ampspec", "version": version, "text": text}}));
+    }
+
+    pub(crate) fn change(&mut self, uri: &str, version: i64, changes: Value) {
         self.tell("textDocument/didChange", json!({"textDocument": {"uri": uri, "version": version}, "contentChanges": changes}));
     }
 
     /// The exit status after shutdown and exit.
-    pub fn stop(mut self) -> i32 {
+    pub(crate) fn stop(mut self) -> i32 {
         let answer = self.ask("shutdown", Value::Null);
         assert!(answer["result"].is_null() && answer.get("error").is_none(), "{answer}");
         self.tell("exit", Value::Null);
@@ -178,7 +188,7 @@ impl Client {
     }
 
     /// The exit status of a server that ends by itself while its input stays open.
-    pub fn wait(mut self) -> i32 {
+    pub(crate) fn wait(mut self) -> i32 {
         let until = Instant::now() + PATIENCE;
         loop {
             if let Some(status) = self.child.try_wait().unwrap() {
@@ -198,7 +208,7 @@ impl Drop for Client {
     }
 }
 
-pub fn initialize(root: &Path, encodings: &[&str], options: Value) -> Value {
+pub(crate) fn initialize(root: &Path, encodings: &[&str], options: Value) -> Value {
     json!({
         "processId": std::process::id(),
         "rootUri": uri(root),
@@ -234,27 +244,27 @@ fn frame(from: &mut impl BufRead) -> Option<Value> {
     Some(serde_json::from_slice(&body).unwrap())
 }
 
-pub fn uri(path: &Path) -> String {
+pub(crate) fn uri(path: &Path) -> String {
     format!("file://{}", path.to_string_lossy())
 }
 
 /// The folder of the demo kits.
-pub fn kits() -> PathBuf {
+pub(crate) fn kits() -> PathBuf {
     Path::new(env!("CARGO_MANIFEST_DIR")).join("../tests/kits").canonicalize().unwrap()
 }
 
 /// A demo kit.
-pub fn kit(name: &str) -> String {
+pub(crate) fn kit(name: &str) -> String {
     std::fs::read_to_string(kits().join(name)).unwrap()
 }
 
 /// Line and column, from 0, of a text in another; columns in UTF-16 units, or in bytes.
-pub fn find(text: &str, wanted: &str, bytes: bool) -> Value {
+pub(crate) fn find(text: &str, wanted: &str, bytes: bool) -> Value {
     let at = text.find(wanted).unwrap_or_else(|| panic!("no {wanted}"));
     place(text, at, bytes)
 }
 
-pub fn place(text: &str, at: usize, bytes: bool) -> Value {
+pub(crate) fn place(text: &str, at: usize, bytes: bool) -> Value {
     let before = &text[..at];
     let line = before.matches('\n').count();
     let start = before.rfind('\n').map_or(0, |n| n + 1);
