@@ -5,15 +5,26 @@
 //! method that solves once and answers with what is missing where it cannot. Data flow one way:
 //! loads -> rails -> signals -> heat -> ratings; rules ask for stresses and compare.
 
+pub mod bias;
 pub mod case;
 pub mod chain;
+pub mod clip;
 pub mod derived;
 pub mod devices;
+pub mod drive;
+pub mod fault;
 pub mod heat;
+pub mod limits;
 pub mod loads;
 pub mod margins;
 pub mod rails;
+pub mod reach;
+pub mod safe_area;
 pub mod signal;
+pub mod supply;
+pub mod switch_on;
+pub mod temperatures;
+pub mod wear;
 
 pub use case::{Case, Tables};
 pub use margins::{Margins, Stress};

@@ -1,7 +1,6 @@
 //! The physics: pure functions of numbers, nothing else.
 //! Must not know spans, files, names of parts, policies or verdicts.
 
-
 pub mod bias;
 pub mod drive;
 pub mod foster;

@@ -5,7 +5,6 @@ use crate::build::parts::{Duty, duty};
 use crate::build::statement::{Group, Select};
 use crate::build::view::View;
 use crate::finding::{Finding, Measure, PolicyEntry, PolicyReport, Severity, Site, TextEdit, Verdict};
-use crate::physics::unit::Second;
 use crate::rule::{Allow, Rule};
 use crate::rules;
 use crate::vocabulary::nearest;
@@ -47,8 +46,6 @@ pub struct Policy {
     pub angle_deg: f64,
     /// Which safe-area curves count.
     pub curve: Curve,
-    /// How soon a d.c. fault must be off.
-    pub detector_time: Second,
     /// The safe-area verdict holds at high mains, else at nominal.
     pub soa_at_high_mains: bool,
     /// What is left of a gain that is only typical.
@@ -146,7 +143,6 @@ impl Policy {
             duty: Duty { fraction: 0.125, shown: "1/8".to_owned() },
             angle_deg: 45.0,
             curve: Curve::Dc,
-            detector_time: Second(0.05),
             soa_at_high_mains: false,
             typical_gain: 0.5,
         }
@@ -184,7 +180,8 @@ impl Policy {
                 ("angle", _) => policy.angle_deg = group.number("deg").unwrap_or(policy.angle_deg),
                 ("curve", _) if group.word("dc") == Some("pulse") => policy.curve = Curve::Pulse,
                 ("curve", _) => policy.curve = Curve::Dc,
-                ("detector-time", _) => policy.detector_time = group.number("s").map_or(policy.detector_time, Second),
+                // another way to write the allowance of that rule
+                ("detector-time", _) => policy.allow("protection.dc-fault-time", group, line.site, findings),
                 _ => {}
             }
         }
@@ -223,7 +220,8 @@ impl Policy {
 
     fn allow(&mut self, rule: &str, group: &Group, site: Site, findings: &mut Vec<Finding>) {
         let Some(entry) = self.rule(rule, site, findings) else { return };
-        let (percent, kelvin, number) = (group.number("%").map(|p| p * 100.0), group.number("K"), group.number("num"));
+        let (percent, kelvin) = (group.number("%").map(|p| p * 100.0), group.number("K"));
+        let number = group.number("num").or(group.number("s"));
         let wanted = match (entry.allow, percent, kelvin, number) {
             (Allow::Percent(_), Some(p), None, None) if p > 0.0 => Ok(Allow::Percent(p)),
             (Allow::Below(_, cap), None, Some(k), None) if k >= 0.0 => Ok(Allow::Below(k, cap)),

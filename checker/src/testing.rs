@@ -36,11 +36,7 @@ fn closed_up(text: &str) -> String {
         let indent = line.len() - line.trim_start().len();
         format!("{}{}", &line[..indent], line.split_whitespace().collect::<Vec<_>>().join(" "))
     };
-    let mut out = text.split('\n').map(line).collect::<Vec<_>>().join("\n");
-    if text.starts_with(' ') {
-        out = out.trim_start().to_owned();
-    }
-    out
+    text.split('\n').map(line).collect::<Vec<_>>().join("\n")
 }
 
 /// The text with replacements made; each must be found.

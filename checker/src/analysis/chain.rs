@@ -58,7 +58,9 @@ impl Case<'_> {
         let (bank, pairs) = both(self.follower(output, side), driver.pairs.need().copied())?;
         let device = output.device(side);
         let model = Driver::new(&bank, rail, Self::vbe(device), load.modulus(), load.angle_rad()).ok_or_else(|| Needs::because("the rail leaves the driver no voltage"))?;
-        let heat = model.mean_heat(amplitude).map_err(|e| no_gain(&device.owner.name, &e))?;
+        // a loaded rail clips what an unsagged one would carry
+        let most = (rail - Self::vbe(device)) * (1.0 - 1e-12);
+        let heat = model.mean_heat(amplitude.min(most)).map_err(|e| no_gain(&device.owner.name, &e))?;
         Ok(heat / f64::from(pairs.max(1)))
     }
 

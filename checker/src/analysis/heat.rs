@@ -3,13 +3,15 @@
 
 use super::case::{Case, Side};
 use super::loads::Driven;
-use super::rails::{Mains, Reservoir};
+use super::devices::emitter;
+use super::rails::Mains;
 use super::signal::Duty;
 use crate::build::Needs;
 use crate::build::parts::{Heatsink, Stage, both, three};
 use crate::physics::heat::{Mounting, Temperatures, hottest_place, sink_temperature};
 use crate::physics::heatsink::{FinnedSink, Geometry, Material, Orientation, Sink, StatedSink};
 use crate::physics::output_stage::BankHeat;
+use crate::physics::sharing::Bank;
 use crate::physics::unit::{Amp, Celsius, KelvinPerWatt, Volt, Watt};
 
 /// Emissivity of black anodised aluminium; from memory.
@@ -77,19 +79,21 @@ impl Case<'_> {
     pub fn heat_at(&self, load: &Driven, fraction: f64, mains: Mains) -> Result<Heat, Needs> {
         let duty = self.signal_at(load, fraction)?;
         let (idle, other) = both(self.idle(), self.other_watts(&duty))?;
-        let rail = self.loaded(mains, Reservoir::Nominal, duty.rail_current)?.mean;
+        let rail = self.mean_rail(mains, duty.rail_current)?;
         let signal = self.sine(duty.amplitude, duty.load)?;
+        // what the emitter resistors do not take, the devices do
+        let least = least_resistors(self.output())?;
         let mut quiet = None;
         let mut bank = [BankHeat { signal: Watt::ZERO, idle: Watt::ZERO }; 2];
         let mut device = [Watt::ZERO; 2];
         for side in Side::BOTH {
             let parallel = self.bench()?.bank(side);
-            let playing = signal.heat(rail, parallel, idle);
+            let playing = signal.heat(rail, &least, idle);
             // the greater of playing and idling stands
             let idle_rail = match quiet {
                 Some(volts) => volts,
                 None => {
-                    let volts = self.loaded(mains, Reservoir::Nominal, self.rail_current(Amp::ZERO)?)?.mean;
+                    let volts = self.mean_rail(mains, self.rail_current(Amp::ZERO)?)?;
                     quiet = Some(volts);
                     volts
                 }
@@ -148,6 +152,13 @@ impl Case<'_> {
         }
         worst.ok_or_else(|| self.build.loads.missing())
     }
+}
+
+/// The bank with every emitter resistor at the low end of its tolerance.
+fn least_resistors(stage: &Stage) -> Result<Bank, Needs> {
+    let (pairs, nominal) = both(stage.pairs.need().copied(), emitter(stage))?;
+    let least = stage.emitter.get().map_or(nominal, |r| r.ohm.low);
+    Bank::even(pairs, least).ok_or_else(|| Needs::because(format!("pairs and emitter resistor of stage {} do not make a bank", stage.owner.name)))
 }
 
 /// Case to sink; `none` is bare metal on metal with no insulator stated, which still has a resistance,

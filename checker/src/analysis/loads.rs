@@ -67,6 +67,15 @@ impl Driven {
         Spot { value: seen.modulus().0, frequency: w.frequency, seen, variant: w.variant }
     }
 
+    /// That part of the band is not known: a table covers less.
+    #[must_use]
+    pub fn uncovered(&self, band: Band) -> Option<Needs> {
+        (self.covered != band).then(|| {
+            let (from, to) = (self.covered.bottom().0, self.covered.top().0);
+            Needs::because(format!("the table of load {} covers {from:.0} Hz to {to:.0} Hz of the band only", self.name))
+        })
+    }
+
     /// Where `objective` of what one channel sees is greatest within the band.
     pub fn worst(&self, band: Band, objective: impl Fn(Hertz, Impedance) -> f64) -> Option<Spot> {
         let w = self.load.worst(band, |f, z| objective(f, self.seen(z)))?;

@@ -1,10 +1,11 @@
 //! The rails at low, nominal and high mains: unloaded, unsagged, and loaded with a current.
 //! Must not know what draws the current.
 
-use super::case::Case;
+use super::case::{Case, solved, stated};
+use super::margins::Stress;
 use crate::build::Needs;
-use crate::build::parts::{Rails as Given, three};
-use crate::finding::{Measure, Site};
+use crate::build::parts::{Field, Rails as Given, three};
+use crate::finding::{Measure, Site, Witness};
 use crate::physics::supply::{self, Cycle, Rail, RailParts, Rectifier, Transformer};
 use crate::physics::unit::{Amp, Farad, Ohm, Volt};
 
@@ -333,5 +334,79 @@ impl Made {
             esr: self.esr,
             mains: frequency,
         })
+    }
+}
+
+/// Voltage across a device that stands between the two driver supplies.
+#[derive(Clone, Copy, Debug)]
+pub struct Across {
+    /// Rail, no load, high mains.
+    pub rail: Volt,
+    /// How much higher the driver supply is.
+    pub above: Volt,
+}
+
+impl Across {
+    /// Rail to rail.
+    #[must_use]
+    pub fn volts(self) -> Volt {
+        (self.rail + self.above) * 2.0
+    }
+
+    /// Ready to be compared with a breakdown voltage.
+    #[must_use]
+    pub fn against(self, case: &Case<'_>, rating: Volt, stated_in: &Field<Volt>) -> Stress {
+        let mut working = vec![solved("V0", "rail, no load, high mains", "m·√2·Vs·(1 + ρ)", self.rail.0, "V", "definition of regulation")];
+        if self.above > Volt::ZERO {
+            working.push(solved("Vdr", "driver supply above the rail, high mains", "stated x V0(high)/V0(nominal)", self.above.0, "V", ""));
+        }
+        working.push(solved("V", "across the device that is off", "V0+ + V0- + 2·Vdr", self.volts().0, "V", "node voltages"));
+        working.push(stated("V(BR)", "breakdown voltage", rating.0, "V", stated_in.stated_at()));
+        Stress {
+            value: self.volts().0,
+            rating: rating.0,
+            witness: Witness {
+                mains_v: case.mains_volts(Mains::High),
+                rail_v: Some(self.rail.0),
+                device_v: Some(self.volts().0),
+                channels_driven: None,
+                ..case.witness()
+            },
+            working,
+            related: case.rail_sites(stated_in.stated_at().map(|site| ("the rating", site))),
+            ..Stress::default()
+        }
+    }
+}
+
+impl Case<'_> {
+    /// How much higher than the output rail the drivers are fed, at high mains: the greatest that
+    /// output stage or driver state, in proportion to the mains.
+    fn drivers_above(&self, rail: Volt) -> Result<Volt, Needs> {
+        let amplifier = &self.build.amplifier;
+        let stages = [Some(&amplifier.output), amplifier.driver.as_ref(), amplifier.voltage_amplifier.as_ref()];
+        let above = stages.into_iter().flatten().filter_map(|s| s.driver_rail.get().copied()).fold(Volt::ZERO, Volt::max);
+        if above <= Volt::ZERO {
+            return Ok(Volt::ZERO);
+        }
+        Ok(above * (rail / self.no_load(Mains::Nominal)?))
+    }
+
+    /// What stands across a device between the two driver supplies: high mains, no load.
+    ///
+    /// # Errors
+    /// As [`Case::no_load`].
+    pub fn across_drivers(&self) -> Result<Across, Needs> {
+        let rail = self.no_load(Mains::High)?;
+        Ok(Across { rail, above: self.drivers_above(rail)? })
+    }
+
+    /// The driver supply to ground, high mains, no load.
+    ///
+    /// # Errors
+    /// As [`Case::no_load`].
+    pub fn driver_supply(&self) -> Result<Volt, Needs> {
+        let across = self.across_drivers()?;
+        Ok(across.rail + across.above)
     }
 }

@@ -89,8 +89,18 @@ impl Case<'_> {
         let amplitude = duty_amplitude(fraction, reference, resistance).ok_or_else(|| Needs::because("the duty signal cannot be worked out"))?;
         let peak = amplitude / resistance;
         let rail_current = self.rail_current(peak)?;
-        let rail = self.loaded(Mains::Nominal, Reservoir::Nominal, rail_current)?.mean;
+        let rail = self.mean_rail(Mains::Nominal, rail_current)?;
         Ok(Duty { fraction, amplitude, peak, load: Impedance::resistive(resistance), power: power(amplitude, resistance), rail_current, rail })
+    }
+
+    /// The greater mean rail of the two ends of the capacitors' tolerance: it makes the most heat.
+    ///
+    /// # Errors
+    /// As [`Case::loaded`].
+    pub fn mean_rail(&self, mains: Mains, current: Amp) -> Result<Volt, Needs> {
+        let low = self.loaded(mains, Reservoir::Low, current)?.mean;
+        let high = self.loaded(mains, Reservoir::High, current)?.mean;
+        Ok(low.max(high))
     }
 
     /// The greatest power claimed into this resistance.

@@ -338,7 +338,17 @@ impl Lowering<'_> {
             return None;
         }
         let groups: Vec<&[Token]> = line.groups.iter().map(|g| g.tokens.as_slice()).collect();
-        self.statement(kind, line.key, &groups, line.span)
+        let said = self.out.findings.len();
+        let statement = self.statement(kind, line.key, &groups, line.span);
+        // one fault of the text a line: what follows the first is often only its echo
+        let mut first = true;
+        let mut at = 0;
+        self.out.findings.retain(|f| {
+            at += 1;
+            let fault = at > said && f.severity == Severity::Error && f.rule.starts_with("syntax.");
+            !fault || std::mem::take(&mut first)
+        });
+        statement
     }
 
     fn statement(&mut self, kind: &'static Block, key: Token, groups: &[&[Token]], span: Span) -> Option<Statement> {
@@ -394,6 +404,10 @@ impl Lowering<'_> {
                 let (select, used) = self.selector(found, selector, key, tokens)?;
                 statement.select = Some(select);
                 rest = tokens.get(used..).unwrap_or(&[]);
+                if groups.len() == 1 && matches!(rest, [only] if only.text(self.text) == "none") {
+                    statement.none = true;
+                    return Some(statement);
+                }
             }
             if let Some(group) = self.group(found, shape, rest, key) {
                 statement.groups.push(group);
@@ -401,6 +415,13 @@ impl Lowering<'_> {
             if !shape.list {
                 break;
             }
+        }
+        if found.repeats && shape.selector.is_none() {
+            let first = statement.groups.first().and_then(|g| g.slots.first());
+            statement.select = first.and_then(|s| match &s.value {
+                Value::Quantity(q) => Some(Select::First(q.value)),
+                _ => None,
+            });
         }
         if statement.groups.is_empty() { None } else { Some(statement) }
     }

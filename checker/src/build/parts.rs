@@ -656,12 +656,23 @@ pub struct Limiter {
     pub sense: Ohm,
     /// Base to output.
     pub base: Ohm,
-    /// Second resistor of the sense divider.
+    /// In parallel with it.
     pub shunt: Option<Ohm>,
     /// Base to rail.
     pub rail: Option<Ohm>,
     /// Turn-on volts at 25 degC.
     pub on: Volt,
+}
+
+/// The second slope of a limiter: a zener that holds the middle of a second path from rail to base.
+#[derive(Clone, Copy, Debug)]
+pub struct LimiterBreak {
+    /// Of the zener.
+    pub volts: Volt,
+    /// Rail to zener.
+    pub from_rail: Option<Ohm>,
+    /// Zener to base.
+    pub to_base: Option<Ohm>,
 }
 
 /// The d.c. detector.
@@ -701,8 +712,8 @@ pub struct Protection {
     pub limit_line: Field<LimitLine>,
     /// Limiter.
     pub limiter: Field<Limiter>,
-    /// Second slope: zener volts and its resistor.
-    pub limiter_break: Field<(Volt, Ohm)>,
+    /// Second slope.
+    pub limiter_break: Field<LimiterBreak>,
     /// Detector.
     pub detector: Field<Detector>,
     /// What one contact breaks: amps, volts, and whether that is d.c.
@@ -792,6 +803,8 @@ pub struct Build {
     pub heatsink: Field<(Rc<Heatsink>, u32)>,
     /// The protection.
     pub protection: Field<Rc<Protection>>,
+    /// How many channels each protection serves, where the build says so.
+    pub protected: Option<u32>,
     /// Mains regions.
     pub mains: Field<Vec<Region>>,
     /// Loads, tried in turn.
@@ -1279,7 +1292,7 @@ impl<'v, 'a> Reader<'v, 'a> {
         Some(Rc::new(Protection {
             limit_line,
             limiter,
-            limiter_break: p.one("limiter-break", |g| Some((get(g, "V")?, get(g, "ohm")?))),
+            limiter_break: p.one("limiter-break", |g| Some(LimiterBreak { volts: get(g, "V")?, from_rail: get(g, "from-rail"), to_base: get(g, "to-base") })),
             detector,
             relay,
             contacts,
@@ -1338,6 +1351,7 @@ impl<'v, 'a> Reader<'v, 'a> {
             }),
             heatsink,
             protection: p.one("protection", |g| self.protection(g.name("protection")?)),
+            protected: p.seen.group("protection").and_then(carried),
             mains,
             loads: p.field("loads", |groups| groups.iter().map(|g| self.load(g.name("load")?, 0)).collect()),
             ambient: p.one("ambient", |g| match &g.get("degC")?.value {

@@ -131,6 +131,9 @@ pub enum Select {
     Time(f64),
     /// A rule name.
     Rule(String),
+    /// The first quantity of the line, where the key has no selector of its own: the frequency of a
+    /// resonance.
+    First(f64),
 }
 
 /// A line matched with its key.

@@ -154,7 +154,7 @@ fn put(lines: &mut Vec<Arc<Statement>>, line: &Arc<Statement>) {
             return;
         }
         // a key restated without its selector, as `none`, clears every line of that key
-        if line.none {
+        if line.none && line.select.is_none() {
             lines.retain(|old| !std::ptr::eq(old.key, line.key));
         }
     }

@@ -270,6 +270,11 @@ impl Bank {
         (junctions.min(resistors), junctions.max(resistors))
     }
 
+    /// The share bends where a transfer curve does.
+    pub(crate) fn has_kinks(&self) -> bool {
+        matches!(self.law, Law::SourceFollower { .. })
+    }
+
     pub(crate) fn split(&self, total: f64) -> Split {
         let others = f64::from(self.devices) - 1.0;
         match &self.law {

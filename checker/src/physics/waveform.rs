@@ -171,11 +171,15 @@ impl<'a> Locus<'a> {
     /// elasticity of the device's current. For a given e there is one such point (see `stationary`),
     /// so on part of the quarter it is that point or the nearer end. As e drifts with the current
     /// only slowly, taking it from the last point and solving again closes in by a factor of ten or
-    /// more each time; at a kink of a transfer curve it may not, and the slope itself is solved.
+    /// more each time; where it does not, the slope itself is solved. At a kink of a transfer curve
+    /// the elasticity jumps and there can be several such points: those shares are scanned.
     pub(crate) fn worst(&self, s: f64, from: f64, to: f64) -> Spot {
         const ROUNDS: usize = 12;
         if s <= 0.0 || to <= from {
             return self.spot(to.max(from)).0;
+        }
+        if self.bank.has_kinks() {
+            return self.scanned(s, from, to);
         }
         let (mut elasticity, mut before) = (1.0, f64::NAN);
         for _ in 0..ROUNDS {
@@ -198,6 +202,27 @@ impl<'a> Locus<'a> {
             math::root(slope, from, to, NARROWED).unwrap_or(to)
         };
         self.spot(t).0
+    }
+
+    /// The same by a scan of 96 positions and the best bracket narrowed.
+    fn scanned(&self, s: f64, from: f64, to: f64) -> Spot {
+        const STEPS: u32 = 96;
+        let value = |t: f64| {
+            let spot = self.spot(t).0;
+            spot.amps * math::pow(spot.volts.max(0.0), s)
+        };
+        let step = (to - from) / f64::from(STEPS);
+        let position = |k: u32| if k == STEPS { to } else { from + step * f64::from(k) };
+        let mut best = (to, value(to));
+        for k in 0..STEPS {
+            let here = value(position(k));
+            if here > best.1 {
+                best = (position(k), here);
+            }
+        }
+        let (lo, hi) = ((best.0 - step).max(from), (best.0 + step).min(to));
+        let (t, top) = math::maximum(value, lo, hi, NARROWED);
+        self.spot(if top > best.1 { t } else { best.0 }).0
     }
 
     /// The position where i·v_CE^s would be greatest with every device carrying its even part: the

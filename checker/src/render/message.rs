@@ -159,6 +159,8 @@ fn limit(rule: &Rule, bound: &str, allowance: Measure, rating: Measure) -> Strin
     let shown = figure(rating);
     let below = Measure::new(rating.value - allowance.value, "K");
     match (rule.allow, share(allowance, rating)) {
+        // the rating is the lower of the two: a share of it would read as its opposite
+        _ if rule.sense == Sense::AtLeast => format!("{lead} ({noun} {shown})"),
         (Allow::Percent(_), Some(p)) if (p - 100.0).abs() < 1e-9 => format!("{lead} ({noun})"),
         (Allow::Percent(_), Some(p)) => {
             let share = figure(Measure::new(p, "%"));

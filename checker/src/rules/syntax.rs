@@ -43,7 +43,7 @@ reading! {
     /// A word that the key does not know: a choice mistyped, a label of another key.
     word "syntax.word", "a word that means nothing where it stands", [("connection          emitter-follower", "connection          emiter-follower")];
 
-    /// A key whose value is missing or incomplete.
+    /// A key whose value is missing or incomplete states nothing, and what needs it goes unchecked.
     value "syntax.value", "a missing or incomplete value", [("muting             3 s", "muting")];
 
     /// A number that is not one number: two decimal marks, letters among the digits, not finite.

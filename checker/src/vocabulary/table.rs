@@ -44,12 +44,14 @@ pub const BLOCKS: &[Block] = &[
         key("channels-per-board", "n", "1", "for counts and `per board`").band("n", 1.0, 16.0),
         key(
             "board-reservoir",
-            "nx? F± V esr:ohm? ripple:A? per{rail} +bom",
+            "nx? F± V esr:ohm? ripple:A? life:h? life-at:degC? per{rail} +bom",
             "none",
             "capacitors on each board, added to the supply's",
         )
         .band("F", 20e-6, 0.5)
-        .band("V", 6.0, 450.0),
+        .band("V", 6.0, 450.0)
+        .band("life", 200.0 * 3600.0, 500e3 * 3600.0)
+        .band("life-at", 40.0, 150.0),
         key("network", "<network>", "-", "output network"),
     ]),
     block("stage", &[], "one stage of the board", &[
@@ -210,9 +212,9 @@ pub const BLOCKS: &[Block] = &[
             "limiter",
             "sense:ohm base:ohm shunt:ohm? rail:ohm? on:V?",
             "-",
-            "of one device: sense to base, base to output, base to rail; turn-on 0.6 V",
+            "of one device: sense to base, base to output, shunt in parallel with base, base to rail; turn-on 0.6 V",
         ),
-        key("limiter-break", "V ohm", "none", "second slope: a zener and its resistor"),
+        key("limiter-break", "V ohm? from-rail:ohm? to-base:ohm?", "none", "second slope: zener volts, rail to zener, zener to base"),
         key("detector", "V below:V? ohm F watches{output both-halves across-load}", "-", "d.c. threshold and filter; symmetrical unless below")
             .band("V", 0.3, 20.0)
             .band("ohm", 100.0, 10e6)

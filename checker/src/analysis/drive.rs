@@ -1,0 +1,266 @@
+//! The drive chain at full output: what each follower carries and asks for, and the driver's locus.
+//! Must not know what is allowed.
+
+use std::cell::Cell;
+use std::rc::Rc;
+
+use super::case::{Case, Side};
+use super::chain::no_gain;
+use super::loads::{Driven, Spot};
+use super::rails::Mains;
+use crate::build::Needs;
+use crate::build::parts::{Flavour, Stage as Stated, both, three};
+use crate::physics::drive::{Driver, LocusPoint, Stage};
+use crate::physics::load::Impedance;
+use crate::physics::safe_area::{Allowance, Coverage};
+use crate::physics::sharing::Bank;
+use crate::physics::unit::{Amp, Hertz, Ohm, Volt};
+use crate::physics::waveform::Locus;
+
+/// One follower of the chain while the output swings to its peak.
+#[derive(Clone, Debug)]
+pub struct Link {
+    /// The stage.
+    pub stage: Rc<Stated>,
+    /// Current of its bank.
+    pub carries: Amp,
+    /// Greatest current that the stage before gives it, standing current included.
+    pub asks: Amp,
+    /// What its base-emitter resistor takes of that.
+    pub standing: Amp,
+}
+
+/// The peak of the output into the least impedance of a load.
+#[derive(Clone, Copy, Debug)]
+pub struct Peak {
+    /// Unsagged rail.
+    pub rail: Volt,
+    /// Peak output, V = Vu - drop.
+    pub volts: Volt,
+    /// Least modulus that one channel sees.
+    pub modulus: Ohm,
+    /// Where.
+    pub frequency: Hertz,
+    /// Peak current of one channel.
+    pub amps: Amp,
+}
+
+/// The worst point of a driver's locus in a load.
+#[derive(Clone, Copy, Debug)]
+pub struct DriverUse {
+    /// Where in the band.
+    pub spot: Spot,
+    /// Peak output.
+    pub amplitude: Volt,
+    /// The point, for all drivers of one side together.
+    pub point: LocusPoint,
+    /// Through one driver then.
+    pub amps: Amp,
+    /// Allowed then.
+    pub allowed: Amp,
+    /// What the data cover.
+    pub coverage: Coverage,
+}
+
+impl Case<'_> {
+    /// The greatest peak output there is: no load current, V = Vu - drop(0).
+    ///
+    /// # Errors
+    /// What rails or drop lack.
+    pub fn greatest_output(&self, mains: Mains) -> Result<Volt, Needs> {
+        let (rail, drop) = both(self.unsagged(mains), self.drop())?;
+        let volts = rail - drop.at(Amp::ZERO);
+        if volts > Volt::ZERO {
+            Ok(volts)
+        } else {
+            Err(Needs::because(format!(
+                "the drop takes all of the {:.1} V rail",
+                rail.0
+            )))
+        }
+    }
+
+    /// The greatest peak current into a load, and where.
+    ///
+    /// # Errors
+    /// As [`Case::burst`].
+    pub fn peak_into(&self, load: &Driven, mains: Mains) -> Result<Peak, Needs> {
+        let spot = load.minimum_seen();
+        let (rail, (volts, amps)) = both(self.unsagged(mains), self.greatest_current(mains, load))?;
+        Ok(Peak {
+            rail,
+            volts,
+            modulus: spot.seen.modulus(),
+            frequency: spot.frequency,
+            amps,
+        })
+    }
+
+    /// The gates of a MOSFET stage take no steady current: there is no chain of base currents.
+    #[must_use]
+    pub fn has_base_current(&self) -> bool {
+        self.output().upper.flavour == Flavour::Bipolar
+    }
+
+    /// The followers of one side from the output back, the output bank carrying a peak current.
+    ///
+    /// # Errors
+    /// What the stages do not state, and where a gain curve ends.
+    pub fn chain(&self, side: Side, peak: Amp) -> Result<Vec<Link>, Needs> {
+        if self.build.amplifier.driver_field.unstated() {
+            return Err(self.build.amplifier.driver_field.missing());
+        }
+        let mut carries = peak;
+        let mut links = Vec::new();
+        for stage in self.followers() {
+            let bank = self.follower(stage, side)?;
+            let asks = bank
+                .greatest_demand(carries)
+                .map_err(|e| no_gain(&stage.device(side).owner.name, &e))?;
+            links.push(Link {
+                stage: stage.clone(),
+                carries,
+                asks,
+                standing: bank.standing,
+            });
+            carries = asks;
+        }
+        Ok(links)
+    }
+
+    /// The driver stage.
+    ///
+    /// # Errors
+    /// When it is not stated.
+    pub fn driver(&self) -> Result<&Rc<Stated>, Needs> {
+        self.build
+            .amplifier
+            .driver
+            .as_ref()
+            .ok_or_else(|| self.build.amplifier.driver_field.missing())
+    }
+
+    /// The worst point of the driver's locus in a load at full drive, nominal mains, the drivers of a
+    /// side carrying alike.
+    ///
+    /// The frequency is searched with the driver's current as the output current over one gain, where
+    /// the locus of an output device has its worst point in closed form; there, and at the least
+    /// impedance, where the gain is lowest, the locus with the gain of each instant is walked.
+    ///
+    /// # Errors
+    /// What chain, load or supply do not state.
+    pub fn driver_use(
+        &self,
+        load: &Driven,
+        side: Side,
+        allowance: &Allowance,
+    ) -> Result<DriverUse, Needs> {
+        let output = self.output();
+        let (bank, (drivers, drop), rail) = three(
+            self.follower(output, side),
+            both(self.driver()?.pairs.need().copied(), self.drop()),
+            self.unsagged(Mains::Nominal),
+        )?;
+        let drivers = f64::from(drivers.max(1));
+        let peak = self.peak_into(load, Mains::Nominal)?;
+        let base = bank
+            .demand(peak.amps)
+            .map_err(|e| no_gain(&output.device(side).owner.name, &e))?;
+        let gain = peak.amps / base * drivers;
+        let vbe = Self::vbe(output.device(side));
+        let nothing = || {
+            Needs::because(format!(
+                "load {} cannot be driven on the {:.1} V rail",
+                load.name, rail.0
+            ))
+        };
+        let alone = Bank::even(1, Ohm::ZERO).ok_or_else(nothing)?;
+        let used = |z: Impedance| {
+            let amplitude = drop.burst(rail, z.modulus())?;
+            let scaled = Impedance {
+                resistance: z.resistance * gain,
+                reactance: z.reactance * gain,
+            };
+            Some(
+                allowance
+                    .usage(&Locus::new(&alone, rail - vbe, amplitude, scaled)?)
+                    .used,
+            )
+        };
+        let found = load
+            .worst(self.band()?, |_, z| used(z).unwrap_or(f64::NAN))
+            .ok_or_else(nothing)?;
+        let mut worst: Option<DriverUse> = None;
+        for spot in [found, load.minimum_seen()] {
+            let amplitude = drop.burst(rail, spot.seen.modulus()).ok_or_else(nothing)?;
+            let here = self.driver_locus(
+                &bank,
+                spot,
+                (rail, vbe, amplitude),
+                drivers,
+                allowance,
+                side,
+            )?;
+            if worst.is_none_or(|w| here.point.used > w.point.used) {
+                worst = Some(here);
+            }
+        }
+        worst.ok_or_else(nothing)
+    }
+
+    fn driver_locus(
+        &self,
+        bank: &Stage,
+        spot: Spot,
+        (rail, vbe, amplitude): (Volt, Volt, Volt),
+        drivers: f64,
+        allowance: &Allowance,
+        side: Side,
+    ) -> Result<DriverUse, Needs> {
+        let wrong = || Needs::because("the rail leaves the driver no voltage");
+        let model = Driver::new(bank, rail, vbe, spot.seen.modulus(), spot.seen.angle_rad())
+            .ok_or_else(wrong)?;
+        // the other half-cycle leaves the standing current at the greatest voltage
+        let highest = rail - vbe + amplitude;
+        let reach = allowance
+            .point_usage(highest, bank.standing / drivers)
+            .ok_or_else(wrong)?
+            .coverage;
+        let end = match reach {
+            Coverage::EndsAt { volts, .. } => volts,
+            _ => Volt(f64::INFINITY),
+        };
+        let (beyond, most) = (Cell::new(0.0_f64), Cell::new(0.0_f64));
+        let used = |volts: Volt, amps: Amp| {
+            let amps = amps / drivers;
+            most.set(most.get().max(amps.0));
+            if volts > end {
+                beyond.set(beyond.get().max(amps.0));
+            }
+            amps / allowance.allowed(volts)
+        };
+        let name = &self.output().device(side).owner.name;
+        let point = model
+            .worst_on_locus(amplitude, used)
+            .map_err(|e| no_gain(name, &e))?;
+        let coverage = match reach {
+            // one per cent of the peak current beyond the end of a curve does not matter
+            Coverage::EndsAt { .. } if beyond.get() <= 0.01 * most.get() => Coverage::Whole,
+            Coverage::EndsAt { volts, .. } => Coverage::EndsAt {
+                volts,
+                fraction: beyond.get() / most.get(),
+            },
+            Coverage::AboveBreakdown if bank.standing <= Amp::ZERO => Coverage::Whole,
+            other => other,
+        };
+        let amps = point.amps / drivers;
+        Ok(DriverUse {
+            spot,
+            amplitude,
+            point,
+            amps,
+            allowed: allowance.allowed(point.volts),
+            coverage,
+        })
+    }
+}
