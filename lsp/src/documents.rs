@@ -109,6 +109,8 @@ pub(crate) struct Owner {
     /// The last number given out: no two states of anything ever have the same.
     stamp: u64,
     paths: HashMap<Url, PathBuf>,
+    /// Texts that were edited and are not read yet, with their versions.
+    drafts: HashMap<Url, (i32, Arc<str>)>,
     snapshot: Snapshot,
     roots: BTreeMap<PathBuf, Root>,
     /// The document that was edited last: it is checked first.
@@ -133,6 +135,7 @@ impl Owner {
             ready: false,
             stamp: 0,
             paths: HashMap::new(),
+            drafts: HashMap::new(),
             snapshot: Snapshot::default(),
             roots: BTreeMap::new(),
             latest: None,
@@ -162,6 +165,9 @@ impl Owner {
     }
 
     fn handle(&mut self, event: Event) {
+        if !matches!(event, Event::Change(..) | Event::Checked(..)) {
+            self.read_drafts();
+        }
         match event {
             Event::Start(client, folders, options) => {
                 if let Some(options) = options {
@@ -207,7 +213,6 @@ impl Owner {
     fn put(&mut self, path: &Path, uri: &Url, version: i32, tree: Tree) {
         let buffer = Buffer { uri: uri.clone(), version, tree: Arc::new(tree) };
         Arc::make_mut(&mut self.snapshot.buffers).insert(path.to_owned(), buffer);
-        self.latest = Some(path.to_owned());
         self.touch(path);
     }
 
@@ -223,14 +228,31 @@ impl Owner {
         let path = self.snapshot.path_of(&uri);
         self.paths.insert(uri.clone(), path.clone());
         self.root(path.clone());
+        self.latest = Some(path.clone());
         self.put(&path, &uri, version, parse(text));
     }
 
+    /// Edits are made at once, and read when somebody wants to know: fifty typed together cost fifty
+    /// replacements of text and one reading.
     fn change(&mut self, uri: &Url, version: i32, changes: Vec<TextDocumentContentChangeEvent>) {
-        let Some(path) = self.paths.get(uri).cloned() else { return };
-        let Some(buffer) = self.snapshot.buffers.get(&path) else { return };
-        let tree = edited(&buffer.tree, changes, self.session.client.unit);
-        self.put(&path, uri, version, tree);
+        let Some(path) = self.paths.get(uri) else { return };
+        let Some(buffer) = self.snapshot.buffers.get(path) else { return };
+        let text = self.drafts.get(uri).map_or(&buffer.tree.text, |(_, text)| text);
+        let text = edited(text, changes, self.session.client.unit);
+        self.drafts.insert(uri.clone(), (version, text));
+        // what is on its way is stale already
+        let path = path.clone();
+        self.latest = Some(path.clone());
+        self.touch(&path);
+    }
+
+    fn read_drafts(&mut self) {
+        for (uri, (version, text)) in std::mem::take(&mut self.drafts) {
+            let Some(path) = self.paths.get(&uri).cloned() else { continue };
+            let Some(buffer) = self.snapshot.buffers.get(&path) else { continue };
+            let tree = buffer.tree.reparse(text);
+            self.put(&path, &uri, version, tree);
+        }
     }
 
     fn close(&mut self, uri: &Url) {
@@ -438,6 +460,7 @@ impl Owner {
 
     /// Begin what is due, answer what waited, clear what no check speaks of any more.
     fn settle(&mut self) {
+        self.read_drafts();
         let latest = self.latest.clone();
         let mut due: Vec<PathBuf> = Vec::new();
         for (path, root) in &mut self.roots {
@@ -489,24 +512,17 @@ fn content_modified() -> jsonrpc::Error {
 }
 
 /// A text after some edits, each of which counts on those before it.
-fn edited(tree: &Tree, changes: Vec<TextDocumentContentChangeEvent>, unit: ColumnUnit) -> Tree {
-    let mut text: Arc<str> = Arc::clone(&tree.text);
+fn edited(text: &Arc<str>, changes: Vec<TextDocumentContentChangeEvent>, unit: ColumnUnit) -> Arc<str> {
+    let mut text = Arc::clone(text);
     for change in changes {
         text = match change.range {
             None => change.text.into(),
             Some(range) => {
-                let fresh;
-                let index = if Arc::ptr_eq(&text, &tree.text) {
-                    tree.line_index()
-                } else {
-                    fresh = LineIndex::new(Arc::clone(&text));
-                    &fresh
-                };
-                let span = convert::span(index, range, unit);
+                let span = convert::span(&LineIndex::new(Arc::clone(&text)), range, unit);
                 let (head, tail) = (text.get(..span.start).unwrap_or(""), text.get(span.end..).unwrap_or(""));
                 [head, &change.text, tail].concat().into()
             }
         };
     }
-    tree.reparse(text)
+    text
 }

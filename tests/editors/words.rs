@@ -1,6 +1,8 @@
 //! The words that editors colour are those of the vocabulary. `UPDATE=1 cargo test -p derate-lsp --test
 //! editor_words` writes them anew.
 
+#![allow(clippy::unwrap_used, clippy::expect_used, clippy::panic, reason = "a test that cannot go on fails")]
+
 use std::collections::BTreeSet;
 use std::path::{Path, PathBuf};
 

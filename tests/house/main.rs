@@ -38,6 +38,8 @@ const MUST_NOT_KNOW: &[(&str, &[&str])] = &[
     ("checker/src/build", &["crate::analysis", "crate::rules", "crate::policy", "crate::render", "crate::physics::supply", "crate::physics::load"]),
     ("checker/src/analysis", &["crate::render", "crate::rules", "crate::waiver"]),
     ("checker/src/rules", &["crate::render", "tower_lsp"]),
+    ("checker/src/assist", &["crate::physics", "crate::analysis", "tower_lsp"]),
+    ("lsp/src", &["derate::physics", "derate::analysis", "derate::rules", "derate::build"]),
     ("checker/src/render", &["crate::physics::supply", "crate::physics::output_stage", "tower_lsp"]),
 ];
 

@@ -101,7 +101,7 @@ pub fn place<'a>(tree: &'a Tree, offset: usize, kinds: &Kinds) -> Place<'a> {
             let before = block.header.iter().filter(|t| t.span.end < offset).copied().collect();
             return Place::Header { kind, before };
         }
-        return match block.lines.iter().filter(|l| l.span.start <= offset).last() {
+        return match block.lines.iter().rfind(|l| l.span.start <= offset) {
             Some(line) if continues(tree, line, offset) => values(tree, kind, line, offset, kinds).map_or(Place::Key { block, kind }, Place::Values),
             _ => Place::Key { block, kind },
         };
@@ -110,7 +110,7 @@ pub fn place<'a>(tree: &'a Tree, offset: usize, kinds: &Kinds) -> Place<'a> {
         Item::Line(line) => Some(line),
         Item::Block(_) => None,
     });
-    let Some(line) = lines.filter(|l| l.span.start <= offset && continues(tree, l, offset)).last() else {
+    let Some(line) = lines.rev().find(|l| l.span.start <= offset && continues(tree, l, offset)) else {
         return Place::Outside;
     };
     if line.key.span.touches(offset) {

@@ -1,7 +1,7 @@
 //! What would settle a finding, as edits: re-solved changes, corrected words and units, lines for
 //! missing keys, waivers to fill in. Must not know any particular rule.
 
-use std::path::PathBuf;
+use std::path::Path;
 
 use ampspec_grammar::{Block, Span};
 
@@ -134,15 +134,15 @@ fn required(scene: &Scene<'_>, range: Span) -> Option<Fix> {
         return None;
     }
     let names: Vec<String> = lacking.iter().map(|k| format!("`{}`", k.name)).collect();
-    let edits = lines_into(&scene.path.to_path_buf(), text, block, &lacking);
+    let edits = lines_into(scene.path, text, block, &lacking);
     Some(Fix { title: format!("add {}, values to be filled in", names.join(", ")), edits, settles: None, preferred: false })
 }
 
 /// Lines with a key and no value, at the end of a block. A line without its value is an error until
 /// it is filled in: no number is ever made up.
-fn lines_into(path: &PathBuf, text: &str, block: &Block, keys: &[&Key]) -> Vec<(Spot, String)> {
+fn lines_into(path: &Path, text: &str, block: &Block, keys: &[&Key]) -> Vec<(Spot, String)> {
     let lines: String = keys.iter().map(|k| format!("    {} \n", k.name)).collect();
-    let edit = |span, text| vec![(Spot { path: path.clone(), span }, text)];
+    let edit = |span, text| vec![(Spot { path: path.to_path_buf(), span }, text)];
     let Some(close) = block.close else {
         let end = block.span.end;
         return edit(Span::at(end), format!("\n{}", lines.trim_end_matches('\n')));
