@@ -4,7 +4,6 @@
 mod input;
 mod save;
 mod solve;
-mod today;
 
 use std::io::{self, IsTerminal, Write};
 use std::path::PathBuf;

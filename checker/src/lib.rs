@@ -2,6 +2,7 @@
 //! it first.
 
 pub mod analysis;
+pub mod assist;
 pub mod build;
 pub mod finding;
 pub mod physics;
@@ -16,6 +17,7 @@ pub mod tables;
 #[cfg(test)]
 pub(crate) mod testing;
 pub mod tidy;
+pub mod today;
 pub mod vocabulary;
 pub mod waiver;
 

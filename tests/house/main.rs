@@ -92,6 +92,19 @@ const MUST_NOT_KNOW: &[(&str, &[&str])] = &[
     ),
     ("checker/src/rules", &["crate::render", "tower_lsp"]),
     (
+        "checker/src/assist",
+        &["crate::physics", "crate::analysis", "tower_lsp"],
+    ),
+    (
+        "lsp/src",
+        &[
+            "derate::physics",
+            "derate::analysis",
+            "derate::rules",
+            "derate::build",
+        ],
+    ),
+    (
         "checker/src/render",
         &[
             "crate::physics::supply",

@@ -3,7 +3,8 @@
 //!
 //! Nothing here fails: what cannot be read becomes a finding, and everything else is kept.
 
-use std::collections::HashMap;
+use std::cmp::Reverse;
+use std::collections::{HashMap, HashSet};
 use std::sync::Arc;
 
 use ampspec_grammar::{self as grammar, Item as TreeItem, Span, Token, TokenKind, Tree};
@@ -95,6 +96,7 @@ pub fn lower(file: FileId, tree: &Tree, kinds: &HashMap<String, &'static Block>)
     };
     lowering.problems();
     lowering.items();
+    lowering.one_a_line();
     lowering.out
 }
 
@@ -167,6 +169,36 @@ impl Lowering<'_> {
         }
     }
 
+    /// One fault of form for each source line: those after the first are mostly its consequences, and
+    /// a line that is being typed would flood. What the grammar has told counts.
+    fn one_a_line(&mut self) {
+        let tree = self.tree;
+        let mut told: HashSet<usize> = HashSet::new();
+        let mut order: Vec<usize> = (0..self.out.findings.len()).collect();
+        order.sort_by_key(|&at| {
+            self.out
+                .findings
+                .get(at)
+                .map(|f| (Reverse(f.severity), f.site.span))
+        });
+        let mut kept = vec![true; order.len()];
+        for at in order {
+            let Some(finding) = self.out.findings.get(at) else {
+                continue;
+            };
+            if !finding.rule.starts_with("syntax.") || finding.rule == "syntax.text" {
+                continue;
+            }
+            let fresh = !tree.is_faulty(finding.site.span)
+                && told.insert(tree.line_index().line_of(finding.site.span.start));
+            if let Some(keep) = kept.get_mut(at) {
+                *keep = fresh;
+            }
+        }
+        let mut kept = kept.into_iter();
+        self.out.findings.retain(|_| kept.next().unwrap_or(true));
+    }
+
     fn items(&mut self) {
         let tree = self.tree;
         for (at, item) in tree.items.iter().enumerate() {
@@ -221,6 +253,8 @@ impl Lowering<'_> {
                 }
             }
             "waive" => self.waive(line),
+            // the grammar has told what is wrong with this line
+            _ if self.tree.is_faulty(line.span) => {}
             _ => {
                 let names = STATEMENTS
                     .iter()
@@ -1544,7 +1578,8 @@ pub fn expected(key: &Key) -> String {
 }
 
 /// An item with its label, in words.
-fn describe(item: &Item) -> String {
+#[must_use]
+pub fn describe(item: &Item) -> String {
     match (&item.takes, item.label) {
         (Takes::Per(words), _) => {
             let words: Vec<&str> = words

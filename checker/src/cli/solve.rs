@@ -6,11 +6,11 @@ use std::path::PathBuf;
 use clap::ValueEnum;
 use derate::render::run::{FailOn, Run};
 use derate::render::terminal::Style;
+use derate::today::today;
 use derate::{Options, Outcome};
 use rayon::prelude::*;
 
 use super::input::{Given, Input, Shelf, inputs};
-use super::today::today;
 use super::{Colour, NOT_RUN};
 
 /// Options of every command that solves builds.

@@ -3,7 +3,8 @@
 use std::time::{SystemTime, UNIX_EPOCH};
 
 /// The date in UTC as `2030-01-01`.
-pub(crate) fn today() -> String {
+#[must_use]
+pub fn today() -> String {
     let since = SystemTime::now()
         .duration_since(UNIX_EPOCH)
         .unwrap_or_default();

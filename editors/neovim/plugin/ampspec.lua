@@ -1,0 +1,3 @@
+if vim.lsp.enable then
+  vim.lsp.enable("derate")
+end

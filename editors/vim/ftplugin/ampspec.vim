@@ -1,0 +1,2 @@
+" Comments and indentation of ampspec files.
+setlocal commentstring=#\ %s comments=:# expandtab shiftwidth=4
