@@ -248,9 +248,11 @@ def sag_batch(rails, idles, channels, ohms, need, bottom, judge, bridged, per_cy
         """Least of rail less what the output needs, per build and phase."""
         level = loads * volts[:, None] / ohm
         wanted = np.array([need[b](volts[b] * np.maximum(table[::2], 0)) for b in range(len(need))])
-        v = peak - fall + 0 * phases
+        # Begun where the last march ended: a weak supply takes long to settle.
+        v = begin["volts"] + 0 * phases
+        periods = begin["periods"]
         least = np.full_like(v, np.inf)
-        for k in range(per_cycle * (settle + judge)):
+        for k in range(per_cycle * (periods + judge)):
             j = k % per_cycle
             t = k * h
             at = lambda n: idle + level * np.where(halves, 0.5 * abs(table[n]), max(table[n], 0.0))
@@ -258,14 +260,16 @@ def sag_batch(rails, idles, channels, ohms, need, bottom, judge, bridged, per_cy
             out, mid, nxt = at(2 * j), at(2 * j + 1), at(2 * j + 2)
             i = np.maximum(wave[0] - v + esr * out, 0) / total
             a = (i - out) / farads
-            if k >= per_cycle * settle and 0 < 2 * j < per_cycle:
+            if k >= per_cycle * periods and 0 < 2 * j < per_cycle:
                 least = np.minimum(least, v + esr * (i - out) - wanted[:, j : j + 1])
             b = (np.maximum(wave[1] - v - h / 2 * a + esr * mid, 0) / total - mid) / farads
             c = (np.maximum(wave[1] - v - h / 2 * b + esr * mid, 0) / total - mid) / farads
             d = (np.maximum(wave[2] - v - h * c + esr * nxt, 0) / total - nxt) / farads
             v = v + h / 6 * (a + 2 * b + 2 * c + d)
+        begin.update(volts=v.mean(axis=1, keepdims=True), periods=settle)
         return least
 
+    begin = dict(volts=peak - fall, periods=4 * settle)
     count = len(rails)
     every = np.arange(count)
 
