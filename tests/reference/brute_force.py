@@ -137,8 +137,10 @@ def compare(b, mine, answer, table, unchecked):
         if margin is None:
             unchecked.setdefault(rule, []).append((b["file"], part, "no margin"))
             continue
+        if (rule, part) in mine.past and margin["verdict"] == "ok":
+            unchecked.setdefault(rule, []).append((b["file"], part, "ok, though the curve ends before the stress"))
         if margin["used_percent"] is None:
-            if not expected.get("beyond"):
+            if (rule, part) not in mine.past:
                 unchecked.setdefault(rule, []).append((b["file"], part, margin.get("note") or f"needs {margin['needs']}"))
             continue
         for field in RULES[rule][1].split():

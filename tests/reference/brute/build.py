@@ -9,9 +9,6 @@ import math
 import numpy as np
 
 
-RESONANCES = 1
-
-
 def tidy(value, digits=4):
     """A figure as a person would write it: few significant digits."""
     return float(f"{value:.{digits}g}")
@@ -121,7 +118,7 @@ def _load(rng, name, folder, kinds, base=None):
         lossy = 1.0
         le = tidy(rng.uniform(0.2, 1.2) * 1e-3 * size / 8, 3)
         resonances = []
-        for _ in range(RESONANCES):
+        for _ in range(int(rng.integers(1, 3))):
             resonances.append((tidy(rng.uniform(25, 90) * (1 if not resonances else 12), 3), tidy(rng.uniform(1.5, 6), 3), tidy(rng.uniform(0.3, 1.2), 3)))
         load.update(nominal=size, re=re, le=le, lossy=lossy, resonances=resonances)
     elif kind == "table":

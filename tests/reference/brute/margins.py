@@ -18,7 +18,14 @@ TURN = (np.arange(COUNT) + 0.5) * 2 * np.pi / COUNT
 
 
 class Worst(dict):
-    """Keeps, per rule and part, the candidate that uses most of its allowance."""
+    """Keeps, per rule and part, the candidate that uses most of its allowance.
+
+    `past` names those whose data end before the stress: such a margin may be over, never ok.
+    """
+
+    def __init__(self):
+        super().__init__()
+        self.past = set()
 
     def note(self, rule, part, stress, rating, used, **more):
         key = (rule, part)
@@ -261,7 +268,7 @@ def clip(case, ohms, cap):
 
 def rated_power(case, worst):
     for claim, ohms in case.b["rated"]:
-        for cap in case.cap_corners:
+        for cap in (min(case.cap_corners), max(case.cap_corners)):
             volts = clip(case, case.half(ohms), cap)
             watts = (case.halves * volts) ** 2 / 2 / ohms
             worst.note("power.rated-power", "board rated", watts, claim * 10**-0.05, 100 * claim / watts)
@@ -481,16 +488,23 @@ def safe_areas(case, worst):
         for z in case.sides(load):
             for d in sides:
                 found = soa_used(case, d, z, rail, tc, loads_.knots(load), loads_.flat(load))
-                note_soa(worst, "soa.reactive", d, out, found, load)
-            for used, where, d in driver_soa(case, load, z, rail):
-                worst.note("drive.driver-soa", "d1", used, 1.0, 100 * used / 0.8, load=load["name"], where=where)
+                note_soa(worst, "soa.reactive", d, out, found, load, past_end(lambda f, t: locus(case, z, rail, f, 1.0, t)[:2], d, case))
+            driver_soa(case, load, z, rail, worst)
 
 
-def note_soa(worst, rule, d, out, found, load):
+def note_soa(worst, rule, d, out, found, load, past=False):
     """One side's use of the safe area; both sides' where they have one curve."""
     used, where = found
     for name in [d["name"]] if out["down"].get("separate") else ["n1", "p1"]:
         worst.note(rule, name, used, 1.0, 100 * used / 0.8, load=load["name"], where=where)
+        worst.past |= {(rule, name)} if past else set()
+
+
+def past_end(path, device, case):
+    """Whether more than 1 % of a locus' peak current flows above the last point of the curve."""
+    f, t = np.meshgrid(np.geomspace(*case.b["band"], 101), np.linspace(0.001, 2 * np.pi, 361), indexing="ij")
+    v, i = path(f, t)
+    return bool(np.any((v > device["soa"][-1][1]) & (i > 0.01 * i.max(axis=1, keepdims=True))))
 
 
 def locus(case, z, rail, f, level, angle):
@@ -537,20 +551,27 @@ def soa_used(case, device, z, rail, tc, knots, flat):
     return search(function, case.b["band"], knots, flat)
 
 
-def driver_soa(case, load, z, rail):
+def driver_soa(case, load, z, rail, worst):
     d = case.b["drv"]["up"]
+    tc = case.hottest_driver
+    if not math.isfinite(tc):
+        return
 
-    def function(f, level, angle):
+    def path(f, level, angle):
         at = z(f)
         volts = stage_.burst_array(rail, case.b["drop"], np.abs(at)) * level
         bank = np.maximum(volts / np.abs(at) * np.sin(angle), 0)
         v = rail - volts * np.sin(angle + np.angle(at)) - case.b["out"]["up"]["vbe"]
-        return case.driver_current(bank) / safe_area.allowed(d, case.hottest_driver, v)
+        return v, case.driver_current(bank)
 
-    if math.isfinite(case.hottest_driver):
-        used, where = search(function, case.b["band"], loads_.knots(load), loads_.flat(load), 2 * np.pi)
-        if where is not None:
-            yield used, where, d
+    def function(f, level, angle):
+        v, i = path(f, level, angle)
+        return i / safe_area.allowed(d, tc, v)
+
+    used, where = search(function, case.b["band"], loads_.knots(load), loads_.flat(load), 2 * np.pi)
+    worst.note("drive.driver-soa", "d1", used, 1.0, 100 * used / 0.8, load=load["name"], where=where)
+    if past_end(lambda f, t: path(f, 1.0, t), d, case):
+        worst.past.add(("drive.driver-soa", "d1"))
 
 
 def limit_line(g, pairs, volts):

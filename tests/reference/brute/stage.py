@@ -44,7 +44,7 @@ def burst_array(rail, drop, ohms):
 
 
 def share(mean, count, spread, ohms, low):
-    """I1/I of the device that hogs, for a mean device current I (array): bisection on its excess.
+    """I1/I of the device that hogs, for a mean device current I (array): halving, then Newton.
 
     VT ln I1 + I1 RE1 - dV = VT ln I2 + I2 RE, I1 + (N - 1) I2 = N I, RE1 = RE (1 - low).
     """
@@ -53,13 +53,21 @@ def share(mean, count, spread, ohms, low):
         return np.ones_like(mean)
     first = ohms * (1 - low)
     lo, hi = np.ones_like(mean), np.full_like(mean, float(count) * (1 - 1e-15))
-    for _ in range(48):
+
+    def gap(s):
+        i1, i2 = s * mean, (count - s) * mean / (count - 1)
+        slope = VT * (1 / s + 1 / (count - s)) + mean * (first + ohms / (count - 1))
+        return VT * np.log(i1 / i2) + i1 * first - i2 * ohms - spread, slope
+
+    for _ in range(10):
         s = 0.5 * (lo + hi)
-        i1 = s * mean
-        i2 = (count - s) * mean / (count - 1)
-        over = VT * np.log(i1 / i2) + i1 * first - i2 * ohms - spread > 0
+        over = gap(s)[0] > 0
         hi, lo = np.where(over, s, hi), np.where(over, lo, s)
-    return 0.5 * (lo + hi)
+    s = 0.5 * (lo + hi)
+    for _ in range(6):
+        miss, slope = gap(s)
+        s = np.clip(s - miss / slope, lo, hi)
+    return s
 
 
 def share_one(mean, stage):
