@@ -206,6 +206,7 @@ impl Owner {
             Event::Stop => {
                 let buffers = Arc::clone(&self.snapshot.buffers);
                 self.roots.retain(|path, root| root.is_fresh() || buffers.contains_key(path));
+                self.remote.step(0);
             }
         }
     }
