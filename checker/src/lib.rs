@@ -62,8 +62,17 @@ pub struct Outcome {
 ///
 /// # Errors
 /// When the file cannot be read; the text says why.
-pub fn check(files: &dyn Files, path: &Path, shown: &str, options: &Options) -> Result<Outcome, String> {
-    let root = options.root.as_deref().or_else(|| path.parent()).unwrap_or(Path::new(""));
+pub fn check(
+    files: &dyn Files,
+    path: &Path,
+    shown: &str,
+    options: &Options,
+) -> Result<Outcome, String> {
+    let root = options
+        .root
+        .as_deref()
+        .or_else(|| path.parent())
+        .unwrap_or(Path::new(""));
     let mut project = project::load(files, path, shown, root, policy::NAMES)?;
     let mut findings = std::mem::take(&mut project.findings);
     let tables = tables::load(&project, files, &mut findings);
@@ -86,7 +95,10 @@ pub fn check(files: &dyn Files, path: &Path, shown: &str, options: &Options) -> 
     }
     let waivers = waiver::apply(&project, options, &mut builds, &mut findings);
     if options.changes {
-        for ((build, alternate), report) in variants(&project, options.build.as_deref()).into_iter().zip(&mut builds) {
+        for ((build, alternate), report) in variants(&project, options.build.as_deref())
+            .into_iter()
+            .zip(&mut builds)
+        {
             let view = View::new(&project, build, alternate, &[]);
             proposal::fill(&view, &mut report.margins, &|changes| {
                 let view = View::new(&project, build, alternate, changes);
@@ -97,16 +109,35 @@ pub fn check(files: &dyn Files, path: &Path, shown: &str, options: &Options) -> 
     findings.sort_by_key(|f| (f.site, f.rule));
     findings.dedup();
     let policies = policies.iter().map(Policy::report).collect();
-    Ok(Outcome { sources: project.sources, report: Report { findings, builds, policies, waivers } })
+    Ok(Outcome {
+        sources: project.sources,
+        report: Report {
+            findings,
+            builds,
+            policies,
+            waivers,
+        },
+    })
 }
 
 /// Every build, then every build with every alternate that may be used in it.
-fn variants<'p>(project: &'p Project, only: Option<&str>) -> Vec<(&'p Declared, Option<&'p Declared>)> {
+fn variants<'p>(
+    project: &'p Project,
+    only: Option<&str>,
+) -> Vec<(&'p Declared, Option<&'p Declared>)> {
     let mut out = Vec::new();
-    for build in project.of_kind("build").filter(|b| only.is_none_or(|o| b.name == o)) {
+    for build in project
+        .of_kind("build")
+        .filter(|b| only.is_none_or(|o| b.name == o))
+    {
         out.push((build, None));
         for alternate in project.of_kind("alternate") {
-            let named: Vec<&str> = alternate.lines.iter().filter(|l| l.key.name == "builds" && !l.none).flat_map(|l| build::view::names(l)).collect();
+            let named: Vec<&str> = alternate
+                .lines
+                .iter()
+                .filter(|l| l.key.name == "builds" && !l.none)
+                .flat_map(|l| build::view::names(l))
+                .collect();
             if named.is_empty() || named.contains(&build.name.as_str()) {
                 out.push((build, Some(alternate)));
             }
@@ -116,12 +147,23 @@ fn variants<'p>(project: &'p Project, only: Option<&str>) -> Vec<(&'p Declared, 
 }
 
 /// Solve one view: every region, every rule.
-fn solve(view: &View<'_>, options: &Options, tables: &Tables, findings: &mut Vec<Finding>) -> (BuildReport, Policy) {
+fn solve(
+    view: &View<'_>,
+    options: &Options,
+    tables: &Tables,
+    findings: &mut Vec<Finding>,
+) -> (BuildReport, Policy) {
     let reader = Reader::new(view);
     let typed = reader.build();
     let mut assumed = reader.assumed();
-    let named = options.policy.clone().or_else(|| typed.as_ref().ok().and_then(|b| b.policy.get().cloned()));
-    let policy = named.and_then(|name| Policy::named(&name, view, findings)).or_else(|| Policy::built_in("bench")).unwrap_or_else(Policy::bare);
+    let named = options
+        .policy
+        .clone()
+        .or_else(|| typed.as_ref().ok().and_then(|b| b.policy.get().cloned()));
+    let policy = named
+        .and_then(|name| Policy::named(&name, view, findings))
+        .or_else(|| Policy::built_in("bench"))
+        .unwrap_or_else(Policy::bare);
     let mut report = BuildReport {
         name: view.build.name.clone(),
         alternate: view.alternate.map(|a| a.name.clone()),
@@ -140,7 +182,11 @@ fn solve(view: &View<'_>, options: &Options, tables: &Tables, findings: &mut Vec
             }
             let mut margins = Margins::new(&report.name, report.alternate.as_deref(), &policy);
             let regions = build.mains.get().map(Vec::as_slice).unwrap_or_default();
-            let regions: Vec<_> = if regions.is_empty() { vec![None] } else { regions.iter().map(Some).collect() };
+            let regions: Vec<_> = if regions.is_empty() {
+                vec![None]
+            } else {
+                regions.iter().map(Some).collect()
+            };
             for region in regions {
                 let case = Case::new(&build, &policy, region, tables);
                 for registered in rules::ALL {
@@ -155,8 +201,16 @@ fn solve(view: &View<'_>, options: &Options, tables: &Tables, findings: &mut Vec
         }
         Err(needs) => {
             for need in needs.keys {
-                let message = format!("build `{}` cannot be checked: `{}` is missing", report.name, need.key);
-                findings.push(Finding::error("data.missing", need.site, message, "state it".to_owned()));
+                let message = format!(
+                    "build `{}` cannot be checked: `{}` is missing",
+                    report.name, need.key
+                );
+                findings.push(Finding::error(
+                    "data.missing",
+                    need.site,
+                    message,
+                    "state it".to_owned(),
+                ));
             }
             report.settled = false;
         }

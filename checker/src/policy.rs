@@ -4,7 +4,9 @@
 use crate::build::parts::{Duty, duty};
 use crate::build::statement::{Group, Select};
 use crate::build::view::View;
-use crate::finding::{Finding, Measure, PolicyEntry, PolicyReport, Severity, Site, TextEdit, Verdict};
+use crate::finding::{
+    Finding, Measure, PolicyEntry, PolicyReport, Severity, Site, TextEdit, Verdict,
+};
 use crate::rule::{Allow, Rule};
 use crate::rules;
 use crate::vocabulary::nearest;
@@ -68,7 +70,12 @@ const ECSS_FUSE: &str = "ECSS-Q-ST-30-11C Rev.2 table 6-17 (cermet fuses, up to 
 const STRICT: &str = "common practice for equipment that must not come back, no source";
 
 const BUILT_IN: &[BuiltIn] = &[
-    BuiltIn { name: "bench", angle_deg: 45.0, soa_at_high_mains: false, changes: &[] },
+    BuiltIn {
+        name: "bench",
+        angle_deg: 45.0,
+        soa_at_high_mains: false,
+        changes: &[],
+    },
     BuiltIn {
         name: "strict",
         angle_deg: 60.0,
@@ -84,7 +91,11 @@ const BUILT_IN: &[BuiltIn] = &[
             ("current.reservoir-ripple", Allow::Percent(80.0), STRICT),
             ("soa.resistive", Allow::Percent(100.0), STRICT),
             ("soa.reactive", Allow::Percent(100.0), STRICT),
-            ("thermal.junction", Allow::Below(40.0, f64::INFINITY), STRICT),
+            (
+                "thermal.junction",
+                Allow::Below(40.0, f64::INFINITY),
+                STRICT,
+            ),
             ("thermal.sink", Allow::Fixed(70.0, 90.0), STRICT),
             ("bias.stability", Allow::Fixed(0.5, 1.0), STRICT),
         ],
@@ -98,7 +109,11 @@ const BUILT_IN: &[BuiltIn] = &[
             ("voltage.driver", Allow::Percent(75.0), ECSS),
             ("voltage.voltage-stage", Allow::Percent(75.0), ECSS),
             ("voltage.gate", Allow::Percent(75.0), ECSS),
-            ("voltage.rectifier-reverse", Allow::Percent(75.0), ECSS_DIODE),
+            (
+                "voltage.rectifier-reverse",
+                Allow::Percent(75.0),
+                ECSS_DIODE,
+            ),
             ("current.device-peak", Allow::Percent(75.0), ECSS),
             ("current.rectifier-mean", Allow::Percent(75.0), ECSS_DIODE),
             ("current.emitter-mean", Allow::Percent(60.0), ECSS_RESISTOR),
@@ -121,8 +136,14 @@ impl Policy {
         let built_in = BUILT_IN.iter().find(|p| p.name == name)?;
         let entries = rules::ALL.iter().map(|r| {
             let change = built_in.changes.iter().find(|c| c.0 == r.rule.name);
-            let (allow, source) = change.map_or((r.rule.allow, r.rule.allow_source), |c| (c.1, c.2));
-            Entry { allow, severity: None, source, site: None }
+            let (allow, source) =
+                change.map_or((r.rule.allow, r.rule.allow_source), |c| (c.1, c.2));
+            Entry {
+                allow,
+                severity: None,
+                source,
+                site: None,
+            }
         });
         Some(Self {
             name: name.to_owned(),
@@ -140,7 +161,10 @@ impl Policy {
             name: "bench".to_owned(),
             from: None,
             entries: Vec::new(),
-            duty: Duty { fraction: 0.125, shown: "1/8".to_owned() },
+            duty: Duty {
+                fraction: 0.125,
+                shown: "1/8".to_owned(),
+            },
             angle_deg: 45.0,
             curve: Curve::Dc,
             soa_at_high_mains: false,
@@ -172,16 +196,24 @@ impl Policy {
         policy.name = name.to_owned();
         policy.from = seen.declared.from.as_ref().map(|f| f.0.clone());
         for line in &seen.lines {
-            let Some(group) = line.groups.first() else { continue };
+            let Some(group) = line.groups.first() else {
+                continue;
+            };
             match (line.key.name, &line.select) {
-                ("allow", Some(Select::Rule(rule))) => policy.allow(rule, group, line.site, findings),
-                ("severity", Some(Select::Rule(rule))) => policy.severity(rule, group, line.site, findings),
+                ("allow", Some(Select::Rule(rule))) => {
+                    policy.allow(rule, group, line.site, findings)
+                }
+                ("severity", Some(Select::Rule(rule))) => {
+                    policy.severity(rule, group, line.site, findings)
+                }
                 ("duty", _) => policy.duty = duty(group).unwrap_or(policy.duty),
                 ("angle", _) => policy.angle_deg = group.number("deg").unwrap_or(policy.angle_deg),
                 ("curve", _) if group.word("dc") == Some("pulse") => policy.curve = Curve::Pulse,
                 ("curve", _) => policy.curve = Curve::Dc,
                 // another way to write the allowance of that rule
-                ("detector-time", _) => policy.allow("protection.dc-fault-time", group, line.site, findings),
+                ("detector-time", _) => {
+                    policy.allow("protection.dc-fault-time", group, line.site, findings)
+                }
                 _ => {}
             }
         }
@@ -195,8 +227,15 @@ impl Policy {
     /// Allowance and severity of a rule.
     #[must_use]
     pub fn entry(&self, rule: &Rule) -> Entry {
-        let known = Self::index(rule.name).and_then(|at| self.entries.get(at)).copied();
-        known.unwrap_or(Entry { allow: rule.allow, severity: None, source: rule.allow_source, site: None })
+        let known = Self::index(rule.name)
+            .and_then(|at| self.entries.get(at))
+            .copied();
+        known.unwrap_or(Entry {
+            allow: rule.allow,
+            severity: None,
+            source: rule.allow_source,
+            site: None,
+        })
     }
 
     /// The severity of a margin with this verdict.
@@ -219,7 +258,9 @@ impl Policy {
     }
 
     fn allow(&mut self, rule: &str, group: &Group, site: Site, findings: &mut Vec<Finding>) {
-        let Some(entry) = self.rule(rule, site, findings) else { return };
+        let Some(entry) = self.rule(rule, site, findings) else {
+            return;
+        };
         let (percent, kelvin) = (group.number("%").map(|p| p * 100.0), group.number("K"));
         let number = group.number("num").or(group.number("s"));
         let wanted = match (entry.allow, percent, kelvin, number) {
@@ -232,13 +273,27 @@ impl Policy {
             (Allow::None, ..) => Err("nothing: this rule compares no stress; use `severity`"),
         };
         match wanted {
-            Ok(allow) => *entry = Entry { allow, source: "this policy's own line", site: Some(site), ..*entry },
-            Err(what) => findings.push(Finding::error("syntax.value", site, format!("`allow {rule}` does not take that"), format!("it takes {what}"))),
+            Ok(allow) => {
+                *entry = Entry {
+                    allow,
+                    source: "this policy's own line",
+                    site: Some(site),
+                    ..*entry
+                }
+            }
+            Err(what) => findings.push(Finding::error(
+                "syntax.value",
+                site,
+                format!("`allow {rule}` does not take that"),
+                format!("it takes {what}"),
+            )),
         }
     }
 
     fn severity(&mut self, rule: &str, group: &Group, site: Site, findings: &mut Vec<Finding>) {
-        let Some(entry) = self.rule(rule, site, findings) else { return };
+        let Some(entry) = self.rule(rule, site, findings) else {
+            return;
+        };
         entry.severity = match group.word("error") {
             Some("error") => Some(Severity::Error),
             Some("warning") => Some(Severity::Warning),
@@ -250,17 +305,30 @@ impl Policy {
     /// The table as reports show it.
     #[must_use]
     pub fn report(&self) -> PolicyReport {
-        let entries = rules::ALL.iter().zip(&self.entries).map(|(registered, entry)| {
-            let (value, unit) = match entry.allow {
-                Allow::Percent(p) => (p, "%"),
-                Allow::Below(k, _) => (k, "K"),
-                Allow::Fixed(n, _) => (n, registered.rule.unit),
-                Allow::None => return None,
-            };
-            let severity = entry.severity.unwrap_or(Severity::Error);
-            Some(PolicyEntry { rule: registered.rule.name, allowance: Measure::new(value, unit), severity, source: entry.source, site: entry.site })
-        });
-        PolicyReport { name: self.name.clone(), from: self.from.clone(), entries: entries.flatten().collect() }
+        let entries = rules::ALL
+            .iter()
+            .zip(&self.entries)
+            .map(|(registered, entry)| {
+                let (value, unit) = match entry.allow {
+                    Allow::Percent(p) => (p, "%"),
+                    Allow::Below(k, _) => (k, "K"),
+                    Allow::Fixed(n, _) => (n, registered.rule.unit),
+                    Allow::None => return None,
+                };
+                let severity = entry.severity.unwrap_or(Severity::Error);
+                Some(PolicyEntry {
+                    rule: registered.rule.name,
+                    allowance: Measure::new(value, unit),
+                    severity,
+                    source: entry.source,
+                    site: entry.site,
+                })
+            });
+        PolicyReport {
+            name: self.name.clone(),
+            from: self.from.clone(),
+            entries: entries.flatten().collect(),
+        }
     }
 }
 
@@ -272,7 +340,18 @@ pub fn unknown_rule(rule: &str, site: Site) -> Finding {
         Some(best) => format!("did you mean `{best}`? `derate explain` lists the rules"),
         None => "`derate explain` lists the rules".to_owned(),
     };
-    let mut finding = Finding::error("data.unknown-rule", site, format!("no rule is called `{rule}`"), hint);
-    finding.edits = near.iter().map(|n| TextEdit { site, text: (*n).to_owned() }).collect();
+    let mut finding = Finding::error(
+        "data.unknown-rule",
+        site,
+        format!("no rule is called `{rule}`"),
+        hint,
+    );
+    finding.edits = near
+        .iter()
+        .map(|n| TextEdit {
+            site,
+            text: (*n).to_owned(),
+        })
+        .collect();
     finding
 }

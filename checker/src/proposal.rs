@@ -30,12 +30,16 @@ pub fn fill(view: &View<'_>, margins: &mut [Margin], solve: &Solve<'_>) {
         if !matches!(margin.verdict, Verdict::Over | Verdict::Thin) || margin.waiver.is_some() {
             continue;
         }
-        let Some(rule) = rules::find(margin.rule) else { continue };
+        let Some(rule) = rules::find(margin.rule) else {
+            continue;
+        };
         for remedy in rule.remedies {
             if margin.changes.len() >= OFFERED {
                 break;
             }
-            margin.changes.extend(offer(view, margin, remedy, &before, solve, &mut tried));
+            margin
+                .changes
+                .extend(offer(view, margin, remedy, &before, solve, &mut tried));
         }
     }
 }
@@ -52,9 +56,19 @@ fn offer(
     let (kind, key) = remedy.key.split_once('.')?;
     let block = target(view, margin, kind)?;
     let seen = view.block(&block, kind)?;
-    let line = seen.lines.iter().find(|l| l.key.name == key && !l.none)?.clone();
-    let (group, slot) = line.groups.iter().enumerate().find_map(|(at, g)| Some((at, g.get(remedy.slot)?)))?;
-    let Value::Quantity(quantity) = &slot.value else { return None };
+    let line = seen
+        .lines
+        .iter()
+        .find(|l| l.key.name == key && !l.none)?
+        .clone();
+    let (group, slot) = line
+        .groups
+        .iter()
+        .enumerate()
+        .find_map(|(at, g)| Some((at, g.get(remedy.slot)?)))?;
+    let Value::Quantity(quantity) = &slot.value else {
+        return None;
+    };
     let values = values(remedy, quantity.value);
     let mut attempt = |value: f64| -> Option<(String, Arc<Vec<Margin>>)> {
         let text = written(value, quantity, remedy);
@@ -64,7 +78,12 @@ fn offer(
         });
         Some((text, margins.clone()))
     };
-    let clears = |after: &[Margin]| after.iter().find(|m| m.id == margin.id).is_some_and(|m| m.verdict == Verdict::Ok);
+    let clears = |after: &[Margin]| {
+        after
+            .iter()
+            .find(|m| m.id == margin.id)
+            .is_some_and(|m| m.verdict == Verdict::Ok)
+    };
     // the further, the better: if the furthest does not clear it, nothing of this series does
     let (mut low, mut high) = (0, values.len().checked_sub(1)?);
     if !clears(&attempt(*values.get(high)?)?.1) {
@@ -83,10 +102,17 @@ fn offer(
         return None;
     }
     let used_after = after.iter().find(|m| m.id == margin.id)?.used_percent?;
-    let old = view.project.sources.text(slot.site.file).get(slot.site.span.start..slot.site.span.end)?;
+    let old = view
+        .project
+        .sources
+        .text(slot.site.file)
+        .get(slot.site.span.start..slot.site.span.end)?;
     let bought_part = kind == "device";
     let title = if bought_part {
-        format!("another {block}: `{key}` of {text} or {}", if remedy.up { "more" } else { "less" })
+        format!(
+            "another {block}: `{key}` of {text} or {}",
+            if remedy.up { "more" } else { "less" }
+        )
     } else {
         format!("`{key}` of {block}: {text} instead of {old}")
     };
@@ -94,8 +120,19 @@ fn offer(
     Some(Change {
         title,
         // a data sheet is not edited: another part is bought
-        statements: if bought_part { Vec::new() } else { vec![format!("change {block} {statement}")] },
-        edits: if bought_part { Vec::new() } else { vec![TextEdit { site: slot.site, text }] },
+        statements: if bought_part {
+            Vec::new()
+        } else {
+            vec![format!("change {block} {statement}")]
+        },
+        edits: if bought_part {
+            Vec::new()
+        } else {
+            vec![TextEdit {
+                site: slot.site,
+                text,
+            }]
+        },
         used_after,
         also_moves: moves(margin, before, &after),
     })
@@ -118,11 +155,18 @@ fn breaks(before: &[Margin], after: &[Margin]) -> bool {
 fn moves(margin: &Margin, before: &[Margin], after: &[Margin]) -> Vec<AlsoMoves> {
     let mut out = Vec::new();
     for now in after.iter().filter(|m| m.id != margin.id) {
-        let then = before.iter().find(|m| m.id == now.id).and_then(|m| m.used_percent);
+        let then = before
+            .iter()
+            .find(|m| m.id == now.id)
+            .and_then(|m| m.used_percent);
         if let Some((then, now_used)) = then.zip(now.used_percent)
             && (then - now_used).abs() > MENTIONED
         {
-            out.push(AlsoMoves { id: now.id.clone(), used_before: then, used_after: now_used });
+            out.push(AlsoMoves {
+                id: now.id.clone(),
+                used_before: then,
+                used_after: now_used,
+            });
         }
     }
     out
@@ -140,7 +184,9 @@ fn target(view: &View<'_>, margin: &Margin, kind: &str) -> Option<String> {
     while at < queue.len() && queue.len() < 200 {
         let name = queue.get(at)?.clone();
         at += 1;
-        let Some(declared) = view.project.find(view.name(&name)) else { continue };
+        let Some(declared) = view.project.find(view.name(&name)) else {
+            continue;
+        };
         if declared.kind.kind == kind {
             return Some(declared.name.clone());
         }
@@ -159,14 +205,28 @@ fn target(view: &View<'_>, margin: &Margin, kind: &str) -> Option<String> {
 /// Values that can be bought or set, from the nearest outwards.
 fn values(remedy: &Remedy, now: f64) -> Vec<f64> {
     let step = |series: Preferred, from: f64| {
-        let next = if remedy.up { from * (1.0 + 1e-6) } else { from * (1.0 - 1e-6) };
-        if remedy.up { series.at_or_above(next) } else { series.at_or_below(next) }
+        let next = if remedy.up {
+            from * (1.0 + 1e-6)
+        } else {
+            from * (1.0 - 1e-6)
+        };
+        if remedy.up {
+            series.at_or_above(next)
+        } else {
+            series.at_or_below(next)
+        }
     };
     let series = match remedy.series {
         Series::Count => {
             let up = (1..=REACH).map(|k| now + k as f64);
-            let down = (1..=REACH).map(|k| now - k as f64).take_while(|n| *n >= 1.0);
-            return if remedy.up { up.collect() } else { down.collect() };
+            let down = (1..=REACH)
+                .map(|k| now - k as f64)
+                .take_while(|n| *n >= 1.0);
+            return if remedy.up {
+                up.collect()
+            } else {
+                down.collect()
+            };
         }
         Series::E12 => Preferred::E12,
         Series::E24 | Series::Heatsink | Series::TwoDigits => Preferred::E24,
@@ -193,14 +253,16 @@ fn written(value: f64, like: &Quantity, remedy: &Remedy) -> String {
         return format!("{value}");
     }
     let mut text = match like.dimension {
-        Dimension::Resistance => letter_code(value, like.dimension).unwrap_or_else(|| format_exact(value, like.dimension)),
+        Dimension::Resistance => letter_code(value, like.dimension)
+            .unwrap_or_else(|| format_exact(value, like.dimension)),
         other => format_exact(value, other),
     };
     if like.form == crate::quantity::Form::Rms {
         text = text.replace(" V", " Vac");
     }
     if let Some(tolerance) = &like.tolerance
-        && let (crate::quantity::Amount::Relative(plus), crate::quantity::Amount::Relative(minus)) = (tolerance.plus, tolerance.minus)
+        && let (crate::quantity::Amount::Relative(plus), crate::quantity::Amount::Relative(minus)) =
+            (tolerance.plus, tolerance.minus)
     {
         let percent = |x: f64| format_exact(x, Dimension::Ratio);
         if (plus - minus).abs() < 1e-12 {
@@ -215,7 +277,10 @@ fn written(value: f64, like: &Quantity, remedy: &Remedy) -> String {
 /// The line with another value in one slot.
 fn with_value(line: &Statement, group: usize, slot: &str, value: f64) -> Statement {
     let mut line = line.clone();
-    if let Some(found) = line.groups.get_mut(group).and_then(|g| g.slots.iter_mut().find(|s| s.slot == slot))
+    if let Some(found) = line
+        .groups
+        .get_mut(group)
+        .and_then(|g| g.slots.iter_mut().find(|s| s.slot == slot))
         && let Value::Quantity(q) = &mut found.value
     {
         q.value = value;

@@ -139,14 +139,23 @@ pub struct Compared {
 /// Rating and stress are in the rule's unit. `None` if a number is not finite: no NaN or infinity
 /// ever reaches a margin.
 #[must_use]
-pub fn compare(rule: &Rule, allow: Allow, stress: f64, rating: f64, ambient: f64) -> Option<Compared> {
+pub fn compare(
+    rule: &Rule,
+    allow: Allow,
+    stress: f64,
+    rating: f64,
+    ambient: f64,
+) -> Option<Compared> {
     let (allowance, rating) = match allow {
         Allow::Percent(p) => (rating * p / 100.0, rating),
         Allow::Below(k, most) => ((rating - k).min(most), rating),
         Allow::Fixed(a, hard) => (a, hard),
         Allow::None => return None,
     };
-    if ![stress, rating, allowance, ambient].iter().all(|x| x.is_finite()) {
+    if ![stress, rating, allowance, ambient]
+        .iter()
+        .all(|x| x.is_finite())
+    {
         return None;
     }
     let verdict = match rule.sense {
@@ -162,10 +171,18 @@ pub fn compare(rule: &Rule, allow: Allow, stress: f64, rating: f64, ambient: f64
         Sense::Temperature => (stress - ambient, allowance - ambient),
         Sense::AtMost | Sense::Fault => (stress, allowance),
     };
-    let used_percent = if under > 0.0 { Some(100.0 * over / under) } else { None };
+    let used_percent = if under > 0.0 {
+        Some(100.0 * over / under)
+    } else {
+        None
+    };
     let used_percent = used_percent.filter(|u| u.is_finite());
     // no rating left, yet something is asked of it
-    let verdict = if used_percent.is_none() && over > 0.0 { Verdict::Over } else { verdict };
+    let verdict = if used_percent.is_none() && over > 0.0 {
+        Verdict::Over
+    } else {
+        verdict
+    };
     Some(Compared {
         rating: Measure::new(rating, rule.unit),
         allowance: Measure::new(allowance, rule.unit),
@@ -192,12 +209,19 @@ mod tests {
         allow: Allow::Percent(90.0),
         allow_source: "",
         remedies: &[],
-        example: Example { kit: "", edits: &[] },
+        example: Example {
+            kit: "",
+            edits: &[],
+        },
     };
 
     #[test]
     fn verdicts_meet_at_the_limits_before_rounding() {
-        let verdict = |stress| compare(&RULE, RULE.allow, stress, 100.0, 0.0).unwrap().verdict;
+        let verdict = |stress| {
+            compare(&RULE, RULE.allow, stress, 100.0, 0.0)
+                .unwrap()
+                .verdict
+        };
         assert_eq!(verdict(90.0), Verdict::Ok);
         assert_eq!(verdict(90.000_001), Verdict::Thin);
         assert_eq!(verdict(100.0), Verdict::Thin);
@@ -213,7 +237,11 @@ mod tests {
 
     #[test]
     fn temperatures_count_from_ambient() {
-        let rule = Rule { sense: Sense::Temperature, allow: Allow::Below(25.0, f64::INFINITY), ..RULE };
+        let rule = Rule {
+            sense: Sense::Temperature,
+            allow: Allow::Below(25.0, f64::INFINITY),
+            ..RULE
+        };
         let c = compare(&rule, rule.allow, 100.0, 150.0, 40.0).unwrap();
         let want = 100.0 * 60.0 / 85.0; // (100 - 40) / (150 - 25 - 40)
         assert!((c.used_percent.unwrap() - want).abs() < 1e-12);
@@ -221,11 +249,20 @@ mod tests {
 
     #[test]
     fn more_is_better_counts_the_other_way() {
-        let rule = Rule { sense: Sense::AtLeast, allow: Allow::Fixed(10_000.0, 2_000.0), ..RULE };
+        let rule = Rule {
+            sense: Sense::AtLeast,
+            allow: Allow::Fixed(10_000.0, 2_000.0),
+            ..RULE
+        };
         let verdict = |h| compare(&rule, rule.allow, h, 0.0, 0.0).unwrap().verdict;
         assert_eq!(verdict(10_000.0), Verdict::Ok);
         assert_eq!(verdict(9_999.0), Verdict::Thin);
         assert_eq!(verdict(1_999.0), Verdict::Over);
-        assert_eq!(compare(&rule, rule.allow, 5_000.0, 0.0, 0.0).unwrap().used_percent, Some(200.0));
+        assert_eq!(
+            compare(&rule, rule.allow, 5_000.0, 0.0, 0.0)
+                .unwrap()
+                .used_percent,
+            Some(200.0)
+        );
     }
 }

@@ -343,11 +343,16 @@ mod tests {
             let fires = |text: &str| {
                 let report = testing::report(text);
                 let margins = report.builds.iter().flat_map(|b| &b.margins);
-                margins.filter(|m| m.rule == rule.name).any(|m| matches!(m.verdict, Verdict::Over | Verdict::Thin))
+                margins
+                    .filter(|m| m.rule == rule.name)
+                    .any(|m| matches!(m.verdict, Verdict::Over | Verdict::Thin))
                     || report.findings.iter().any(|f| f.rule == rule.name)
             };
             if fires(&kit) {
-                wrong.push(format!("{} fires on the sound kit {}", rule.name, rule.example.kit));
+                wrong.push(format!(
+                    "{} fires on the sound kit {}",
+                    rule.name, rule.example.kit
+                ));
             }
             if !fires(&testing::edited(&kit, rule.example.edits)) {
                 wrong.push(format!("{} does not fire on its example", rule.name));
@@ -363,7 +368,12 @@ mod tests {
         let mut wrong = Vec::new();
         for kit in ["tern60", "tern-family", "heron80-mosfet", "tern100-limiter"] {
             let report = testing::report(&testing::kit(kit));
-            wrong.extend(report.findings.iter().map(|f| format!("{kit}: {} {}", f.rule, f.message)));
+            wrong.extend(
+                report
+                    .findings
+                    .iter()
+                    .map(|f| format!("{kit}: {} {}", f.rule, f.message)),
+            );
             let margins = report.builds.iter().flat_map(|b| &b.margins);
             let faults = margins.filter(|m| matches!(m.verdict, Verdict::Over | Verdict::Thin));
             wrong.extend(faults.map(|m| format!("{kit}: {} {:?}", m.id, m.used_percent)));
@@ -375,17 +385,34 @@ mod tests {
     fn names_are_unique_and_every_record_is_whole() {
         for (at, registered) in ALL.iter().enumerate() {
             let r = registered.rule;
-            assert!(!ALL[..at].iter().any(|other| other.rule.name == r.name), "{} twice", r.name);
-            assert!(r.name.contains('.') && r.why.len() > 60 && !r.compares.is_empty() && !r.source.is_empty(), "{}", r.name);
+            assert!(
+                !ALL[..at].iter().any(|other| other.rule.name == r.name),
+                "{} twice",
+                r.name
+            );
+            assert!(
+                r.name.contains('.')
+                    && r.why.len() > 60
+                    && !r.compares.is_empty()
+                    && !r.source.is_empty(),
+                "{}",
+                r.name
+            );
             for key in r.reads {
                 let (block, name) = key.split_once('.').unwrap();
-                let known = crate::vocabulary::block_kind(block).is_some_and(|b| b.key(name).is_some());
+                let known =
+                    crate::vocabulary::block_kind(block).is_some_and(|b| b.key(name).is_some());
                 assert!(known, "{} reads unknown key {key}", r.name);
             }
             for remedy in r.remedies {
                 let (block, name) = remedy.key.split_once('.').unwrap();
                 let key = crate::vocabulary::block_kind(block).and_then(|b| b.key(name));
-                assert!(key.is_some_and(|k| k.shape().item(remedy.slot).is_some()), "{}: remedy {}", r.name, remedy.key);
+                assert!(
+                    key.is_some_and(|k| k.shape().item(remedy.slot).is_some()),
+                    "{}: remedy {}",
+                    r.name,
+                    remedy.key
+                );
             }
         }
     }

@@ -71,7 +71,9 @@ pub fn normal(path: &Path) -> PathBuf {
     for part in path.components() {
         match part {
             Component::CurDir => {}
-            Component::ParentDir if matches!(out.components().next_back(), Some(Component::Normal(_))) => {
+            Component::ParentDir
+                if matches!(out.components().next_back(), Some(Component::Normal(_))) =>
+            {
                 out.pop();
             }
             other => out.push(other),
@@ -105,7 +107,12 @@ impl Sources {
     pub fn add(&mut self, path: PathBuf, name: String, tree: Arc<Tree>) -> FileId {
         let id = FileId(u32::try_from(self.files.len()).unwrap_or(u32::MAX));
         self.by_path.insert(path.clone(), id);
-        self.files.push(File { name, path, tree, uses: Vec::new() });
+        self.files.push(File {
+            name,
+            path,
+            tree,
+            uses: Vec::new(),
+        });
         id
     }
     /// The file with this id. Ids come from [`Sources::add`] of the same value.

@@ -18,7 +18,9 @@ impl Files for Beside<'_> {
         if path.ends_with("under-test.ampspec") {
             return Ok(self.0.into());
         }
-        std::fs::read_to_string(path).map(Into::into).map_err(|e| e.to_string())
+        std::fs::read_to_string(path)
+            .map(Into::into)
+            .map_err(|e| e.to_string())
     }
     fn resolve(&self, path: &Path) -> PathBuf {
         normal(path)
@@ -34,7 +36,11 @@ pub(crate) fn kit(name: &str) -> String {
 fn closed_up(text: &str) -> String {
     let line = |line: &str| {
         let indent = line.len() - line.trim_start().len();
-        format!("{}{}", &line[..indent], line.split_whitespace().collect::<Vec<_>>().join(" "))
+        format!(
+            "{}{}",
+            &line[..indent],
+            line.split_whitespace().collect::<Vec<_>>().join(" ")
+        )
     };
     text.split('\n').map(line).collect::<Vec<_>>().join("\n")
 }
@@ -57,17 +63,42 @@ pub(crate) fn tern60(edits: &[(&str, &str)]) -> String {
 
 /// Check a text as a file beside the demo kits.
 pub(crate) fn report(text: &str) -> Report {
-    let options = crate::Options { today: "2026-06-01".to_owned(), ..crate::Options::default() };
-    crate::check(&Beside(text), &kits().join("under-test.ampspec"), "under-test.ampspec", &options).unwrap().report
+    let options = crate::Options {
+        today: "2026-06-01".to_owned(),
+        ..crate::Options::default()
+    };
+    crate::check(
+        &Beside(text),
+        &kits().join("under-test.ampspec"),
+        "under-test.ampspec",
+        &options,
+    )
+    .unwrap()
+    .report
 }
 
 /// The margin of a rule for a part, in the first build, without alternate.
 pub(crate) fn margin(text: &str, rule: &str, part: &str) -> Margin {
     let report = report(text);
     let build = report.builds.first().expect("a build");
-    let found = build.margins.iter().find(|m| m.rule == rule && m.part.name == part);
-    let known: Vec<_> = build.margins.iter().filter(|m| m.rule == rule).map(|m| &m.part.name).collect();
-    found.unwrap_or_else(|| panic!("no margin of {rule} for {part}; there are {known:?}; findings {:#?}", report.findings)).clone()
+    let found = build
+        .margins
+        .iter()
+        .find(|m| m.rule == rule && m.part.name == part);
+    let known: Vec<_> = build
+        .margins
+        .iter()
+        .filter(|m| m.rule == rule)
+        .map(|m| &m.part.name)
+        .collect();
+    found
+        .unwrap_or_else(|| {
+            panic!(
+                "no margin of {rule} for {part}; there are {known:?}; findings {:#?}",
+                report.findings
+            )
+        })
+        .clone()
 }
 
 /// Verdict of a rule for a part in the first build.

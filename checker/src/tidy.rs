@@ -16,15 +16,20 @@ use crate::vocabulary::{Selector, block_kind};
 /// Why nothing is changed.
 pub fn tidy(text: &str) -> Result<String, String> {
     let tree = parse(text);
-    let kinds: HashMap<String, _> = declared_kinds(&tree).map(|(name, kind)| (name.to_owned(), kind)).collect();
+    let kinds: HashMap<String, _> = declared_kinds(&tree)
+        .map(|(name, kind)| (name.to_owned(), kind))
+        .collect();
     let lowered = lower(FileId(0), &tree, &kinds);
     let mut spellings: HashMap<usize, (usize, Vec<String>)> = HashMap::new();
     for (span, text) in lowered.spellings {
-        let entry = spellings.entry(span.start).or_insert((span.end, Vec::new()));
+        let entry = spellings
+            .entry(span.start)
+            .or_insert((span.end, Vec::new()));
         entry.0 = entry.0.max(span.end);
         entry.1.extend(text.split_whitespace().map(str::to_owned));
     }
-    layout(&tree, &Usual { spellings }).ok_or_else(|| "the tidied text would not be read as this one is".to_owned())
+    layout(&tree, &Usual { spellings })
+        .ok_or_else(|| "the tidied text would not be read as this one is".to_owned())
 }
 
 /// The usual spellings of one text, by where they start: where they end, and the tokens.
@@ -43,7 +48,13 @@ impl Spelling for Usual {
             None => Some(0),
             Some(Selector::Rule) => None,
             Some(Selector::Words(words, _)) => {
-                let tokens: Vec<&str> = line.groups.first()?.tokens.iter().map(|t| t.text(&tree.text)).collect();
+                let tokens: Vec<&str> = line
+                    .groups
+                    .first()?
+                    .tokens
+                    .iter()
+                    .map(|t| t.text(&tree.text))
+                    .collect();
                 if tokens.first().is_some_and(|t| words.contains(t)) {
                     return Some(1);
                 }
@@ -55,7 +66,13 @@ impl Spelling for Usual {
         }
     }
 
-    fn group(&self, tree: &Tree, _: Option<&Block>, line: &Line, group: usize) -> Option<Vec<String>> {
+    fn group(
+        &self,
+        tree: &Tree,
+        _: Option<&Block>,
+        line: &Line,
+        group: usize,
+    ) -> Option<Vec<String>> {
         let tokens = &line.groups.get(group)?.tokens;
         let mut out = Vec::with_capacity(tokens.len());
         let mut reached = 0;
@@ -86,7 +103,15 @@ mod tests {
     fn the_trades_habits_become_the_usual_spelling() {
         let before = "ampspec 1\ntransformer t {\n secondary 2x28VAC\n}\ntransformer u {\n secondary 28-0-28\n}\nsupply s {\nreservoir 10000uF/63V per rail\nfuse mains T3.15A\n}\nstage o {\nemitter 4K7 5W\ninsulator 0,35 degC/W\n}\n";
         let after = tidy(before).unwrap();
-        for text in ["secondary", "2 x 28 Vac", "10000 uF 63 V per rail", "fuse mains", "3.15 A slow", "4k7 5 W", "0.35 K/W"] {
+        for text in [
+            "secondary",
+            "2 x 28 Vac",
+            "10000 uF 63 V per rail",
+            "fuse mains",
+            "3.15 A slow",
+            "4k7 5 W",
+            "0.35 K/W",
+        ] {
             assert!(after.contains(text), "{text} in\n{after}");
         }
         assert_eq!(tidy(&after).unwrap(), after);

@@ -41,12 +41,35 @@ pub struct Block {
     pub keys: &'static [Key],
 }
 
-const fn key(name: &'static str, shape: &'static str, default: &'static str, meaning: &'static str) -> Key {
-    Key { name, shape, default, meaning, symbol: "", repeats: false, bands: [None; 6] }
+const fn key(
+    name: &'static str,
+    shape: &'static str,
+    default: &'static str,
+    meaning: &'static str,
+) -> Key {
+    Key {
+        name,
+        shape,
+        default,
+        meaning,
+        symbol: "",
+        repeats: false,
+        bands: [None; 6],
+    }
 }
 
-const fn block(kind: &'static str, flavours: &'static [&'static str], meaning: &'static str, keys: &'static [Key]) -> Block {
-    Block { kind, flavours, meaning, keys }
+const fn block(
+    kind: &'static str,
+    flavours: &'static [&'static str],
+    meaning: &'static str,
+    keys: &'static [Key],
+) -> Block {
+    Block {
+        kind,
+        flavours,
+        meaning,
+        keys,
+    }
 }
 
 impl Key {
@@ -74,7 +97,11 @@ impl Key {
     /// Plausible values of a slot.
     #[must_use]
     pub fn plausible(&self, slot: &str) -> Option<(f64, f64)> {
-        self.bands.iter().flatten().find(|b| b.0 == slot).map(|b| (b.1, b.2))
+        self.bands
+            .iter()
+            .flatten()
+            .find(|b| b.0 == slot)
+            .map(|b| (b.1, b.2))
     }
 }
 
@@ -120,7 +147,9 @@ impl Key {
 pub fn nearest<'a>(word: &str, names: impl Iterator<Item = &'a str>) -> Vec<&'a str> {
     let mut scored: Vec<(f64, &str)> = names
         .map(|name| (strsim::jaro_winkler(word, name), name))
-        .filter(|(score, name)| *score > 0.82 || strsim::damerau_levenshtein(word, name) <= 1 + name.len() / 6)
+        .filter(|(score, name)| {
+            *score > 0.82 || strsim::damerau_levenshtein(word, name) <= 1 + name.len() / 6
+        })
         .collect();
     scored.sort_by(|a, b| b.0.total_cmp(&a.0).then(a.1.cmp(b.1)));
     scored.dedup();
@@ -141,14 +170,23 @@ mod tests {
                 let shape = key.shape();
                 assert!(shape.special.is_some() || !shape.items.is_empty(), "{name}");
                 for (at, item) in shape.items.iter().enumerate() {
-                    assert!(!shape.items[..at].iter().any(|i| i.slot == item.slot), "{name}: slot {} twice", item.slot);
-                    let Takes::Quantity { dimension, .. } = item.takes else { continue };
+                    assert!(
+                        !shape.items[..at].iter().any(|i| i.slot == item.slot),
+                        "{name}: slot {} twice",
+                        item.slot
+                    );
+                    let Takes::Quantity { dimension, .. } = item.takes else {
+                        continue;
+                    };
                     let unlabelled = shape.items.iter().filter(|i| i.label.is_none());
                     let same = unlabelled.filter(|i| matches!(i.takes, Takes::Quantity { dimension: d, .. } if d == dimension));
                     assert!(same.count() <= 1, "{name}: two unlabelled {dimension:?}");
                 }
                 for (slot, low, high) in key.bands.iter().flatten() {
-                    assert!(shape.item(slot).is_some(), "{name}: band for unknown slot {slot}");
+                    assert!(
+                        shape.item(slot).is_some(),
+                        "{name}: band for unknown slot {slot}"
+                    );
                     assert!(low < high, "{name}: empty band");
                 }
             }

@@ -9,7 +9,12 @@ use crate::rules;
 
 /// Apply every waiver of the project. Margins and findings they accept are marked, and stay. Waivers
 /// that accept nothing are findings.
-pub fn apply(project: &Project, options: &Options, builds: &mut [BuildReport], findings: &mut Vec<Finding>) -> Vec<Waiver> {
+pub fn apply(
+    project: &Project,
+    options: &Options,
+    builds: &mut [BuildReport],
+    findings: &mut Vec<Finding>,
+) -> Vec<Waiver> {
     let mut waivers = Vec::new();
     for text in &project.waivers {
         let Some(site) = text.site else { continue };
@@ -24,25 +29,43 @@ pub fn apply(project: &Project, options: &Options, builds: &mut [BuildReport], f
             state: WaiverState::Honoured,
             site,
         };
-        let refuse = |message: String, hint: &str| Finding::error("data.stale-waiver", site, message, hint.to_owned());
+        let refuse = |message: String, hint: &str| {
+            Finding::error("data.stale-waiver", site, message, hint.to_owned())
+        };
         if waiver.reason.trim().is_empty() {
             waiver.state = WaiverState::Refused;
-            findings.push(refuse("this waiver gives no reason, so it waives nothing".to_owned(), "add `because \"why it is acceptable\"`"));
+            findings.push(refuse(
+                "this waiver gives no reason, so it waives nothing".to_owned(),
+                "add `because \"why it is acceptable\"`",
+            ));
         } else if rules::find(&waiver.rule).is_none() {
             waiver.state = WaiverState::Refused;
             findings.push(unknown_rule(&waiver.rule, site));
         } else if waiver.until.as_deref().is_some_and(|d| !is_date(d)) {
             waiver.state = WaiverState::Refused;
-            findings.push(refuse("this waiver's date is not understood, so it waives nothing".to_owned(), "write `until 2030-01-31`"));
-        } else if waiver.until.as_deref().is_some_and(|d| d < options.today.as_str()) {
+            findings.push(refuse(
+                "this waiver's date is not understood, so it waives nothing".to_owned(),
+                "write `until 2030-01-31`",
+            ));
+        } else if waiver
+            .until
+            .as_deref()
+            .is_some_and(|d| d < options.today.as_str())
+        {
             waiver.state = WaiverState::Expired;
             let date = waiver.until.as_deref().unwrap_or_default();
-            findings.push(refuse(format!("this waiver ran out on {date}, so it waives nothing"), "settle the finding, or look again and set a later date"));
+            findings.push(refuse(
+                format!("this waiver ran out on {date}, so it waives nothing"),
+                "settle the finding, or look again and set a later date",
+            ));
         } else if !accept(&waiver, waivers.len(), builds, findings) && options.build.is_none() {
             // with one build picked out, what waives another matches nothing and is not stale
             waiver.state = WaiverState::Stale;
             let hint = "remove it, or correct the names: a waiver that matches nothing hides nothing, but misleads";
-            findings.push(refuse("this waiver matches no finding any more".to_owned(), hint).at(Severity::Warning));
+            findings.push(
+                refuse("this waiver matches no finding any more".to_owned(), hint)
+                    .at(Severity::Warning),
+            );
         }
         waivers.push(waiver);
     }
@@ -50,22 +73,32 @@ pub fn apply(project: &Project, options: &Options, builds: &mut [BuildReport], f
 }
 
 /// Mark what this waiver accepts; whether there was anything.
-fn accept(waiver: &Waiver, index: usize, builds: &mut [BuildReport], findings: &mut [Finding]) -> bool {
+fn accept(
+    waiver: &Waiver,
+    index: usize,
+    builds: &mut [BuildReport],
+    findings: &mut [Finding],
+) -> bool {
     let mut any = false;
     for build in builds {
-        let here = waiver.build.as_ref().is_none_or(|b| *b == build.name) && (waiver.alternate.is_none() || waiver.alternate == build.alternate);
+        let here = waiver.build.as_ref().is_none_or(|b| *b == build.name)
+            && (waiver.alternate.is_none() || waiver.alternate == build.alternate);
         if !here {
             continue;
         }
         for margin in &mut build.margins {
-            if margin.rule == waiver.rule && margin.verdict != Verdict::Ok && covers(waiver, margin) {
+            if margin.rule == waiver.rule && margin.verdict != Verdict::Ok && covers(waiver, margin)
+            {
                 margin.waiver = Some(index);
                 any = true;
             }
         }
     }
     if waiver.part.is_none() && waiver.alternate.is_none() {
-        for finding in findings.iter_mut().filter(|f| f.rule == waiver.rule && f.rule != "data.stale-waiver") {
+        for finding in findings
+            .iter_mut()
+            .filter(|f| f.rule == waiver.rule && f.rule != "data.stale-waiver")
+        {
             if waiver.build.is_none() || waiver.build == finding.build {
                 finding.waiver = Some(index);
                 any = true;
@@ -85,9 +118,17 @@ fn covers(waiver: &Waiver, margin: &Margin) -> bool {
 /// `2030-01-31`: four, two and two digits, month and day within the calendar.
 fn is_date(text: &str) -> bool {
     let parts: Vec<&str> = text.split('-').collect();
-    let [year, month, day] = parts.as_slice() else { return false };
-    let digits = |s: &str, n: usize| (s.len() == n && s.bytes().all(|b| b.is_ascii_digit())).then(|| s.parse::<u32>().unwrap_or(0));
-    let (Some(year), Some(month), Some(day)) = (digits(year, 4), digits(month, 2), digits(day, 2)) else { return false };
+    let [year, month, day] = parts.as_slice() else {
+        return false;
+    };
+    let digits = |s: &str, n: usize| {
+        (s.len() == n && s.bytes().all(|b| b.is_ascii_digit()))
+            .then(|| s.parse::<u32>().unwrap_or(0))
+    };
+    let (Some(year), Some(month), Some(day)) = (digits(year, 4), digits(month, 2), digits(day, 2))
+    else {
+        return false;
+    };
     let leap = (year % 4 == 0 && year % 100 != 0) || year % 400 == 0;
     let days = match month {
         2 => 28 + u32::from(leap),
@@ -107,7 +148,16 @@ mod tests {
         for good in ["2030-01-31", "2028-02-29", "2000-02-29"] {
             assert!(is_date(good), "{good}");
         }
-        for bad in ["2030-1-31", "2030-02-29", "1900-02-29", "2030-13-01", "2030-00-10", "soon", "2030-04-31", "30-01-01"] {
+        for bad in [
+            "2030-1-31",
+            "2030-02-29",
+            "1900-02-29",
+            "2030-13-01",
+            "2030-00-10",
+            "soon",
+            "2030-04-31",
+            "30-01-01",
+        ] {
             assert!(!is_date(bad), "{bad}");
         }
     }

@@ -2,7 +2,11 @@
 //! does nothing, in the same run. `cargo bench -p derate-lsp`.
 //!
 //! Absolute times drift with the machine; compare the ratios.
-#![allow(clippy::unwrap_used, clippy::print_stdout, reason = "a bench that cannot go on stops, and prints")]
+#![allow(
+    clippy::unwrap_used,
+    clippy::print_stdout,
+    reason = "a bench that cannot go on stops, and prints"
+)]
 
 use std::io::{BufRead, BufReader, BufWriter, Read, Write};
 use std::path::{Path, PathBuf};
@@ -48,9 +52,21 @@ fn receive(from: &mut impl BufRead) -> Option<Value> {
 
 impl Server {
     fn start(mut command: Command, root: &Path, files: &[(String, String)]) -> Self {
-        let mut child = command.stdin(Stdio::piped()).stdout(Stdio::piped()).spawn().unwrap();
-        let (input, output) = (child.stdin.take().unwrap(), BufReader::new(child.stdout.take().unwrap()));
-        let mut server = Self { child, input, output, version: 1 };
+        let mut child = command
+            .stdin(Stdio::piped())
+            .stdout(Stdio::piped())
+            .spawn()
+            .unwrap();
+        let (input, output) = (
+            child.stdin.take().unwrap(),
+            BufReader::new(child.stdout.take().unwrap()),
+        );
+        let mut server = Self {
+            child,
+            input,
+            output,
+            version: 1,
+        };
         server.send(&json!({"jsonrpc": "2.0", "id": 0, "method": "initialize", "params": {"capabilities": {}, "rootUri": format!("file://{}", root.display())}}));
         server.until(|m| m["id"] == 0);
         server.send(&json!({"jsonrpc": "2.0", "method": "initialized", "params": {}}));
@@ -80,18 +96,33 @@ impl Server {
         let typed = self.version % 2 == 0;
         let end = if typed { column } else { column + 1 };
         let range = json!({"start": {"line": line, "character": column}, "end": {"line": line, "character": end}});
-        frame(&json!({"jsonrpc": "2.0", "method": "textDocument/didChange", "params": {"textDocument": {"uri": uri, "version": self.version}, "contentChanges": [{"range": range, "text": if typed { "2" } else { "" }}]}}))
+        frame(
+            &json!({"jsonrpc": "2.0", "method": "textDocument/didChange", "params": {"textDocument": {"uri": uri, "version": self.version}, "contentChanges": [{"range": range, "text": if typed { "2" } else { "" }}]}}),
+        )
     }
 
     fn settled(&mut self, uri: &str) {
         let version = self.version;
-        self.until(|m| m["params"]["uri"] == *uri && m["params"]["version"].as_i64().is_some_and(|v| v >= version));
+        self.until(|m| {
+            m["params"]["uri"] == *uri
+                && m["params"]["version"]
+                    .as_i64()
+                    .is_some_and(|v| v >= version)
+        });
     }
 
     fn memory_mib(&self) -> f64 {
-        let status = std::fs::read_to_string(format!("/proc/{}/status", self.child.id())).unwrap_or_default();
-        let line = status.lines().find_map(|l| l.strip_prefix("VmRSS:")).unwrap_or("0");
-        line.trim().trim_end_matches(" kB").parse::<f64>().unwrap_or(0.0) / 1024.0
+        let status = std::fs::read_to_string(format!("/proc/{}/status", self.child.id()))
+            .unwrap_or_default();
+        let line = status
+            .lines()
+            .find_map(|l| l.strip_prefix("VmRSS:"))
+            .unwrap_or("0");
+        line.trim()
+            .trim_end_matches(" kB")
+            .parse::<f64>()
+            .unwrap_or(0.0)
+            / 1024.0
     }
 }
 
@@ -104,12 +135,17 @@ impl Drop for Server {
 
 /// Answers everything at once with nothing: what the pipes and this client cost by themselves.
 fn null() {
-    let (mut input, mut output) = (BufReader::new(std::io::stdin()), BufWriter::new(std::io::stdout()));
+    let (mut input, mut output) = (
+        BufReader::new(std::io::stdin()),
+        BufWriter::new(std::io::stdout()),
+    );
     while let Some(message) = receive(&mut input) {
         let document = &message["params"]["textDocument"];
         let answer = match message.get("id") {
             Some(id) => json!({"jsonrpc": "2.0", "id": id, "result": {"capabilities": {}}}),
-            None if document.is_object() => json!({"jsonrpc": "2.0", "method": "textDocument/publishDiagnostics", "params": {"uri": document["uri"], "version": document["version"], "diagnostics": []}}),
+            None if document.is_object() => {
+                json!({"jsonrpc": "2.0", "method": "textDocument/publishDiagnostics", "params": {"uri": document["uri"], "version": document["version"], "diagnostics": []}})
+            }
             None => continue,
         };
         output.write_all(&frame(&answer)).unwrap();
@@ -142,7 +178,10 @@ fn measure(command: &dyn Fn() -> Command, root: &Path, files: &[(String, String)
         .collect();
     let mut server = Server::start(command(), root, files);
     let (uri, text) = files.last().unwrap();
-    let line = text.lines().position(|l| l.trim_start().starts_with("emitter ")).unwrap();
+    let line = text
+        .lines()
+        .position(|l| l.trim_start().starts_with("emitter "))
+        .unwrap();
     let column = text.lines().nth(line).unwrap().find("0R22").unwrap() + 4;
     let mut edits = Vec::with_capacity(EDITS);
     let mut hovers = Vec::with_capacity(EDITS);
@@ -165,7 +204,9 @@ fn measure(command: &dyn Fn() -> Command, root: &Path, files: &[(String, String)
     }
     let mut bursts: Vec<Duration> = (0..9)
         .map(|_| {
-            let bytes: Vec<u8> = (0..BURST).flat_map(|_| server.edit(uri, line, column)).collect();
+            let bytes: Vec<u8> = (0..BURST)
+                .flat_map(|_| server.edit(uri, line, column))
+                .collect();
             let began = Instant::now();
             server.input.write_all(&bytes).unwrap();
             server.settled(uri);
@@ -186,7 +227,10 @@ fn main() {
     if std::env::args().any(|a| a == "--null") {
         return null();
     }
-    let kits: PathBuf = Path::new(env!("CARGO_MANIFEST_DIR")).join("../tests/kits").canonicalize().unwrap();
+    let kits: PathBuf = Path::new(env!("CARGO_MANIFEST_DIR"))
+        .join("../tests/kits")
+        .canonicalize()
+        .unwrap();
     let kit = std::fs::read_to_string(kits.join("tern60.ampspec")).unwrap();
     let uri = |n: usize| format!("file://{}/bench{n}.ampspec", kits.display());
     let one = vec![(uri(0), kit.clone())];
@@ -199,13 +243,29 @@ fn main() {
         command
     };
     let served = || Command::new(env!("CARGO_BIN_EXE_derate-lsp"));
-    println!("{:<26} {:>9} {:>9} {:>9} {:>9} {:>9} {:>9}", "ms", "edit p50", "p99", "hover p50", "burst 50", "start", "MiB");
-    let row = |name: &str, f: &Figures| println!("{name:<26} {:>9.3} {:>9.3} {:>9.3} {:>9.2} {:>9.1} {:>9.1}", f.p50, f.p99, f.hover, f.burst, f.start, f.memory);
+    println!(
+        "{:<26} {:>9} {:>9} {:>9} {:>9} {:>9} {:>9}",
+        "ms", "edit p50", "p99", "hover p50", "burst 50", "start", "MiB"
+    );
+    let row = |name: &str, f: &Figures| {
+        println!(
+            "{name:<26} {:>9.3} {:>9.3} {:>9.3} {:>9.2} {:>9.1} {:>9.1}",
+            f.p50, f.p99, f.hover, f.burst, f.start, f.memory
+        )
+    };
     let floor = measure(&nothing, &kits, &one);
     row("null", &floor);
     for (name, files) in [("one kit", &one), ("2,000 lines of kits", &many)] {
         let f = measure(&served, &kits, files);
         row(name, &f);
-        println!("{:<26} {:>8.1}x {:>8.1}x {:>8.1}x {:>8.1}x {:>8.1}x", "  by the null server's p50", f.p50 / floor.p50, f.p99 / floor.p50, f.hover / floor.hover, f.burst / f.p50, f.start / floor.start);
+        println!(
+            "{:<26} {:>8.1}x {:>8.1}x {:>8.1}x {:>8.1}x {:>8.1}x",
+            "  by the null server's p50",
+            f.p50 / floor.p50,
+            f.p99 / floor.p50,
+            f.hover / floor.hover,
+            f.burst / f.p50,
+            f.start / floor.start
+        );
     }
 }

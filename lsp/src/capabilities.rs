@@ -51,25 +51,60 @@ impl Client {
         let all = &params.capabilities;
         let text = all.text_document.clone().unwrap_or_default();
         let workspace = all.workspace.clone().unwrap_or_default();
-        let encodings = all.general.as_ref().and_then(|g| g.position_encodings.clone()).unwrap_or_default();
+        let encodings = all
+            .general
+            .as_ref()
+            .and_then(|g| g.position_encodings.clone())
+            .unwrap_or_default();
         let publish = text.publish_diagnostics.unwrap_or_default();
-        let item = text.completion.and_then(|c| c.completion_item).unwrap_or_default();
-        let formats = text.hover.and_then(|h| h.content_format).unwrap_or_default();
+        let item = text
+            .completion
+            .and_then(|c| c.completion_item)
+            .unwrap_or_default();
+        let formats = text
+            .hover
+            .and_then(|h| h.content_format)
+            .unwrap_or_default();
         Self {
             // bytes cost nothing to convert; UTF-16 is what every client takes
-            unit: if encodings.contains(&PositionEncodingKind::UTF8) { ColumnUnit::Byte } else { ColumnUnit::Utf16 },
+            unit: if encodings.contains(&PositionEncodingKind::UTF8) {
+                ColumnUnit::Byte
+            } else {
+                ColumnUnit::Utf16
+            },
             related: publish.related_information.unwrap_or(false),
             tags: publish.tag_support.is_some(),
-            document_changes: workspace.workspace_edit.and_then(|e| e.document_changes).unwrap_or(false),
+            document_changes: workspace
+                .workspace_edit
+                .and_then(|e| e.document_changes)
+                .unwrap_or(false),
             snippets: item.snippet_support.unwrap_or(false),
             markdown: formats.contains(&MarkupKind::Markdown),
-            symbol_tree: text.document_symbol.and_then(|s| s.hierarchical_document_symbol_support).unwrap_or(false),
-            actions: text.code_action.is_some_and(|a| a.code_action_literal_support.is_some()),
+            symbol_tree: text
+                .document_symbol
+                .and_then(|s| s.hierarchical_document_symbol_support)
+                .unwrap_or(false),
+            actions: text
+                .code_action
+                .is_some_and(|a| a.code_action_literal_support.is_some()),
             configuration: workspace.configuration.unwrap_or(false),
-            watching: workspace.did_change_watched_files.and_then(|w| w.dynamic_registration).unwrap_or(false),
-            progress: all.window.as_ref().and_then(|w| w.work_done_progress).unwrap_or(false),
-            hint_refresh: workspace.inlay_hint.and_then(|h| h.refresh_support).unwrap_or(false),
-            lens_refresh: workspace.code_lens.and_then(|l| l.refresh_support).unwrap_or(false),
+            watching: workspace
+                .did_change_watched_files
+                .and_then(|w| w.dynamic_registration)
+                .unwrap_or(false),
+            progress: all
+                .window
+                .as_ref()
+                .and_then(|w| w.work_done_progress)
+                .unwrap_or(false),
+            hint_refresh: workspace
+                .inlay_hint
+                .and_then(|h| h.refresh_support)
+                .unwrap_or(false),
+            lens_refresh: workspace
+                .code_lens
+                .and_then(|l| l.refresh_support)
+                .unwrap_or(false),
             process: params.process_id,
         }
     }
@@ -86,17 +121,24 @@ impl Client {
 pub(crate) fn offered(client: &Client) -> ServerCapabilities {
     ServerCapabilities {
         position_encoding: Some(client.encoding()),
-        text_document_sync: Some(TextDocumentSyncCapability::Options(TextDocumentSyncOptions {
-            open_close: Some(true),
-            change: Some(TextDocumentSyncKind::INCREMENTAL),
-            will_save: None,
-            will_save_wait_until: None,
-            save: Some(TextDocumentSyncSaveOptions::Supported(true)),
-        })),
+        text_document_sync: Some(TextDocumentSyncCapability::Options(
+            TextDocumentSyncOptions {
+                open_close: Some(true),
+                change: Some(TextDocumentSyncKind::INCREMENTAL),
+                will_save: None,
+                will_save_wait_until: None,
+                save: Some(TextDocumentSyncSaveOptions::Supported(true)),
+            },
+        )),
         hover_provider: Some(HoverProviderCapability::Simple(true)),
         inlay_hint_provider: Some(OneOf::Left(true)),
-        code_lens_provider: Some(CodeLensOptions { resolve_provider: Some(false) }),
-        completion_provider: Some(CompletionOptions { trigger_characters: Some(vec![" ".to_owned()]), ..CompletionOptions::default() }),
+        code_lens_provider: Some(CodeLensOptions {
+            resolve_provider: Some(false),
+        }),
+        completion_provider: Some(CompletionOptions {
+            trigger_characters: Some(vec![" ".to_owned()]),
+            ..CompletionOptions::default()
+        }),
         signature_help_provider: Some(SignatureHelpOptions {
             trigger_characters: Some(vec![" ".to_owned(), ",".to_owned()]),
             retrigger_characters: None,
@@ -110,25 +152,42 @@ pub(crate) fn offered(client: &Client) -> ServerCapabilities {
         }),
         document_formatting_provider: Some(OneOf::Left(true)),
         document_range_formatting_provider: Some(OneOf::Left(true)),
-        document_on_type_formatting_provider: Some(DocumentOnTypeFormattingOptions { first_trigger_character: "\n".to_owned(), more_trigger_character: Some(vec!["}".to_owned()]) }),
+        document_on_type_formatting_provider: Some(DocumentOnTypeFormattingOptions {
+            first_trigger_character: "\n".to_owned(),
+            more_trigger_character: Some(vec!["}".to_owned()]),
+        }),
         definition_provider: Some(OneOf::Left(true)),
         references_provider: Some(OneOf::Left(true)),
         document_highlight_provider: Some(OneOf::Left(true)),
-        rename_provider: Some(OneOf::Right(RenameOptions { prepare_provider: Some(true), work_done_progress_options: WorkDoneProgressOptions::default() })),
+        rename_provider: Some(OneOf::Right(RenameOptions {
+            prepare_provider: Some(true),
+            work_done_progress_options: WorkDoneProgressOptions::default(),
+        })),
         document_symbol_provider: Some(OneOf::Left(true)),
         workspace_symbol_provider: Some(OneOf::Left(true)),
         folding_range_provider: Some(FoldingRangeProviderCapability::Simple(true)),
         selection_range_provider: Some(SelectionRangeProviderCapability::Simple(true)),
-        document_link_provider: Some(DocumentLinkOptions { resolve_provider: Some(false), work_done_progress_options: WorkDoneProgressOptions::default() }),
-        semantic_tokens_provider: Some(SemanticTokensServerCapabilities::SemanticTokensOptions(SemanticTokensOptions {
-            legend: legend(),
-            full: Some(SemanticTokensFullOptions::Bool(true)),
-            range: Some(false),
-            ..SemanticTokensOptions::default()
-        })),
-        execute_command_provider: Some(ExecuteCommandOptions { commands: vec![MARGINS.to_owned()], ..ExecuteCommandOptions::default() }),
+        document_link_provider: Some(DocumentLinkOptions {
+            resolve_provider: Some(false),
+            work_done_progress_options: WorkDoneProgressOptions::default(),
+        }),
+        semantic_tokens_provider: Some(SemanticTokensServerCapabilities::SemanticTokensOptions(
+            SemanticTokensOptions {
+                legend: legend(),
+                full: Some(SemanticTokensFullOptions::Bool(true)),
+                range: Some(false),
+                ..SemanticTokensOptions::default()
+            },
+        )),
+        execute_command_provider: Some(ExecuteCommandOptions {
+            commands: vec![MARGINS.to_owned()],
+            ..ExecuteCommandOptions::default()
+        }),
         workspace: Some(WorkspaceServerCapabilities {
-            workspace_folders: Some(WorkspaceFoldersServerCapabilities { supported: Some(true), change_notifications: Some(OneOf::Left(true)) }),
+            workspace_folders: Some(WorkspaceFoldersServerCapabilities {
+                supported: Some(true),
+                change_notifications: Some(OneOf::Left(true)),
+            }),
             file_operations: None,
         }),
         ..ServerCapabilities::default()
@@ -164,8 +223,16 @@ struct SentHints {
 
 impl Default for SentHints {
     fn default() -> Self {
-        let Wanted { derived, used, names } = Wanted::default();
-        Self { derived, used, names }
+        let Wanted {
+            derived,
+            used,
+            names,
+        } = Wanted::default();
+        Self {
+            derived,
+            used,
+            names,
+        }
     }
 }
 
@@ -174,8 +241,24 @@ impl Settings {
     /// keeps its default.
     pub(crate) fn of(sent: &Value) -> Self {
         let sent = sent.get("derate").unwrap_or(sent);
-        let Sent { policy, workspace, hints } = Sent::deserialize(sent).unwrap_or_default();
-        let SentHints { derived, used, names } = hints;
-        Self { policy: policy.filter(|p| !p.is_empty()), workspace, hints: Wanted { derived, used, names } }
+        let Sent {
+            policy,
+            workspace,
+            hints,
+        } = Sent::deserialize(sent).unwrap_or_default();
+        let SentHints {
+            derived,
+            used,
+            names,
+        } = hints;
+        Self {
+            policy: policy.filter(|p| !p.is_empty()),
+            workspace,
+            hints: Wanted {
+                derived,
+                used,
+                names,
+            },
+        }
     }
 }

@@ -61,42 +61,77 @@ impl Session {
 
     /// Every spec below the workspace folders, ignored files left out.
     pub(crate) fn specs(&self) -> Vec<PathBuf> {
-        let entries = self.folders.iter().flat_map(|folder| ignore::WalkBuilder::new(folder).build().flatten());
+        let entries = self
+            .folders
+            .iter()
+            .flat_map(|folder| ignore::WalkBuilder::new(folder).build().flatten());
         let files = entries.filter(|e| e.file_type().is_some_and(|t| t.is_file()));
-        let specs = files.map(ignore::DirEntry::into_path).filter(|p| p.extension().is_some_and(|e| e == "ampspec"));
+        let specs = files
+            .map(ignore::DirEntry::into_path)
+            .filter(|p| p.extension().is_some_and(|e| e == "ampspec"));
         specs.take(MOST_SPECS).collect()
     }
 
     /// The options of a check of this file.
     pub(crate) fn options(&self, path: &Path) -> Options {
-        Options { policy: self.policy.clone(), today: today(), root: self.root(path), ..Options::default() }
+        Options {
+            policy: self.policy.clone(),
+            today: today(),
+            root: self.root(path),
+            ..Options::default()
+        }
     }
 
     /// A path as people see it.
     pub(crate) fn shown(&self, path: &Path) -> String {
         let root = self.root(path);
-        let base = root.as_deref().or_else(|| path.parent()).unwrap_or(Path::new(""));
-        path.strip_prefix(base).unwrap_or(path).to_string_lossy().replace('\\', "/")
+        let base = root
+            .as_deref()
+            .or_else(|| path.parent())
+            .unwrap_or(Path::new(""));
+        path.strip_prefix(base)
+            .unwrap_or(path)
+            .to_string_lossy()
+            .replace('\\', "/")
     }
 
     /// Check a file. Where nothing but comments and layout changed since `before`, what was found then
     /// is moved to its new places. A panic of the checker becomes a finding at the top of the file.
-    pub(crate) fn check(&self, snapshot: &Snapshot, path: &Path, before: Option<&Checked>) -> Checked {
+    pub(crate) fn check(
+        &self,
+        snapshot: &Snapshot,
+        path: &Path,
+        before: Option<&Checked>,
+    ) -> Checked {
         if let Some(moved) = before.and_then(|b| self.moved(snapshot, b)) {
             return moved;
         }
         let noting = Noting::new(snapshot);
         let (shown, options) = (self.shown(path), self.options(path));
-        let done = catch_unwind(AssertUnwindSafe(|| derate::check(&noting, path, &shown, &options)));
+        let done = catch_unwind(AssertUnwindSafe(|| {
+            derate::check(&noting, path, &shown, &options)
+        }));
         let mut seen = noting.seen();
         seen.entry(path.to_owned()).or_insert(Seen::Nothing);
         match done {
             Ok(Ok(outcome)) => {
                 let pages = self.pages(snapshot, &outcome);
-                Checked { seen, outcome: Some(Arc::new(outcome)), pages }
+                Checked {
+                    seen,
+                    outcome: Some(Arc::new(outcome)),
+                    pages,
+                }
             }
-            Ok(Err(_)) => Checked { seen, outcome: None, pages: BTreeMap::new() },
-            Err(_) => Checked { seen, outcome: None, pages: failed(snapshot, path) },
+            Ok(Err(_)) => Checked {
+                seen,
+                outcome: None,
+                pages: BTreeMap::new(),
+            },
+            Err(_) => Checked {
+                seen,
+                outcome: None,
+                pages: failed(snapshot, path),
+            },
         }
     }
 
@@ -125,26 +160,47 @@ impl Session {
         }
         let moved = moved(outcome, &trees)?;
         let pages = self.pages(snapshot, &moved);
-        Some(Checked { seen, outcome: Some(Arc::new(moved)), pages })
+        Some(Checked {
+            seen,
+            outcome: Some(Arc::new(moved)),
+            pages,
+        })
     }
 
     /// The findings of a check, by file; every file that was read is in it.
     pub(crate) fn pages(&self, snapshot: &Snapshot, outcome: &Outcome) -> BTreeMap<PathBuf, Page> {
         let mut pages: BTreeMap<PathBuf, Page> = BTreeMap::new();
         for (_, file) in outcome.sources.iter() {
-            pages.insert(file.path.clone(), Page { tree: Arc::clone(&file.tree), diagnostics: Vec::new() });
+            pages.insert(
+                file.path.clone(),
+                Page {
+                    tree: Arc::clone(&file.tree),
+                    diagnostics: Vec::new(),
+                },
+            );
         }
         for finding in shown(&outcome.sources, &outcome.report) {
-            let Some(file) = outcome.sources.file(finding.site.file) else { continue };
-            let Some(page) = pages.get_mut(&file.path) else { continue };
-            page.diagnostics.extend(convert::diagnostic(snapshot, outcome, &finding, &self.client));
+            let Some(file) = outcome.sources.file(finding.site.file) else {
+                continue;
+            };
+            let Some(page) = pages.get_mut(&file.path) else {
+                continue;
+            };
+            page.diagnostics.extend(convert::diagnostic(
+                snapshot,
+                outcome,
+                &finding,
+                &self.client,
+            ));
         }
         pages
     }
 }
 
 fn failed(snapshot: &Snapshot, path: &Path) -> BTreeMap<PathBuf, Page> {
-    let Ok(tree) = snapshot.tree(path) else { return BTreeMap::new() };
+    let Ok(tree) = snapshot.tree(path) else {
+        return BTreeMap::new();
+    };
     let top = Position::new(0, 0);
     let diagnostic = Diagnostic {
         range: Range::new(top, top),
@@ -153,5 +209,12 @@ fn failed(snapshot: &Snapshot, path: &Path) -> BTreeMap<PathBuf, Page> {
         message: "the check of this text failed inside the program: nothing here has been checked. Please report it".to_owned(),
         ..Diagnostic::default()
     };
-    [(path.to_owned(), Page { tree, diagnostics: vec![diagnostic] })].into()
+    [(
+        path.to_owned(),
+        Page {
+            tree,
+            diagnostics: vec![diagnostic],
+        },
+    )]
+    .into()
 }

@@ -12,7 +12,9 @@ use derate::assist::hover::needs_check;
 use derate::source::Files;
 use serde_json::Value;
 use tower_lsp::jsonrpc;
-use tower_lsp::lsp_types::{Diagnostic, Position, PublishDiagnosticsParams, TextDocumentContentChangeEvent, Url};
+use tower_lsp::lsp_types::{
+    Diagnostic, Position, PublishDiagnosticsParams, TextDocumentContentChangeEvent, Url,
+};
 
 use crate::answer::View;
 use crate::capabilities::{Client, Settings};
@@ -86,7 +88,9 @@ impl Root {
         self.settled == Some(self.wanted)
     }
     fn reads(&self, path: &Path) -> bool {
-        self.result.as_ref().is_none_or(|r| r.seen.contains_key(path))
+        self.result
+            .as_ref()
+            .is_none_or(|r| r.seen.contains_key(path))
     }
 }
 
@@ -130,7 +134,11 @@ impl Owner {
             outbox,
             pool: Pool::new(),
             remote,
-            session: Arc::new(Session { client, policy: None, folders: Vec::new() }),
+            session: Arc::new(Session {
+                client,
+                policy: None,
+                folders: Vec::new(),
+            }),
             settings: Settings::default(),
             ready: false,
             stamp: 0,
@@ -175,7 +183,11 @@ impl Owner {
                 }
                 self.remote.watch_parent(client.process);
                 let folders = folders.iter().map(|f| self.snapshot.path_of(f)).collect();
-                self.session = Arc::new(Session { client: *client, policy: self.settings.policy.clone(), folders });
+                self.session = Arc::new(Session {
+                    client: *client,
+                    policy: self.settings.policy.clone(),
+                    folders,
+                });
             }
             Event::Ready => {
                 self.ready = true;
@@ -205,14 +217,19 @@ impl Owner {
             Event::Found(specs) => self.found(specs),
             Event::Stop => {
                 let buffers = Arc::clone(&self.snapshot.buffers);
-                self.roots.retain(|path, root| root.is_fresh() || buffers.contains_key(path));
+                self.roots
+                    .retain(|path, root| root.is_fresh() || buffers.contains_key(path));
                 self.remote.step(0);
             }
         }
     }
 
     fn put(&mut self, path: &Path, uri: &Url, version: i32, tree: Tree) {
-        let buffer = Buffer { uri: uri.clone(), version, tree: Arc::new(tree) };
+        let buffer = Buffer {
+            uri: uri.clone(),
+            version,
+            tree: Arc::new(tree),
+        };
         Arc::make_mut(&mut self.snapshot.buffers).insert(path.to_owned(), buffer);
         self.touch(path);
     }
@@ -221,7 +238,10 @@ impl Owner {
     fn root(&mut self, path: PathBuf) -> &mut Root {
         self.stamp += 1;
         let wanted = self.stamp;
-        self.roots.entry(path).or_insert_with(|| Root { wanted, ..Root::default() })
+        self.roots.entry(path).or_insert_with(|| Root {
+            wanted,
+            ..Root::default()
+        })
     }
 
     fn open(&mut self, uri: Url, version: i32, text: String) {
@@ -236,9 +256,16 @@ impl Owner {
     /// Edits are made at once, and read when somebody wants to know: fifty typed together cost fifty
     /// replacements of text and one reading.
     fn change(&mut self, uri: &Url, version: i32, changes: Vec<TextDocumentContentChangeEvent>) {
-        let Some(path) = self.paths.get(uri) else { return };
-        let Some(buffer) = self.snapshot.buffers.get(path) else { return };
-        let text = self.drafts.get(uri).map_or(&buffer.tree.text, |(_, text)| text);
+        let Some(path) = self.paths.get(uri) else {
+            return;
+        };
+        let Some(buffer) = self.snapshot.buffers.get(path) else {
+            return;
+        };
+        let text = self
+            .drafts
+            .get(uri)
+            .map_or(&buffer.tree.text, |(_, text)| text);
         let text = edited(text, changes, self.session.client.unit);
         self.drafts.insert(uri.clone(), (version, text));
         // what is on its way is stale already
@@ -249,15 +276,21 @@ impl Owner {
 
     fn read_drafts(&mut self) {
         for (uri, (version, text)) in std::mem::take(&mut self.drafts) {
-            let Some(path) = self.paths.get(&uri).cloned() else { continue };
-            let Some(buffer) = self.snapshot.buffers.get(&path) else { continue };
+            let Some(path) = self.paths.get(&uri).cloned() else {
+                continue;
+            };
+            let Some(buffer) = self.snapshot.buffers.get(&path) else {
+                continue;
+            };
             let tree = buffer.tree.reparse(text);
             self.put(&path, &uri, version, tree);
         }
     }
 
     fn close(&mut self, uri: &Url) {
-        let Some(path) = self.paths.remove(uri) else { return };
+        let Some(path) = self.paths.remove(uri) else {
+            return;
+        };
         Arc::make_mut(&mut self.snapshot.buffers).remove(&path);
         if self.roots.get(&path).is_some_and(|r| !r.in_workspace) {
             self.roots.remove(&path);
@@ -281,9 +314,18 @@ impl Owner {
     fn folders(&mut self, added: &[Url], removed: &[Url]) {
         let path = |u: &Url| self.snapshot.path_of(u);
         let gone: Vec<PathBuf> = removed.iter().map(path).collect();
-        let mut folders: Vec<PathBuf> = self.session.folders.iter().filter(|f| !gone.contains(f)).cloned().collect();
+        let mut folders: Vec<PathBuf> = self
+            .session
+            .folders
+            .iter()
+            .filter(|f| !gone.contains(f))
+            .cloned()
+            .collect();
         folders.extend(added.iter().map(path));
-        self.session = Arc::new(Session { folders, ..(*self.session).clone() });
+        self.session = Arc::new(Session {
+            folders,
+            ..(*self.session).clone()
+        });
         self.restart();
     }
 
@@ -292,7 +334,10 @@ impl Owner {
             return;
         }
         self.settings = settings;
-        self.session = Arc::new(Session { policy: self.settings.policy.clone(), ..(*self.session).clone() });
+        self.session = Arc::new(Session {
+            policy: self.settings.policy.clone(),
+            ..(*self.session).clone()
+        });
         self.restart();
         self.rippled = true;
     }
@@ -315,9 +360,17 @@ impl Owner {
         if !self.settings.workspace {
             return self.found(Vec::new());
         }
-        let (session, snapshot, events) = (Arc::clone(&self.session), self.snapshot.clone(), self.events.clone());
+        let (session, snapshot, events) = (
+            Arc::clone(&self.session),
+            self.snapshot.clone(),
+            self.events.clone(),
+        );
         self.pool.then(move || {
-            let specs = session.specs().iter().map(|p| snapshot.resolve(p)).collect();
+            let specs = session
+                .specs()
+                .iter()
+                .map(|p| snapshot.resolve(p))
+                .collect();
             // the owner is gone only when the process ends
             let _ = events.send(Event::Found(specs));
         });
@@ -332,7 +385,8 @@ impl Owner {
             self.root(path).in_workspace = true;
         }
         let buffers = Arc::clone(&self.snapshot.buffers);
-        self.roots.retain(|path, root| root.in_workspace || buffers.contains_key(path));
+        self.roots
+            .retain(|path, root| root.in_workspace || buffers.contains_key(path));
         let more = self.roots.len().saturating_sub(before);
         if more > 0 {
             self.remote.begin(&self.session.client, more);
@@ -340,31 +394,55 @@ impl Owner {
     }
 
     fn ask(&mut self, uri: Url, need: Need, work: Work) {
-        let path = self.paths.get(&uri).cloned().unwrap_or_else(|| self.snapshot.path_of(&uri));
+        let path = self
+            .paths
+            .get(&uri)
+            .cloned()
+            .unwrap_or_else(|| self.snapshot.path_of(&uri));
         let buffer = self.snapshot.buffers.get(&path);
         let waits = match (need, buffer) {
             (_, None) | (Need::Text, _) => false,
             (Need::Check, _) => true,
             (Need::CheckAt(at), Some(buffer)) => {
-                let offset = convert::offset(buffer.tree.line_index(), at, self.session.client.unit);
+                let offset =
+                    convert::offset(buffer.tree.line_index(), at, self.session.client.unit);
                 needs_check(&buffer.tree, offset)
             }
         };
         match buffer.map(|b| b.version) {
-            Some(version) if waits && !self.is_settled(&path) => self.waiting.push(Waiting { path, version, uri, work }),
+            Some(version) if waits && !self.is_settled(&path) => self.waiting.push(Waiting {
+                path,
+                version,
+                uri,
+                work,
+            }),
             _ => self.answer(uri, path, work),
         }
     }
 
     /// Whether everything that reads a document has been checked since it last changed.
     fn is_settled(&self, path: &Path) -> bool {
-        self.roots.iter().filter(|(own, root)| *own == path || root.result.as_ref().is_some_and(|r| r.seen.contains_key(path))).all(|(_, root)| root.is_fresh())
+        self.roots
+            .iter()
+            .filter(|(own, root)| {
+                *own == path
+                    || root
+                        .result
+                        .as_ref()
+                        .is_some_and(|r| r.seen.contains_key(path))
+            })
+            .all(|(_, root)| root.is_fresh())
     }
 
     fn answer(&self, uri: Url, path: PathBuf, work: Work) {
         let tree = match self.snapshot.tree(&path) {
             Ok(tree) => tree,
-            Err(why) => return work(Err(jsonrpc::Error { message: format!("{uri}: {why}").into(), ..jsonrpc::Error::invalid_params("") })),
+            Err(why) => {
+                return work(Err(jsonrpc::Error {
+                    message: format!("{uri}: {why}").into(),
+                    ..jsonrpc::Error::invalid_params("")
+                }));
+            }
         };
         let view = self.view(uri, path, tree);
         self.pool.first(move || work(Ok(view)));
@@ -372,15 +450,36 @@ impl Owner {
 
     /// A document as it is now.
     fn view(&self, uri: Url, path: PathBuf, tree: Arc<Tree>) -> View {
-        let reading = |(own, root): &(&PathBuf, &Root)| *own != &path && root.is_fresh() && root.result.as_ref().is_some_and(|r| r.seen.contains_key(&path));
-        let own = self.roots.get_key_value(&path).filter(|(_, root)| root.is_fresh());
-        let roots: Vec<(&PathBuf, &Root)> = own.into_iter().chain(self.roots.iter().filter(reading)).collect();
-        let outcomes = roots.iter().filter_map(|(_, root)| root.result.as_ref()?.outcome.clone()).collect();
+        let reading = |(own, root): &(&PathBuf, &Root)| {
+            *own != &path
+                && root.is_fresh()
+                && root
+                    .result
+                    .as_ref()
+                    .is_some_and(|r| r.seen.contains_key(&path))
+        };
+        let own = self
+            .roots
+            .get_key_value(&path)
+            .filter(|(_, root)| root.is_fresh());
+        let roots: Vec<(&PathBuf, &Root)> = own
+            .into_iter()
+            .chain(self.roots.iter().filter(reading))
+            .collect();
+        let outcomes = roots
+            .iter()
+            .filter_map(|(_, root)| root.result.as_ref()?.outcome.clone())
+            .collect();
         View {
             snapshot: self.snapshot.clone(),
             session: Arc::clone(&self.session),
             hints: self.settings.hints.clone(),
-            near: self.roots.iter().filter(|(own, root)| **own == path || root.reads(&path)).map(|(own, _)| own.clone()).collect(),
+            near: self
+                .roots
+                .iter()
+                .filter(|(own, root)| **own == path || root.reads(&path))
+                .map(|(own, _)| own.clone())
+                .collect(),
             uri,
             path,
             tree,
@@ -389,7 +488,9 @@ impl Owner {
     }
 
     fn accept(&mut self, path: &Path, stamp: u64, checked: Checked) {
-        let Some(root) = self.roots.get_mut(path) else { return };
+        let Some(root) = self.roots.get_mut(path) else {
+            return;
+        };
         root.running = None;
         // something it reads has changed since: the result is stale, and is dropped
         if stamp != root.wanted {
@@ -399,23 +500,39 @@ impl Owner {
         let before = root.result.replace(Arc::clone(&checked));
         root.settled = Some(stamp);
         let mut files: Vec<PathBuf> = checked.pages.keys().cloned().collect();
-        files.extend(before.iter().flat_map(|b| b.pages.keys()).filter(|p| !checked.pages.contains_key(*p)).cloned());
+        files.extend(
+            before
+                .iter()
+                .flat_map(|b| b.pages.keys())
+                .filter(|p| !checked.pages.contains_key(*p))
+                .cloned(),
+        );
         files.push(path.to_owned());
         for file in files {
             self.publish(&file);
         }
         self.rippled |= self.latest.as_deref() != Some(path);
-        self.remote.step(self.roots.values().filter(|r| !r.is_fresh()).count());
+        self.remote
+            .step(self.roots.values().filter(|r| !r.is_fresh()).count());
     }
 
     /// Publish what is known of a file, once all that read it have been checked.
     fn publish(&mut self, path: &Path) {
-        let Ok(tree) = self.snapshot.tree(path) else { return self.clear(path) };
+        let Ok(tree) = self.snapshot.tree(path) else {
+            return self.clear(path);
+        };
         let mut all: Vec<Diagnostic> = Vec::new();
         let own = self.roots.get(path);
-        for root in own.into_iter().chain(self.roots.iter().filter(|(p, _)| *p != path).map(|(_, r)| r)) {
+        for root in own.into_iter().chain(
+            self.roots
+                .iter()
+                .filter(|(p, _)| *p != path)
+                .map(|(_, r)| r),
+        ) {
             let Some(result) = &root.result else { continue };
-            let Some(page) = result.pages.get(path) else { continue };
+            let Some(page) = result.pages.get(path) else {
+                continue;
+            };
             if !root.is_fresh() {
                 return;
             }
@@ -456,7 +573,14 @@ impl Owner {
         if self.outbox.is_stuck() {
             return self.remote.client_is_gone();
         }
-        self.outbox.notify("textDocument/publishDiagnostics", &PublishDiagnosticsParams { uri, diagnostics, version });
+        self.outbox.notify(
+            "textDocument/publishDiagnostics",
+            &PublishDiagnosticsParams {
+                uri,
+                diagnostics,
+                version,
+            },
+        );
     }
 
     /// Begin what is due, answer what waited, clear what no check speaks of any more.
@@ -476,7 +600,9 @@ impl Owner {
         }
         for one in std::mem::take(&mut self.waiting) {
             match self.snapshot.buffers.get(&one.path).map(|b| b.version) {
-                Some(version) if version == one.version && !self.is_settled(&one.path) => self.waiting.push(one),
+                Some(version) if version == one.version && !self.is_settled(&one.path) => {
+                    self.waiting.push(one)
+                }
                 Some(version) if version == one.version => self.answer(one.uri, one.path, one.work),
                 _ => (one.work)(Err(content_modified())),
             }
@@ -484,7 +610,11 @@ impl Owner {
         if self.roots.values().all(Root::is_fresh) {
             let spoken: Vec<PathBuf> = self.published.keys().cloned().collect();
             for path in spoken {
-                let heard = self.roots.values().any(|r| r.result.as_ref().is_some_and(|r| r.pages.contains_key(&path)));
+                let heard = self.roots.values().any(|r| {
+                    r.result
+                        .as_ref()
+                        .is_some_and(|r| r.pages.contains_key(&path))
+                });
                 if !heard && !self.snapshot.buffers.contains_key(&path) {
                     self.clear(&path);
                 }
@@ -496,9 +626,15 @@ impl Owner {
     }
 
     fn begin(&self, path: PathBuf) {
-        let Some(root) = self.roots.get(&path) else { return };
+        let Some(root) = self.roots.get(&path) else {
+            return;
+        };
         let (stamp, before) = (root.wanted, root.result.clone());
-        let (session, snapshot, events) = (Arc::clone(&self.session), self.snapshot.clone(), self.events.clone());
+        let (session, snapshot, events) = (
+            Arc::clone(&self.session),
+            self.snapshot.clone(),
+            self.events.clone(),
+        );
         self.pool.then(move || {
             let checked = session.check(&snapshot, &path, before.as_deref());
             // the owner is gone only when the process ends
@@ -509,18 +645,29 @@ impl Owner {
 
 /// The question was about a text that has changed since.
 fn content_modified() -> jsonrpc::Error {
-    jsonrpc::Error { code: jsonrpc::ErrorCode::ContentModified, message: "the text has changed since".into(), data: None }
+    jsonrpc::Error {
+        code: jsonrpc::ErrorCode::ContentModified,
+        message: "the text has changed since".into(),
+        data: None,
+    }
 }
 
 /// A text after some edits, each of which counts on those before it.
-fn edited(text: &Arc<str>, changes: Vec<TextDocumentContentChangeEvent>, unit: ColumnUnit) -> Arc<str> {
+fn edited(
+    text: &Arc<str>,
+    changes: Vec<TextDocumentContentChangeEvent>,
+    unit: ColumnUnit,
+) -> Arc<str> {
     let mut text = Arc::clone(text);
     for change in changes {
         text = match change.range {
             None => change.text.into(),
             Some(range) => {
                 let span = convert::span(&LineIndex::new(Arc::clone(&text)), range, unit);
-                let (head, tail) = (text.get(..span.start).unwrap_or(""), text.get(span.end..).unwrap_or(""));
+                let (head, tail) = (
+                    text.get(..span.start).unwrap_or(""),
+                    text.get(span.end..).unwrap_or(""),
+                );
                 [head, &change.text, tail].concat().into()
             }
         };

@@ -28,7 +28,11 @@ pub(crate) struct Guard<S> {
 impl<S> Guard<S> {
     /// Guard a service; `exit` is told the status with which the process is to end.
     pub(crate) fn new(inner: S, exit: Sender<u8>) -> Self {
-        Self { inner, shut_down: false, exit }
+        Self {
+            inner,
+            shut_down: false,
+            exit,
+        }
     }
 
     /// The status of a process that ends now: 0 after a shutdown, else 1, as the protocol asks.
@@ -57,7 +61,9 @@ where
             let _ = self.exit.send(self.status());
             return Box::pin(ready(Ok(None)));
         }
-        let empty = |p: &Value| p.is_null() || (method == "shutdown" && p.as_object().is_some_and(|o| o.is_empty()));
+        let empty = |p: &Value| {
+            p.is_null() || (method == "shutdown" && p.as_object().is_some_and(|o| o.is_empty()))
+        };
         let params = params.filter(|p| !empty(p));
         self.shut_down |= method == "shutdown";
         let mut call = Request::build(method);

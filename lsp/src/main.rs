@@ -23,7 +23,7 @@ use std::thread;
 use futures_util::{FutureExt, Sink, StreamExt};
 use tokio::runtime::{self, Handle};
 use tower_lsp::jsonrpc::Response;
-use tower_lsp::{ClientSocket, ExitedError, LspService, Loopback};
+use tower_lsp::{ClientSocket, ExitedError, Loopback, LspService};
 use tower_service::Service;
 
 use documents::{Event, Owner};
@@ -59,29 +59,43 @@ fn serve() -> io::Result<u8> {
         .custom_method("$/setTrace", Server::trace)
         .finish();
     let Some(client) = client else { return Ok(1) };
-    let remote = Remote::new(client, runtime.handle().clone(), events.clone(), exit.clone());
+    let remote = Remote::new(
+        client,
+        runtime.handle().clone(),
+        events.clone(),
+        exit.clone(),
+    );
     let owner_box = outbox.clone();
-    thread::Builder::new().name("owner".to_owned()).stack_size(STACK).spawn(move || Owner::new(events, owner_box, remote).run(&queue))?;
+    thread::Builder::new()
+        .name("owner".to_owned())
+        .stack_size(STACK)
+        .spawn(move || Owner::new(events, owner_box, remote).run(&queue))?;
     let writing = exit.clone();
-    thread::Builder::new().name("writer".to_owned()).spawn(move || {
-        if writer.run(io::stdout()).is_err() {
-            // the client no longer reads; nobody listens only if the process is ending already
-            let _ = writing.send(1);
-        }
-    })?;
+    thread::Builder::new()
+        .name("writer".to_owned())
+        .spawn(move || {
+            if writer.run(io::stdout()).is_err() {
+                // the client no longer reads; nobody listens only if the process is ending already
+                let _ = writing.send(1);
+            }
+        })?;
     let guard = Guard::new(service, exit.clone());
     let handle = runtime.handle().clone();
     let (requests, answers) = socket.split();
     let (reading, last) = (outbox.clone(), outbox.clone());
-    thread::Builder::new().name("reader".to_owned()).spawn(move || read(guard, answers, &handle, &reading, &exit))?;
+    thread::Builder::new()
+        .name("reader".to_owned())
+        .spawn(move || read(guard, answers, &handle, &reading, &exit))?;
     // requests of ours, and handlers that wait for their answer, run here
-    thread::Builder::new().name("requests".to_owned()).spawn(move || {
-        runtime.block_on(requests.for_each(|request| {
-            outbox.send(&request);
-            std::future::ready(())
-        }));
-        runtime.block_on(std::future::pending::<()>());
-    })?;
+    thread::Builder::new()
+        .name("requests".to_owned())
+        .spawn(move || {
+            runtime.block_on(requests.for_each(|request| {
+                outbox.send(&request);
+                std::future::ready(())
+            }));
+            runtime.block_on(std::future::pending::<()>());
+        })?;
     let status = exited.recv().unwrap_or(1);
     last.drain();
     Ok(status)
@@ -90,14 +104,22 @@ fn serve() -> io::Result<u8> {
 type Requests = <ClientSocket as Loopback>::ResponseSink;
 
 /// Read messages and begin them in order, until the end of input.
-fn read(mut guard: Guard<LspService<Server>>, mut answers: Requests, runtime: &Handle, outbox: &Outbox, exit: &Sender<u8>) {
+fn read(
+    mut guard: Guard<LspService<Server>>,
+    mut answers: Requests,
+    runtime: &Handle,
+    outbox: &Outbox,
+    exit: &Sender<u8>,
+) {
     let mut input = BufReader::with_capacity(1 << 16, io::stdin());
     while let Ok(Some(message)) = wire::read(&mut input) {
         match message {
             Incoming::Call(request) => begin(guard.call(request), runtime, outbox),
             Incoming::Answer(response) => {
                 // an answer that nobody waits for any more makes the sink panic: it is passed over
-                let _ = catch_unwind(AssertUnwindSafe(|| Pin::new(&mut answers).start_send(response)));
+                let _ = catch_unwind(AssertUnwindSafe(|| {
+                    Pin::new(&mut answers).start_send(response)
+                }));
             }
             Incoming::Broken(response) => outbox.send(&response),
         }

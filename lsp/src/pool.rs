@@ -27,12 +27,17 @@ impl Pool {
     /// As many workers as processors, between two and four: an answer never waits for a check.
     pub(crate) fn new() -> Self {
         let pool = Self(Arc::new((Mutex::default(), Condvar::new())));
-        let count = thread::available_parallelism().map_or(2, usize::from).clamp(2, MOST);
+        let count = thread::available_parallelism()
+            .map_or(2, usize::from)
+            .clamp(2, MOST);
         for at in 0..count {
             let own = pool.clone();
             let only_first = at == 0;
             // without threads nothing is answered, which the client sees
-            let _ = thread::Builder::new().name(format!("worker {at}")).stack_size(STACK).spawn(move || own.work(only_first));
+            let _ = thread::Builder::new()
+                .name(format!("worker {at}"))
+                .stack_size(STACK)
+                .spawn(move || own.work(only_first));
         }
         pool
     }
@@ -42,7 +47,13 @@ impl Pool {
         loop {
             let mut held = queues.lock().unwrap_or_else(PoisonError::into_inner);
             let work = loop {
-                let next = held.first.pop_front().or_else(|| if only_first { None } else { held.then.pop_front() });
+                let next = held.first.pop_front().or_else(|| {
+                    if only_first {
+                        None
+                    } else {
+                        held.then.pop_front()
+                    }
+                });
                 match next {
                     Some(work) => break work,
                     None => held = ready.wait(held).unwrap_or_else(PoisonError::into_inner),

@@ -31,8 +31,20 @@ pub(crate) struct Remote {
 
 impl Remote {
     /// Nothing asked yet.
-    pub(crate) fn new(client: tower_lsp::Client, runtime: Handle, events: SyncSender<Event>, exit: Sender<u8>) -> Self {
-        Self { client, runtime, events, exit, shown: None, count: 0 }
+    pub(crate) fn new(
+        client: tower_lsp::Client,
+        runtime: Handle,
+        events: SyncSender<Event>,
+        exit: Sender<u8>,
+    ) -> Self {
+        Self {
+            client,
+            runtime,
+            events,
+            exit,
+            shown: None,
+            count: 0,
+        }
     }
 
     /// End the process.
@@ -44,16 +56,20 @@ impl Remote {
     /// End the process when the one that started it has ended but left its pipes to others. Where a
     /// process can not be looked for by number, the end of standard input has to do.
     pub(crate) fn watch_parent(&self, process: Option<u32>) {
-        let Some(parent) = process.map(|id| PathBuf::from(format!("/proc/{id}"))) else { return };
+        let Some(parent) = process.map(|id| PathBuf::from(format!("/proc/{id}"))) else {
+            return;
+        };
         let exit = self.exit.clone();
         if parent.exists() {
             // without the thread, the end of standard input has to do
-            let _ = thread::Builder::new().name("parent".to_owned()).spawn(move || {
-                while parent.exists() {
-                    thread::sleep(PARENT_EVERY);
-                }
-                let _ = exit.send(1);
-            });
+            let _ = thread::Builder::new()
+                .name("parent".to_owned())
+                .spawn(move || {
+                    while parent.exists() {
+                        thread::sleep(PARENT_EVERY);
+                    }
+                    let _ = exit.send(1);
+                });
         }
     }
 
@@ -61,8 +77,13 @@ impl Remote {
     pub(crate) fn ready(&self, client: &Client) {
         self.fetch_settings(client);
         if client.watching {
-            let watcher = FileSystemWatcher { glob_pattern: GlobPattern::String("**/*.{ampspec,csv}".to_owned()), kind: None };
-            let options = DidChangeWatchedFilesRegistrationOptions { watchers: vec![watcher] };
+            let watcher = FileSystemWatcher {
+                glob_pattern: GlobPattern::String("**/*.{ampspec,csv}".to_owned()),
+                kind: None,
+            };
+            let options = DidChangeWatchedFilesRegistrationOptions {
+                watchers: vec![watcher],
+            };
             let registration = Registration {
                 id: "files".to_owned(),
                 method: "workspace/didChangeWatchedFiles".to_owned(),
@@ -71,7 +92,11 @@ impl Remote {
             let remote = self.client.clone();
             self.runtime.spawn(async move {
                 // a client that refuses has no files watched; open buffers are still checked
-                let _ = remote.send_request::<RegisterCapability>(RegistrationParams { registrations: vec![registration] }).await;
+                let _ = remote
+                    .send_request::<RegisterCapability>(RegistrationParams {
+                        registrations: vec![registration],
+                    })
+                    .await;
             });
         }
     }
@@ -83,7 +108,10 @@ impl Remote {
         }
         let (remote, events) = (self.client.clone(), self.events.clone());
         self.runtime.spawn(async move {
-            let item = ConfigurationItem { scope_uri: None, section: Some("derate".to_owned()) };
+            let item = ConfigurationItem {
+                scope_uri: None,
+                section: Some("derate".to_owned()),
+            };
             if let Ok(mut settings) = remote.configuration(vec![item]).await
                 && let Some(settings) = settings.pop().filter(|s| !s.is_null())
             {
@@ -115,10 +143,24 @@ impl Remote {
         }
         self.shown = Some(specs);
         self.count += 1;
-        let (remote, token) = (self.client.clone(), NumberOrString::String(format!("derate/{}", self.count)));
+        let (remote, token) = (
+            self.client.clone(),
+            NumberOrString::String(format!("derate/{}", self.count)),
+        );
         self.runtime.spawn(async move {
-            if remote.send_request::<WorkDoneProgressCreate>(WorkDoneProgressCreateParams { token: token.clone() }).await.is_ok() {
-                let begin = WorkDoneProgressBegin { title: "Checking specs".to_owned(), cancellable: Some(true), message: None, percentage: Some(0) };
+            if remote
+                .send_request::<WorkDoneProgressCreate>(WorkDoneProgressCreateParams {
+                    token: token.clone(),
+                })
+                .await
+                .is_ok()
+            {
+                let begin = WorkDoneProgressBegin {
+                    title: "Checking specs".to_owned(),
+                    cancellable: Some(true),
+                    message: None,
+                    percentage: Some(0),
+                };
                 tell(&remote, token, WorkDoneProgress::Begin(begin)).await;
             }
         });
@@ -134,14 +176,21 @@ impl Remote {
         } else {
             let done = all.saturating_sub(left);
             let percentage = u32::try_from(100 * done / all.max(1)).ok();
-            WorkDoneProgress::Report(WorkDoneProgressReport { cancellable: Some(true), message: Some(format!("{done} of {all}")), percentage })
+            WorkDoneProgress::Report(WorkDoneProgressReport {
+                cancellable: Some(true),
+                message: Some(format!("{done} of {all}")),
+                percentage,
+            })
         };
         let remote = self.client.clone();
-        self.runtime.spawn(async move { tell(&remote, token, progress).await });
+        self.runtime
+            .spawn(async move { tell(&remote, token, progress).await });
     }
 }
 
 async fn tell(remote: &tower_lsp::Client, token: NumberOrString, progress: WorkDoneProgress) {
     let value = ProgressParamsValue::WorkDone(progress);
-    remote.send_notification::<Progress>(ProgressParams { token, value }).await;
+    remote
+        .send_notification::<Progress>(ProgressParams { token, value })
+        .await;
 }

@@ -50,7 +50,9 @@ fn held<T>(lock: &Mutex<T>) -> std::sync::MutexGuard<'_, T> {
 
 impl Shelf {
     fn text(&self, path: &Path) -> Result<Arc<str>, String> {
-        let stamp = std::fs::metadata(path).map(|m| (m.modified().ok(), m.len())).ok();
+        let stamp = std::fs::metadata(path)
+            .map(|m| (m.modified().ok(), m.len()))
+            .ok();
         if let (Some(stamp), Some(kept)) = (stamp, held(&self.texts).get(path))
             && kept.stamp == stamp
         {
@@ -58,7 +60,13 @@ impl Shelf {
         }
         let text = Disk.read(path)?;
         if let Some(stamp) = stamp {
-            held(&self.texts).insert(path.to_owned(), Kept { stamp, text: Arc::clone(&text) });
+            held(&self.texts).insert(
+                path.to_owned(),
+                Kept {
+                    stamp,
+                    text: Arc::clone(&text),
+                },
+            );
         }
         Ok(text)
     }
@@ -171,7 +179,10 @@ pub(crate) struct Noting<'a> {
 impl<'a> Noting<'a> {
     /// Nothing asked yet.
     pub(crate) fn new(snapshot: &'a Snapshot) -> Self {
-        Self { snapshot, seen: RefCell::default() }
+        Self {
+            snapshot,
+            seen: RefCell::default(),
+        }
     }
 
     /// What was asked for, and found.
@@ -187,12 +198,20 @@ impl<'a> Noting<'a> {
 impl Files for Noting<'_> {
     fn read(&self, path: &Path) -> Result<Arc<str>, String> {
         let text = self.snapshot.read(path);
-        self.note(path, text.as_ref().map_or(Seen::Nothing, |t| Seen::Text(Arc::clone(t))));
+        self.note(
+            path,
+            text.as_ref()
+                .map_or(Seen::Nothing, |t| Seen::Text(Arc::clone(t))),
+        );
         text
     }
     fn tree(&self, path: &Path) -> Result<Arc<Tree>, String> {
         let tree = self.snapshot.tree(path);
-        self.note(path, tree.as_ref().map_or(Seen::Nothing, |t| Seen::Tree(Arc::clone(t))));
+        self.note(
+            path,
+            tree.as_ref()
+                .map_or(Seen::Nothing, |t| Seen::Tree(Arc::clone(t))),
+        );
         tree
     }
     fn resolve(&self, path: &Path) -> PathBuf {

@@ -38,7 +38,9 @@ pub(crate) enum Incoming {
 /// # Errors
 /// When the stream cannot be read.
 pub(crate) fn read(from: &mut impl BufRead) -> io::Result<Option<Incoming>> {
-    let Some(length) = header(from)? else { return Ok(None) };
+    let Some(length) = header(from)? else {
+        return Ok(None);
+    };
     let Some(length) = length else {
         return Ok(Some(broken(Error::parse_error())));
     };
@@ -60,7 +62,12 @@ fn header(from: &mut impl BufRead) -> io::Result<Option<Option<usize>>> {
     let mut any = false;
     loop {
         let mut line = Vec::new();
-        if from.by_ref().take(LONGEST_HEADER).read_until(b'\n', &mut line)? == 0 {
+        if from
+            .by_ref()
+            .take(LONGEST_HEADER)
+            .read_until(b'\n', &mut line)?
+            == 0
+        {
             return Ok(None);
         }
         let text = String::from_utf8_lossy(&line);
@@ -76,7 +83,9 @@ fn header(from: &mut impl BufRead) -> io::Result<Option<Option<usize>>> {
         // what a broken message left may stand before the next header on one line
         let lower = text.to_ascii_lowercase();
         if let Some(at) = lower.rfind("content-length:") {
-            length = lower.get(at + "content-length:".len()..).and_then(|n| n.trim().parse().ok());
+            length = lower
+                .get(at + "content-length:".len()..)
+                .and_then(|n| n.trim().parse().ok());
         }
     }
 }
@@ -97,7 +106,10 @@ fn message(body: &[u8]) -> Incoming {
     match serde_json::from_slice::<Value>(body) {
         Err(_) => broken(Error::parse_error()),
         Ok(value) => {
-            let id = value.get("id").and_then(|id| serde_json::from_value::<Id>(id.clone()).ok()).unwrap_or(Id::Null);
+            let id = value
+                .get("id")
+                .and_then(|id| serde_json::from_value::<Id>(id.clone()).ok())
+                .unwrap_or(Id::Null);
             Incoming::Broken(Response::from_error(id, Error::invalid_request()))
         }
     }
@@ -115,12 +127,20 @@ impl Outbox {
     pub(crate) fn new() -> (Self, Writer) {
         let (queue, frames) = channel();
         let waiting = Arc::new(AtomicUsize::new(0));
-        (Self { queue, waiting: Arc::clone(&waiting) }, Writer { frames, waiting })
+        (
+            Self {
+                queue,
+                waiting: Arc::clone(&waiting),
+            },
+            Writer { frames, waiting },
+        )
     }
 
     /// Send a message. Never waits.
     pub(crate) fn send(&self, message: &impl Serialize) {
-        let Ok(body) = serde_json::to_vec(message) else { return };
+        let Ok(body) = serde_json::to_vec(message) else {
+            return;
+        };
         let mut frame = format!("Content-Length: {}\r\n\r\n", body.len()).into_bytes();
         frame.extend(body);
         self.waiting.fetch_add(frame.len(), Ordering::Relaxed);
@@ -136,7 +156,11 @@ impl Outbox {
             method: &'static str,
             params: &'a P,
         }
-        self.send(&Notification { jsonrpc: "2.0", method, params });
+        self.send(&Notification {
+            jsonrpc: "2.0",
+            method,
+            params,
+        });
     }
 
     /// Give what was sent a moment to go out.
@@ -210,10 +234,17 @@ mod tests {
             (frame(""), "broken -32700"),
             ("Content-Length: x\r\n\r\n".to_owned(), "broken -32700"),
             ("Content-Type: y\r\n\r\n".to_owned(), "broken -32700"),
-            (frame(r#"{"jsonrpc":"2.0","id":7,"result":null}"#), "answer 7"),
+            (
+                frame(r#"{"jsonrpc":"2.0","id":7,"result":null}"#),
+                "answer 7",
+            ),
             (frame(&"[".repeat(9999)), "broken -32700"),
         ] {
-            assert_eq!(all(format!("{good}{bad}{good}").as_bytes()), ["a", said, "a"], "{bad:.40}");
+            assert_eq!(
+                all(format!("{good}{bad}{good}").as_bytes()),
+                ["a", said, "a"],
+                "{bad:.40}"
+            );
         }
         assert_eq!(all(format!("noise\r\n{good}").as_bytes()), ["a"]);
         assert_eq!(all(b"Content-Length: 99\r\n\r\n{"), Vec::<String>::new());

@@ -1,7 +1,12 @@
 //! The words that editors colour are those of the vocabulary. `UPDATE=1 cargo test -p derate-lsp --test
 //! editor_words` writes them anew.
 
-#![allow(clippy::unwrap_used, clippy::expect_used, clippy::panic, reason = "a test that cannot go on fails")]
+#![allow(
+    clippy::unwrap_used,
+    clippy::expect_used,
+    clippy::panic,
+    reason = "a test that cannot go on fails"
+)]
 
 use std::collections::BTreeSet;
 use std::path::{Path, PathBuf};
@@ -17,11 +22,22 @@ struct Words {
 
 /// Every word of the vocabulary, each once, sorted.
 fn words() -> Words {
-    let kinds: BTreeSet<&str> = BLOCKS.iter().map(|b| b.kind).chain(STATEMENTS.iter().map(|s| s.name)).collect();
+    let kinds: BTreeSet<&str> = BLOCKS
+        .iter()
+        .map(|b| b.kind)
+        .chain(STATEMENTS.iter().map(|s| s.name))
+        .collect();
     let keys: BTreeSet<&str> = BLOCKS.iter().flat_map(|b| b.keys).map(|k| k.name).collect();
-    let mut words: BTreeSet<&str> = ["from", "none", "per", "ref", "part", "qty", "because", "by", "until"].into();
+    let mut words: BTreeSet<&str> = [
+        "from", "none", "per", "ref", "part", "qty", "because", "by", "until",
+    ]
+    .into();
     words.extend(BLOCKS.iter().flat_map(|b| b.flavours));
-    for shape in BLOCKS.iter().flat_map(|b| b.keys).map(derate::vocabulary::Key::shape) {
+    for shape in BLOCKS
+        .iter()
+        .flat_map(|b| b.keys)
+        .map(derate::vocabulary::Key::shape)
+    {
         if let Some(Selector::Words(list, _)) = &shape.selector {
             words.extend(list);
         }
@@ -34,11 +50,17 @@ fn words() -> Words {
             }
         }
     }
-    Words { kinds: kinds.into_iter().collect(), keys: keys.into_iter().collect(), words: words.into_iter().collect() }
+    Words {
+        kinds: kinds.into_iter().collect(),
+        keys: keys.into_iter().collect(),
+        words: words.into_iter().collect(),
+    }
 }
 
 fn path(name: &str) -> PathBuf {
-    Path::new(env!("CARGO_MANIFEST_DIR")).join("../editors").join(name)
+    Path::new(env!("CARGO_MANIFEST_DIR"))
+        .join("../editors")
+        .join(name)
 }
 
 /// The file holds this text; with `UPDATE` set it is made to.
@@ -48,14 +70,23 @@ fn holds(name: &str, text: &str) {
         std::fs::write(&path, text).unwrap();
     }
     let found = std::fs::read_to_string(&path).unwrap_or_default();
-    assert!(found == text, "editors/{name} does not hold the words of the vocabulary: run this test with UPDATE=1");
+    assert!(
+        found == text,
+        "editors/{name} does not hold the words of the vocabulary: run this test with UPDATE=1"
+    );
 }
 
 /// The lines between the two marks are these.
 fn between(name: &str, lines: &str) {
     let text = std::fs::read_to_string(path(name)).unwrap();
-    let begin = text.find("BEGIN WORDS").and_then(|at| text[at..].find('\n').map(|n| at + n + 1)).unwrap();
-    let end = text.find("END WORDS").and_then(|at| text[..at].rfind('\n').map(|n| n + 1)).unwrap();
+    let begin = text
+        .find("BEGIN WORDS")
+        .and_then(|at| text[at..].find('\n').map(|n| at + n + 1))
+        .unwrap();
+    let end = text
+        .find("END WORDS")
+        .and_then(|at| text[..at].rfind('\n').map(|n| n + 1))
+        .unwrap();
     holds(name, &format!("{}{lines}{}", &text[..begin], &text[end..]));
 }
 
@@ -63,8 +94,12 @@ fn between(name: &str, lines: &str) {
 fn vim() {
     let Words { kinds, keys, words } = words();
     // of one place, the syntax item defined last wins: kinds after keys after words
-    let one = |group: &str, list: &[&str]| format!("syntax keyword ampspec{group} {}\n", list.join(" "));
-    between("vim/syntax/ampspec.vim", &(one("Word", &words) + &one("Key", &keys) + &one("Kind", &kinds)));
+    let one =
+        |group: &str, list: &[&str]| format!("syntax keyword ampspec{group} {}\n", list.join(" "));
+    between(
+        "vim/syntax/ampspec.vim",
+        &(one("Word", &words) + &one("Key", &keys) + &one("Kind", &kinds)),
+    );
 }
 
 #[test]
@@ -72,16 +107,34 @@ fn emacs() {
     let Words { kinds, keys, words } = words();
     let one = |name: &str, what: &str, list: &[&str]| {
         let quoted: Vec<String> = list.iter().map(|w| format!("\"{w}\"")).collect();
-        format!("(defconst ampspec-{name}\n  '({})\n  \"{what}.\")\n", quoted.join(" "))
+        format!(
+            "(defconst ampspec-{name}\n  '({})\n  \"{what}.\")\n",
+            quoted.join(" ")
+        )
     };
-    between("emacs/ampspec-mode.el", &(one("kinds", "Kinds of block and statements", &kinds) + &one("keys", "Keys", &keys) + &one("words", "Words after keys", &words)));
+    between(
+        "emacs/ampspec-mode.el",
+        &(one("kinds", "Kinds of block and statements", &kinds)
+            + &one("keys", "Keys", &keys)
+            + &one("words", "Words after keys", &words)),
+    );
 }
 
 #[test]
 fn kakoune() {
     let Words { kinds, keys, words } = words();
-    let one = |before: &str, list: &[&str], face: &str| format!("add-highlighter shared/ampspec/code/ regex '{before}({})(?![\\w-])' 1:{face}\n", list.join("|"));
-    between("kakoune/ampspec.kak", &(one("(?<![\\w-])", &words, "attribute") + &one("(?:^|\\{)\\h*", &keys, "variable") + &one("^", &kinds, "keyword")));
+    let one = |before: &str, list: &[&str], face: &str| {
+        format!(
+            "add-highlighter shared/ampspec/code/ regex '{before}({})(?![\\w-])' 1:{face}\n",
+            list.join("|")
+        )
+    };
+    between(
+        "kakoune/ampspec.kak",
+        &(one("(?<![\\w-])", &words, "attribute")
+            + &one("(?:^|\\{)\\h*", &keys, "variable")
+            + &one("^", &kinds, "keyword")),
+    );
 }
 
 #[test]
@@ -91,7 +144,10 @@ fn kate() {
         let items: String = list.iter().map(|w| format!("<item>{w}</item>")).collect();
         format!("    <list name=\"{name}\">{items}</list>\n")
     };
-    between("kate/ampspec.xml", &(one("kinds", &kinds) + &one("keys", &keys) + &one("words", &words)));
+    between(
+        "kate/ampspec.xml",
+        &(one("kinds", &kinds) + &one("keys", &keys) + &one("words", &words)),
+    );
 }
 
 #[test]
@@ -110,5 +166,8 @@ fn text_mate() {
             {"match": format!("(?<![\\w-]){}", one_of(&words)), "captures": {"1": {"name": "constant.language.ampspec"}}},
         ],
     });
-    holds("vscode/syntaxes/ampspec.tmLanguage.json", &format!("{}\n", serde_json::to_string_pretty(&grammar).unwrap()));
+    holds(
+        "vscode/syntaxes/ampspec.tmLanguage.json",
+        &format!("{}\n", serde_json::to_string_pretty(&grammar).unwrap()),
+    );
 }

@@ -1,5 +1,11 @@
 //! Any bytes as a spec: no panic, no hang, and positions that lie inside the text.
 
+#![allow(
+    clippy::unwrap_used,
+    clippy::expect_used,
+    reason = "helpers of tests, outside a test function"
+)]
+
 use std::path::{Path, PathBuf};
 use std::sync::Arc;
 
@@ -11,7 +17,11 @@ struct Only(Arc<str>);
 
 impl Files for Only {
     fn read(&self, path: &Path) -> Result<Arc<str>, String> {
-        if path == Path::new("/kit.ampspec") { Ok(self.0.clone()) } else { Err("there is no such file".to_owned()) }
+        if path == Path::new("/kit.ampspec") {
+            Ok(self.0.clone())
+        } else {
+            Err("there is no such file".to_owned())
+        }
     }
     fn resolve(&self, path: &Path) -> PathBuf {
         normal(path)
@@ -20,12 +30,28 @@ impl Files for Only {
 
 /// Check the text and hold every position, number and id of the report to what must be true of any.
 fn check(text: Arc<str>) {
-    let options = derate::Options { today: "2026-06-01".to_owned(), ..derate::Options::default() };
-    let outcome = derate::check(&Only(text.clone()), Path::new("/kit.ampspec"), "kit.ampspec", &options).unwrap();
+    let options = derate::Options {
+        today: "2026-06-01".to_owned(),
+        ..derate::Options::default()
+    };
+    let outcome = derate::check(
+        &Only(text.clone()),
+        Path::new("/kit.ampspec"),
+        "kit.ampspec",
+        &options,
+    )
+    .unwrap();
     let inside = |site: &Site| {
         let span = site.span;
-        assert!(span.start <= span.end && span.end <= text.len(), "{span:?} of {}", text.len());
-        assert!(text.is_char_boundary(span.start) && text.is_char_boundary(span.end), "{span:?} splits a character");
+        assert!(
+            span.start <= span.end && span.end <= text.len(),
+            "{span:?} of {}",
+            text.len()
+        );
+        assert!(
+            text.is_char_boundary(span.start) && text.is_char_boundary(span.end),
+            "{span:?} splits a character"
+        );
     };
     for finding in &outcome.report.findings {
         inside(&finding.site);
@@ -36,21 +62,60 @@ fn check(text: Arc<str>) {
     for margin in outcome.report.builds.iter().flat_map(|b| &b.margins) {
         inside(&margin.site);
         margin.related.iter().for_each(|r| inside(&r.site));
-        for number in [margin.stress, margin.rating, margin.allowance].into_iter().flatten() {
+        for number in [margin.stress, margin.rating, margin.allowance]
+            .into_iter()
+            .flatten()
+        {
             assert!(number.value.is_finite(), "{}: {number:?}", margin.id);
         }
-        assert!(margin.used_percent.is_none_or(f64::is_finite), "{}", margin.id);
+        assert!(
+            margin.used_percent.is_none_or(f64::is_finite),
+            "{}",
+            margin.id
+        );
     }
     let _ = derate::tidy::tidy(&text);
 }
 
 fn kit() -> String {
-    std::fs::read_to_string(Path::new(env!("CARGO_MANIFEST_DIR")).join("../tests/kits/tern60.ampspec")).unwrap()
+    std::fs::read_to_string(
+        Path::new(env!("CARGO_MANIFEST_DIR")).join("../tests/kits/tern60.ampspec"),
+    )
+    .unwrap()
 }
 
 /// Numbers and words that a hostile or tired writer might put in place of a good one.
 const HOSTILE: &[&str] = &[
-    "0", "-1", "1e308", "1e-308", "NaN", "inf", "0 V", "0 ohm", "1e12 ohm", "-5 A", "none", "999999999999999999999", "1/0", "{", "}", "\"", ",", ", ,", "±0 %", "±200 %", "\u{0}", "Ω", "𝛀", "\u{202e}", "0 W", "1 pV", "1 GV", "per 0 channels", "x", "from n16",
+    "0",
+    "-1",
+    "1e308",
+    "1e-308",
+    "NaN",
+    "inf",
+    "0 V",
+    "0 ohm",
+    "1e12 ohm",
+    "-5 A",
+    "none",
+    "999999999999999999999",
+    "1/0",
+    "{",
+    "}",
+    "\"",
+    ",",
+    ", ,",
+    "±0 %",
+    "±200 %",
+    "\u{0}",
+    "Ω",
+    "𝛀",
+    "\u{202e}",
+    "0 W",
+    "1 pV",
+    "1 GV",
+    "per 0 channels",
+    "x",
+    "from n16",
 ];
 
 proptest! {
@@ -107,6 +172,8 @@ fn ten_megabytes() {
     check(lines.into());
     check("{".repeat(1_000_000).into());
     check("a".repeat(10_000_000).into());
-    let blocks: String = (0..40_000).map(|n| format!("device d{n} npn {{\n vceo {n} V\n}}\n")).collect();
+    let blocks: String = (0..40_000)
+        .map(|n| format!("device d{n} npn {{\n vceo {n} V\n}}\n"))
+        .collect();
     check(blocks.into());
 }

@@ -29,7 +29,12 @@ pub(crate) struct Client {
 
 impl Client {
     pub(crate) fn spawn() -> Self {
-        let mut child = Command::new(env!("CARGO_BIN_EXE_derate-lsp")).stdin(Stdio::piped()).stdout(Stdio::piped()).stderr(Stdio::null()).spawn().unwrap();
+        let mut child = Command::new(env!("CARGO_BIN_EXE_derate-lsp"))
+            .stdin(Stdio::piped())
+            .stdout(Stdio::piped())
+            .stderr(Stdio::null())
+            .spawn()
+            .unwrap();
         let mut output = BufReader::new(child.stdout.take().unwrap());
         let input = child.stdin.take();
         let (sender, messages) = channel();
@@ -103,7 +108,10 @@ impl Client {
             if let Some(answer) = self.answers.remove(&id) {
                 return answer;
             }
-            assert!(self.take(until.saturating_duration_since(Instant::now())), "no answer to {id}");
+            assert!(
+                self.take(until.saturating_duration_since(Instant::now())),
+                "no answer to {id}"
+            );
         }
     }
 
@@ -119,7 +127,10 @@ impl Client {
                 let uri = params["uri"].as_str().unwrap().to_owned();
                 if let Some(version) = params["version"].as_i64() {
                     let before = self.versions.insert(uri.clone(), version);
-                    assert!(before.is_none_or(|b| b <= version), "an older version came after a newer one");
+                    assert!(
+                        before.is_none_or(|b| b <= version),
+                        "an older version came after a newer one"
+                    );
                 }
                 self.diagnostics.insert(uri, params["diagnostics"].clone());
             }
@@ -145,7 +156,10 @@ impl Client {
     pub(crate) fn settled(&mut self, uri: &str, version: i64) -> Value {
         let until = Instant::now() + PATIENCE;
         while self.versions.get(uri).is_none_or(|v| *v < version) {
-            assert!(self.take(until.saturating_duration_since(Instant::now())), "no findings for version {version} of {uri}");
+            assert!(
+                self.take(until.saturating_duration_since(Instant::now())),
+                "no findings for version {version} of {uri}"
+            );
         }
         self.diagnostics[uri].clone()
     }
@@ -157,7 +171,10 @@ impl Client {
             if let Some(found) = self.diagnostics.get(uri).filter(|d| wanted(d)) {
                 return found.clone();
             }
-            assert!(self.take(until.saturating_duration_since(Instant::now())), "{uri} never came to be as wanted");
+            assert!(
+                self.take(until.saturating_duration_since(Instant::now())),
+                "{uri} never came to be as wanted"
+            );
         }
     }
 
@@ -176,13 +193,19 @@ impl Client {
     }
 
     pub(crate) fn change(&mut self, uri: &str, version: i64, changes: Value) {
-        self.tell("textDocument/didChange", json!({"textDocument": {"uri": uri, "version": version}, "contentChanges": changes}));
+        self.tell(
+            "textDocument/didChange",
+            json!({"textDocument": {"uri": uri, "version": version}, "contentChanges": changes}),
+        );
     }
 
     /// The exit status after shutdown and exit.
     pub(crate) fn stop(mut self) -> i32 {
         let answer = self.ask("shutdown", Value::Null);
-        assert!(answer["result"].is_null() && answer.get("error").is_none(), "{answer}");
+        assert!(
+            answer["result"].is_null() && answer.get("error").is_none(),
+            "{answer}"
+        );
         self.tell("exit", Value::Null);
         self.wait()
     }
@@ -235,7 +258,12 @@ fn frame(from: &mut impl BufRead) -> Option<Value> {
     if from.read_line(&mut header).ok()? == 0 {
         return None;
     }
-    let length: usize = header.strip_prefix("Content-Length: ").unwrap_or_else(|| panic!("no protocol: {header}")).trim().parse().unwrap();
+    let length: usize = header
+        .strip_prefix("Content-Length: ")
+        .unwrap_or_else(|| panic!("no protocol: {header}"))
+        .trim()
+        .parse()
+        .unwrap();
     let mut blank = String::new();
     from.read_line(&mut blank).ok()?;
     assert_eq!(blank, "\r\n");
@@ -250,7 +278,10 @@ pub(crate) fn uri(path: &Path) -> String {
 
 /// The folder of the demo kits.
 pub(crate) fn kits() -> PathBuf {
-    Path::new(env!("CARGO_MANIFEST_DIR")).join("../tests/kits").canonicalize().unwrap()
+    Path::new(env!("CARGO_MANIFEST_DIR"))
+        .join("../tests/kits")
+        .canonicalize()
+        .unwrap()
 }
 
 /// A demo kit.
@@ -268,6 +299,10 @@ pub(crate) fn place(text: &str, at: usize, bytes: bool) -> Value {
     let before = &text[..at];
     let line = before.matches('\n').count();
     let start = before.rfind('\n').map_or(0, |n| n + 1);
-    let column = if bytes { at - start } else { before[start..].encode_utf16().count() };
+    let column = if bytes {
+        at - start
+    } else {
+        before[start..].encode_utf16().count()
+    };
     json!({"line": line, "character": column})
 }

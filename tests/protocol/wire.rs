@@ -40,11 +40,17 @@ fn the_process_ends_with_its_client() {
 fn requests_before_initialize_and_after_shutdown_are_refused() {
     let mut client = Client::spawn();
     let hover = json!({"textDocument": {"uri": "file:///a.ampspec"}, "position": {"line": 0, "character": 0}});
-    assert_eq!(client.ask("textDocument/hover", hover.clone())["error"]["code"], -32002);
+    assert_eq!(
+        client.ask("textDocument/hover", hover.clone())["error"]["code"],
+        -32002
+    );
     client.ask("initialize", initialize(&kits(), &[], Value::Null));
     client.tell("initialized", json!({}));
     client.get("shutdown", Value::Null);
-    assert_eq!(client.ask("textDocument/hover", hover)["error"]["code"], -32600);
+    assert_eq!(
+        client.ask("textDocument/hover", hover)["error"]["code"],
+        -32600
+    );
 }
 
 #[test]
@@ -63,20 +69,29 @@ fn a_broken_message_does_not_end_the_session() {
         client.raw(bytes);
     }
     // parameters of the wrong form, unknown methods and unknown files
-    assert_eq!(client.ask("textDocument/hover", json!({"a": 1}))["error"]["code"], -32602);
+    assert_eq!(
+        client.ask("textDocument/hover", json!({"a": 1}))["error"]["code"],
+        -32602
+    );
     assert_eq!(client.ask("no/such", json!({}))["error"]["code"], -32601);
     client.tell("$/unknown", json!({}));
     client.tell("$/setTrace", json!({"value": "off"}));
     client.tell("textDocument/didChange", json!({"textDocument": 1}));
     client.change("file:///nowhere.ampspec", 3, json!([{"text": "x"}]));
-    client.tell("textDocument/didClose", json!({"textDocument": {"uri": "file:///nowhere.ampspec"}}));
+    client.tell(
+        "textDocument/didClose",
+        json!({"textDocument": {"uri": "file:///nowhere.ampspec"}}),
+    );
     let path = uri(&kits().join("fresh.ampspec"));
     client.open(&path, "ampspec 1\n");
     // an edit far outside the text is clamped
     let far = json!({"line": 9999, "character": 9999});
     client.change(&path, 2, json!([{"range": {"start": far, "end": {"line": 0, "character": 0}}, "text": "ampspec 1\nstage x {\n}\n"}]));
     client.settled(&path, 2);
-    let symbols = client.get("textDocument/documentSymbol", json!({"textDocument": {"uri": path}}));
+    let symbols = client.get(
+        "textDocument/documentSymbol",
+        json!({"textDocument": {"uri": path}}),
+    );
     assert_eq!(symbols[1]["name"], "x");
     assert_eq!(client.stop(), 0);
 }
@@ -95,10 +110,19 @@ fn a_cancelled_request_is_answered_and_the_server_lives() {
     }
     for id in ids {
         let answer = client.answer(id);
-        assert!(answer.get("result").is_some() || answer["error"]["code"] == -32800, "{answer}");
+        assert!(
+            answer.get("result").is_some() || answer["error"]["code"] == -32800,
+            "{answer}"
+        );
     }
     let position = find(&text, "pairs", false);
-    assert!(client.get("textDocument/hover", json!({"textDocument": {"uri": path}, "position": position}))["contents"].is_object());
+    assert!(
+        client.get(
+            "textDocument/hover",
+            json!({"textDocument": {"uri": path}, "position": position})
+        )["contents"]
+            .is_object()
+    );
     assert_eq!(client.stop(), 0);
 }
 
@@ -109,7 +133,11 @@ fn a_client_that_does_not_read_blocks_nobody() {
     client.open(&path, &kit("tern60.ampspec"));
     for version in 2..300 {
         let at = json!({"line": 0, "character": 9});
-        client.change(&path, version, json!([{"range": {"start": at, "end": at}, "text": " "}]));
+        client.change(
+            &path,
+            version,
+            json!([{"range": {"start": at, "end": at}, "text": " "}]),
+        );
     }
     let began = Instant::now();
     client.settled(&path, 299);

@@ -1,5 +1,11 @@
 //! Missing data is unchecked, never a pass: every single statement of the demo kits is taken away in turn.
 
+#![allow(
+    clippy::unwrap_used,
+    clippy::expect_used,
+    reason = "helpers of tests, outside a test function"
+)]
+
 use std::collections::BTreeMap;
 use std::path::{Path, PathBuf};
 use std::sync::Arc;
@@ -20,7 +26,9 @@ impl Files for Beside<'_> {
         if path.ends_with("under-test.ampspec") {
             return Ok(self.0.into());
         }
-        std::fs::read_to_string(path).map(Into::into).map_err(|e| e.to_string())
+        std::fs::read_to_string(path)
+            .map(Into::into)
+            .map_err(|e| e.to_string())
     }
     fn resolve(&self, path: &Path) -> PathBuf {
         normal(path)
@@ -28,12 +36,27 @@ impl Files for Beside<'_> {
 }
 
 fn report(text: &str) -> Report {
-    let options = derate::Options { today: "2026-06-01".to_owned(), ..derate::Options::default() };
-    derate::check(&Beside(text), &kits().join("under-test.ampspec"), "under-test.ampspec", &options).unwrap().report
+    let options = derate::Options {
+        today: "2026-06-01".to_owned(),
+        ..derate::Options::default()
+    };
+    derate::check(
+        &Beside(text),
+        &kits().join("under-test.ampspec"),
+        "under-test.ampspec",
+        &options,
+    )
+    .unwrap()
+    .report
 }
 
 fn margins(report: &Report) -> BTreeMap<String, Margin> {
-    report.builds.iter().flat_map(|b| &b.margins).map(|m| (m.id.clone(), m.clone())).collect()
+    report
+        .builds
+        .iter()
+        .flat_map(|b| &b.margins)
+        .map(|m| (m.id.clone(), m.clone()))
+        .collect()
 }
 
 /// Every line of every block: kind, block, key, and the text without it.
@@ -69,12 +92,21 @@ fn missing_is_never_a_pass(kit: &str) {
         let report = report(&cut);
         let after = margins(&report);
         let missing = format!("{kind} {name} {key}");
-        let named = report.builds.iter().flat_map(|b| &b.assumed).any(|a| a.key.starts_with(&missing));
+        let named = report
+            .builds
+            .iter()
+            .flat_map(|b| &b.assumed)
+            .any(|a| a.key.starts_with(&missing));
         for (id, before) in &whole {
             let Some(now) = after.get(id) else {
                 // a build that cannot be solved at all says so as a finding
-                let told = report.findings.iter().any(|f| f.message.contains(&key) || f.message.contains(&name));
-                let replaced = after.values().any(|m| m.rule == before.rule && m.verdict == Verdict::Unchecked);
+                let told = report
+                    .findings
+                    .iter()
+                    .any(|f| f.message.contains(&key) || f.message.contains(&name));
+                let replaced = after
+                    .values()
+                    .any(|m| m.rule == before.rule && m.verdict == Verdict::Unchecked);
                 if !told && !replaced && vocabulary.default == "-" {
                     faults.push(format!("without `{missing}`: {id} vanished"));
                 }
@@ -82,10 +114,19 @@ fn missing_is_never_a_pass(kit: &str) {
             };
             let worse = matches!(before.verdict, Verdict::Over | Verdict::Thin);
             if worse && now.verdict == Verdict::Ok && !named {
-                faults.push(format!("without `{missing}`: {id} went from {:?} to Ok", before.verdict));
+                faults.push(format!(
+                    "without `{missing}`: {id} went from {:?} to Ok",
+                    before.verdict
+                ));
             }
-            if now.verdict == Verdict::Unchecked && before.verdict != Verdict::Unchecked && now.needs.is_empty() && now.note.is_empty() {
-                faults.push(format!("without `{missing}`: {id} is unchecked and does not say why"));
+            if now.verdict == Verdict::Unchecked
+                && before.verdict != Verdict::Unchecked
+                && now.needs.is_empty()
+                && now.note.is_empty()
+            {
+                faults.push(format!(
+                    "without `{missing}`: {id} is unchecked and does not say why"
+                ));
             }
         }
     }

@@ -211,7 +211,9 @@ impl Case<'_> {
         let (sink, devices) = if setter.on_sink == tracked {
             (KelvinPerWatt::ZERO, 0.0)
         } else {
-            self.output_sink_at_idle(rail, idle)?
+            // the rail idles below its unsagged value: less heat, and a sink that is worse for it
+            let idling = self.mean_rail(Mains::High, self.rail_current(Amp::ZERO)?)?;
+            self.output_sink_at_idle(idling, idle)?
         };
         let heating = Heating {
             own,

@@ -9,8 +9,11 @@ use super::devices::Bench;
 use super::heat::Heat;
 use super::loads::Driven;
 use super::rails::Rails;
+use super::safe_area::Remembered;
 use crate::build::Needs;
-use crate::build::parts::{Build, Device, Duty, Field, Heatsink, Protection, Region, Stage, Supply};
+use crate::build::parts::{
+    Build, Device, Duty, Field, Heatsink, Protection, Region, Stage, Supply,
+};
 use crate::finding::{Assumed, Measure, Part, Related, Site, Step, Witness};
 use crate::physics::load::{Band, Table};
 use crate::physics::unit::{Celsius, Kelvin};
@@ -53,7 +56,11 @@ impl Stage {
     /// The sides that hold different declared parts: one where a part is stated once for both.
     #[must_use]
     pub fn sides(&self) -> &'static [Side] {
-        if Rc::ptr_eq(&self.upper, &self.lower) { &Side::BOTH[..1] } else { &Side::BOTH }
+        if Rc::ptr_eq(&self.upper, &self.lower) {
+            &Side::BOTH[..1]
+        } else {
+            &Side::BOTH
+        }
     }
 }
 
@@ -72,12 +79,18 @@ pub struct Case<'a> {
     pub(super) loads: OnceCell<Vec<Result<Driven, Needs>>>,
     pub(super) bench: OnceCell<Result<Bench, Needs>>,
     pub(super) heat: OnceCell<Vec<Result<Heat, Needs>>>,
+    pub(super) uses: RefCell<Vec<Remembered>>,
 }
 
 impl<'a> Case<'a> {
     /// Nothing solved yet.
     #[must_use]
-    pub fn new(build: &'a Build, policy: &'a Policy, region: Option<&'a Region>, tables: &'a Tables) -> Self {
+    pub fn new(
+        build: &'a Build,
+        policy: &'a Policy,
+        region: Option<&'a Region>,
+        tables: &'a Tables,
+    ) -> Self {
         Self {
             build,
             policy,
@@ -88,14 +101,26 @@ impl<'a> Case<'a> {
             loads: OnceCell::new(),
             bench: OnceCell::new(),
             heat: OnceCell::new(),
+            uses: RefCell::default(),
         }
     }
 
     /// Note a value that nothing states.
-    pub fn assume(&self, key: String, value: impl Into<Option<Measure>>, why: &'static str, site: Site) {
+    pub fn assume(
+        &self,
+        key: String,
+        value: impl Into<Option<Measure>>,
+        why: &'static str,
+        site: Site,
+    ) {
         let mut all = self.assumed.borrow_mut();
         if !all.iter().any(|a| a.key == key) {
-            all.push(Assumed { key, value: value.into(), why, site });
+            all.push(Assumed {
+                key,
+                value: value.into(),
+                why,
+                site,
+            });
         }
     }
 
@@ -157,7 +182,8 @@ impl<'a> Case<'a> {
     /// When it is no band.
     pub fn band(&self) -> Result<Band, Needs> {
         let (bottom, top) = *self.build.amplifier.band.need()?;
-        Band::new(bottom, top).ok_or_else(|| Needs::because("the band of the amplifier is no range"))
+        Band::new(bottom, top)
+            .ok_or_else(|| Needs::because("the band of the amplifier is no range"))
     }
 
     /// The duty in force.
@@ -195,7 +221,14 @@ impl<'a> Case<'a> {
     /// # Errors
     /// When the channels are not stated.
     pub fn boards(&self) -> Result<u32, Needs> {
-        let per = self.build.amplifier.channels_per_board.get().copied().unwrap_or(1).max(1);
+        let per = self
+            .build
+            .amplifier
+            .channels_per_board
+            .get()
+            .copied()
+            .unwrap_or(1)
+            .max(1);
         Ok(self.channels()?.div_ceil(per))
     }
 
@@ -212,15 +245,30 @@ impl<'a> Case<'a> {
     /// The lines that set the rails, with one more.
     #[must_use]
     pub fn rail_sites(&self, more: Option<(&str, Site)>) -> Vec<Related> {
-        let mut related: Vec<Related> = more.into_iter().map(|(message, site)| Related { message: message.to_owned(), site }).collect();
+        let mut related: Vec<Related> = more
+            .into_iter()
+            .map(|(message, site)| Related {
+                message: message.to_owned(),
+                site,
+            })
+            .collect();
         if let Some(region) = self.region {
             let message = format!("mains {:.0} V to {:.0} V", region.low.0, region.high.0);
-            related.push(Related { message, site: region.site });
+            related.push(Related {
+                message,
+                site: region.site,
+            });
         }
         if let Some((supply, _)) = self.build.supply.get() {
-            related.push(Related { message: "sets the rails".to_owned(), site: supply.transformer.secondary.site() });
+            related.push(Related {
+                message: "sets the rails".to_owned(),
+                site: supply.transformer.secondary.site(),
+            });
         } else if let Some(site) = self.build.rails.stated_at() {
-            related.push(Related { message: "the given rails".to_owned(), site });
+            related.push(Related {
+                message: "the given rails".to_owned(),
+                site,
+            });
         }
         related
     }
@@ -230,7 +278,11 @@ impl<'a> Case<'a> {
     pub fn device_part(&self, stage: &Stage, side: Side) -> Part {
         let device = stage.device(side);
         let single = stage.sides().len() == 1;
-        let count = stage.pairs.get().zip(self.build.channels.get()).map(|(n, c)| n * c * if single { 2 } else { 1 });
+        let count = stage
+            .pairs
+            .get()
+            .zip(self.build.channels.get())
+            .map(|(n, c)| n * c * if single { 2 } else { 1 });
         Part {
             name: device.owner.name.clone(),
             block: stage.owner.name.clone(),
@@ -247,17 +299,51 @@ impl<'a> Case<'a> {
 #[must_use]
 pub fn line_part<T>(field: &Field<T>) -> Part {
     let owner = field.owner();
-    Part { name: format!("{} {}", owner.name, field.key()), block: owner.name.clone(), key: field.key(), ..Part::default() }
+    Part {
+        name: format!("{} {}", owner.name, field.key()),
+        block: owner.name.clone(),
+        key: field.key(),
+        ..Part::default()
+    }
 }
 
 /// A stated value in the working.
 #[must_use]
-pub fn stated(symbol: &'static str, meaning: &'static str, value: f64, unit: &'static str, from: impl IntoIterator<Item = Site>) -> Step {
-    Step { symbol, meaning, expression: "", value, unit, source: "", from: from.into_iter().collect() }
+pub fn stated(
+    symbol: &'static str,
+    meaning: &'static str,
+    value: f64,
+    unit: &'static str,
+    from: impl IntoIterator<Item = Site>,
+) -> Step {
+    Step {
+        symbol,
+        meaning,
+        expression: "",
+        value,
+        unit,
+        source: "",
+        from: from.into_iter().collect(),
+    }
 }
 
 /// A computed value in the working.
 #[must_use]
-pub fn solved(symbol: &'static str, meaning: &'static str, expression: &'static str, value: f64, unit: &'static str, source: &'static str) -> Step {
-    Step { symbol, meaning, expression, value, unit, source, from: Vec::new() }
+pub fn solved(
+    symbol: &'static str,
+    meaning: &'static str,
+    expression: &'static str,
+    value: f64,
+    unit: &'static str,
+    source: &'static str,
+) -> Step {
+    Step {
+        symbol,
+        meaning,
+        expression,
+        value,
+        unit,
+        source,
+        from: Vec::new(),
+    }
 }

@@ -16,8 +16,13 @@ use crate::physics::unit::{Amp, Volt, Watt};
 #[must_use]
 pub fn no_gain(device: &str, why: &NoGain) -> Needs {
     match why {
-        NoGain::BeyondCurve { needed, last } => Needs::because(format!("the hfe curve of {device} ends at {:.3} A, {:.3} A is needed", last.0, needed.0)),
-        NoGain::NoSuchCurrent => Needs::because(format!("the current asked of {device} is no current")),
+        NoGain::BeyondCurve { needed, last } => Needs::because(format!(
+            "the hfe curve of {device} ends at {:.3} A, {:.3} A is needed",
+            last.0, needed.0
+        )),
+        NoGain::NoSuchCurrent => {
+            Needs::because(format!("the current asked of {device} is no current"))
+        }
     }
 }
 
@@ -32,35 +37,77 @@ impl Case<'_> {
         let standing = match stage.base_emitter.get() {
             None => Amp::ZERO,
             // the least resistor takes the most
-            Some(r) => standing_current(Self::vbe(device), r.ohm.low).ok_or_else(|| Needs::because(format!("the base-emitter resistor of stage {} must be positive", stage.owner.name)))?,
+            Some(r) => standing_current(Self::vbe(device), r.ohm.low).ok_or_else(|| {
+                Needs::because(format!(
+                    "the base-emitter resistor of stage {} must be positive",
+                    stage.owner.name
+                ))
+            })?,
         };
         if device.flavour == Flavour::Mosfet {
-            return Err(Needs::because(format!("{} is a MOSFET: its gate takes no steady current", device.owner.name)));
+            return Err(Needs::because(format!(
+                "{} is a MOSFET: its gate takes no steady current",
+                device.owner.name
+            )));
         }
-        let (gain, pairs) = both(gain(device, self.policy.typical_gain), stage.pairs.need().copied())?;
-        Ok(Stage { gain, devices: pairs, standing })
+        let (gain, pairs) = both(
+            gain(device, self.policy.typical_gain),
+            stage.pairs.need().copied(),
+        )?;
+        Ok(Stage {
+            gain,
+            devices: pairs,
+            standing,
+        })
     }
 
     /// The followers from the output back: output, driver, predriver, as far as they are named.
     #[must_use]
     pub fn followers(&self) -> Vec<&Rc<Stated>> {
         let amplifier = &self.build.amplifier;
-        [Some(&amplifier.output), amplifier.driver.as_ref(), amplifier.predriver.as_ref()].into_iter().flatten().collect()
+        [
+            Some(&amplifier.output),
+            amplifier.driver.as_ref(),
+            amplifier.predriver.as_ref(),
+        ]
+        .into_iter()
+        .flatten()
+        .collect()
     }
 
     /// Mean heat of ONE driver device of a side at a signal, on a mean rail.
     ///
     /// # Errors
     /// What the chain does not state.
-    pub fn driver_heat(&self, side: Side, rail: Volt, amplitude: Volt, load: Impedance) -> Result<Watt, Needs> {
+    pub fn driver_heat(
+        &self,
+        side: Side,
+        rail: Volt,
+        amplitude: Volt,
+        load: Impedance,
+    ) -> Result<Watt, Needs> {
         let output = self.output();
-        let driver = self.build.amplifier.driver.as_ref().ok_or_else(|| self.build.amplifier.driver_field.missing())?;
+        let driver = self
+            .build
+            .amplifier
+            .driver
+            .as_ref()
+            .ok_or_else(|| self.build.amplifier.driver_field.missing())?;
         let (bank, pairs) = both(self.follower(output, side), driver.pairs.need().copied())?;
         let device = output.device(side);
-        let model = Driver::new(&bank, rail, Self::vbe(device), load.modulus(), load.angle_rad()).ok_or_else(|| Needs::because("the rail leaves the driver no voltage"))?;
+        let model = Driver::new(
+            &bank,
+            rail,
+            Self::vbe(device),
+            load.modulus(),
+            load.angle_rad(),
+        )
+        .ok_or_else(|| Needs::because("the rail leaves the driver no voltage"))?;
         // a loaded rail clips what an unsagged one would carry
         let most = (rail - Self::vbe(device)) * (1.0 - 1e-12);
-        let heat = model.mean_heat(amplitude.min(most)).map_err(|e| no_gain(&device.owner.name, &e))?;
+        let heat = model
+            .mean_heat(amplitude.min(most))
+            .map_err(|e| no_gain(&device.owner.name, &e))?;
         Ok(heat / f64::from(pairs.max(1)))
     }
 

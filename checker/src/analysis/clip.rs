@@ -56,7 +56,11 @@ impl Case<'_> {
         }
         let bound = |claim: &&Claim| {
             let loads = self.loads().unwrap_or_default();
-            !self.build.bridged || loads.iter().flatten().any(|l| (l.nominal / claim.load - 1.0).abs() < 0.02)
+            !self.build.bridged
+                || loads
+                    .iter()
+                    .flatten()
+                    .any(|l| (l.nominal / claim.load - 1.0).abs() < 0.02)
         };
         Ok(rated.need()?.iter().filter(bound).copied().collect())
     }
@@ -81,10 +85,22 @@ impl Case<'_> {
         let seen = claim.load / halves;
         let amplitude = Volt((2.0 * claim.power.0 * claim.load.0).sqrt() / halves);
         if !(seen > Ohm::ZERO && amplitude > Volt::ZERO && amplitude.is_finite()) {
-            return Err(Needs::because("a claimed power and its load must be positive"));
+            return Err(Needs::because(
+                "a claimed power and its load must be positive",
+            ));
         }
-        let mains = if claim.low_mains { Mains::Low } else { Mains::Nominal };
-        Ok(Asked { amplitude, peak: amplitude / seen, seen, driven: self.driven(claim.all_channels)?, mains })
+        let mains = if claim.low_mains {
+            Mains::Low
+        } else {
+            Mains::Nominal
+        };
+        Ok(Asked {
+            amplitude,
+            peak: amplitude / seen,
+            seen,
+            driven: self.driven(claim.all_channels)?,
+            mains,
+        })
     }
 
     /// Power into the load at a peak output of one channel: V̂²/2R, and (2V̂)²/2R between two.
@@ -109,7 +125,11 @@ impl Case<'_> {
     /// # Errors
     /// What the output stage or the build does not state.
     pub fn idle_of_supply(&self) -> Result<Amp, Needs> {
-        let (idle, pairs, channels) = three(self.idle(), self.output().pairs.need().copied(), self.channels_per_supply())?;
+        let (idle, pairs, channels) = three(
+            self.idle(),
+            self.output().pairs.need().copied(),
+            self.channels_per_supply(),
+        )?;
         Ok(idle * f64::from(pairs) * f64::from(channels))
     }
 
@@ -126,7 +146,11 @@ impl Case<'_> {
             Rails::Given { .. } => Ohm::ZERO,
         };
         let rail = self.loaded(mains, Reservoir::Low, current)?;
-        Ok(Trough { current, mean: rail.mean, lowest: rail.trough - esr * (peak * peaks - current) })
+        Ok(Trough {
+            current,
+            mean: rail.mean,
+            lowest: rail.trough - esr * (peak * peaks - current),
+        })
     }
 
     /// The greatest mid-band sine that `driven` channels sustain at once into a resistance each sees.
@@ -138,7 +162,8 @@ impl Case<'_> {
         // what is missing altogether shows without a signal
         self.trough(mains, driven, Amp::ZERO)?;
         let rail = |peak: Amp| self.trough(mains, driven, peak).ok().map(|t| t.lowest);
-        drop.clip_on(rail, Impedance::resistive(seen)).ok_or_else(|| Needs::because("the drop takes all of the rail"))
+        drop.clip_on(rail, Impedance::resistive(seen))
+            .ok_or_else(|| Needs::because("the drop takes all of the rail"))
     }
 
     /// The same at the bottom of the band: the greatest sine for which the rail never falls below
@@ -150,17 +175,32 @@ impl Case<'_> {
     ///
     /// # Errors
     /// What supply, drop or output stage lack: given rails say nothing of it.
-    pub fn sustained_low(&self, mains: Mains, driven: u32, seen: Ohm, frequency: Hertz) -> Result<Volt, Needs> {
+    pub fn sustained_low(
+        &self,
+        mains: Mains,
+        driven: u32,
+        seen: Ohm,
+        frequency: Hertz,
+    ) -> Result<Volt, Needs> {
         let made = self.made()?;
         let (drop, standing, region) = three(self.drop(), self.idle_of_supply(), self.region())?;
         let (draw, peaks) = self.draw(driven);
         let fails = || Needs::because("the rail at the bottom of the band cannot be solved");
-        let rail = made.rail(mains, Reservoir::Low, region.frequency).ok_or_else(fails)?;
+        let rail = made
+            .rail(mains, Reservoir::Low, region.frequency)
+            .ok_or_else(fails)?;
         let most = rail.unloaded() - drop.at(Amp::ZERO);
         if most <= Volt::ZERO {
             return Err(Needs::because("the drop takes all of the rail"));
         }
-        let low = Low { rail, standing, peaks, draw, frequency, seen };
+        let low = Low {
+            rail,
+            standing,
+            peaks,
+            draw,
+            frequency,
+            seen,
+        };
         let needed = |amplitude: Volt| {
             let drop = &drop;
             move |phase: f64| {
@@ -174,7 +214,9 @@ impl Case<'_> {
         let collapsed = -most.0;
         let mut amplitude = self.sustained(mains, driven, seen)?.min(most);
         for _ in 0..MOST_PHASES {
-            let worst = low.rail.least_headroom(low.load(amplitude), needed(amplitude));
+            let worst = low
+                .rail
+                .least_headroom(low.load(amplitude), needed(amplitude));
             let phase = match worst {
                 Some(headroom) if headroom.least.0 >= -EXACT * most.0 => return Ok(amplitude),
                 Some(headroom) => headroom.mains_rad,
@@ -183,7 +225,9 @@ impl Case<'_> {
             };
             let spare = |v: f64| {
                 let v = Volt(v);
-                low.rail.least_headroom_at(low.load(v), phase, needed(v)).map_or(collapsed, |h| h.least.0)
+                low.rail
+                    .least_headroom_at(low.load(v), phase, needed(v))
+                    .map_or(collapsed, |h| h.least.0)
             };
             let found = root(spare, 0.0, amplitude.0, 0.1 * EXACT * most.0).map(Volt);
             // where the level holds at this phase, rounding alone decided
@@ -205,6 +249,11 @@ struct Low {
 
 impl Low {
     fn load(&self, amplitude: Volt) -> LowFrequencyLoad {
-        LowFrequencyLoad { standing: self.standing, peak: amplitude / self.seen * self.peaks, frequency: self.frequency, draw: self.draw }
+        LowFrequencyLoad {
+            standing: self.standing,
+            peak: amplitude / self.seen * self.peaks,
+            frequency: self.frequency,
+            draw: self.draw,
+        }
     }
 }

@@ -46,7 +46,12 @@ pub fn emitter(stage: &Stage) -> Result<Ohm, Needs> {
 /// When it is not stated, or its points are no curve.
 pub fn transfer(device: &Device) -> Result<Transfer, Needs> {
     let points = device.gate_source.need()?;
-    Transfer::new(points).ok_or_else(|| Needs::because(format!("the gate-source points of {} do not rise together, or are fewer than two", device.owner.name)))
+    Transfer::new(points).ok_or_else(|| {
+        Needs::because(format!(
+            "the gate-source points of {} do not rise together, or are fewer than two",
+            device.owner.name
+        ))
+    })
 }
 
 /// The gain curve of a device: the `minimum` line, else the `typical` one times `typical` of a policy.
@@ -55,10 +60,20 @@ pub fn transfer(device: &Device) -> Result<Transfer, Needs> {
 /// When no gain is stated, or its points are no curve.
 pub fn gain(device: &Device, typical: f64) -> Result<GainCurve, Needs> {
     let line = device.hfe.iter().find(|l| l.minimum).or(device.hfe.first());
-    let Some(GainLine { minimum, points, .. }) = line else { return Err(device.hfe_field.missing()) };
+    let Some(GainLine {
+        minimum, points, ..
+    }) = line
+    else {
+        return Err(device.hfe_field.missing());
+    };
     let factor = if *minimum { 1.0 } else { typical };
     let points: Vec<(Amp, f64)> = points.iter().map(|(i, h)| (*i, h * factor)).collect();
-    GainCurve::new(&points).ok_or_else(|| Needs::because(format!("the hfe points of {} are no curve: currents must rise and gains be positive", device.owner.name)))
+    GainCurve::new(&points).ok_or_else(|| {
+        Needs::because(format!(
+            "the hfe points of {} are no curve: currents must rise and gains be positive",
+            device.owner.name
+        ))
+    })
 }
 
 /// How the devices of one side share.
@@ -68,8 +83,19 @@ pub fn gain(device: &Device, typical: f64) -> Result<GainCurve, Needs> {
 pub fn bank(stage: &Stage, side: Side) -> Result<Bank, Needs> {
     let device = stage.device(side);
     let (pairs, re) = both(stage.pairs.need().copied(), emitter(stage))?;
-    let wrong = || Needs::because(format!("pairs and emitter resistor of stage {} do not make a bank", stage.owner.name));
-    let low = stage.emitter.get().map_or(0.0, |r| if r.ohm.nominal > Ohm::ZERO { (r.ohm.nominal - r.ohm.low) / r.ohm.nominal } else { 0.0 });
+    let wrong = || {
+        Needs::because(format!(
+            "pairs and emitter resistor of stage {} do not make a bank",
+            stage.owner.name
+        ))
+    };
+    let low = stage.emitter.get().map_or(0.0, |r| {
+        if r.ohm.nominal > Ohm::ZERO {
+            (r.ohm.nominal - r.ohm.low) / r.ohm.nominal
+        } else {
+            0.0
+        }
+    });
     if pairs <= 1 {
         return Bank::even(pairs, re).ok_or_else(wrong);
     }
@@ -96,15 +122,34 @@ pub fn idle_of(stage: &Stage, group: &Idle) -> Result<Amp, Needs> {
         (Some(i), None, _, _) => bias::Idle::PerDevice(i),
         (None, Some(v), _, Some("both-emitters")) => bias::Idle::AcrossBoth(v),
         (None, Some(v), _, _) => bias::Idle::AcrossEmitter(v),
-        _ => return Err(Needs::because("a group of `idle` states one current or one voltage")),
+        _ => {
+            return Err(Needs::because(
+                "a group of `idle` states one current or one voltage",
+            ));
+        }
     };
     let re = match group.volts {
         Some(_) => stage.emitter.need()?.ohm.nominal,
         None => emitter(stage).unwrap_or(Ohm::ZERO),
     };
     let figures = figure.figures(re, pairs);
-    let per_device = figures.map(|f| f.per_device).or_else(|| group.current.map(|i| if group.per == Some("channel") { i / f64::from(pairs.max(1)) } else { i }));
-    per_device.filter(|i| i.is_finite() && *i >= Amp::ZERO).ok_or_else(|| Needs::because(format!("the idle current of stage {} cannot be worked out", stage.owner.name)))
+    let per_device = figures.map(|f| f.per_device).or_else(|| {
+        group.current.map(|i| {
+            if group.per == Some("channel") {
+                i / f64::from(pairs.max(1))
+            } else {
+                i
+            }
+        })
+    });
+    per_device
+        .filter(|i| i.is_finite() && *i >= Amp::ZERO)
+        .ok_or_else(|| {
+            Needs::because(format!(
+                "the idle current of stage {} cannot be worked out",
+                stage.owner.name
+            ))
+        })
 }
 
 impl Case<'_> {

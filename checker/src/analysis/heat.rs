@@ -2,8 +2,8 @@
 //! Must not know what is allowed.
 
 use super::case::{Case, Side};
-use super::loads::Driven;
 use super::devices::emitter;
+use super::loads::Driven;
 use super::rails::Mains;
 use super::signal::Duty;
 use crate::build::Needs;
@@ -84,7 +84,10 @@ impl Case<'_> {
         // what the emitter resistors do not take, the devices do
         let least = least_resistors(self.output())?;
         let mut quiet = None;
-        let mut bank = [BankHeat { signal: Watt::ZERO, idle: Watt::ZERO }; 2];
+        let mut bank = [BankHeat {
+            signal: Watt::ZERO,
+            idle: Watt::ZERO,
+        }; 2];
         let mut device = [Watt::ZERO; 2];
         for side in Side::BOTH {
             let parallel = self.bench()?.bank(side);
@@ -99,23 +102,48 @@ impl Case<'_> {
                 }
             };
             let pairs = f64::from(parallel.devices());
-            let idling = BankHeat { signal: Watt::ZERO, idle: idle_rail * idle * pairs };
-            let stands = if idling.total() > playing.total() { idling } else { playing };
+            let idling = BankHeat {
+                signal: Watt::ZERO,
+                idle: idle_rail * idle * pairs,
+            };
+            let stands = if idling.total() > playing.total() {
+                idling
+            } else {
+                playing
+            };
             // the mean current of the bank decides how unevenly it divides
             let mean = duty.peak / crate::physics::math::PI + idle * pairs;
             bank[at(side)] = stands;
             device[at(side)] = stands.total() / pairs * parallel.share(mean);
         }
-        let idle_decides = bank.iter().all(|b| b.signal == Watt::ZERO) && duty.amplitude > Volt::ZERO;
+        let idle_decides =
+            bank.iter().all(|b| b.signal == Watt::ZERO) && duty.amplitude > Volt::ZERO;
         let (sink, channels) = self.heatsink()?;
         let total = (bank[0].total() + bank[1].total() + other) * f64::from(channels);
         let (model, air) = both(sink_model(sink), self.air_inside())?;
-        let mean = sink_temperature(&model, air, total).ok_or_else(|| Needs::because(format!("heatsink {} has no temperature at {:.1} W", sink.owner.name, total.0)))?;
+        let mean = sink_temperature(&model, air, total).ok_or_else(|| {
+            Needs::because(format!(
+                "heatsink {} has no temperature at {:.1} W",
+                sink.owner.name, total.0
+            ))
+        })?;
         let stage = self.output();
         let spread = *stage.spread_across_sink.need()?;
         let places = 2 * stage.pairs.need()? * channels;
-        let hot_spot = hottest_place(mean, spread, places).ok_or_else(|| Needs::because("the spread across the sink must not be negative"))?;
-        Ok(Heat { duty, rail, bank, idle_decides, device, other, total, sink: mean, hot_spot, air })
+        let hot_spot = hottest_place(mean, spread, places)
+            .ok_or_else(|| Needs::because("the spread across the sink must not be negative"))?;
+        Ok(Heat {
+            duty,
+            rail,
+            bank,
+            idle_decides,
+            device,
+            other,
+            total,
+            sink: mean,
+            hot_spot,
+            air,
+        })
     }
 
     /// Sink, case and junction of the hottest device of a side.
@@ -125,7 +153,9 @@ impl Case<'_> {
     pub fn temperatures(&self, heat: &Heat, side: Side) -> Result<Temperatures, Needs> {
         let stage = self.output();
         let mounting = mounting(stage, side)?;
-        mounting.temperatures(heat.hot_spot, heat.device[at(side)]).ok_or_else(|| Needs::because("thermal resistances must not be negative"))
+        mounting
+            .temperatures(heat.hot_spot, heat.device[at(side)])
+            .ok_or_else(|| Needs::because("thermal resistances must not be negative"))
     }
 
     /// Case of the hottest device of a side: needs no junction resistance.
@@ -145,7 +175,10 @@ impl Case<'_> {
         let (loads, heats) = both(self.loads(), self.heats())?;
         let mut worst: Option<(&Driven, &Heat)> = None;
         for (load, heat) in loads.iter().zip(heats) {
-            let (load, heat) = both(load.as_ref().map_err(Clone::clone), heat.as_ref().map_err(Clone::clone))?;
+            let (load, heat) = both(
+                load.as_ref().map_err(Clone::clone),
+                heat.as_ref().map_err(Clone::clone),
+            )?;
             if worst.is_none_or(|(_, w)| heat.sink > w.sink) {
                 worst = Some((load, heat));
             }
@@ -158,7 +191,12 @@ impl Case<'_> {
 fn least_resistors(stage: &Stage) -> Result<Bank, Needs> {
     let (pairs, nominal) = both(stage.pairs.need().copied(), emitter(stage))?;
     let least = stage.emitter.get().map_or(nominal, |r| r.ohm.low);
-    Bank::even(pairs, least).ok_or_else(|| Needs::because(format!("pairs and emitter resistor of stage {} do not make a bank", stage.owner.name)))
+    Bank::even(pairs, least).ok_or_else(|| {
+        Needs::because(format!(
+            "pairs and emitter resistor of stage {} do not make a bank",
+            stage.owner.name
+        ))
+    })
 }
 
 /// Case to sink; `none` is bare metal on metal with no insulator stated, which still has a resistance,
@@ -175,8 +213,14 @@ pub fn case_to_sink(stage: &Stage) -> Result<KelvinPerWatt, Needs> {
 /// # Errors
 /// What is not stated.
 pub fn mounting(stage: &Stage, side: Side) -> Result<Mounting, Needs> {
-    let (junction_case, case_sink) = both(stage.device(side).junction_case.need().copied(), case_to_sink(stage))?;
-    Ok(Mounting { junction_case, case_sink })
+    let (junction_case, case_sink) = both(
+        stage.device(side).junction_case.need().copied(),
+        case_to_sink(stage),
+    )?;
+    Ok(Mounting {
+        junction_case,
+        case_sink,
+    })
 }
 
 /// A declared heatsink as a model.
@@ -186,12 +230,18 @@ pub fn mounting(stage: &Stage, side: Side) -> Result<Mounting, Needs> {
 pub fn sink_model(sink: &Heatsink) -> Result<Sink, Needs> {
     let wrong = |why: &str| Needs::because(format!("heatsink {}: {why}", sink.owner.name));
     if let Some((resistance, rise)) = sink.resistance.get() {
-        return StatedSink::new(*resistance, *rise).map(Sink::Stated).ok_or_else(|| wrong("resistance and rise must be positive"));
+        return StatedSink::new(*resistance, *rise)
+            .map(Sink::Stated)
+            .ok_or_else(|| wrong("resistance and rise must be positive"));
     }
     if sink.plate.get().is_none() && sink.fins.get().is_none() {
         return Err(sink.resistance.missing());
     }
-    let ([width, height, plate], (fins, [length, thick, gap], vertical), _) = three(sink.plate.need().copied(), sink.fins.need().copied(), Ok(()))?;
+    let ([width, height, plate], (fins, [length, thick, gap], vertical), _) = three(
+        sink.plate.need().copied(),
+        sink.fins.need().copied(),
+        Ok(()),
+    )?;
     let geometry = Geometry {
         width_m: width,
         length_m: height,
@@ -200,9 +250,18 @@ pub fn sink_model(sink: &Heatsink) -> Result<Sink, Needs> {
         fin_height_m: length,
         fin_m: thick,
         gap_m: gap,
-        orientation: if vertical { Orientation::Vertical } else { Orientation::Horizontal },
+        orientation: if vertical {
+            Orientation::Vertical
+        } else {
+            Orientation::Horizontal
+        },
         back_open: false,
     };
-    let material = Material { emissivity: ANODISED, conductivity_w_per_mk: ALUMINIUM };
-    FinnedSink::new(geometry, material).map(Sink::Finned).map_err(|fault| wrong(&format!("{fault:?}")))
+    let material = Material {
+        emissivity: ANODISED,
+        conductivity_w_per_mk: ALUMINIUM,
+    };
+    FinnedSink::new(geometry, material)
+        .map(Sink::Finned)
+        .map_err(|fault| wrong(&format!("{fault:?}")))
 }

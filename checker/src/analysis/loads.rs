@@ -56,7 +56,11 @@ impl Driven {
     /// The nominal resistance that one channel sees.
     #[must_use]
     pub fn nominal_seen(&self) -> Ohm {
-        if self.bridged { self.nominal / 2.0 } else { self.nominal }
+        if self.bridged {
+            self.nominal / 2.0
+        } else {
+            self.nominal
+        }
     }
 
     /// Least modulus that one channel sees.
@@ -64,7 +68,12 @@ impl Driven {
     pub fn minimum_seen(&self) -> Spot {
         let w = self.survey.minimum;
         let seen = self.seen(w.impedance);
-        Spot { value: seen.modulus().0, frequency: w.frequency, seen, variant: w.variant }
+        Spot {
+            value: seen.modulus().0,
+            frequency: w.frequency,
+            seen,
+            variant: w.variant,
+        }
     }
 
     /// That part of the band is not known: a table covers less.
@@ -72,14 +81,22 @@ impl Driven {
     pub fn uncovered(&self, band: Band) -> Option<Needs> {
         (self.covered != band).then(|| {
             let (from, to) = (self.covered.bottom().0, self.covered.top().0);
-            Needs::because(format!("the table of load {} covers {from:.0} Hz to {to:.0} Hz of the band only", self.name))
+            Needs::because(format!(
+                "the table of load {} covers {from:.0} Hz to {to:.0} Hz of the band only",
+                self.name
+            ))
         })
     }
 
     /// Where `objective` of what one channel sees is greatest within the band.
     pub fn worst(&self, band: Band, objective: impl Fn(Hertz, Impedance) -> f64) -> Option<Spot> {
         let w = self.load.worst(band, |f, z| objective(f, self.seen(z)))?;
-        Some(Spot { value: w.value, frequency: w.frequency, seen: self.seen(w.impedance), variant: w.variant })
+        Some(Spot {
+            value: w.value,
+            frequency: w.frequency,
+            seen: self.seen(w.impedance),
+            variant: w.variant,
+        })
     }
 }
 
@@ -90,7 +107,9 @@ impl Case<'_> {
     /// When the build states no loads.
     pub fn loads(&self) -> Result<&[Result<Driven, Needs>], Needs> {
         let stated = self.build.loads.need()?;
-        Ok(self.loads.get_or_init(|| stated.iter().map(|l| self.drive(l)).collect()))
+        Ok(self
+            .loads
+            .get_or_init(|| stated.iter().map(|l| self.drive(l)).collect()))
     }
 
     fn drive(&self, stated: &Rc<Stated>) -> Result<Driven, Needs> {
@@ -99,15 +118,34 @@ impl Case<'_> {
         let coldest = self.coldest().unwrap_or(Celsius(20.0)).min(Celsius(20.0));
         let cold = load.with_coil_at(coldest).unwrap_or(load);
         let band = self.band()?;
-        let covered = cold.covered(band).ok_or_else(|| Needs::because(format!("the table of load {} covers none of the band", stated.owner.name)))?;
-        let survey = cold.survey(band).ok_or_else(|| Needs::because(format!("the impedance of load {} cannot be surveyed", stated.owner.name)))?;
-        let nominal = match (&stated.kind, stated.nominal.get()) {
-            (_, Some(z)) => *z,
-            (LoadKind::Resistive(r), None) => r.nominal,
-            _ => {
+        let covered = cold.covered(band).ok_or_else(|| {
+            Needs::because(format!(
+                "the table of load {} covers none of the band",
+                stated.owner.name
+            ))
+        })?;
+        let survey = cold.survey(band).ok_or_else(|| {
+            Needs::because(format!(
+                "the impedance of load {} cannot be surveyed",
+                stated.owner.name
+            ))
+        })?;
+        let nominal = match stated
+            .nominal
+            .get()
+            .copied()
+            .or_else(|| rated(&stated.kind))
+        {
+            Some(z) => z,
+            None => {
                 let least = survey.minimum.impedance.modulus();
                 let key = format!("load {} nominal", stated.owner.name);
-                self.assume(key, Measure::new(least.0, "ohm"), "its least modulus", stated.owner.site);
+                self.assume(
+                    key,
+                    Measure::new(least.0, "ohm"),
+                    "its least modulus",
+                    stated.owner.site,
+                );
                 least
             }
         };
@@ -124,17 +162,39 @@ impl Case<'_> {
     }
 }
 
+/// The rated resistance of a load that states none of its own: a resistor's, or that of its parts in
+/// parallel where each has one.
+fn rated(kind: &LoadKind) -> Option<Ohm> {
+    match kind {
+        LoadKind::Resistive(r) => Some(r.nominal),
+        LoadKind::Parallel(loads) => {
+            let mut siemens = 0.0;
+            for load in loads {
+                siemens += 1.0 / load.nominal.get().copied().or_else(|| rated(&load.kind))?.0;
+            }
+            (siemens > 0.0).then(|| Ohm(1.0 / siemens))
+        }
+        _ => None,
+    }
+}
+
 /// A declared load as a model, its coil at 20 degC.
 ///
 /// # Errors
 /// What it does not state, or why its values are no load.
 pub fn physics_load(stated: &Stated, policy: &Policy, tables: &Tables) -> Result<Load, Needs> {
-    let wrong = || Needs::because(format!("the values of load {} are no passive load", stated.owner.name));
+    let wrong = || {
+        Needs::because(format!(
+            "the values of load {} are no passive load",
+            stated.owner.name
+        ))
+    };
     let dc = stated.dc.get().copied();
     match &stated.kind {
         LoadKind::Resistive(r) => {
-            let tolerance = ((r.high - r.nominal) / r.nominal).max((r.nominal - r.low) / r.nominal);
-            Load::resistive(r.nominal, tolerance).ok_or_else(wrong)
+            // the two ends as stated, even where they are not alike
+            let (middle, half) = ((r.low + r.high) / 2.0, (r.high - r.low) / 2.0);
+            Load::resistive(middle, half / middle).ok_or_else(wrong)
         }
         LoadKind::Nominal(_, minimum, angle) => {
             let degrees = angle.get().copied().unwrap_or(policy.angle_deg);
@@ -144,15 +204,28 @@ pub fn physics_load(stated: &Stated, policy: &Policy, tables: &Tables) -> Result
             resistance: *re,
             inductance: *le,
             loss_exponent: lossy.unwrap_or(1.0),
-            resonances: resonances.iter().map(|(f, m, e)| Resonance { frequency: *f, mechanical_q: *m, electrical_q: *e }).collect(),
+            resonances: resonances
+                .iter()
+                .map(|(f, m, e)| Resonance {
+                    frequency: *f,
+                    mechanical_q: *m,
+                    electrical_q: *e,
+                })
+                .collect(),
         })
         .ok_or_else(wrong),
         LoadKind::Table(_, site) => {
-            let table = tables.get(site).cloned().unwrap_or_else(|| Err(stated.line.missing()))?;
+            let table = tables
+                .get(site)
+                .cloned()
+                .unwrap_or_else(|| Err(stated.line.missing()))?;
             Load::table(table, dc).ok_or_else(wrong)
         }
         LoadKind::Parallel(loads) => {
-            let members = loads.iter().map(|l| physics_load(l, policy, tables)).collect::<Result<Vec<_>, _>>()?;
+            let members = loads
+                .iter()
+                .map(|l| physics_load(l, policy, tables))
+                .collect::<Result<Vec<_>, _>>()?;
             Load::parallel(&members).ok_or_else(wrong)
         }
         LoadKind::Unstated => Err(stated.line.missing()),

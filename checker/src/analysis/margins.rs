@@ -44,7 +44,13 @@ impl<'a> Margins<'a> {
     /// None yet.
     #[must_use]
     pub fn new(build: &'a str, alternate: Option<&'a str>, policy: &'a Policy) -> Self {
-        Self { build, alternate, policy, margins: Vec::new(), index: HashMap::new() }
+        Self {
+            build,
+            alternate,
+            policy,
+            margins: Vec::new(),
+            index: HashMap::new(),
+        }
     }
 
     /// All of them, in the order in which rules and parts first came.
@@ -54,13 +60,24 @@ impl<'a> Margins<'a> {
     }
 
     /// Compare a stress, or note what it lacks. `site` is the line to blame.
-    pub fn compare(&mut self, rule: &'static Rule, part: Part, site: Site, stress: Result<Stress, Needs>) {
+    pub fn compare(
+        &mut self,
+        rule: &'static Rule,
+        part: Part,
+        site: Site,
+        stress: Result<Stress, Needs>,
+    ) {
         let margin = match stress {
             Err(needs) => self.unchecked(rule, part, site, needs),
             Ok(stress) => {
                 let allow = self.policy.entry(rule).allow;
                 match compare(rule, allow, stress.value, stress.rating, stress.ambient) {
-                    None => self.unchecked(rule, part, site, Needs::because("the numbers do not make sense together")),
+                    None => self.unchecked(
+                        rule,
+                        part,
+                        site,
+                        Needs::because("the numbers do not make sense together"),
+                    ),
                     Some(c) => Margin {
                         severity: self.policy.severity_of(rule, c.verdict),
                         stress: Some(Measure::new(stress.value, rule.unit)),
@@ -82,7 +99,14 @@ impl<'a> Margins<'a> {
 
     /// A verdict that no comparison of numbers gives: a fault of kind (`over`), or a thing that is
     /// plainly right (`ok`), with the reason in words.
-    pub fn judge(&mut self, rule: &'static Rule, part: Part, site: Site, verdict: Verdict, stress: Stress) {
+    pub fn judge(
+        &mut self,
+        rule: &'static Rule,
+        part: Part,
+        site: Site,
+        verdict: Verdict,
+        stress: Stress,
+    ) {
         let margin = Margin {
             verdict,
             severity: self.policy.severity_of(rule, verdict),
@@ -96,7 +120,10 @@ impl<'a> Margins<'a> {
     }
 
     fn unchecked(&self, rule: &'static Rule, part: Part, site: Site, needs: Needs) -> Margin {
-        let related = needs.keys.iter().map(|n| Related { message: format!("`{}` is not stated", n.key), site: n.site });
+        let related = needs.keys.iter().map(|n| Related {
+            message: format!("`{}` is not stated", n.key),
+            site: n.site,
+        });
         Margin {
             verdict: Verdict::Unchecked,
             severity: Severity::Information,
@@ -111,9 +138,18 @@ impl<'a> Margins<'a> {
         // a part whose name is not its line's is named: one line can hold two
         let line = format!("{}.{}", part.block, part.key);
         let named = part.name == format!("{} {}", part.block, part.key) || part.name == part.block;
-        let part_id = if named { line } else { format!("{line}:{}", part.name) };
+        let part_id = if named {
+            line
+        } else {
+            format!("{line}:{}", part.name)
+        };
         Margin {
-            id: format!("{}/{}/{part_id}/{}", self.build, self.alternate.unwrap_or("-"), rule.name),
+            id: format!(
+                "{}/{}/{part_id}/{}",
+                self.build,
+                self.alternate.unwrap_or("-"),
+                rule.name
+            ),
             rule: rule.name,
             part,
             verdict: Verdict::Ok,
@@ -140,7 +176,9 @@ impl<'a> Margins<'a> {
             self.margins.push(margin);
             return;
         };
-        let Some(kept) = self.margins.get_mut(at) else { return };
+        let Some(kept) = self.margins.get_mut(at) else {
+            return;
+        };
         match worse(&margin, kept) {
             std::cmp::Ordering::Greater => *kept = margin,
             std::cmp::Ordering::Equal if kept.verdict == Verdict::Unchecked => {
@@ -164,14 +202,30 @@ impl<'a> Margins<'a> {
 
 /// Worse first by verdict, then by used; used that agree within 1e-9 tie.
 fn worse(a: &Margin, b: &Margin) -> std::cmp::Ordering {
-    a.verdict.cmp(&b.verdict).then_with(|| match (a.used_percent, b.used_percent) {
-        (Some(x), Some(y)) if (x - y).abs() <= TIE * x.abs().max(y.abs()) => std::cmp::Ordering::Equal,
-        (Some(x), Some(y)) => x.total_cmp(&y),
-        // no rating left is worse than any figure
-        (None, Some(_)) => if a.verdict == Verdict::Over { std::cmp::Ordering::Greater } else { std::cmp::Ordering::Less },
-        (Some(_), None) => if a.verdict == Verdict::Over { std::cmp::Ordering::Less } else { std::cmp::Ordering::Greater },
-        (None, None) => std::cmp::Ordering::Equal,
-    })
+    a.verdict
+        .cmp(&b.verdict)
+        .then_with(|| match (a.used_percent, b.used_percent) {
+            (Some(x), Some(y)) if (x - y).abs() <= TIE * x.abs().max(y.abs()) => {
+                std::cmp::Ordering::Equal
+            }
+            (Some(x), Some(y)) => x.total_cmp(&y),
+            // no rating left is worse than any figure
+            (None, Some(_)) => {
+                if a.verdict == Verdict::Over {
+                    std::cmp::Ordering::Greater
+                } else {
+                    std::cmp::Ordering::Less
+                }
+            }
+            (Some(_), None) => {
+                if a.verdict == Verdict::Over {
+                    std::cmp::Ordering::Less
+                } else {
+                    std::cmp::Ordering::Greater
+                }
+            }
+            (None, None) => std::cmp::Ordering::Equal,
+        })
 }
 
 /// Where a witness is, in few words.

@@ -107,7 +107,10 @@ impl Case<'_> {
     /// # Errors
     /// What the supply does not state.
     pub fn rails(&self) -> Result<&Rails, Needs> {
-        self.rails.get_or_init(|| self.solve_rails()).as_ref().map_err(Clone::clone)
+        self.rails
+            .get_or_init(|| self.solve_rails())
+            .as_ref()
+            .map_err(Clone::clone)
     }
 
     /// The solved supply.
@@ -128,26 +131,44 @@ impl Case<'_> {
     pub fn transformer(&self) -> Result<(Transformer, Volt), Needs> {
         let supply = self.supply()?;
         let t = &supply.transformer;
-        let (primary, (windings, volts), va) = three(t.primary.need(), t.secondary.need().copied(), t.rating.need().copied())?;
+        let (primary, (windings, volts), va) = three(
+            t.primary.need(),
+            t.secondary.need().copied(),
+            t.rating.need().copied(),
+        )?;
         let region = self.region()?;
         let tap = match (region.tap, primary.as_slice()) {
             (Some(tap), _) => tap,
             (None, [only]) => *only,
             (None, _) => return Err(self.build.mains.missing_part("tap")),
         };
-        let wrong = || Needs::because(format!("transformer {} does not make sense: rating, volts and regulation must be positive", t.owner.name));
+        let wrong = || {
+            Needs::because(format!(
+                "transformer {} does not make sense: rating, volts and regulation must be positive",
+                t.owner.name
+            ))
+        };
         let regulation = match (t.resistance.get(), t.regulation.get()) {
-            (Some((primary, secondary)), _) => supply::regulation_from_resistances(tap, volts, windings, va, *primary, *secondary).ok_or_else(wrong)?,
+            (Some((primary, secondary)), _) => {
+                supply::regulation_from_resistances(tap, volts, windings, va, *primary, *secondary)
+                    .ok_or_else(wrong)?
+            }
             (None, Some(rho)) => *rho,
             (None, None) if t.regulation.unstated() => {
                 let rho = supply::assumed_regulation(va).ok_or_else(wrong)?;
                 let key = format!("transformer {} regulation", t.owner.name);
-                self.assume(key, Measure::new(100.0 * rho, "%"), "usual for a toroid of this VA, from memory", t.owner.site);
+                self.assume(
+                    key,
+                    Measure::new(100.0 * rho, "%"),
+                    "usual for a toroid of this VA, from memory",
+                    t.owner.site,
+                );
                 rho
             }
             (None, None) => return Err(t.regulation.missing()),
         };
-        let transformer = Transformer::new(tap, volts, windings, va, regulation).ok_or_else(wrong)?;
+        let transformer =
+            Transformer::new(tap, volts, windings, va, regulation).ok_or_else(wrong)?;
         Ok((transformer, tap))
     }
 
@@ -155,18 +176,27 @@ impl Case<'_> {
         let build = self.build;
         if build.supply.get().is_none() {
             if let Some(rails) = build.rails.get() {
-                return Ok(Rails::Given { rails: *rails, site: build.rails.site() });
+                return Ok(Rails::Given {
+                    rails: *rails,
+                    site: build.rails.site(),
+                });
             }
             return Err(build.supply.missing());
         }
         let (supply, carried) = build.supply.need()?;
-        let ((transformer, tap), rectifier, reservoir) = three(self.transformer(), supply.rectifier.need(), supply.reservoir.need())?;
+        let ((transformer, tap), rectifier, reservoir) = three(
+            self.transformer(),
+            supply.rectifier.need(),
+            supply.reservoir.need(),
+        )?;
         let region = self.region()?;
         let channels = self.channels()?;
         let name = &supply.owner.name;
         let windings = supply.transformer.secondary.need()?.0 * supply.transformers;
         if windings < 2 || windings % 2 == 1 {
-            let why = format!("supply {name} has {windings} winding(s): two rails need an even number, or a centre-tapped total");
+            let why = format!(
+                "supply {name} has {windings} winding(s): two rails need an even number, or a centre-tapped total"
+            );
             return Err(Needs::because(why));
         }
         let parallel = windings / 2;
@@ -174,16 +204,40 @@ impl Case<'_> {
             1 => Rectifier::CentreTap,
             _ => Rectifier::PerWinding,
         };
-        let boards_fed = (*carried).div_ceil(build.amplifier.channels_per_board.get().copied().unwrap_or(1).max(1));
-        let mut groups: Vec<(u32, [Farad; 3], Option<Ohm>)> = reservoir.iter().map(|r| (r.count, [r.farad.low, r.farad.nominal, r.farad.high], r.esr)).collect();
+        let boards_fed = (*carried).div_ceil(
+            build
+                .amplifier
+                .channels_per_board
+                .get()
+                .copied()
+                .unwrap_or(1)
+                .max(1),
+        );
+        let mut groups: Vec<(u32, [Farad; 3], Option<Ohm>)> = reservoir
+            .iter()
+            .map(|r| (r.count, [r.farad.low, r.farad.nominal, r.farad.high], r.esr))
+            .collect();
         if let Some(r) = build.amplifier.board_reservoir.get() {
-            groups.push((r.count * boards_fed, [r.farad.low, r.farad.nominal, r.farad.high], r.esr));
+            groups.push((
+                r.count * boards_fed,
+                [r.farad.low, r.farad.nominal, r.farad.high],
+                r.esr,
+            ));
         }
         let mut total = [Farad::ZERO; 3];
         let mut esr = Ohm::ZERO;
         for (end, sum) in total.iter_mut().enumerate() {
-            let parts: Vec<supply::Reservoir> = groups.iter().map(|(n, c, e)| supply::Reservoir { count: *n, capacitance: c[end], esr: *e }).collect();
-            let found = supply::in_parallel(&parts).ok_or_else(|| Needs::because(format!("the reservoir of supply {name} has no capacitance")))?;
+            let parts: Vec<supply::Reservoir> = groups
+                .iter()
+                .map(|(n, c, e)| supply::Reservoir {
+                    count: *n,
+                    capacitance: c[end],
+                    esr: *e,
+                })
+                .collect();
+            let found = supply::in_parallel(&parts).ok_or_else(|| {
+                Needs::because(format!("the reservoir of supply {name} has no capacitance"))
+            })?;
             (*sum, esr) = found;
         }
         let loop_resistance = region.loop_resistance.unwrap_or(Ohm::ZERO);
@@ -191,7 +245,8 @@ impl Case<'_> {
         let supplies = channels.div_ceil(*carried);
         let mains_resistance = transformer.referred(loop_resistance, windings * supplies);
         let wiring = supply.wiring.get().copied().unwrap_or(Ohm::ZERO);
-        let source = (transformer.winding_resistance() + wiring * kind.leads() + mains_resistance) / f64::from(parallel);
+        let source = (transformer.winding_resistance() + wiring * kind.leads() + mains_resistance)
+            / f64::from(parallel);
         let diodes = kind.drop(rectifier.drop);
         let made = Made {
             transformer,
@@ -210,7 +265,11 @@ impl Case<'_> {
         };
         // one rail that cannot be solved is a fault of the data, found here and not in every rule
         made.rail(Mains::Nominal, Reservoir::Nominal, region.frequency)
-            .ok_or_else(|| Needs::because(format!("supply {name} gives no rail: the diode drops take all of its voltage")))?;
+            .ok_or_else(|| {
+                Needs::because(format!(
+                    "supply {name} gives no rail: the diode drops take all of its voltage"
+                ))
+            })?;
         Ok(Rails::Made(Box::new(made)))
     }
 
@@ -221,7 +280,8 @@ impl Case<'_> {
     pub fn no_load(&self, mains: Mains) -> Result<Volt, Needs> {
         if self.build.supply.get().is_some() {
             let (transformer, tap) = self.transformer()?;
-            let windings = self.supply()?.transformer.secondary.need()?.0 * self.supply()?.transformers;
+            let windings =
+                self.supply()?.transformer.secondary.need()?.0 * self.supply()?.transformers;
             if windings < 2 {
                 self.rails()?;
             }
@@ -233,10 +293,16 @@ impl Case<'_> {
             };
             return Ok(transformer.no_load_crest(volts / tap));
         }
-        let rails = self.build.rails.need().map_err(|_| self.build.supply.missing())?;
+        let rails = self
+            .build
+            .rails
+            .need()
+            .map_err(|_| self.build.supply.missing())?;
         match mains {
             Mains::Nominal => Ok(rails.idle),
-            Mains::High => rails.high.ok_or_else(|| self.build.rails.missing_part("high")),
+            Mains::High => rails
+                .high
+                .ok_or_else(|| self.build.rails.missing_part("high")),
             Mains::Low => Err(self.build.supply.missing()),
         }
     }
@@ -247,7 +313,10 @@ impl Case<'_> {
     /// As [`Case::rails`].
     pub fn unsagged(&self, mains: Mains) -> Result<Volt, Needs> {
         match self.rails()? {
-            Rails::Made(made) => Ok(made.transformer.no_load_crest(made.mains_volts(mains) / made.tap) - made.diodes),
+            Rails::Made(made) => Ok(made
+                .transformer
+                .no_load_crest(made.mains_volts(mains) / made.tap)
+                - made.diodes),
             Rails::Given { .. } => self.no_load(mains),
         }
     }
@@ -256,13 +325,29 @@ impl Case<'_> {
     ///
     /// # Errors
     /// As [`Case::rails`], and when the supply cannot give this current.
-    pub fn loaded(&self, mains: Mains, reservoir: Reservoir, current: Amp) -> Result<Loaded, Needs> {
+    pub fn loaded(
+        &self,
+        mains: Mains,
+        reservoir: Reservoir,
+        current: Amp,
+    ) -> Result<Loaded, Needs> {
         match self.rails()? {
             Rails::Made(made) => {
                 let rail = made.rail(mains, reservoir, self.region()?.frequency);
                 let cycle = rail.and_then(|r| r.loaded(current));
-                let cycle = cycle.ok_or_else(|| Needs::because(format!("the supply cannot give {:.3} A at {} mains", current.0, mains.name())))?;
-                Ok(Loaded { mean: cycle.mean(), trough: cycle.trough(), crest: cycle.crest(), cycle: Some(cycle) })
+                let cycle = cycle.ok_or_else(|| {
+                    Needs::because(format!(
+                        "the supply cannot give {:.3} A at {} mains",
+                        current.0,
+                        mains.name()
+                    ))
+                })?;
+                Ok(Loaded {
+                    mean: cycle.mean(),
+                    trough: cycle.trough(),
+                    crest: cycle.crest(),
+                    cycle: Some(cycle),
+                })
             }
             Rails::Given { rails, .. } => {
                 if rails.at <= Amp::ZERO || rails.loaded > rails.idle {
@@ -275,9 +360,17 @@ impl Case<'_> {
                 };
                 let volts = rails.idle * share - (rails.idle - rails.loaded) * (current / rails.at);
                 if volts <= Volt::ZERO {
-                    return Err(Needs::because(format!("the given rails are gone at {:.3} A", current.0)));
+                    return Err(Needs::because(format!(
+                        "the given rails are gone at {:.3} A",
+                        current.0
+                    )));
                 }
-                Ok(Loaded { mean: volts, trough: volts, crest: volts, cycle: None })
+                Ok(Loaded {
+                    mean: volts,
+                    trough: volts,
+                    crest: volts,
+                    cycle: None,
+                })
             }
         }
     }
@@ -320,14 +413,21 @@ impl Made {
 
     /// The rail at a mains level and an end of the capacitors' tolerance.
     #[must_use]
-    pub fn rail(&self, mains: Mains, reservoir: Reservoir, frequency: crate::physics::unit::Hertz) -> Option<Rail> {
+    pub fn rail(
+        &self,
+        mains: Mains,
+        reservoir: Reservoir,
+        frequency: crate::physics::unit::Hertz,
+    ) -> Option<Rail> {
         let farad = match reservoir {
             Reservoir::Low => self.reservoir[0],
             Reservoir::Nominal => self.reservoir[1],
             Reservoir::High => self.reservoir[2],
         };
         Rail::new(RailParts {
-            no_load_crest: self.transformer.no_load_crest(self.mains_volts(mains) / self.tap),
+            no_load_crest: self
+                .transformer
+                .no_load_crest(self.mains_volts(mains) / self.tap),
             diode_drop: self.diodes,
             source: self.source,
             reservoir: farad,
@@ -356,12 +456,39 @@ impl Across {
     /// Ready to be compared with a breakdown voltage.
     #[must_use]
     pub fn against(self, case: &Case<'_>, rating: Volt, stated_in: &Field<Volt>) -> Stress {
-        let mut working = vec![solved("V0", "rail, no load, high mains", "m·√2·Vs·(1 + ρ)", self.rail.0, "V", "definition of regulation")];
+        let mut working = vec![solved(
+            "V0",
+            "rail, no load, high mains",
+            "m·√2·Vs·(1 + ρ)",
+            self.rail.0,
+            "V",
+            "definition of regulation",
+        )];
         if self.above > Volt::ZERO {
-            working.push(solved("Vdr", "driver supply above the rail, high mains", "stated x V0(high)/V0(nominal)", self.above.0, "V", ""));
+            working.push(solved(
+                "Vdr",
+                "driver supply above the rail, high mains",
+                "stated x V0(high)/V0(nominal)",
+                self.above.0,
+                "V",
+                "",
+            ));
         }
-        working.push(solved("V", "across the device that is off", "V0+ + V0- + 2·Vdr", self.volts().0, "V", "node voltages"));
-        working.push(stated("V(BR)", "breakdown voltage", rating.0, "V", stated_in.stated_at()));
+        working.push(solved(
+            "V",
+            "across the device that is off",
+            "V0+ + V0- + 2·Vdr",
+            self.volts().0,
+            "V",
+            "node voltages",
+        ));
+        working.push(stated(
+            "V(BR)",
+            "breakdown voltage",
+            rating.0,
+            "V",
+            stated_in.stated_at(),
+        ));
         Stress {
             value: self.volts().0,
             rating: rating.0,
@@ -384,8 +511,16 @@ impl Case<'_> {
     /// output stage or driver state, in proportion to the mains.
     fn drivers_above(&self, rail: Volt) -> Result<Volt, Needs> {
         let amplifier = &self.build.amplifier;
-        let stages = [Some(&amplifier.output), amplifier.driver.as_ref(), amplifier.voltage_amplifier.as_ref()];
-        let above = stages.into_iter().flatten().filter_map(|s| s.driver_rail.get().copied()).fold(Volt::ZERO, Volt::max);
+        let stages = [
+            Some(&amplifier.output),
+            amplifier.driver.as_ref(),
+            amplifier.voltage_amplifier.as_ref(),
+        ];
+        let above = stages
+            .into_iter()
+            .flatten()
+            .filter_map(|s| s.driver_rail.get().copied())
+            .fold(Volt::ZERO, Volt::max);
         if above <= Volt::ZERO {
             return Ok(Volt::ZERO);
         }
@@ -398,7 +533,10 @@ impl Case<'_> {
     /// As [`Case::no_load`].
     pub fn across_drivers(&self) -> Result<Across, Needs> {
         let rail = self.no_load(Mains::High)?;
-        Ok(Across { rail, above: self.drivers_above(rail)? })
+        Ok(Across {
+            rail,
+            above: self.drivers_above(rail)?,
+        })
     }
 
     /// The driver supply to ground, high mains, no load.

@@ -13,7 +13,10 @@ use crate::finding::{Related, Step, Witness};
 use crate::physics::load::{Band, Impedance};
 use crate::physics::math::PI;
 use crate::physics::output_stage::Drop;
-use crate::physics::safe_area::{Allowance, Coverage, Curve, CurveError, PulseAllowance, Rating, Refused, SecondBreakdown, Usage, pulse_credit};
+use crate::physics::safe_area::{
+    Allowance, Coverage, Curve, CurveError, PulseAllowance, Rating, Refused, SecondBreakdown,
+    Usage, pulse_credit,
+};
 use crate::physics::sharing::Bank;
 use crate::physics::unit::{Amp, Celsius, Hertz, Kelvin, Second, Volt, Watt};
 use crate::physics::waveform::{Locus, Point};
@@ -55,16 +58,41 @@ impl<'d> SafeArea<'d> {
     /// # Errors
     /// The ratings that are not stated, or curves that contradict themselves.
     pub fn of(device: &'d Device) -> Result<Self, Needs> {
-        let ((current, breakdown), (watt, stated_at), junction) =
-            three(both(device.current.need().copied(), device.breakdown.need().copied()), device.power.need().copied(), device.junction.need().copied())?;
+        let ((current, breakdown), (watt, stated_at), junction) = three(
+            both(
+                device.current.need().copied(),
+                device.breakdown.need().copied(),
+            ),
+            device.power.need().copied(),
+            device.junction.need().copied(),
+        )?;
         let span = junction - stated_at;
         if span <= Kelvin::ZERO {
-            return Err(Needs::because(format!("the power of {} is stated at its junction limit", device.owner.name)));
+            return Err(Needs::because(format!(
+                "the power of {} is stated at its junction limit",
+                device.owner.name
+            )));
         }
-        let rating = Rating { current, power: watt * ((junction - STATED_AT) / span), junction, breakdown };
-        let second_breakdown = device.second_breakdown.get().map_or(SecondBreakdown::AsThermal, |r| SecondBreakdown::PerKelvin(*r));
+        let rating = Rating {
+            current,
+            power: watt * ((junction - STATED_AT) / span),
+            junction,
+            breakdown,
+        };
+        let second_breakdown = device
+            .second_breakdown
+            .get()
+            .map_or(SecondBreakdown::AsThermal, |r| {
+                SecondBreakdown::PerKelvin(*r)
+            });
         let (curve, lacking) = dc_curve(device, rating.power)?;
-        Ok(Self { device, rating, second_breakdown, curve, lacking })
+        Ok(Self {
+            device,
+            rating,
+            second_breakdown,
+            curve,
+            lacking,
+        })
     }
 
     /// What is allowed at a case temperature; `None` where the case leaves nothing.
@@ -91,10 +119,19 @@ impl<'d> SafeArea<'d> {
         }
         for line in &self.device.soa {
             let Some(length) = line.pulse else { continue };
-            let peak = self.device.peak_current.get().ok_or_else(|| self.device.peak_current.missing_part("peak"))?;
+            let peak = self
+                .device
+                .peak_current
+                .get()
+                .ok_or_else(|| self.device.peak_current.missing_part("peak"))?;
             let curve = Curve::new(&line.points).map_err(|e| wrong(self.device, e))?;
-            let rating = Rating { current: *peak, ..self.rating };
-            if let Some(allowance) = self.unless_too_hot(Allowance::pulse(rating, &curve, die, self.second_breakdown))? {
+            let rating = Rating {
+                current: *peak,
+                ..self.rating
+            };
+            if let Some(allowance) =
+                self.unless_too_hot(Allowance::pulse(rating, &curve, die, self.second_breakdown))?
+            {
                 out.push(PulseAllowance { length, allowance });
             }
         }
@@ -105,7 +142,10 @@ impl<'d> SafeArea<'d> {
         match made {
             Ok(allowance) => Ok(Some(allowance)),
             Err(Refused::TooHot) => Ok(None),
-            Err(Refused::Rating) => Err(Needs::because(format!("the ratings of {} are none that a device has", self.device.owner.name))),
+            Err(Refused::Rating) => Err(Needs::because(format!(
+                "the ratings of {} are none that a device has",
+                self.device.owner.name
+            ))),
         }
     }
 
@@ -121,9 +161,17 @@ impl<'d> SafeArea<'d> {
                 100.0 * fraction
             ))),
             Coverage::NoCurve => {
-                let mut needs = self.lacking.clone().unwrap_or_else(|| self.device.soa_dc.missing_part("dc"));
-                let shown = format!("by power and current alone {figure:.0} % of what is allowed is used");
-                needs.because = if needs.because.is_empty() { shown } else { format!("{}; {shown}", needs.because) };
+                let mut needs = self
+                    .lacking
+                    .clone()
+                    .unwrap_or_else(|| self.device.soa_dc.missing_part("dc"));
+                let shown =
+                    format!("by power and current alone {figure:.0} % of what is allowed is used");
+                needs.because = if needs.because.is_empty() {
+                    shown
+                } else {
+                    format!("{}; {shown}", needs.because)
+                };
                 Some(needs)
             }
         }
@@ -139,7 +187,10 @@ fn dc_curve(device: &Device, power: Watt) -> Result<(Option<Curve>, Option<Needs
     }
     let missing = || device.soa_dc.missing_part("dc");
     let no_linear_mode = |mut needs: Needs| {
-        needs.because = format!("no linear-mode data for the vertical MOSFET {}", device.owner.name);
+        needs.because = format!(
+            "no linear-mode data for the vertical MOSFET {}",
+            device.owner.name
+        );
         needs
     };
     let curve = match line.map(|l| Curve::new(&l.points)) {
@@ -151,7 +202,9 @@ fn dc_curve(device: &Device, power: Watt) -> Result<(Option<Curve>, Option<Needs
     Ok(match curve {
         None if mosfet => (None, Some(no_linear_mode(missing()))),
         None => (None, Some(missing())),
-        Some(curve) if mosfet && !curve.has_linear_mode_data(power) => (None, Some(no_linear_mode(Needs::default()))),
+        Some(curve) if mosfet && !curve.has_linear_mode_data(power) => {
+            (None, Some(no_linear_mode(Needs::default())))
+        }
         Some(curve) => (Some(curve), None),
     })
 }
@@ -191,6 +244,41 @@ pub struct Use {
     pub peak: Amp,
 }
 
+/// A search over the band that has been done, with all that it depended on.
+#[derive(Debug)]
+pub(super) struct Remembered {
+    load: String,
+    rail: Volt,
+    bank: Bank,
+    allowance: Option<Allowance>,
+    pulses: Vec<PulseAllowance>,
+    aim: f64,
+    found: (Spot, Use),
+}
+
+impl Remembered {
+    fn new(ready: &Ready<'_>, load: &Driven, found: (Spot, Use)) -> Self {
+        Self {
+            load: load.name.clone(),
+            rail: ready.rail,
+            bank: ready.bank.clone(),
+            allowance: ready.allowance.clone(),
+            pulses: ready.pulses.clone(),
+            aim: ready.aim,
+            found,
+        }
+    }
+
+    fn of(&self, ready: &Ready<'_>, load: &Driven) -> bool {
+        self.load == load.name
+            && self.rail == ready.rail
+            && self.bank == *ready.bank
+            && self.allowance == ready.allowance
+            && self.pulses == ready.pulses
+            && self.aim.total_cmp(&ready.aim).is_eq()
+    }
+}
+
 /// Used where nothing is allowed: finite, and beyond any figure.
 const NOTHING_ALLOWED: f64 = 1e9;
 
@@ -208,16 +296,33 @@ impl Ready<'_> {
         let peak = locus.peak_current();
         let Some(allowance) = &self.allowance else {
             let (point, coverage) = (locus.peak_dissipation(), Coverage::Whole);
-            return Some(Use { used: NOTHING_ALLOWED, point, allowed: Amp::ZERO, coverage, pulse: None, amplitude, peak });
+            return Some(Use {
+                used: NOTHING_ALLOWED,
+                point,
+                allowed: Amp::ZERO,
+                coverage,
+                pulse: None,
+                amplitude,
+                peak,
+            });
         };
         let (usage, pulse) = if self.pulses.is_empty() {
             (allowance.usage(&locus), None)
         } else {
-            let credited = pulse_credit(&locus, frequency, allowance, &self.pulses, self.aim, false);
+            let credited =
+                pulse_credit(&locus, frequency, allowance, &self.pulses, self.aim, false);
             (credited.usage, credited.length)
         };
         let allowed = allowed(&usage, allowance);
-        Some(Use { used: usage.used, point: usage.at, allowed, coverage: usage.coverage, pulse, amplitude, peak })
+        Some(Use {
+            used: usage.used,
+            point: usage.at,
+            allowed,
+            coverage: usage.coverage,
+            pulse,
+            amplitude,
+            peak,
+        })
     }
 
     /// The longest unbroken time in one period above the derated d.c. curve, at full drive.
@@ -236,7 +341,11 @@ fn allowed(usage: &Usage, allowance: &Allowance) -> Amp {
     if usage.coverage == Coverage::AboveBreakdown {
         return Amp::ZERO;
     }
-    if usage.used > 0.0 { usage.at.amps / usage.used } else { allowance.allowed(usage.at.volts) }
+    if usage.used > 0.0 {
+        usage.at.amps / usage.used
+    } else {
+        allowance.allowed(usage.at.volts)
+    }
 }
 
 /// At which angle a load is taken.
@@ -263,7 +372,11 @@ impl Case<'_> {
     /// The mains level of the safe-area verdict.
     #[must_use]
     pub fn safe_area_mains(&self) -> Mains {
-        if self.policy.soa_at_high_mains { Mains::High } else { Mains::Nominal }
+        if self.policy.soa_at_high_mains {
+            Mains::High
+        } else {
+            Mains::Nominal
+        }
     }
 
     /// The sides whose devices share differently: one where both are alike.
@@ -280,8 +393,15 @@ impl Case<'_> {
     /// # Errors
     /// When it cannot be worked out.
     pub fn longest_dwell(&self, ready: &Ready<'_>, load: &Driven) -> Result<(Spot, Second), Needs> {
-        let spot = load.worst(self.band()?, |f, z| ready.dwell(f, z).map_or(f64::NAN, |s| s.0));
-        let spot = spot.ok_or_else(|| Needs::because(format!("load {} cannot be driven on the {:.1} V rail", load.name, ready.rail.0)))?;
+        let spot = load.worst(self.band()?, |f, z| {
+            ready.dwell(f, z).map_or(f64::NAN, |s| s.0)
+        });
+        let spot = spot.ok_or_else(|| {
+            Needs::because(format!(
+                "load {} cannot be driven on the {:.1} V rail",
+                load.name, ready.rail.0
+            ))
+        })?;
         Ok((spot, Second(spot.value)))
     }
 
@@ -289,44 +409,117 @@ impl Case<'_> {
     ///
     /// # Errors
     /// What stage, devices or supply do not state.
-    pub fn ready(&self, side: Side, mains: Mains, case: Celsius, watts: Watt, aim: f64) -> Result<Ready<'_>, Needs> {
+    pub fn ready(
+        &self,
+        side: Side,
+        mains: Mains,
+        case: Celsius,
+        watts: Watt,
+        aim: f64,
+    ) -> Result<Ready<'_>, Needs> {
         let device = self.output().device(side);
-        let (area, bench, (rail, drop)) = three(SafeArea::of(device), self.bench(), both(self.unsagged(mains), self.drop()))?;
+        let (area, bench, (rail, drop)) = three(
+            SafeArea::of(device),
+            self.bench(),
+            both(self.unsagged(mains), self.drop()),
+        )?;
         let allowance = area.allowance(case)?;
         let pulses = match self.policy.curve {
             policy::Curve::Dc => Vec::new(),
             policy::Curve::Pulse => area.pulses(case + watts * *device.junction_case.need()?)?,
         };
-        Ok(Ready { bank: bench.bank(side), drop, rail, case, area, allowance, pulses, aim })
+        Ok(Ready {
+            bank: bench.bank(side),
+            drop,
+            rail,
+            case,
+            area,
+            allowance,
+            pulses,
+            aim,
+        })
     }
 
     /// The same with the case as hot as the duty in a load makes it.
     ///
     /// # Errors
     /// As [`Case::ready`], and what the heat of the duty lacks.
-    pub fn ready_at_duty(&self, heat: &Heat, side: Side, mains: Mains, aim: f64) -> Result<Ready<'_>, Needs> {
-        self.ready(side, mains, self.case_temperature(heat, side)?, heat.device[at(side)], aim)
+    pub fn ready_at_duty(
+        &self,
+        heat: &Heat,
+        side: Side,
+        mains: Mains,
+        aim: f64,
+    ) -> Result<Ready<'_>, Needs> {
+        self.ready(
+            side,
+            mains,
+            self.case_temperature(heat, side)?,
+            heat.device[at(side)],
+            aim,
+        )
     }
 
     /// Where a load is worst for the safe area, and the use there.
     ///
     /// # Errors
     /// When it cannot be worked out.
-    pub fn worst_use(&self, ready: &Ready<'_>, load: &Driven, angle: Angle) -> Result<(Spot, Use), Needs> {
-        let nothing = || Needs::because(format!("load {} cannot be driven on the {:.1} V rail", load.name, ready.rail.0));
+    pub fn worst_use(
+        &self,
+        ready: &Ready<'_>,
+        load: &Driven,
+        angle: Angle,
+    ) -> Result<(Spot, Use), Needs> {
+        if angle != Angle::Own {
+            return self.search_use(ready, load, angle);
+        }
+        // a complement has the same data: the search over the band is done once
+        if let Some(known) = self.uses.borrow().iter().find(|u| u.of(ready, load)) {
+            return Ok(known.found);
+        }
+        let found = self.search_use(ready, load, angle)?;
+        self.uses
+            .borrow_mut()
+            .push(Remembered::new(ready, load, found));
+        Ok(found)
+    }
+
+    fn search_use(
+        &self,
+        ready: &Ready<'_>,
+        load: &Driven,
+        angle: Angle,
+    ) -> Result<(Spot, Use), Needs> {
+        let nothing = || {
+            Needs::because(format!(
+                "load {} cannot be driven on the {:.1} V rail",
+                load.name, ready.rail.0
+            ))
+        };
         let band = self.band()?;
         let spot = match angle {
             Angle::Zero => {
                 let least = load.minimum_seen();
-                Spot { seen: Impedance::resistive(least.seen.modulus()), ..least }
+                Spot {
+                    seen: Impedance::resistive(least.seen.modulus()),
+                    ..least
+                }
             }
             Angle::Own | Angle::OwnAtBottom => {
-                let searched = if angle == Angle::Own { Some(band) } else { Band::new(band.bottom(), band.bottom()) };
-                let found = searched.and_then(|b| load.worst(b, |f, z| ready.driven(f, z).map_or(f64::NAN, |u| u.used)));
+                let searched = if angle == Angle::Own {
+                    Some(band)
+                } else {
+                    Band::new(band.bottom(), band.bottom())
+                };
+                let found = searched.and_then(|b| {
+                    load.worst(b, |f, z| ready.driven(f, z).map_or(f64::NAN, |u| u.used))
+                });
                 found.ok_or_else(nothing)?
             }
         };
-        let used = ready.driven(spot.frequency, spot.seen).ok_or_else(nothing)?;
+        let used = ready
+            .driven(spot.frequency, spot.seen)
+            .ok_or_else(nothing)?;
         Ok((spot, used))
     }
 
@@ -336,7 +529,14 @@ impl Case<'_> {
     /// # Errors
     /// What is missing, or where the data end before the stress while what they cover is within the
     /// allowance.
-    pub fn locus_stress(&self, rule: &Rule, load: &Driven, heat: &Heat, side: Side, angle: Angle) -> Result<Stress, Needs> {
+    pub fn locus_stress(
+        &self,
+        rule: &Rule,
+        load: &Driven,
+        heat: &Heat,
+        side: Side,
+        angle: Angle,
+    ) -> Result<Stress, Needs> {
         let mains = self.safe_area_mains();
         let aim = aim(self, rule);
         let ready = self.ready_at_duty(heat, side, mains, aim)?;
@@ -344,26 +544,100 @@ impl Case<'_> {
         self.settled(&ready, &found, aim)?;
         let device = self.output().device(side);
         let mut working = vec![
-            solved("Vu", "unsagged rail", "V0 - Vd", ready.rail.0, "V", "definition of the unsagged rail"),
-            solved("|Z|", "impedance that one channel sees", "", spot.seen.modulus().0, "ohm", ""),
-            solved("φ", "its angle", "", spot.seen.angle_rad() * 180.0 / PI, "deg", ""),
-            solved("V̂", "peak output", "Vu - drop(V̂/|Z|)", found.amplitude.0, "V", "drop as stated"),
-            solved("Tcase", "case of the hottest device at the duty", "Tsink + P·θcs", ready.case.0, "degC", "energy balance"),
-            solved("k", "derating with case temperature", "(Tj,max - Tcase)/(Tj,max - 25)", derating(&ready.area.rating, ready.case), "1", "straight-line derating of the data sheet"),
-            solved("v", "across the device at the worst instant", "Vu - v_out - (i/N)·RE", found.point.volts.0, "V", "node voltages"),
-            solved("i", "through the most loaded device then", "share·|i|/N", found.point.amps.0, "A", "current sharing"),
-            solved("Iallowed", "allowed at that voltage", "min(IC, k·P/v, kseg·C(v))", found.allowed.0, "A", "log-log curve of the data sheet, derated"),
+            solved(
+                "Vu",
+                "unsagged rail",
+                "V0 - Vd",
+                ready.rail.0,
+                "V",
+                "definition of the unsagged rail",
+            ),
+            solved(
+                "|Z|",
+                "impedance that one channel sees",
+                "",
+                spot.seen.modulus().0,
+                "ohm",
+                "",
+            ),
+            solved(
+                "φ",
+                "its angle",
+                "",
+                spot.seen.angle_rad() * 180.0 / PI,
+                "deg",
+                "",
+            ),
+            solved(
+                "V̂",
+                "peak output",
+                "Vu - drop(V̂/|Z|)",
+                found.amplitude.0,
+                "V",
+                "drop as stated",
+            ),
+            solved(
+                "Tcase",
+                "case of the hottest device at the duty",
+                "Tsink + P·θcs",
+                ready.case.0,
+                "degC",
+                "energy balance",
+            ),
+            solved(
+                "k",
+                "derating with case temperature",
+                "(Tj,max - Tcase)/(Tj,max - 25)",
+                derating(&ready.area.rating, ready.case),
+                "1",
+                "straight-line derating of the data sheet",
+            ),
+            solved(
+                "v",
+                "across the device at the worst instant",
+                "Vu - v_out - (i/N)·RE",
+                found.point.volts.0,
+                "V",
+                "node voltages",
+            ),
+            solved(
+                "i",
+                "through the most loaded device then",
+                "share·|i|/N",
+                found.point.amps.0,
+                "A",
+                "current sharing",
+            ),
+            solved(
+                "Iallowed",
+                "allowed at that voltage",
+                "min(IC, k·P/v, kseg·C(v))",
+                found.allowed.0,
+                "A",
+                "log-log curve of the data sheet, derated",
+            ),
         ];
-        working.extend(device.soa.iter().find(|l| l.pulse.is_none()).map(|l| stated("C", "points of the d.c. curve", f64::from(u32::try_from(l.points.len()).unwrap_or(0)), "1", [l.site])));
+        working.extend(device.soa.iter().find(|l| l.pulse.is_none()).map(|l| {
+            stated(
+                "C",
+                "points of the d.c. curve",
+                f64::from(u32::try_from(l.points.len()).unwrap_or(0)),
+                "1",
+                [l.site],
+            )
+        }));
         working.extend(self.beside_the_verdict(load, &ready, heat, side, &spot));
-        let curve = found.pulse.map_or_else(|| "dc".to_owned(), |s| format!("{:.3} ms", 1e3 * s.0));
+        let curve = found
+            .pulse
+            .map_or_else(|| "dc".to_owned(), |s| format!("{:.3} ms", 1e3 * s.0));
         Ok(Stress {
             value: found.point.amps.0,
             rating: found.allowed.0,
             witness: Witness {
                 mains_v: self.mains_volts(mains),
                 load: Some(load.name.clone()),
-                frequency_hz: (angle != Angle::Zero && !load.load.is_flat()).then_some(spot.frequency.0),
+                frequency_hz: (angle != Angle::Zero && !load.load.is_flat())
+                    .then_some(spot.frequency.0),
                 amplitude_v: Some(found.amplitude.0),
                 angle_deg: Some(found.point.angle_rad * 180.0 / PI),
                 duty: Some(self.duty().shown.clone()),
@@ -396,30 +670,73 @@ impl Case<'_> {
     /// Why nothing is allowed, where the device is beyond its breakdown voltage.
     fn beyond_breakdown(&self, found: &Use, side: Side) -> String {
         match found.coverage {
-            Coverage::AboveBreakdown => format!("current flows above the breakdown voltage of {}", self.output().device(side).owner.name),
+            Coverage::AboveBreakdown => format!(
+                "current flows above the breakdown voltage of {}",
+                self.output().device(side).owner.name
+            ),
             _ => String::new(),
         }
     }
 
     /// Other mains and 60 degrees, for information: at the worst spot, not searched again.
-    fn beside_the_verdict(&self, load: &Driven, ready: &Ready<'_>, heat: &Heat, side: Side, spot: &Spot) -> Vec<Step> {
-        let used = |ready: &Ready<'_>, z: Impedance| ready.driven(spot.frequency, z).filter(|u| u.allowed > Amp::ZERO).map(|u| 100.0 * u.used);
-        let other = |mains: Mains| self.ready_at_duty(heat, side, mains, ready.aim).ok().and_then(|r| used(&r, spot.seen));
+    fn beside_the_verdict(
+        &self,
+        load: &Driven,
+        ready: &Ready<'_>,
+        heat: &Heat,
+        side: Side,
+        spot: &Spot,
+    ) -> Vec<Step> {
+        let used = |ready: &Ready<'_>, z: Impedance| {
+            ready
+                .driven(spot.frequency, z)
+                .filter(|u| u.allowed > Amp::ZERO)
+                .map(|u| 100.0 * u.used)
+        };
+        let other = |mains: Mains| {
+            self.ready_at_duty(heat, side, mains, ready.aim)
+                .ok()
+                .and_then(|r| used(&r, spot.seen))
+        };
         let mut steps = Vec::new();
         if let Some(high) = other(Mains::High) {
-            steps.push(solved("used(hi)", "of what is allowed, at high mains, for information", "i/Iallowed", high, "%", ""));
+            steps.push(solved(
+                "used(hi)",
+                "of what is allowed, at high mains, for information",
+                "i/Iallowed",
+                high,
+                "%",
+                "",
+            ));
         }
         if self.safe_area_mains() == Mains::High
             && let Some(nominal) = other(Mains::Nominal)
         {
-            steps.push(solved("used(nom)", "of what is allowed, at nominal mains, for information", "i/Iallowed", nominal, "%", ""));
+            steps.push(solved(
+                "used(nom)",
+                "of what is allowed, at nominal mains, for information",
+                "i/Iallowed",
+                nominal,
+                "%",
+                "",
+            ));
         }
         if let LoadKind::Nominal(_, _, angle) = &load.stated.kind
             && angle.get().is_none()
             && spot.seen.angle_rad() != 0.0
-            && let Some(steep) = used(ready, Impedance::polar(spot.seen.modulus(), SHOWN_ANGLE * PI / 180.0))
+            && let Some(steep) = used(
+                ready,
+                Impedance::polar(spot.seen.modulus(), SHOWN_ANGLE * PI / 180.0),
+            )
         {
-            steps.push(solved("used(60)", "of what is allowed, at 60 degrees, for information", "i/Iallowed", steep, "%", ""));
+            steps.push(solved(
+                "used(60)",
+                "of what is allowed, at 60 degrees, for information",
+                "i/Iallowed",
+                steep,
+                "%",
+                "",
+            ));
         }
         steps
     }
@@ -428,7 +745,12 @@ impl Case<'_> {
     #[must_use]
     pub fn safe_area_sites(&self, side: Side, load: Option<&Driven>) -> Vec<Related> {
         let (stage, mut related) = (self.output(), Vec::new());
-        let mut add = |message: &str, site| related.push(Related { message: message.to_owned(), site });
+        let mut add = |message: &str, site| {
+            related.push(Related {
+                message: message.to_owned(),
+                site,
+            })
+        };
         if let Some(load) = load {
             add("into this load", load.site);
         }
@@ -456,10 +778,17 @@ impl Case<'_> {
     pub fn idle_stress(&self, rule: &Rule, side: Side) -> Result<Stress, Needs> {
         let loads = self.loads()?;
         // at no signal every load is alike; one is needed to name the nominal resistance
-        let load = loads.iter().find_map(|l| l.as_ref().ok()).ok_or_else(|| self.build.loads.missing())?;
+        let load = loads
+            .iter()
+            .find_map(|l| l.as_ref().ok())
+            .ok_or_else(|| self.build.loads.missing())?;
         let heat = self.heat_at(load, 0.0, Mains::High)?;
         let device = self.output().device(side);
-        let (area, (bench, idle), rail) = three(SafeArea::of(device), both(self.bench(), self.idle()), self.unsagged(Mains::High))?;
+        let (area, (bench, idle), rail) = three(
+            SafeArea::of(device),
+            both(self.bench(), self.idle()),
+            self.unsagged(Mains::High),
+        )?;
         let case = self.case_temperature(&heat, side)?;
         let bank = bench.bank(side);
         let share = bank.share(idle * f64::from(bank.devices()));
@@ -467,13 +796,21 @@ impl Case<'_> {
         let (allowed, coverage, used) = match area.allowance(case)? {
             None => (Amp::ZERO, Coverage::Whole, NOTHING_ALLOWED),
             Some(allowance) => {
-                let usage = allowance.point_usage(rail, current).ok_or_else(|| Needs::because("the idle point is no point"))?;
+                let usage = allowance
+                    .point_usage(rail, current)
+                    .ok_or_else(|| Needs::because("the idle point is no point"))?;
                 (allowed(&usage, &allowance), usage.coverage, usage.used)
             }
         };
         settled(&area, coverage, used, aim(self, rule))?;
         let mut related = self.safe_area_sites(side, None);
-        related.insert(0, Related { message: "sets the case temperature together with the sink".to_owned(), site: self.output().insulator.site() });
+        related.insert(
+            0,
+            Related {
+                message: "sets the case temperature together with the sink".to_owned(),
+                site: self.output().insulator.site(),
+            },
+        );
         Ok(Stress {
             value: current.0,
             rating: allowed.0,
@@ -489,12 +826,53 @@ impl Case<'_> {
                 ..self.witness()
             },
             working: vec![
-                solved("Vu", "unsagged rail, high mains", "V0 - Vd", rail.0, "V", "definition of the unsagged rail"),
-                stated("Iq", "idle current of one device", idle.0, "A", self.output().idle.stated_at()),
-                solved("share", "of the most loaded device at idle", "I1·N/I", share, "1", "junction voltage and emitter resistor in balance"),
-                solved("Tcase", "case at idle, hottest room", "Tsink + P·θcs", case.0, "degC", "energy balance"),
-                solved("k", "derating with case temperature", "(Tj,max - Tcase)/(Tj,max - 25)", derating(&area.rating, case), "1", "straight-line derating of the data sheet"),
-                solved("Iallowed", "allowed at that voltage", "min(IC, k·P/v, kseg·C(v))", allowed.0, "A", "log-log curve of the data sheet, derated"),
+                solved(
+                    "Vu",
+                    "unsagged rail, high mains",
+                    "V0 - Vd",
+                    rail.0,
+                    "V",
+                    "definition of the unsagged rail",
+                ),
+                stated(
+                    "Iq",
+                    "idle current of one device",
+                    idle.0,
+                    "A",
+                    self.output().idle.stated_at(),
+                ),
+                solved(
+                    "share",
+                    "of the most loaded device at idle",
+                    "I1·N/I",
+                    share,
+                    "1",
+                    "junction voltage and emitter resistor in balance",
+                ),
+                solved(
+                    "Tcase",
+                    "case at idle, hottest room",
+                    "Tsink + P·θcs",
+                    case.0,
+                    "degC",
+                    "energy balance",
+                ),
+                solved(
+                    "k",
+                    "derating with case temperature",
+                    "(Tj,max - Tcase)/(Tj,max - 25)",
+                    derating(&area.rating, case),
+                    "1",
+                    "straight-line derating of the data sheet",
+                ),
+                solved(
+                    "Iallowed",
+                    "allowed at that voltage",
+                    "min(IC, k·P/v, kseg·C(v))",
+                    allowed.0,
+                    "A",
+                    "log-log curve of the data sheet, derated",
+                ),
             ],
             related,
             ..Stress::default()
@@ -513,7 +891,11 @@ fn derating(rating: &Rating, case: Celsius) -> f64 {
 /// Where the curve ends, with the figure within it.
 pub fn settled(area: &SafeArea<'_>, coverage: Coverage, used: f64, aim: f64) -> Result<(), Needs> {
     // without a curve the hyperbola can only condemn
-    let enough = if coverage == Coverage::NoCurve { 1.0 } else { aim };
+    let enough = if coverage == Coverage::NoCurve {
+        1.0
+    } else {
+        aim
+    };
     match area.open(coverage, used) {
         Some(open) if used <= enough => Err(open),
         _ => Ok(()),

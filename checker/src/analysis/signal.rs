@@ -36,8 +36,13 @@ impl Case<'_> {
     /// When it is not stated, or falls with current.
     pub fn drop(&self) -> Result<Drop, Needs> {
         let points = self.build.amplifier.drop.need()?;
-        let points: Vec<(Amp, Volt)> = points.iter().map(|(v, i)| (i.unwrap_or(Amp::ZERO), *v)).collect();
-        Drop::new(&points).ok_or_else(|| Needs::because("the drop of the amplifier must not fall as the current rises"))
+        let points: Vec<(Amp, Volt)> = points
+            .iter()
+            .map(|(v, i)| (i.unwrap_or(Amp::ZERO), *v))
+            .collect();
+        Drop::new(&points).ok_or_else(|| {
+            Needs::because("the drop of the amplifier must not fall as the current rises")
+        })
     }
 
     /// V(burst): the peak output on the unsagged rail into a modulus that one channel sees.
@@ -46,7 +51,9 @@ impl Case<'_> {
     /// What rails or drop lack, or that the drop takes all of the rail.
     pub fn burst(&self, mains: Mains, modulus: Ohm) -> Result<Volt, Needs> {
         let (rail, drop) = both(self.unsagged(mains), self.drop())?;
-        drop.burst(rail, modulus).ok_or_else(|| Needs::because(format!("the drop takes all of the {:.1} V rail", rail.0)))
+        drop.burst(rail, modulus).ok_or_else(|| {
+            Needs::because(format!("the drop takes all of the {:.1} V rail", rail.0))
+        })
     }
 
     /// The greatest peak current of one channel into a load, unsagged rail, and the output then.
@@ -64,7 +71,11 @@ impl Case<'_> {
     /// # Errors
     /// What the output stage or the build does not state.
     pub fn rail_current(&self, peak: Amp) -> Result<Amp, Needs> {
-        let (idle, pairs, channels) = three(self.idle(), self.output().pairs.need().copied(), self.channels_per_supply())?;
+        let (idle, pairs, channels) = three(
+            self.idle(),
+            self.output().pairs.need().copied(),
+            self.channels_per_supply(),
+        )?;
         Ok((peak / crate::physics::math::PI + idle * f64::from(pairs)) * f64::from(channels))
     }
 
@@ -84,13 +95,24 @@ impl Case<'_> {
     pub fn signal_at(&self, load: &Driven, fraction: f64) -> Result<Duty, Needs> {
         let resistance = load.nominal_seen();
         let clip = self.burst(Mains::Nominal, resistance)?;
-        let claimed = self.claimed_into(load.nominal).map_or(Watt::ZERO, |w| if load.bridged { w / 2.0 } else { w });
+        let claimed = self
+            .claimed_into(load.nominal)
+            .map_or(Watt::ZERO, |w| if load.bridged { w / 2.0 } else { w });
         let reference = claimed.max(power(clip, resistance));
-        let amplitude = duty_amplitude(fraction, reference, resistance).ok_or_else(|| Needs::because("the duty signal cannot be worked out"))?;
+        let amplitude = duty_amplitude(fraction, reference, resistance)
+            .ok_or_else(|| Needs::because("the duty signal cannot be worked out"))?;
         let peak = amplitude / resistance;
         let rail_current = self.rail_current(peak)?;
         let rail = self.mean_rail(Mains::Nominal, rail_current)?;
-        Ok(Duty { fraction, amplitude, peak, load: Impedance::resistive(resistance), power: power(amplitude, resistance), rail_current, rail })
+        Ok(Duty {
+            fraction,
+            amplitude,
+            peak,
+            load: Impedance::resistive(resistance),
+            power: power(amplitude, resistance),
+            rail_current,
+            rail,
+        })
     }
 
     /// The greater mean rail of the two ends of the capacitors' tolerance: it makes the most heat.
@@ -107,7 +129,9 @@ impl Case<'_> {
     #[must_use]
     pub fn claimed_into(&self, resistance: Ohm) -> Option<Watt> {
         let claims = self.build.amplifier.rated.get()?;
-        let same = claims.iter().filter(|c| (c.load / resistance - 1.0).abs() < 0.02);
+        let same = claims
+            .iter()
+            .filter(|c| (c.load / resistance - 1.0).abs() < 0.02);
         same.map(|c| c.power).reduce(Watt::max)
     }
 

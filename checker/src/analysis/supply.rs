@@ -85,35 +85,66 @@ impl<'a> Case<'a> {
     #[must_use]
     pub fn supply_part(&self, supply: &Supply, key: &'static str, each: u32) -> Part {
         let name = &supply.owner.name;
-        Part { name: format!("{name} {key}"), block: name.clone(), key, quantity: self.supplies().map(|n| n * each), ..Part::default() }
+        Part {
+            name: format!("{name} {key}"),
+            block: name.clone(),
+            key,
+            quantity: self.supplies().map(|n| n * each),
+            ..Part::default()
+        }
     }
 
     /// The transformer as a part.
     #[must_use]
     pub fn transformer_part(&self, supply: &Supply) -> Part {
-        Part { name: supply.transformer.owner.name.clone(), ..self.supply_part(supply, "transformer", supply.transformers) }
+        Part {
+            name: supply.transformer.owner.name.clone(),
+            ..self.supply_part(supply, "transformer", supply.transformers)
+        }
     }
 
     /// The fuses of a place as a part.
     #[must_use]
     pub fn fuse_part(&self, supply: &Supply, place: &str) -> Part {
         let name = format!("{} fuse {place}", supply.owner.name);
-        Part { name, block: supply.owner.name.clone(), key: "fuse", ..Part::default() }
+        Part {
+            name,
+            block: supply.owner.name.clone(),
+            key: "fuse",
+            ..Part::default()
+        }
     }
 
     /// The answer for each load in order of declaration, or what the loads lack.
     pub fn per_load<T>(&self, of: impl Fn(&Driven) -> Result<T, Needs>) -> Vec<Result<T, Needs>> {
         match self.loads() {
             Err(needs) => vec![Err(needs)],
-            Ok(loads) => loads.iter().map(|l| l.as_ref().map_err(Clone::clone).and_then(&of)).collect(),
+            Ok(loads) => loads
+                .iter()
+                .map(|l| l.as_ref().map_err(Clone::clone).and_then(&of))
+                .collect(),
         }
     }
 
     /// Boards that one supply feeds.
     #[must_use]
     pub fn boards_fed(&self) -> u32 {
-        let carried = self.build.supply.get().map(|s| s.1).or(self.build.channels.get().copied()).unwrap_or(1);
-        carried.div_ceil(self.build.amplifier.channels_per_board.get().copied().unwrap_or(1).max(1))
+        let carried = self
+            .build
+            .supply
+            .get()
+            .map(|s| s.1)
+            .or(self.build.channels.get().copied())
+            .unwrap_or(1);
+        carried.div_ceil(
+            self.build
+                .amplifier
+                .channels_per_board
+                .get()
+                .copied()
+                .unwrap_or(1)
+                .max(1),
+        )
     }
 
     /// Every kind of capacitor on the rails: the supply's in order, then the boards'.
@@ -127,7 +158,12 @@ impl<'a> Case<'a> {
                     part.name = format!("{} {}", part.name, at + 1);
                 }
                 part.refs.clone_from(&stated.bought.refs);
-                banks.push(Bank { part, stated, count: stated.count, on_board: false });
+                banks.push(Bank {
+                    part,
+                    stated,
+                    count: stated.count,
+                    on_board: false,
+                });
             }
         }
         let board = &self.build.amplifier.board_reservoir;
@@ -135,7 +171,12 @@ impl<'a> Case<'a> {
             let mut part = line_part(board);
             part.refs.clone_from(&stated.bought.refs);
             part.quantity = self.boards().ok().map(|n| 2 * n * stated.count);
-            banks.push(Bank { part, stated, count: stated.count * self.boards_fed(), on_board: true });
+            banks.push(Bank {
+                part,
+                stated,
+                count: stated.count * self.boards_fed(),
+                on_board: true,
+            });
         }
         banks
     }
@@ -177,9 +218,17 @@ impl<'a> Case<'a> {
     /// The rail's cycle with the least and with the greatest reservoir, nominal mains.
     fn cycles(&self, made: &Made, current: Amp) -> Result<[Cycle; 2], Needs> {
         let frequency = self.region()?.frequency;
-        let cycle = |end| made.rail(Mains::Nominal, end, frequency).and_then(|r| r.loaded(current));
+        let cycle = |end| {
+            made.rail(Mains::Nominal, end, frequency)
+                .and_then(|r| r.loaded(current))
+        };
         let pair = cycle(End::Low).zip(cycle(End::High));
-        pair.map(<[Cycle; 2]>::from).ok_or_else(|| Needs::because(format!("the supply cannot give {:.3} A at nominal mains", current.0)))
+        pair.map(<[Cycle; 2]>::from).ok_or_else(|| {
+            Needs::because(format!(
+                "the supply cannot give {:.3} A at nominal mains",
+                current.0
+            ))
+        })
     }
 
     /// The supply's currents at the duty, into a load.
@@ -200,13 +249,18 @@ impl<'a> Case<'a> {
         let seen = load.nominal_seen();
         let claims = self.build.amplifier.rated.get().into_iter().flatten();
         let same = claims.filter(|c| c.all_channels && (c.load / load.nominal - 1.0).abs() < 0.02);
-        let claimed = same.map(|c| self.asked(c).map(|a| a.amplitude)).collect::<Result<Vec<_>, _>>()?;
+        let claimed = same
+            .map(|c| self.asked(c).map(|a| a.amplitude))
+            .collect::<Result<Vec<_>, _>>()?;
         if let Some(most) = claimed.into_iter().reduce(Volt::max)
             && let Ok(flow) = self.flow(most, seen)
         {
             return Ok(flow);
         }
-        self.flow(self.sustained(Mains::Nominal, self.channels_per_supply()?, seen)?, seen)
+        self.flow(
+            self.sustained(Mains::Nominal, self.channels_per_supply()?, seen)?,
+            seen,
+        )
     }
 
     /// Channels that a supply carries at the duty into a load without overloading its transformer,
@@ -216,10 +270,26 @@ impl<'a> Case<'a> {
     /// As [`Case::duty_flow`].
     pub fn most_channels(&self, load: &Driven) -> Result<u32, Needs> {
         let amplitude = self.duty_signal(load)?.amplitude;
-        let (rating, _) = both(self.supply()?.transformer.rating.need().copied(), self.flow_of(1, amplitude, load.nominal_seen()))?;
-        let carried = |n: &u32| self.flow_of(*n, amplitude, load.nominal_seen()).is_ok_and(|f| f.volt_amps <= rating);
+        let (rating, _) = both(
+            self.supply()?.transformer.rating.need().copied(),
+            self.flow_of(1, amplitude, load.nominal_seen()),
+        )?;
+        let carried = |n: &u32| {
+            self.flow_of(*n, amplitude, load.nominal_seen())
+                .is_ok_and(|f| f.volt_amps <= rating)
+        };
         let step = if self.build.bridged { 2 } else { 1 };
-        Ok((1..=MOST_CHANNELS).map(|n| n * step).take_while(carried).last().unwrap_or(0))
+        // more channels load it more: the last that is carried is found by halving
+        let (mut low, mut high) = (0, MOST_CHANNELS + 1);
+        while high - low > 1 {
+            let middle = u32::midpoint(low, high);
+            if carried(&(middle * step)) {
+                low = middle;
+            } else {
+                high = middle;
+            }
+        }
+        Ok(low * step)
     }
 
     /// The part of a rail's ripple current that ONE capacitor of each kind carries.
@@ -227,8 +297,16 @@ impl<'a> Case<'a> {
     /// # Errors
     /// When the capacitances make no sense.
     pub fn ripple_shares(&self, banks: &[Bank<'_>]) -> Result<Vec<f64>, Needs> {
-        let groups: Vec<_> = banks.iter().map(|b| supply::Reservoir { count: b.count, capacitance: b.stated.farad.nominal, esr: b.stated.esr }).collect();
-        supply::ripple_shares(&groups).ok_or_else(|| Needs::because("the reservoir has no capacitance"))
+        let groups: Vec<_> = banks
+            .iter()
+            .map(|b| supply::Reservoir {
+                count: b.count,
+                capacitance: b.stated.farad.nominal,
+                esr: b.stated.esr,
+            })
+            .collect();
+        supply::ripple_shares(&groups)
+            .ok_or_else(|| Needs::because("the reservoir has no capacitance"))
     }
 
     /// The mains tap in use, with the transformer's own list of taps where it must be chosen.
@@ -249,7 +327,9 @@ impl<'a> Case<'a> {
     /// # Errors
     /// When the tap is not stated.
     pub fn fuses(&self, place: &str) -> Result<Vec<&'a FuseLine>, Needs> {
-        let Some((supply, _)) = self.build.supply.get() else { return Ok(Vec::new()) };
+        let Some((supply, _)) = self.build.supply.get() else {
+            return Ok(Vec::new());
+        };
         let mut fuses: Vec<&FuseLine> = supply.fuses.iter().filter(|f| f.place == place).collect();
         if fuses.iter().any(|f| f.tap.is_some()) {
             let tap = self.tap()?;
@@ -266,7 +346,11 @@ impl<'a> Case<'a> {
         let field = &self.supply()?.mains_fuse;
         let fuses = self.fuses("mains")?;
         if fuses.is_empty() && !field.none {
-            return Err(if field.unstated() { field.missing() } else { field.missing_part(&format!("tap {:.0} V", self.tap()?.0)) });
+            return Err(if field.unstated() {
+                field.missing()
+            } else {
+                field.missing_part(&format!("tap {:.0} V", self.tap()?.0))
+            });
         }
         Ok(fuses)
     }
@@ -277,13 +361,21 @@ impl<'a> Case<'a> {
     /// When none is stated.
     pub fn rail_fuses(&self) -> Result<Vec<&'a FuseLine>, Needs> {
         let field = &self.supply()?.rail_fuse;
-        if field.unstated() { Err(field.missing()) } else { self.fuses("rail") }
+        if field.unstated() {
+            Err(field.missing())
+        } else {
+            self.fuses("rail")
+        }
     }
 
     /// Transformers that one mains fuse feeds.
     #[must_use]
     pub fn transformers_behind(supply: &Supply, fuse: &FuseLine) -> u32 {
-        if fuse.per == Some("transformer") { 1 } else { supply.transformers.max(1) }
+        if fuse.per == Some("transformer") {
+            1
+        } else {
+            supply.transformers.max(1)
+        }
     }
 
     /// Where a flow holds.
@@ -307,10 +399,19 @@ impl<'a> Case<'a> {
     pub fn loading_sites(&self, load: &Driven) -> Vec<Related> {
         let channels = self.build.supply.get().map_or(1, |s| s.1);
         let mut related = vec![
-            Related { message: format!("{channels} channel(s) on each supply"), site: self.build.supply.site() },
-            Related { message: "loads it most".to_owned(), site: load.site },
+            Related {
+                message: format!("{channels} channel(s) on each supply"),
+                site: self.build.supply.site(),
+            },
+            Related {
+                message: "loads it most".to_owned(),
+                site: load.site,
+            },
         ];
-        related.extend(self.region.map(|r| Related { message: "the mains".to_owned(), site: r.site }));
+        related.extend(self.region.map(|r| Related {
+            message: "the mains".to_owned(),
+            site: r.site,
+        }));
         related
     }
 
@@ -319,8 +420,22 @@ impl<'a> Case<'a> {
     pub fn rail_steps(&self, flow: &Flow, amplitude: &'static str) -> Vec<Step> {
         let channels = self.build.supply.get().map_or(1, |s| s.1);
         vec![
-            solved("V̂", "peak output of one channel", amplitude, flow.amplitude.0, "V", ""),
-            solved("Î", "peak current of one channel", "V̂/R", flow.peak.0, "A", "Ohm's law"),
+            solved(
+                "V̂",
+                "peak output of one channel",
+                amplitude,
+                flow.amplitude.0,
+                "V",
+                "",
+            ),
+            solved(
+                "Î",
+                "peak current of one channel",
+                "V̂/R",
+                flow.peak.0,
+                "A",
+                "Ohm's law",
+            ),
             Step {
                 symbol: "n",
                 meaning: "channels on one supply",
@@ -330,7 +445,14 @@ impl<'a> Case<'a> {
                 source: "",
                 from: vec![self.build.supply.site()],
             },
-            solved("Idc", "mean current on each rail", "n·(Î/π + N·Iq)", flow.rail.0, "A", "mean of a half-sine"),
+            solved(
+                "Idc",
+                "mean current on each rail",
+                "n·(Î/π + N·Iq)",
+                flow.rail.0,
+                "A",
+                "mean of a half-sine",
+            ),
         ]
     }
 }
@@ -338,5 +460,13 @@ impl<'a> Case<'a> {
 /// Several lines that take part, as related places.
 #[must_use]
 pub fn places(sites: impl IntoIterator<Item = (&'static str, Option<Site>)>) -> Vec<Related> {
-    sites.into_iter().filter_map(|(message, site)| Some(Related { message: message.to_owned(), site: site? })).collect()
+    sites
+        .into_iter()
+        .filter_map(|(message, site)| {
+            Some(Related {
+                message: message.to_owned(),
+                site: site?,
+            })
+        })
+        .collect()
 }

@@ -54,7 +54,12 @@ impl Case<'_> {
         let region = self.region()?;
         Ok(region.loop_resistance.unwrap_or_else(|| {
             let key = format!("build {} mains loop", self.build.owner.name);
-            self.assume(key, Measure::new(USUAL_MAINS.0, "ohm"), "usual at an outlet; counts at switch-on only", region.site);
+            self.assume(
+                key,
+                Measure::new(USUAL_MAINS.0, "ohm"),
+                "usual at an outlet; counts at switch-on only",
+                region.site,
+            );
             USUAL_MAINS
         }))
     }
@@ -66,8 +71,13 @@ impl Case<'_> {
         let resistance = self.mains_at_switch_on()?;
         let rail = made.rail(mains, Reservoir::High, region.frequency);
         // a stated resistance is in the rail already
-        let more = if region.loop_resistance.is_some() { Ohm::ZERO } else { made.transformer.referred(resistance, RAILS * made.supplies) };
-        rail.and_then(|r| r.with_series(more)).ok_or_else(|| Needs::because("the rail cannot be solved at switch-on"))
+        let more = if region.loop_resistance.is_some() {
+            Ohm::ZERO
+        } else {
+            made.transformer.referred(resistance, RAILS * made.supplies)
+        };
+        rail.and_then(|r| r.with_series(more))
+            .ok_or_else(|| Needs::because("the rail cannot be solved at switch-on"))
     }
 
     /// The soft start, or none.
@@ -93,7 +103,8 @@ impl Case<'_> {
         let bypass = stated.bypass.ok_or_else(|| field.missing_part("bypass"));
         let (rail, idle, bypass) = three(self.charging_rail(mains), self.idle_of_supply(), bypass)?;
         let referred = self.seen_from_rail(stated.cold)?;
-        supply::soft_start(&rail, referred, RAILS, idle, bypass).ok_or_else(|| Needs::because("the soft start cannot be solved"))
+        supply::soft_start(&rail, referred, RAILS, idle, bypass)
+            .ok_or_else(|| Needs::because("the soft start cannot be solved"))
     }
 
     /// The surges of a rail, through the soft start where one is fitted and `with` it.
@@ -102,15 +113,26 @@ impl Case<'_> {
     /// What the supply lacks.
     pub fn switch_on(&self, with: bool) -> Result<SwitchOn, Needs> {
         match self.soft_start()?.filter(|_| with) {
-            None => Ok(SwitchOn { first: surge(&self.charging_rail(Mains::High)?)?, second: None }),
+            None => Ok(SwitchOn {
+                first: surge(&self.charging_rail(Mains::High)?)?,
+                second: None,
+            }),
             Some(ntc) if ntc.hot.is_some() && ntc.bypass.is_none() => {
                 let more = self.seen_from_rail(ntc.cold)?;
                 let rail = self.charging_rail(Mains::High)?.with_series(more);
-                Ok(SwitchOn { first: surge(&rail.ok_or_else(|| Needs::because("the soft start cannot be solved"))?)?, second: None })
+                Ok(SwitchOn {
+                    first: surge(
+                        &rail.ok_or_else(|| Needs::because("the soft start cannot be solved"))?,
+                    )?,
+                    second: None,
+                })
             }
             Some(_) => {
                 let soft = self.through_soft_start(Mains::High)?;
-                Ok(SwitchOn { first: soft.first, second: Some(soft.second) })
+                Ok(SwitchOn {
+                    first: soft.first,
+                    second: Some(soft.second),
+                })
             }
         }
     }
@@ -127,15 +149,31 @@ impl Case<'_> {
         let part = f64::from(behind) / f64::from(made.transformers.max(1));
         let seen = |s: Surge| s.primary(&made.transformer, RAILS);
         let first = seen(surges.first);
-        let second = surges.second.map_or(AmpSquaredSecond::ZERO, |s| seen(s).total);
+        let second = surges
+            .second
+            .map_or(AmpSquaredSecond::ZERO, |s| seen(s).total);
         let stated = self.supply()?.transformer.resistance.get().map(|r| r.0);
         let primary = stated.unwrap_or_else(|| made.transformer.assumed_primary_resistance());
-        let soft = self.soft_start()?.filter(|_| with).map_or(Ohm::ZERO, |s| s.cold);
+        let soft = self
+            .soft_start()?
+            .filter(|_| with)
+            .map_or(Ohm::ZERO, |s| s.cold);
         let all = primary / f64::from(behind.max(1)) + mains + soft;
         let wrong = || Needs::because("the primary has no resistance to speak of");
-        let (core_peak, core) = supply::core_surge(made.mains_volts(Mains::High), all, region.frequency).ok_or_else(wrong)?;
-        let reservoir_peak = surges.second.map_or(first.peak, |s| first.peak.max(seen(s).peak)) * part;
-        Ok(MainsSurge { reservoir: (first.total + second) * (part * part), core, peak: core_peak.max(reservoir_peak), primary, mains })
+        let (core_peak, core) =
+            supply::core_surge(made.mains_volts(Mains::High), all, region.frequency)
+                .ok_or_else(wrong)?;
+        let reservoir_peak = surges
+            .second
+            .map_or(first.peak, |s| first.peak.max(seen(s).peak))
+            * part;
+        Ok(MainsSurge {
+            reservoir: (first.total + second) * (part * part),
+            core,
+            peak: core_peak.max(reservoir_peak),
+            primary,
+            mains,
+        })
     }
 
     /// Watts in a soft-start resistor whose bypass never closes, with this current drawn from each
@@ -144,7 +182,10 @@ impl Case<'_> {
     /// # Errors
     /// What the supply lacks.
     pub fn stuck_watts(&self, resistor: Ohm, current: Amp) -> Result<(f64, Amp), Needs> {
-        let (rail, referred) = (self.charging_rail(Mains::High)?, self.seen_from_rail(resistor)?);
+        let (rail, referred) = (
+            self.charging_rail(Mains::High)?,
+            self.seen_from_rail(resistor)?,
+        );
         let watts = |i: f64| supply::stuck_soft_start(&rail, referred, RAILS, Amp(i)).map(|w| w.0);
         if let Some(found) = watts(current.0) {
             return Ok((found, current));
@@ -159,7 +200,9 @@ impl Case<'_> {
                 fails = middle;
             }
         }
-        watts(holds).map(|w| (w, Amp(holds))).ok_or_else(|| Needs::because("the stuck soft start cannot be solved"))
+        watts(holds)
+            .map(|w| (w, Amp(holds)))
+            .ok_or_else(|| Needs::because("the stuck soft start cannot be solved"))
     }
 
     /// Energy of both rails' reservoirs at high mains: what a limiter of any resistance takes at
@@ -177,6 +220,8 @@ impl Case<'_> {
 /// The worse of closing at zero and at crest, empty reservoirs.
 fn surge(rail: &Rail) -> Result<Surge, Needs> {
     let closed = |moment| switch_on(rail, moment, Volt::ZERO);
-    let worse = closed(Closing::Zero).zip(closed(Closing::Crest)).map(|(a, b)| a.worse(b));
+    let worse = closed(Closing::Zero)
+        .zip(closed(Closing::Crest))
+        .map(|(a, b)| a.worse(b));
     worse.ok_or_else(|| Needs::because("the surge at switch-on cannot be solved"))
 }

@@ -66,7 +66,16 @@ impl Case<'_> {
     pub fn played(&self) -> Vec<Result<(&Driven, &Heat), Needs>> {
         match both(self.loads(), self.heats()) {
             Err(needs) => vec![Err(needs)],
-            Ok((loads, heats)) => loads.iter().zip(heats).map(|(load, heat)| both(load.as_ref().map_err(Clone::clone), heat.as_ref().map_err(Clone::clone))).collect(),
+            Ok((loads, heats)) => loads
+                .iter()
+                .zip(heats)
+                .map(|(load, heat)| {
+                    both(
+                        load.as_ref().map_err(Clone::clone),
+                        heat.as_ref().map_err(Clone::clone),
+                    )
+                })
+                .collect(),
         }
     }
 
@@ -81,7 +90,12 @@ impl Case<'_> {
     ///
     /// # Errors
     /// When the Foster terms, or anything else it takes, are not stated.
-    pub fn peak_junction(&self, heat: &Heat, load: &Driven, side: Side) -> Result<PeakJunction, Needs> {
+    pub fn peak_junction(
+        &self,
+        heat: &Heat,
+        load: &Driven,
+        side: Side,
+    ) -> Result<PeakJunction, Needs> {
         let device = self.output().device(side);
         // a junction without heat capacity follows every instant: no network is hotter
         let bounded = device.foster.get().is_none();
@@ -89,52 +103,116 @@ impl Case<'_> {
             Some(terms) => Ok(terms.clone()),
             None => device.junction_case.need().map(|r| vec![(*r, NO_CAPACITY)]),
         };
-        let ((terms, case), (bench, idle), (rail, drop)) =
-            three(both(terms, self.case_temperature(heat, side)), both(self.bench(), self.idle()), both(self.unsagged(Mains::Nominal), self.drop()))?;
-        let terms: Vec<Term> = terms.iter().map(|(r, tau)| Term { resistance: *r, time_constant: *tau }).collect();
-        let foster = Foster::new(&terms).ok_or_else(|| Needs::because(format!("the foster terms of {} must be positive, 32 at most", device.owner.name)))?;
+        let ((terms, case), (bench, idle), (rail, drop)) = three(
+            both(terms, self.case_temperature(heat, side)),
+            both(self.bench(), self.idle()),
+            both(self.unsagged(Mains::Nominal), self.drop()),
+        )?;
+        let terms: Vec<Term> = terms
+            .iter()
+            .map(|(r, tau)| Term {
+                resistance: *r,
+                time_constant: *tau,
+            })
+            .collect();
+        let foster = Foster::new(&terms).ok_or_else(|| {
+            Needs::because(format!(
+                "the foster terms of {} must be positive, 32 at most",
+                device.owner.name
+            ))
+        })?;
         let frequency = self.band()?.bottom();
         let bank = bench.bank(side);
         let devices = f64::from(bank.devices());
         let idle_rise = rail * (idle * bank.share(idle * devices)) * foster.steady();
         let mut worst: Option<PeakJunction> = None;
         for variant in load.load.variants() {
-            let Some(z) = load.load.impedance(variant, frequency) else { continue };
+            let Some(z) = load.load.impedance(variant, frequency) else {
+                continue;
+            };
             let z = load.seen(z);
             let found = drop.burst(rail, z.modulus()).and_then(|amplitude| {
                 // the share of the mean current, greater than that of the peak
                 let share = bank.share(amplitude / z.modulus() / crate::physics::math::PI);
-                let half = HalfCycle::new(rail, amplitude, z, bank.emitters_in_parallel(), (share / devices).min(1.0))?;
+                let half = HalfCycle::new(
+                    rail,
+                    amplitude,
+                    z,
+                    bank.emitters_in_parallel(),
+                    (share / devices).min(1.0),
+                )?;
                 let rise = foster.periodic_peak(&half, frequency)?;
-                Some(PeakJunction { rail, amplitude, frequency, case, rise, idle_rise, share, junction: case + rise + idle_rise, bounded })
+                Some(PeakJunction {
+                    rail,
+                    amplitude,
+                    frequency,
+                    case,
+                    rise,
+                    idle_rise,
+                    share,
+                    junction: case + rise + idle_rise,
+                    bounded,
+                })
             });
             match found {
-                Some(found) if worst.is_none_or(|w| found.junction > w.junction) => worst = Some(found),
+                Some(found) if worst.is_none_or(|w| found.junction > w.junction) => {
+                    worst = Some(found)
+                }
                 _ => {}
             }
         }
-        worst.ok_or_else(|| load.uncovered(Self::band(self).unwrap_or(load.covered)).unwrap_or_else(|| Needs::because(format!("load {} has no impedance at {:.0} Hz", load.name, frequency.0))))
+        worst.ok_or_else(|| {
+            load.uncovered(Self::band(self).unwrap_or(load.covered))
+                .unwrap_or_else(|| {
+                    Needs::because(format!(
+                        "load {} has no impedance at {:.0} Hz",
+                        load.name, frequency.0
+                    ))
+                })
+        })
     }
 
     /// A driver of a side at the duty: on a sink of its own, else on the build's.
     ///
     /// # Errors
     /// What driver, output stage or sink do not state.
-    pub fn driver_temperatures(&self, stage: &Stage, heat: &Heat, side: Side) -> Result<DriverHeat, Needs> {
+    pub fn driver_temperatures(
+        &self,
+        stage: &Stage,
+        heat: &Heat,
+        side: Side,
+    ) -> Result<DriverHeat, Needs> {
         if self.output().device(side).flavour == Flavour::Mosfet {
-            return Err(Needs::because("the driver's heat depends on the charge of the gates, which is not stated"));
+            return Err(Needs::because(
+                "the driver's heat depends on the charge of the gates, which is not stated",
+            ));
         }
-        let (watts, mounting) = both(self.driver_heat(side, heat.rail, heat.duty.amplitude, heat.duty.load), mounting(stage, side))?;
+        let (watts, mounting) = both(
+            self.driver_heat(side, heat.rail, heat.duty.amplitude, heat.duty.load),
+            mounting(stage, side),
+        )?;
         let sink = match stage.own_sink.get() {
             None => heat.hot_spot,
             Some((resistance, per)) => {
-                let shared = if *per == "device" { 1.0 } else { f64::from(2 * *stage.pairs.need()?) };
+                let shared = if *per == "device" {
+                    1.0
+                } else {
+                    f64::from(2 * *stage.pairs.need()?)
+                };
                 self.air_inside()? + watts * shared * *resistance
             }
         };
         let mounting: Mounting = mounting;
-        let found = mounting.temperatures(sink, watts).ok_or_else(|| Needs::because("thermal resistances must not be negative"))?;
-        Ok(DriverHeat { watts, sink, case: found.case, junction: found.junction, own_sink: stage.own_sink.get().is_some() })
+        let found = mounting
+            .temperatures(sink, watts)
+            .ok_or_else(|| Needs::because("thermal resistances must not be negative"))?;
+        Ok(DriverHeat {
+            watts,
+            sink,
+            case: found.case,
+            junction: found.junction,
+            own_sink: stage.own_sink.get().is_some(),
+        })
     }
 
     /// The sink as warm as in a room at 25 degC.
@@ -144,7 +222,12 @@ impl Case<'_> {
     pub fn touched(&self, heat: &Heat) -> Result<Celsius, Needs> {
         let (sink, _) = self.heatsink()?;
         let air = TOUCH_AMBIENT + self.build.enclosure.get().copied().unwrap_or(Kelvin::ZERO);
-        sink_temperature(&sink_model(sink)?, air, heat.total).ok_or_else(|| Needs::because(format!("heatsink {} has no temperature at {:.1} W", sink.owner.name, heat.total.0)))
+        sink_temperature(&sink_model(sink)?, air, heat.total).ok_or_else(|| {
+            Needs::because(format!(
+                "heatsink {} has no temperature at {:.1} W",
+                sink.owner.name, heat.total.0
+            ))
+        })
     }
 
     /// The cutout at its place.
@@ -159,10 +242,19 @@ impl Case<'_> {
             (stated.trip.high - stated.trip.nominal).max(stated.trip.nominal - stated.trip.low)
         } else {
             let key = format!("protection {} cutout tolerance", field.owner().name);
-            self.assume(key, crate::finding::Measure::new(UNSTATED_TOLERANCE.0, "K"), "usual for a bimetal cutout", field.site());
+            self.assume(
+                key,
+                crate::finding::Measure::new(UNSTATED_TOLERANCE.0, "K"),
+                "usual for a bimetal cutout",
+                field.site(),
+            );
             UNSTATED_TOLERANCE
         };
-        Ok(Cutout { trip: stated.trip.nominal, tolerance, cooler })
+        Ok(Cutout {
+            trip: stated.trip.nominal,
+            tolerance,
+            cooler,
+        })
     }
 
     /// The sink beside the devices when a late cutout opens.
@@ -170,7 +262,9 @@ impl Case<'_> {
     /// # Errors
     /// As [`Case::cutout`].
     pub fn cutout_latest(&self) -> Result<Celsius, Needs> {
-        self.cutout()?.sink_at_latest().ok_or_else(|| Needs::because("the cutout has no latest trip"))
+        self.cutout()?
+            .sink_at_latest()
+            .ok_or_else(|| Needs::because("the cutout has no latest trip"))
     }
 
     /// Case and junction of the most loaded device of a side with the sink held at a temperature and
@@ -178,8 +272,15 @@ impl Case<'_> {
     ///
     /// # Errors
     /// When thermal resistances are not stated.
-    pub fn held(&self, heat: &Heat, side: Side, sink: Celsius) -> Result<(Celsius, Celsius), Needs> {
+    pub fn held(
+        &self,
+        heat: &Heat,
+        side: Side,
+        sink: Celsius,
+    ) -> Result<(Celsius, Celsius), Needs> {
         let found = mounting(self.output(), side)?.temperatures(sink, heat.device[at(side)]);
-        found.map(|t| (t.case, t.junction)).ok_or_else(|| Needs::because("thermal resistances must not be negative"))
+        found
+            .map(|t| (t.case, t.junction))
+            .ok_or_else(|| Needs::because("thermal resistances must not be negative"))
     }
 }

@@ -51,22 +51,51 @@ impl Case<'_> {
     ///
     /// # Errors
     /// What supply or capacitors do not state.
-    pub fn reservoir_life(&self, load: &Driven, bank: &Bank<'_>, share: f64) -> Result<Life, Needs> {
+    pub fn reservoir_life(
+        &self,
+        load: &Driven,
+        bank: &Bank<'_>,
+        share: f64,
+    ) -> Result<Life, Needs> {
         let missing = |part: &str| match (bank.on_board, self.build.supply.get()) {
             (false, Some((supply, _))) => supply.reservoir.missing_part(part),
             _ => self.build.amplifier.board_reservoir.missing_part(part),
         };
         let stated = bank.stated;
-        let rated = both(stated.life.ok_or_else(|| missing("life")), stated.ripple.ok_or_else(|| missing("ripple")));
-        let (((length, at), rating), flow, air) = three(rated, self.duty_flow(load), self.air_inside())?;
-        let rise = if at >= LONG_LIFE_TYPE { Kelvin(5.0) } else { Kelvin(10.0) };
-        self.assume(format!("{} core rise at rated ripple", bank.part.name), Measure::new(rise.0, "K"), "usual for this temperature class", stated.site);
-        let plain = RippleMultipliers { charging: 1.0, audio: 1.0 };
-        let ripple = reservoir_ripple(flow.ripple_charging, flow.ripple_audio, plain).map(|all| all * share);
+        let rated = both(
+            stated.life.ok_or_else(|| missing("life")),
+            stated.ripple.ok_or_else(|| missing("ripple")),
+        );
+        let (((length, at), rating), flow, air) =
+            three(rated, self.duty_flow(load), self.air_inside())?;
+        let rise = if at >= LONG_LIFE_TYPE {
+            Kelvin(5.0)
+        } else {
+            Kelvin(10.0)
+        };
+        self.assume(
+            format!("{} core rise at rated ripple", bank.part.name),
+            Measure::new(rise.0, "K"),
+            "usual for this temperature class",
+            stated.site,
+        );
+        let plain = RippleMultipliers {
+            charging: 1.0,
+            audio: 1.0,
+        };
+        let ripple =
+            reservoir_ripple(flow.ripple_charging, flow.ripple_audio, plain).map(|all| all * share);
         let life = ripple.and_then(|ripple| {
             let core = core_temperature(air, ripple, rating, rise)?;
             let stated_hours = length.0 / 3600.0;
-            Some(Life { ripple, air, core, stated_hours, stated_at: at, hours: electrolytic_life_hours(stated_hours, at, core)? })
+            Some(Life {
+                ripple,
+                air,
+                core,
+                stated_hours,
+                stated_at: at,
+                hours: electrolytic_life_hours(stated_hours, at, core)?,
+            })
         });
         life.ok_or_else(|| Needs::because("the life of the reservoir cannot be worked out"))
     }
@@ -80,7 +109,11 @@ impl Case<'_> {
     /// What output stage or build do not state.
     pub fn emitter_resistor(&self, heat: &Heat) -> Result<(Warm, f64, Watt), Needs> {
         let stage = self.output();
-        let (resistor, (bench, idle), air) = three(stage.emitter.need(), both(self.bench(), self.idle()), self.air_inside())?;
+        let (resistor, (bench, idle), air) = three(
+            stage.emitter.need(),
+            both(self.bench(), self.idle()),
+            self.air_inside(),
+        )?;
         let rated = stage.emitter.part("W", |r| r.watt)?;
         let signal = self.sine(heat.duty.amplitude, heat.duty.load)?;
         let mut worst: Option<(Watt, f64, Watt)> = None;
@@ -90,7 +123,11 @@ impl Case<'_> {
             let mean = heat.duty.peak / crate::physics::math::PI;
             let share = bank.share(mean);
             // alone, the greatest resistor takes the most; among several, the least one has the share
-            let spread = if bank.devices() == 1 { resistor.ohm.high / resistor.ohm.nominal } else { 1.0 };
+            let spread = if bank.devices() == 1 {
+                resistor.ohm.high / resistor.ohm.nominal
+            } else {
+                1.0
+            };
             let own = bank.share(idle * pairs) * idle.0;
             let still = Watt(own * own * resistor.ohm.high.0);
             let watts = signal.emitter_watts(bank, share) * spread + still;
@@ -99,7 +136,15 @@ impl Case<'_> {
             }
         }
         let (watts, share, still) = worst.ok_or_else(|| stage.pairs.missing())?;
-        Ok((Warm { air, watts, rating: resistor_rating(rated, air) }, share, still))
+        Ok((
+            Warm {
+                air,
+                watts,
+                rating: resistor_rating(rated, air),
+            },
+            share,
+            still,
+        ))
     }
 
     /// The bleeder at high mains, for ever: V²/R with the least resistance.
@@ -108,13 +153,24 @@ impl Case<'_> {
     /// What the supply does not state.
     pub fn bleeder(&self) -> Result<(Warm, Volt), Needs> {
         let supply = self.supply()?;
-        let (rail, air, (resistor, rail_to_rail)) = three(self.unsagged(Mains::High), self.air_inside(), supply.bleeder.need())?;
+        let (rail, air, (resistor, rail_to_rail)) = three(
+            self.unsagged(Mains::High),
+            self.air_inside(),
+            supply.bleeder.need(),
+        )?;
         let rated = supply.bleeder.part("W", |b| b.0.watt)?;
         let volts = if *rail_to_rail { rail * 2.0 } else { rail };
         let watts = volts * (volts / resistor.ohm.low);
         if !watts.is_finite() {
             return Err(Needs::because("the bleeder must have a resistance"));
         }
-        Ok((Warm { air, watts, rating: resistor_rating(rated, air) }, volts))
+        Ok((
+            Warm {
+                air,
+                watts,
+                rating: resistor_rating(rated, air),
+            },
+            volts,
+        ))
     }
 }

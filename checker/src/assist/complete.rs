@@ -68,15 +68,29 @@ pub fn complete(scene: &Scene<'_>, offset: usize) -> Vec<Offer> {
     };
     let declared = scene.web.declarations(scene.path);
     let kinds = scene.web.kinds(scene.path);
-    let mut offers = Offers { replaces, declared: &declared, out: Vec::new() };
+    let mut offers = Offers {
+        replaces,
+        declared: &declared,
+        out: Vec::new(),
+    };
     match place(scene.tree, offset, &kinds) {
         Place::Comment => {}
         Place::Outside => offers.outside(),
         Place::Header { kind, before } => offers.header(text, kind, &before),
         Place::Key { block, kind } => {
-            let stated: Vec<&str> = block.lines.iter().filter(|l| !l.key.span.touches(offset)).map(|l| l.key.text(text)).collect();
+            let stated: Vec<&str> = block
+                .lines
+                .iter()
+                .filter(|l| !l.key.span.touches(offset))
+                .map(|l| l.key.text(text))
+                .collect();
             offers.keys(kind, &stated);
-            let column_one = scene.tree.line_index().line_span(scene.tree.line_index().line_of(offset)).start == replaces.start;
+            let column_one = scene
+                .tree
+                .line_index()
+                .line_span(scene.tree.line_index().line_of(offset))
+                .start
+                == replaces.start;
             if column_one {
                 offers.outside();
             }
@@ -136,11 +150,19 @@ impl Offers<'_> {
         for flavour in kind.flavours {
             self.add(Sort::Word, flavour, kind.meaning);
         }
-        self.add(Sort::Word, "from", format!("start from another {}", kind.kind));
+        self.add(
+            Sort::Word,
+            "from",
+            format!("start from another {}", kind.kind),
+        );
     }
 
     fn keys(&mut self, kind: &'static Block, stated: &[&str]) {
-        for key in kind.keys.iter().filter(|k| k.repeats || !stated.contains(&k.name)) {
+        for key in kind
+            .keys
+            .iter()
+            .filter(|k| k.repeats || !stated.contains(&k.name))
+        {
             if let Some(offer) = self.add(Sort::Key, key.name, key.meaning) {
                 offer.insert = format!("{} ", key.name);
                 offer.help = key_help(key);
@@ -150,8 +172,15 @@ impl Offers<'_> {
     }
 
     fn names(&mut self, kind: &str) {
-        for declared in self.declared.iter().filter(|d| kind == "any" || d.kind.kind == kind) {
-            let detail = declared.title.clone().unwrap_or_else(|| declared.kind.kind.to_owned());
+        for declared in self
+            .declared
+            .iter()
+            .filter(|d| kind == "any" || d.kind.kind == kind)
+        {
+            let detail = declared
+                .title
+                .clone()
+                .unwrap_or_else(|| declared.kind.kind.to_owned());
             if let Some(offer) = self.add(Sort::Name, &declared.name, detail) {
                 offer.rank = 2;
             }
@@ -222,7 +251,14 @@ impl Offers<'_> {
             Some("with") => self.names("alternate"),
             Some("because" | "by" | "until") => {}
             Some(_) => {
-                let words = [("because", "why it is acceptable"), ("of", "only this part"), ("in", "only this build"), ("with", "only with this alternate"), ("by", "who accepted it"), ("until", "2030-01-31")];
+                let words = [
+                    ("because", "why it is acceptable"),
+                    ("of", "only this part"),
+                    ("in", "only this build"),
+                    ("with", "only with this alternate"),
+                    ("by", "who accepted it"),
+                    ("until", "2030-01-31"),
+                ];
                 for (word, detail) in words {
                     if !before.iter().any(|t| t.text(text) == word) {
                         self.add(Sort::Word, word, detail);
@@ -247,11 +283,21 @@ impl Offers<'_> {
                 _ => {}
             }
         }
-        let named = before.iter().filter(|t| t.kind == TokenKind::Word && self.declared.iter().any(|d| d.name == t.text(text))).count();
+        let named = before
+            .iter()
+            .filter(|t| {
+                t.kind == TokenKind::Word && self.declared.iter().any(|d| d.name == t.text(text))
+            })
+            .count();
         let mut names = 0;
         for item in &shape.items {
             match (&item.takes, item.label) {
-                (Takes::Quantity { dimension, unit, .. }, _) => {
+                (
+                    Takes::Quantity {
+                        dimension, unit, ..
+                    },
+                    _,
+                ) => {
                     if last.is_some_and(|t| t.kind == TokenKind::Number) {
                         for unit in units(unit, *dimension) {
                             self.add(Sort::Unit, unit, describe(item));
@@ -260,7 +306,9 @@ impl Offers<'_> {
                         self.add(Sort::Word, label, describe(item));
                     }
                 }
-                (Takes::Choice(words), None) if !words.iter().any(|w| said(w)) => self.words(words, key.name),
+                (Takes::Choice(words), None) if !words.iter().any(|w| said(w)) => {
+                    self.words(words, key.name)
+                }
                 (Takes::Choice(_) | Takes::Per(_), Some(label)) if !said(label) => {
                     self.add(Sort::Word, label, describe(item));
                 }
@@ -274,7 +322,11 @@ impl Offers<'_> {
             }
         }
         if shape.bought && !before.is_empty() {
-            for (word, detail) in [("ref", "designators: R21-R24"), ("part", "order code in quotes"), ("qty", "how many")] {
+            for (word, detail) in [
+                ("ref", "designators: R21-R24"),
+                ("part", "order code in quotes"),
+                ("qty", "how many"),
+            ] {
                 if !said(word) {
                     self.add(Sort::Word, word, detail);
                 }
@@ -315,19 +367,34 @@ pub(super) fn key_help(key: &Key) -> String {
     out.push_str(&match key.default {
         "req" => "\n\nrequired".to_owned(),
         "-" => "\n\nnot stated: what needs it is unchecked".to_owned(),
-        default => format!("\n\nif not stated: {}", crate::render::escape::markdown(default)),
+        default => format!(
+            "\n\nif not stated: {}",
+            crate::render::escape::markdown(default)
+        ),
     });
     out
 }
 
 fn keys_table(block: &Block) -> String {
-    let keys: Vec<String> = block.keys.iter().map(|k| crate::render::escape::markdown_code(k.name)).collect();
-    format!("{}\n\nkeys: {}", crate::render::escape::markdown(block.meaning), keys.join(", "))
+    let keys: Vec<String> = block
+        .keys
+        .iter()
+        .map(|k| crate::render::escape::markdown_code(k.name))
+        .collect();
+    format!(
+        "{}\n\nkeys: {}",
+        crate::render::escape::markdown(block.meaning),
+        keys.join(", ")
+    )
 }
 
 /// A block with its required keys, with places to fill in.
 fn skeleton(block: &Block) -> String {
-    let flavour = if block.flavours.is_empty() { String::new() } else { format!(" ${{2|{}|}}", block.flavours.join(",")) };
+    let flavour = if block.flavours.is_empty() {
+        String::new()
+    } else {
+        format!(" ${{2|{}|}}", block.flavours.join(","))
+    };
     let mut out = format!("{} ${{1:name}}{flavour} {{\n", block.kind);
     let mut stop = 3;
     for key in block.keys.iter().filter(|k| k.default.starts_with("req")) {

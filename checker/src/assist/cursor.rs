@@ -71,38 +71,55 @@ pub fn token_at(tree: &Tree, offset: usize) -> Option<Token> {
 pub fn line_at(tree: &Tree, offset: usize) -> Option<(Option<&Block>, &Line)> {
     tree.items.iter().find_map(|item| match item {
         Item::Line(line) => line.span.touches(offset).then_some((None, line)),
-        Item::Block(block) => block.lines.iter().find(|l| l.span.touches(offset)).map(|l| (Some(block), l)),
+        Item::Block(block) => block
+            .lines
+            .iter()
+            .find(|l| l.span.touches(offset))
+            .map(|l| (Some(block), l)),
     })
 }
 
 /// The block that holds the cursor.
 #[must_use]
 pub fn block_at(tree: &Tree, offset: usize) -> Option<&Block> {
-    tree.blocks().filter(|b| b.span.start <= offset).last().filter(|b| match b.close {
-        Some(close) => offset < close.end,
-        None => true,
-    })
+    tree.blocks()
+        .filter(|b| b.span.start <= offset)
+        .last()
+        .filter(|b| match b.close {
+            Some(close) => offset < close.end,
+            None => true,
+        })
 }
 
 /// What surrounds the cursor.
 #[must_use]
 pub fn place<'a>(tree: &'a Tree, offset: usize, kinds: &Kinds) -> Place<'a> {
-    let commented = tree.pieces().any(|p| p.kind == PieceKind::Comment && p.span.start < offset && p.span.touches(offset));
+    let commented = tree
+        .pieces()
+        .any(|p| p.kind == PieceKind::Comment && p.span.start < offset && p.span.touches(offset));
     if commented {
         return Place::Comment;
     }
     let text = &tree.text;
     if let Some(block) = block_at(tree, offset) {
-        let Some(kind) = block_kind(block.kind.text(text)) else { return Place::Outside };
+        let Some(kind) = block_kind(block.kind.text(text)) else {
+            return Place::Outside;
+        };
         if block.kind.span.touches(offset) {
             return Place::Outside;
         }
         if offset <= block.open.start {
-            let before = block.header.iter().filter(|t| t.span.end < offset).copied().collect();
+            let before = block
+                .header
+                .iter()
+                .filter(|t| t.span.end < offset)
+                .copied()
+                .collect();
             return Place::Header { kind, before };
         }
         return match block.lines.iter().rfind(|l| l.span.start <= offset) {
-            Some(line) if continues(tree, line, offset) => values(tree, kind, line, offset, kinds).map_or(Place::Key { block, kind }, Place::Values),
+            Some(line) if continues(tree, line, offset) => values(tree, kind, line, offset, kinds)
+                .map_or(Place::Key { block, kind }, Place::Values),
             _ => Place::Key { block, kind },
         };
     }
@@ -110,7 +127,10 @@ pub fn place<'a>(tree: &'a Tree, offset: usize, kinds: &Kinds) -> Place<'a> {
         Item::Line(line) => Some(line),
         Item::Block(_) => None,
     });
-    let Some(line) = lines.rev().find(|l| l.span.start <= offset && continues(tree, l, offset)) else {
+    let Some(line) = lines
+        .rev()
+        .find(|l| l.span.start <= offset && continues(tree, l, offset))
+    else {
         return Place::Outside;
     };
     if line.key.span.touches(offset) {
@@ -122,7 +142,12 @@ pub fn place<'a>(tree: &'a Tree, offset: usize, kinds: &Kinds) -> Place<'a> {
         return Place::Header { kind, before };
     }
     match STATEMENTS.iter().find(|k| k.name == word) {
-        Some(key) => Place::Values(Values { key, group: 0, before, change: Change::Settled }),
+        Some(key) => Place::Values(Values {
+            key,
+            group: 0,
+            before,
+            change: Change::Settled,
+        }),
         None => Place::Outside,
     }
 }
@@ -134,7 +159,10 @@ fn continues(tree: &Tree, line: &Line, offset: usize) -> bool {
         return true;
     }
     let between = tree.text.get(line.span.end..offset).unwrap_or("");
-    let rest: String = between.split('\n').map(|l| l.split('#').next().unwrap_or("")).collect();
+    let rest: String = between
+        .split('\n')
+        .map(|l| l.split('#').next().unwrap_or(""))
+        .collect();
     rest.trim() == ","
 }
 
@@ -143,28 +171,58 @@ fn group_at(tree: &Tree, line: &Line, offset: usize) -> usize {
     line.groups
         .iter()
         .filter(|g| g.span.end < offset)
-        .filter(|g| tree.text.get(g.span.end..offset).is_some_and(|gap| gap.trim_start().starts_with(',')))
+        .filter(|g| {
+            tree.text
+                .get(g.span.end..offset)
+                .is_some_and(|gap| gap.trim_start().starts_with(','))
+        })
         .count()
 }
 
 fn before(line: &Line, group: usize, offset: usize) -> Vec<Token> {
-    let tokens = line.groups.get(group).map(|g| g.tokens.as_slice()).unwrap_or_default();
-    tokens.iter().filter(|t| t.span.end < offset).copied().collect()
+    let tokens = line
+        .groups
+        .get(group)
+        .map(|g| g.tokens.as_slice())
+        .unwrap_or_default();
+    tokens
+        .iter()
+        .filter(|t| t.span.end < offset)
+        .copied()
+        .collect()
 }
 
-fn values(tree: &Tree, kind: &'static vocabulary::Block, line: &Line, offset: usize, kinds: &Kinds) -> Option<Values> {
+fn values(
+    tree: &Tree,
+    kind: &'static vocabulary::Block,
+    line: &Line,
+    offset: usize,
+    kinds: &Kinds,
+) -> Option<Values> {
     if line.key.span.touches(offset) {
         return None;
     }
     let text = &tree.text;
     let key = kind.key(line.key.text(text))?;
     let group = group_at(tree, line, offset);
-    let mut found = Values { key, group, before: before(line, group, offset), change: Change::Settled };
+    let mut found = Values {
+        key,
+        group,
+        before: before(line, group, offset),
+        change: Change::Settled,
+    };
     if key.shape().special != Some("CHANGE") {
         return Some(found);
     }
-    let first = line.groups.first().map(|g| g.tokens.as_slice()).unwrap_or_default();
-    let named = first.iter().filter(|t| t.span.end < offset || group > 0).count();
+    let first = line
+        .groups
+        .first()
+        .map(|g| g.tokens.as_slice())
+        .unwrap_or_default();
+    let named = first
+        .iter()
+        .filter(|t| t.span.end < offset || group > 0)
+        .count();
     let changed = first.first().and_then(|t| kinds.get(t.text(text))).copied();
     match (named, changed) {
         (0, _) => found.change = Change::Block,

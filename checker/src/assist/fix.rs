@@ -45,14 +45,30 @@ pub fn fixes(scene: &Scene<'_>, range: Span) -> Vec<Fix> {
     let mut waivers = Vec::new();
     for (outcome, file) in scene.checks() {
         for finding in touching(outcome, file, range) {
-            let settles = Some((finding.rule.to_owned(), finding.message.clone(), finding.site.span));
+            let settles = Some((
+                finding.rule.to_owned(),
+                finding.message.clone(),
+                finding.site.span,
+            ));
             let only = finding.fixes.len() == 1;
             for fix in &finding.fixes {
-                let edits = fix.edits.iter().filter_map(|e| placed(outcome, e)).collect();
-                out.push(Fix { title: fix.title.clone(), edits, settles: settles.clone(), preferred: fix.solved || only });
+                let edits = fix
+                    .edits
+                    .iter()
+                    .filter_map(|e| placed(outcome, e))
+                    .collect();
+                out.push(Fix {
+                    title: fix.title.clone(),
+                    edits,
+                    settles: settles.clone(),
+                    preferred: fix.solved || only,
+                });
             }
             if let Origin::Waiting(key, _) = &finding.origin {
-                out.extend(missing(outcome, key).map(|f| Fix { settles: settles.clone(), ..f }));
+                out.extend(missing(outcome, key).map(|f| Fix {
+                    settles: settles.clone(),
+                    ..f
+                }));
             }
             waivers.extend(waiver(outcome, &finding).map(|f| Fix { settles, ..f }));
         }
@@ -71,39 +87,85 @@ pub fn fixes(scene: &Scene<'_>, range: Span) -> Vec<Fix> {
 
 fn touching(outcome: &Outcome, file: FileId, range: Span) -> Vec<Shown<'_>> {
     let mut all = shown(&outcome.sources, &outcome.report);
-    all.retain(|s| s.site.file == file && s.site.span.start <= range.end && range.start <= s.site.span.end);
+    all.retain(|s| {
+        s.site.file == file && s.site.span.start <= range.end && range.start <= s.site.span.end
+    });
     all
 }
 
 fn placed(outcome: &Outcome, edit: &TextEdit) -> Option<(Spot, String)> {
     let file = outcome.sources.file(edit.site.file)?;
-    Some((Spot { path: file.path.clone(), span: edit.site.span }, edit.text.clone()))
+    Some((
+        Spot {
+            path: file.path.clone(),
+            span: edit.site.span,
+        },
+        edit.text.clone(),
+    ))
 }
 
 /// A waiver to fill in, at the end of the file that the check started from. Its reason is left empty,
 /// and a waiver without a reason waives nothing.
 fn waiver(outcome: &Outcome, finding: &Shown<'_>) -> Option<Fix> {
-    if finding.waiver.is_some() || rules::find(finding.rule).is_none() || finding.rule.starts_with("syntax.") {
+    if finding.waiver.is_some()
+        || rules::find(finding.rule).is_none()
+        || finding.rule.starts_with("syntax.")
+    {
         return None;
     }
     let scope = match &finding.origin {
         Origin::Margins(of) => {
             let lead = of.first()?;
             let part = &lead.margin.part;
-            let name = if part.name.is_empty() || part.name.contains(' ') { &part.block } else { &part.name };
-            let with = lead.build.alternate.as_ref().map(|a| format!(" with {a}")).unwrap_or_default();
-            let of = if name.is_empty() { String::new() } else { format!(" of {name}") };
+            let name = if part.name.is_empty() || part.name.contains(' ') {
+                &part.block
+            } else {
+                &part.name
+            };
+            let with = lead
+                .build
+                .alternate
+                .as_ref()
+                .map(|a| format!(" with {a}"))
+                .unwrap_or_default();
+            let of = if name.is_empty() {
+                String::new()
+            } else {
+                format!(" of {name}")
+            };
             format!("{of} in {}{with}", lead.build.name)
         }
-        Origin::Text(text) if text.rule.starts_with("data.") && text.severity > Severity::Information => text.build.as_ref().map(|b| format!(" in {b}")).unwrap_or_default(),
+        Origin::Text(text)
+            if text.rule.starts_with("data.") && text.severity > Severity::Information =>
+        {
+            text.build
+                .as_ref()
+                .map(|b| format!(" in {b}"))
+                .unwrap_or_default()
+        }
         Origin::Text(_) | Origin::Waiting(..) => return None,
     };
     let (_, root) = outcome.sources.iter().next()?;
     let text = &root.tree.text;
-    let gap = if text.is_empty() || text.ends_with('\n') { "" } else { "\n" };
+    let gap = if text.is_empty() || text.ends_with('\n') {
+        ""
+    } else {
+        "\n"
+    };
     let line = format!("{gap}waive {}{scope} because \"\" by \"\"\n", finding.rule);
-    let spot = Spot { path: root.path.clone(), span: Span::at(text.len()) };
-    Some(Fix { title: format!("waive {}{scope}: the reason is yours to write", finding.rule), edits: vec![(spot, line)], settles: None, preferred: false })
+    let spot = Spot {
+        path: root.path.clone(),
+        span: Span::at(text.len()),
+    };
+    Some(Fix {
+        title: format!(
+            "waive {}{scope}: the reason is yours to write",
+            finding.rule
+        ),
+        edits: vec![(spot, line)],
+        settles: None,
+        preferred: false,
+    })
 }
 
 /// A line for a missing key, written `device n16 junction-case`.
@@ -113,46 +175,83 @@ fn missing(outcome: &Outcome, need: &str) -> Option<Fix> {
     let key = kind.key(key)?;
     outcome.sources.iter().find_map(|(_, file)| {
         let text = &file.tree.text;
-        let named = |b: &&Block| b.kind.text(text) == kind.kind && b.name().is_some_and(|n| n.text(text) == name);
+        let named = |b: &&Block| {
+            b.kind.text(text) == kind.kind && b.name().is_some_and(|n| n.text(text) == name)
+        };
         let block = file.tree.blocks().find(named)?;
         let edits = lines_into(&file.path, text, block, &[key]);
-        Some(Fix { title: format!("add `{}` to {} {name}, value to be filled in", key.name, kind.kind), edits, settles: None, preferred: false })
+        Some(Fix {
+            title: format!(
+                "add `{}` to {} {name}, value to be filled in",
+                key.name, kind.kind
+            ),
+            edits,
+            settles: None,
+            preferred: false,
+        })
     })
 }
 
 /// The required keys that a block in the range lacks.
 fn required(scene: &Scene<'_>, range: Span) -> Option<Fix> {
     let text = scene.text();
-    let block = scene.tree.blocks().find(|b| b.span.start <= range.start && range.start <= b.span.end)?;
+    let block = scene
+        .tree
+        .blocks()
+        .find(|b| b.span.start <= range.start && range.start <= b.span.end)?;
     let kind = block_kind(block.kind.text(text))?;
     if block.header.iter().any(|t| t.text(text) == "from") {
         return None;
     }
     let stated = |key: &Key| block.lines.iter().any(|l| l.key.text(text) == key.name);
-    let lacking: Vec<&Key> = kind.keys.iter().filter(|k| k.default == "req" && !stated(k)).collect();
+    let lacking: Vec<&Key> = kind
+        .keys
+        .iter()
+        .filter(|k| k.default == "req" && !stated(k))
+        .collect();
     if lacking.is_empty() {
         return None;
     }
     let names: Vec<String> = lacking.iter().map(|k| format!("`{}`", k.name)).collect();
     let edits = lines_into(scene.path, text, block, &lacking);
-    Some(Fix { title: format!("add {}, values to be filled in", names.join(", ")), edits, settles: None, preferred: false })
+    Some(Fix {
+        title: format!("add {}, values to be filled in", names.join(", ")),
+        edits,
+        settles: None,
+        preferred: false,
+    })
 }
 
 /// Lines with a key and no value, at the end of a block. A line without its value is an error until
 /// it is filled in: no number is ever made up.
 fn lines_into(path: &Path, text: &str, block: &Block, keys: &[&Key]) -> Vec<(Spot, String)> {
     let lines: String = keys.iter().map(|k| format!("    {} \n", k.name)).collect();
-    let edit = |span, text| vec![(Spot { path: path.to_path_buf(), span }, text)];
+    let edit = |span, text| {
+        vec![(
+            Spot {
+                path: path.to_path_buf(),
+                span,
+            },
+            text,
+        )]
+    };
     let Some(close) = block.close else {
         let end = block.span.end;
         return edit(Span::at(end), format!("\n{}", lines.trim_end_matches('\n')));
     };
     let inside = Span::new(block.open.end, close.start);
     if inside.slice(text).contains('\n') {
-        let start = text.get(..close.start).and_then(|t| t.rfind('\n')).map_or(close.start, |at| at + 1);
+        let start = text
+            .get(..close.start)
+            .and_then(|t| t.rfind('\n'))
+            .map_or(close.start, |at| at + 1);
         return edit(Span::at(start), lines);
     }
     let kept = inside.slice(text).trim();
-    let kept = if kept.is_empty() { String::new() } else { format!("    {kept}\n") };
+    let kept = if kept.is_empty() {
+        String::new()
+    } else {
+        format!("    {kept}\n")
+    };
     edit(inside, format!("\n{kept}{lines}"))
 }

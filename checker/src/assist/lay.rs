@@ -7,7 +7,9 @@ use similar::{ChangeTag, TextDiff};
 /// Edits, in order, that lay the text out; none where it is laid out, or cannot be.
 #[must_use]
 pub fn edits(tree: &Tree) -> Vec<(Span, String)> {
-    let Ok(tidied) = crate::tidy::tidy(&tree.text) else { return Vec::new() };
+    let Ok(tidied) = crate::tidy::tidy(&tree.text) else {
+        return Vec::new();
+    };
     if *tidied == *tree.text {
         return Vec::new();
     }
@@ -17,7 +19,11 @@ pub fn edits(tree: &Tree) -> Vec<(Span, String)> {
     let mut open = false;
     for change in diff.iter_all_changes() {
         let value = change.value();
-        let end = if change.tag() == ChangeTag::Insert { at } else { at + value.len() };
+        let end = if change.tag() == ChangeTag::Insert {
+            at
+        } else {
+            at + value.len()
+        };
         if change.tag() == ChangeTag::Equal {
             open = false;
         } else {
@@ -57,7 +63,9 @@ pub fn edits_behind(tree: &Tree, offset: usize, typed: &str) -> Vec<(Span, Strin
         line.checked_sub(1).map(|before| index.line_span(before))
     };
     // a whole line is laid out only once it is read without fault
-    let Some(range) = range.filter(|r| !r.is_empty() && !tree.is_faulty(*r)) else { return Vec::new() };
+    let Some(range) = range.filter(|r| !r.is_empty() && !tree.is_faulty(*r)) else {
+        return Vec::new();
+    };
     let mut all = edits(tree);
     let row = |at: usize| index.line_of(at);
     all.retain(|(span, _)| row(range.start) <= row(span.start) && (span.end <= range.end + 2));

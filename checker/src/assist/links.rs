@@ -15,9 +15,15 @@ pub fn links(path: &Path, tree: &Tree) -> Vec<(Span, PathBuf)> {
     let mut out = lower::uses(tree);
     for block in tree.blocks().filter(|b| b.kind.text(text) == "load") {
         for line in block.lines.iter().filter(|l| l.key.text(text) == "table") {
-            let texts = line.groups.iter().flat_map(|g| &g.tokens).filter(|t| t.kind == TokenKind::Text);
+            let texts = line
+                .groups
+                .iter()
+                .flat_map(|g| &g.tokens)
+                .filter(|t| t.kind == TokenKind::Text);
             out.extend(texts.map(|t| (t.content(text).to_owned(), t.span)));
         }
     }
-    out.into_iter().map(|(text, span)| (span, normal(&base.join(text)))).collect()
+    out.into_iter()
+        .map(|(text, span)| (span, normal(&base.join(text))))
+        .collect()
 }

@@ -13,14 +13,23 @@ use crate::source::Sources;
 #[must_use]
 pub fn same_words(a: &Tree, b: &Tree) -> bool {
     let token = |x: Token, y: Token| x.kind == y.kind && x.text(&a.text) == y.text(&b.text);
-    let tokens = |x: &[Token], y: &[Token]| x.len() == y.len() && x.iter().zip(y).all(|(x, y)| token(*x, *y));
+    let tokens = |x: &[Token], y: &[Token]| {
+        x.len() == y.len() && x.iter().zip(y).all(|(x, y)| token(*x, *y))
+    };
     let line = |x: &Line, y: &Line| {
-        let groups = x.groups.iter().zip(&y.groups).all(|(x, y)| tokens(&x.tokens, &y.tokens));
+        let groups = x
+            .groups
+            .iter()
+            .zip(&y.groups)
+            .all(|(x, y)| tokens(&x.tokens, &y.tokens));
         token(x.key, y.key) && x.groups.len() == y.groups.len() && groups
     };
     let block = |x: &Block, y: &Block| {
         let lines = x.lines.iter().zip(&y.lines).all(|(x, y)| line(x, y));
-        token(x.kind, y.kind) && tokens(&x.header, &y.header) && x.lines.len() == y.lines.len() && lines
+        token(x.kind, y.kind)
+            && tokens(&x.header, &y.header)
+            && x.lines.len() == y.lines.len()
+            && lines
     };
     let item = |x: &Item, y: &Item| match (x, y) {
         (Item::Block(x), Item::Block(y)) => block(x, y),
@@ -45,9 +54,14 @@ pub fn moved(outcome: &Outcome, trees: &[(FileId, Arc<Tree>)]) -> Option<Outcome
     }
     let mut sources = Sources::default();
     for (id, file) in outcome.sources.iter() {
-        let new = trees.iter().find(|(at, _)| *at == id).map_or(&file.tree, |(_, tree)| tree);
+        let new = trees
+            .iter()
+            .find(|(at, _)| *at == id)
+            .map_or(&file.tree, |(_, tree)| tree);
         sources.add(file.path.clone(), file.name.clone(), Arc::clone(new));
-        file.uses.iter().for_each(|used| sources.note_use(id, *used));
+        file.uses
+            .iter()
+            .for_each(|used| sources.note_use(id, *used));
     }
     let mut report = outcome.report.clone();
     each_site(&mut report, &|site| {
@@ -66,8 +80,19 @@ impl Map {
         let words = |p: &Piece| !matches!(p.kind, PieceKind::Blank | PieceKind::Comment);
         let olds: Vec<Piece> = old.pieces().filter(words).collect();
         let news: Vec<Piece> = new.pieces().filter(words).collect();
-        let same = olds.len() == news.len() && olds.iter().zip(&news).all(|(a, b)| a.kind == b.kind && a.span.len() == b.span.len());
-        same.then(|| Self(olds.iter().zip(&news).map(|(a, b)| (a.span, b.span.start)).collect()))
+        let same = olds.len() == news.len()
+            && olds
+                .iter()
+                .zip(&news)
+                .all(|(a, b)| a.kind == b.kind && a.span.len() == b.span.len());
+        same.then(|| {
+            Self(
+                olds.iter()
+                    .zip(&news)
+                    .map(|(a, b)| (a.span, b.span.start))
+                    .collect(),
+            )
+        })
     }
 
     /// The new place of an offset at or inside a word; elsewhere, the end of the word before it.
@@ -94,8 +119,16 @@ fn each_site(report: &mut Report, change: &dyn Fn(&mut Site)) {
         for margin in &mut build.margins {
             change(&mut margin.site);
             related(&mut margin.related);
-            margin.working.iter_mut().flat_map(|s| &mut s.from).for_each(change);
-            margin.changes.iter_mut().flat_map(|c| &mut c.edits).for_each(|e| change(&mut e.site));
+            margin
+                .working
+                .iter_mut()
+                .flat_map(|s| &mut s.from)
+                .for_each(change);
+            margin
+                .changes
+                .iter_mut()
+                .flat_map(|c| &mut c.edits)
+                .for_each(|e| change(&mut e.site));
         }
     }
     let entries = report.policies.iter_mut().flat_map(|p| &mut p.entries);

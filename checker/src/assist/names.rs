@@ -37,15 +37,26 @@ pub fn of_tree(tree: &Tree, kinds: &Kinds) -> Vec<Name> {
         match item {
             Item::Line(line) => waiver(tree, line, &mut out),
             Item::Block(block) => {
-                let Some(kind) = block_kind(block.kind.text(&tree.text)) else { continue };
-                out.extend(block.name().map(|n| Name { span: n.span, kind: kind.kind, role: Role::Declared }));
+                let Some(kind) = block_kind(block.kind.text(&tree.text)) else {
+                    continue;
+                };
+                out.extend(block.name().map(|n| Name {
+                    span: n.span,
+                    kind: kind.kind,
+                    role: Role::Declared,
+                }));
                 let from = block.header.windows(2).filter_map(|pair| match pair {
-                    [from, name] if from.text(&tree.text) == "from" && name.kind == TokenKind::Word => Some(*name),
+                    [from, name]
+                        if from.text(&tree.text) == "from" && name.kind == TokenKind::Word =>
+                    {
+                        Some(*name)
+                    }
                     _ => None,
                 });
                 out.extend(from.map(|n| used(n, kind.kind)));
                 for line in &block.lines {
-                    let groups: Vec<&[Token]> = line.groups.iter().map(|g| g.tokens.as_slice()).collect();
+                    let groups: Vec<&[Token]> =
+                        line.groups.iter().map(|g| g.tokens.as_slice()).collect();
                     statement(tree, kind, line.key, &groups, kinds, &mut out);
                 }
             }
@@ -55,14 +66,22 @@ pub fn of_tree(tree: &Tree, kinds: &Kinds) -> Vec<Name> {
 }
 
 fn used(token: Token, kind: &'static str) -> Name {
-    Name { span: token.span, kind, role: Role::Used }
+    Name {
+        span: token.span,
+        kind,
+        role: Role::Used,
+    }
 }
 
 fn waiver(tree: &Tree, line: &Line, out: &mut Vec<Name>) {
     if line.key.text(&tree.text) != "waive" {
         return;
     }
-    let tokens: Vec<Token> = line.groups.iter().flat_map(|g| g.tokens.iter().copied()).collect();
+    let tokens: Vec<Token> = line
+        .groups
+        .iter()
+        .flat_map(|g| g.tokens.iter().copied())
+        .collect();
     for pair in tokens.windows(2) {
         let [word, name] = pair else { continue };
         let kind = match word.text(&tree.text) {
@@ -77,18 +96,32 @@ fn waiver(tree: &Tree, line: &Line, out: &mut Vec<Name>) {
     }
 }
 
-fn statement(tree: &Tree, kind: &'static Block, key: Token, groups: &[&[Token]], kinds: &Kinds, out: &mut Vec<Name>) {
-    let Some(found) = kind.key(key.text(&tree.text)) else { return };
+fn statement(
+    tree: &Tree,
+    kind: &'static Block,
+    key: Token,
+    groups: &[&[Token]],
+    kinds: &Kinds,
+    out: &mut Vec<Name>,
+) {
+    let Some(found) = kind.key(key.text(&tree.text)) else {
+        return;
+    };
     let shape = found.shape();
     if shape.special == Some("CHANGE") {
         let first = groups.first().copied().unwrap_or(&[]);
         let Some(block) = first.first() else { return };
         out.push(used(*block, "any"));
-        let (Some(inner), Some(kind)) = (first.get(1), kinds.get(block.text(&tree.text))) else { return };
+        let (Some(inner), Some(kind)) = (first.get(1), kinds.get(block.text(&tree.text))) else {
+            return;
+        };
         let mut rest: Vec<&[Token]> = vec![first.get(2..).unwrap_or(&[])];
         rest.extend(groups.iter().skip(1));
         // a `change` inside a `change` names nothing
-        if kind.key(inner.text(&tree.text)).is_some_and(|k| k.shape().special.is_none()) {
+        if kind
+            .key(inner.text(&tree.text))
+            .is_some_and(|k| k.shape().special.is_none())
+        {
             statement(tree, kind, *inner, &rest, kinds, out);
         }
         return;
@@ -99,7 +132,12 @@ fn statement(tree: &Tree, kind: &'static Block, key: Token, groups: &[&[Token]],
     }
     for group in groups {
         let names = words(&tree.text, found, group);
-        out.extend(names.into_iter().zip(&wanted).map(|(token, kind)| used(token, kind)));
+        out.extend(
+            names
+                .into_iter()
+                .zip(&wanted)
+                .map(|(token, kind)| used(token, kind)),
+        );
     }
 }
 
@@ -113,7 +151,9 @@ pub(super) fn wanted(key: &Key) -> impl Iterator<Item = &'static str> {
 
 /// The words of a group that are no label, no choice and no connecting word.
 fn words(text: &str, key: &Key, group: &[Token]) -> Vec<Token> {
-    let end = group.iter().position(|t| matches!(t.text(text), "ref" | "part" | "qty"));
+    let end = group
+        .iter()
+        .position(|t| matches!(t.text(text), "ref" | "part" | "qty"));
     let bought = end.filter(|_| key.shape().bought).unwrap_or(group.len());
     let mut out = Vec::new();
     let mut per = false;
@@ -141,7 +181,8 @@ fn per_before(text: &str, group: &[Token], token: Token) -> bool {
 /// Words that a key reads as its own before it looks for names.
 fn reserved_in(key: &Key, word: &str) -> bool {
     let shape = key.shape();
-    let selects = matches!(&shape.selector, Some(Selector::Words(words, _)) if words.contains(&word));
+    let selects =
+        matches!(&shape.selector, Some(Selector::Words(words, _)) if words.contains(&word));
     let taken = shape.items.iter().any(|i| match &i.takes {
         Takes::Choice(words) => i.label == Some(word) || words.contains(&word),
         _ => i.label == Some(word),
@@ -153,18 +194,29 @@ fn reserved_in(key: &Key, word: &str) -> bool {
 #[must_use]
 pub fn refused(name: &str) -> Option<String> {
     let tree = parse(format!("load {name} {{\n}}\n"));
-    let read = tree.blocks().next().and_then(|b| (b.header.len() == 1).then(|| b.name()).flatten());
+    let read = tree
+        .blocks()
+        .next()
+        .and_then(|b| (b.header.len() == 1).then(|| b.name()).flatten());
     let starts = name.chars().next().is_some_and(char::is_alphabetic);
     if !tree.problems.is_empty() || !starts || read.is_none_or(|n| n.text(&tree.text) != name) {
-        return Some(format!("`{name}` is no name: a name is one word that starts with a letter"));
+        return Some(format!(
+            "`{name}` is no name: a name is one word that starts with a letter"
+        ));
     }
     if is_unit(name) {
         return Some(format!("`{name}` is a unit and cannot be a name"));
     }
-    let keys = BLOCKS.iter().flat_map(|b| b.keys).filter(|k| wanted(k).next().is_some());
+    let keys = BLOCKS
+        .iter()
+        .flat_map(|b| b.keys)
+        .filter(|k| wanted(k).next().is_some());
     let mut reserved = keys.filter(|k| reserved_in(k, name));
-    if matches!(name, "none" | "per" | "ref" | "part" | "qty" | "from") || reserved.next().is_some() {
-        return Some(format!("`{name}` is a word of the language and cannot be a name"));
+    if matches!(name, "none" | "per" | "ref" | "part" | "qty" | "from") || reserved.next().is_some()
+    {
+        return Some(format!(
+            "`{name}` is a word of the language and cannot be a name"
+        ));
     }
     None
 }

@@ -67,20 +67,42 @@ pub struct Fold {
 pub fn folds(tree: &Tree) -> Vec<Fold> {
     let index = tree.line_index();
     let tall = |span: Span| index.line_of(span.start) < index.line_of(span.end);
-    let blocks = tree.blocks().flat_map(|b| b.lines.iter().map(|l| l.span).chain([b.span]));
-    let mut out: Vec<Fold> = blocks.filter(|s| tall(*s)).map(|span| Fold { span, comment: false }).collect();
+    let blocks = tree
+        .blocks()
+        .flat_map(|b| b.lines.iter().map(|l| l.span).chain([b.span]));
+    let mut out: Vec<Fold> = blocks
+        .filter(|s| tall(*s))
+        .map(|span| Fold {
+            span,
+            comment: false,
+        })
+        .collect();
     let mut run: Option<Span> = None;
     for piece in tree.pieces().filter(|p| p.kind != PieceKind::Blank) {
-        let alone = piece.kind == PieceKind::Comment && index.line_text(index.line_of(piece.span.start)).trim_start().starts_with('#');
+        let alone = piece.kind == PieceKind::Comment
+            && index
+                .line_text(index.line_of(piece.span.start))
+                .trim_start()
+                .starts_with('#');
         run = match run {
-            Some(span) if alone && index.line_of(piece.span.start) == index.line_of(span.end) + 1 => Some(span.cover(piece.span)),
+            Some(span)
+                if alone && index.line_of(piece.span.start) == index.line_of(span.end) + 1 =>
+            {
+                Some(span.cover(piece.span))
+            }
             _ => {
-                out.extend(run.filter(|s| tall(*s)).map(|span| Fold { span, comment: true }));
+                out.extend(run.filter(|s| tall(*s)).map(|span| Fold {
+                    span,
+                    comment: true,
+                }));
                 alone.then_some(piece.span)
             }
         };
     }
-    out.extend(run.filter(|s| tall(*s)).map(|span| Fold { span, comment: true }));
+    out.extend(run.filter(|s| tall(*s)).map(|span| Fold {
+        span,
+        comment: true,
+    }));
     out.sort_by_key(|f| f.span);
     out
 }
@@ -91,7 +113,12 @@ pub fn growing(tree: &Tree, offset: usize) -> Vec<Span> {
     let mut out: Vec<Span> = Vec::new();
     out.extend(super::cursor::token_at(tree, offset).map(|t| t.span));
     if let Some((_, line)) = super::cursor::line_at(tree, offset) {
-        out.extend(line.groups.iter().map(|g| g.span).find(|s| s.touches(offset)));
+        out.extend(
+            line.groups
+                .iter()
+                .map(|g| g.span)
+                .find(|s| s.touches(offset)),
+        );
         out.push(line.span);
     }
     out.extend(tree.blocks().map(|b| b.span).find(|s| s.touches(offset)));

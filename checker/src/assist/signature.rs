@@ -26,13 +26,20 @@ pub struct Signature {
 #[must_use]
 pub fn signature(scene: &Scene<'_>, offset: usize) -> Option<Signature> {
     let kinds = scene.web.kinds(scene.path);
-    let Place::Values(values) = place(scene.tree, offset, &kinds) else { return None };
+    let Place::Values(values) = place(scene.tree, offset, &kinds) else {
+        return None;
+    };
     if !matches!(values.change, Change::Settled) {
         return None;
     }
     let (key, text) = (values.key, scene.text());
     let shape = key.shape();
-    let mut out = Signature { label: key.name.to_owned(), meaning: key.meaning, items: Vec::new(), active: None };
+    let mut out = Signature {
+        label: key.name.to_owned(),
+        meaning: key.meaning,
+        items: Vec::new(),
+        active: None,
+    };
     let mut add = |text: String| {
         out.label.push(' ');
         let start = out.label.len();
@@ -46,39 +53,57 @@ pub fn signature(scene: &Scene<'_>, offset: usize) -> Option<Signature> {
     {
         add(match selector {
             Selector::Rule => "RULE".to_owned(),
-            Selector::Words(words, time) => format!("{}{}", words.join("|"), if *time { "|time" } else { "" }),
+            Selector::Words(words, time) => {
+                format!("{}{}", words.join("|"), if *time { "|time" } else { "" })
+            }
         });
         skipped = 1;
         before = before.split_first().map_or(&[][..], |s| s.1);
     }
     for item in &shape.items {
         let said = describe(item);
-        add(if item.optional { format!("[{said}]") } else { said });
+        add(if item.optional {
+            format!("[{said}]")
+        } else {
+            said
+        });
     }
     let said = |word: &str| before.iter().any(|t| t.text(text) == word);
-    let mut numbers = before.iter().filter(|t| t.kind == TokenKind::Number).count();
+    let mut numbers = before
+        .iter()
+        .filter(|t| t.kind == TokenKind::Number)
+        .count();
     let mut words = before.iter().filter(|t| t.kind == TokenKind::Word).count();
     out.active = if skipped == 1 && values.before.is_empty() {
         Some(0)
     } else {
         // labelled items are told by their label, the others by counting what they are made of
-        shape.items.iter().position(|item| match (&item.takes, item.label) {
-            (Takes::Per(_), _) => !said("per"),
-            (_, Some(label)) => !said(label) && !item.optional,
-            (Takes::Choice(choices), None) => !choices.iter().any(|c| said(c)),
-            (Takes::Quantity { .. } | Takes::Count | Takes::Fraction, None) => {
-                let open = numbers == 0;
-                numbers = numbers.saturating_sub(1);
-                open && !(item.optional && matches!(item.takes, Takes::Count))
-            }
-            (Takes::Name(_), None) => {
-                let open = words == 0;
-                words = words.saturating_sub(1);
-                open
-            }
-            (Takes::Text, None) => !before.iter().any(|t| t.kind == TokenKind::Text),
-        })
+        shape
+            .items
+            .iter()
+            .position(|item| match (&item.takes, item.label) {
+                (Takes::Per(_), _) => !said("per"),
+                (_, Some(label)) => !said(label) && !item.optional,
+                (Takes::Choice(choices), None) => !choices.iter().any(|c| said(c)),
+                (Takes::Quantity { .. } | Takes::Count | Takes::Fraction, None) => {
+                    let open = numbers == 0;
+                    numbers = numbers.saturating_sub(1);
+                    open && !(item.optional && matches!(item.takes, Takes::Count))
+                }
+                (Takes::Name(_), None) => {
+                    let open = words == 0;
+                    words = words.saturating_sub(1);
+                    open
+                }
+                (Takes::Text, None) => !before.iter().any(|t| t.kind == TokenKind::Text),
+            })
     }
-    .map(|at| if skipped == 1 && !values.before.is_empty() { at + 1 } else { at });
+    .map(|at| {
+        if skipped == 1 && !values.before.is_empty() {
+            at + 1
+        } else {
+            at
+        }
+    });
     Some(out)
 }

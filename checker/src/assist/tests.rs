@@ -29,7 +29,10 @@ impl Files for Shelf {
         self.tree(path).map(|t| Arc::clone(&t.text))
     }
     fn tree(&self, path: &Path) -> Result<Arc<Tree>, String> {
-        self.0.get(path).cloned().ok_or_else(|| "there is no such file".to_owned())
+        self.0
+            .get(path)
+            .cloned()
+            .ok_or_else(|| "there is no such file".to_owned())
     }
     fn resolve(&self, path: &Path) -> PathBuf {
         normal(path)
@@ -38,11 +41,19 @@ impl Files for Shelf {
 
 impl Shelf {
     fn of(files: &[(&str, &str)]) -> Self {
-        Self(files.iter().map(|(name, text)| (PathBuf::from("/kits").join(name), Arc::new(parse(*text)))).collect())
+        Self(
+            files
+                .iter()
+                .map(|(name, text)| (PathBuf::from("/kits").join(name), Arc::new(parse(*text))))
+                .collect(),
+        )
     }
 
     fn check(&self, name: &str) -> Arc<Outcome> {
-        let options = Options { today: "2026-06-01".to_owned(), ..Options::default() };
+        let options = Options {
+            today: "2026-06-01".to_owned(),
+            ..Options::default()
+        };
         Arc::new(crate::check(self, &Path::new("/kits").join(name), name, &options).unwrap())
     }
 
@@ -51,7 +62,12 @@ impl Shelf {
         let path = Path::new("/kits").join(name);
         let web = Web::load(self, self.0.keys().cloned());
         let outcomes = [self.check(name)];
-        question(&Scene { path: &path, tree: &self.0[&path], web: &web, outcomes: &outcomes })
+        question(&Scene {
+            path: &path,
+            tree: &self.0[&path],
+            web: &web,
+            outcomes: &outcomes,
+        })
     }
 }
 
@@ -67,7 +83,12 @@ fn at<T>(text: &str, question: impl FnOnce(&Scene<'_>, usize) -> T) -> T {
 }
 
 fn offered(text: &str) -> Vec<String> {
-    at(text, |scene, offset| complete(scene, offset).into_iter().map(|o| o.label).collect())
+    at(text, |scene, offset| {
+        complete(scene, offset)
+            .into_iter()
+            .map(|o| o.label)
+            .collect()
+    })
 }
 
 #[test]
@@ -96,15 +117,29 @@ fn what_may_follow_is_offered() {
         ("build b {\n    supply t per ‸\n}\n", "channel", "rail"),
         ("build b {\n    policy ‸\n}\n", "strict", "n16"),
         ("policy p from ‸ {\n}\n", "bench", "n16"),
-        ("policy p from bench {\n    allow ‸\n}\n", "thermal.sink", "error"),
-        ("policy p from bench {\n    severity thermal.sink ‸\n}\n", "warning", "thermal.sink"),
+        (
+            "policy p from bench {\n    allow ‸\n}\n",
+            "thermal.sink",
+            "error",
+        ),
+        (
+            "policy p from bench {\n    severity thermal.sink ‸\n}\n",
+            "warning",
+            "thermal.sink",
+        ),
         ("waive ‸", "thermal.sink", "of"),
         ("waive thermal.sink ‸", "because", "in the"),
         ("waive thermal.sink of ‸", "n16", "because"),
     ] {
         let found = offered(&format!("{head}{typed}"));
-        assert!(found.iter().any(|l| l == wanted), "{typed}: no {wanted} in {found:?}");
-        assert!(!found.iter().any(|l| l == unwanted), "{typed}: {unwanted} in {found:?}");
+        assert!(
+            found.iter().any(|l| l == wanted),
+            "{typed}: no {wanted} in {found:?}"
+        );
+        assert!(
+            !found.iter().any(|l| l == unwanted),
+            "{typed}: {unwanted} in {found:?}"
+        );
     }
     assert!(offered("ampspec 1 # sta‸").is_empty());
     assert!(offered("use \"sta‸\"").is_empty());
@@ -117,11 +152,17 @@ fn the_next_item_of_a_key_is_pointed_out() {
         ("emitter ‸", Some("ohm")),
         ("emitter 0R22 ‸", Some("[W]")),
         ("idle 50 mA per ‸", Some("[V]")),
-        ("connection ‸", Some("emitter-follower|compound-pair|source-follower|common-emitter")),
+        (
+            "connection ‸",
+            Some("emitter-follower|compound-pair|source-follower|common-emitter"),
+        ),
         ("connection emitter-follower ‸", None),
     ] {
         let found = at(&format!("{head}{typed}\n}}\n"), signature).unwrap();
-        let item = found.active.and_then(|a| found.items.get(a)).map(|i| &found.label[i.0..i.1]);
+        let item = found
+            .active
+            .and_then(|a| found.items.get(a))
+            .map(|i| &found.label[i.0..i.1]);
         assert_eq!(item, active, "{typed}: {found:?}");
     }
     assert_eq!(at("ampspec 1\nsta‸", signature), None);
@@ -131,13 +172,31 @@ fn the_next_item_of_a_key_is_pointed_out() {
 fn names_are_found_wherever_they_stand() {
     let text = "device n16 npn {\n vceo 9 V\n}\ndevice p from n16 {\n}\nstage out {\n devices n16 p ref Q7\n}\nload a { parallel a, b }\nbuild b {\n supply t per 2 channels\n change out devices n16 n16\n loads a, b\n}\nalternate e { replace n16 with p }\nwaive x.y of n16 in b with e because \"n16\"\n";
     let tree = parse(text);
-    let kinds = Web::load(&Shelf::of(&[("a.ampspec", text)]), [PathBuf::from("/kits/a.ampspec")]).kinds(Path::new("/kits/a.ampspec"));
+    let kinds = Web::load(
+        &Shelf::of(&[("a.ampspec", text)]),
+        [PathBuf::from("/kits/a.ampspec")],
+    )
+    .kinds(Path::new("/kits/a.ampspec"));
     let all = of_tree(&tree, &kinds);
     let of = |name: &str| all.iter().filter(|n| n.span.slice(text) == name).count();
-    assert_eq!((of("n16"), of("p"), of("out"), of("t"), of("e"), of("channels"), of("Q7")), (7, 3, 2, 1, 2, 0, 0), "{all:?}");
+    assert_eq!(
+        (
+            of("n16"),
+            of("p"),
+            of("out"),
+            of("t"),
+            of("e"),
+            of("channels"),
+            of("Q7")
+        ),
+        (7, 3, 2, 1, 2, 0, 0),
+        "{all:?}"
+    );
     assert_eq!(all.iter().filter(|n| n.role == Role::Declared).count(), 6);
     assert_eq!(refused("q9-b"), None);
-    for bad in ["", "9q", "ohm", "with", "a b", "a{", "per", "none", "\"x\"", "#", "from"] {
+    for bad in [
+        "", "9q", "ohm", "with", "a b", "a{", "per", "none", "\"x\"", "#", "from",
+    ] {
         assert!(refused(bad).is_some(), "{bad}");
     }
 }
@@ -145,15 +204,27 @@ fn names_are_found_wherever_they_stand() {
 #[test]
 fn names_of_other_files_count_only_where_they_reach() {
     let shelf = Shelf::of(&[
-        ("kit.ampspec", "ampspec 1\nuse \"parts.ampspec\"\nstage out { devices n16 }\n"),
+        (
+            "kit.ampspec",
+            "ampspec 1\nuse \"parts.ampspec\"\nstage out { devices n16 }\n",
+        ),
         ("parts.ampspec", "ampspec 1\ndevice n16 npn { vceo 9 V }\n"),
-        ("other.ampspec", "ampspec 1\ndevice n16 npn { vceo 9 V }\nstage out { devices n16 }\n"),
+        (
+            "other.ampspec",
+            "ampspec 1\ndevice n16 npn { vceo 9 V }\nstage out { devices n16 }\n",
+        ),
     ]);
     shelf.ask("kit.ampspec", |scene| {
         let found = scene.web.occurrences(scene.path, "n16");
-        let files: Vec<_> = found.iter().map(|(s, _)| s.path.file_name().unwrap().to_str().unwrap()).collect();
+        let files: Vec<_> = found
+            .iter()
+            .map(|(s, _)| s.path.file_name().unwrap().to_str().unwrap())
+            .collect();
         assert_eq!(files, ["kit.ampspec", "parts.ampspec"]);
-        assert_eq!(links::links(scene.path, scene.tree)[0].1, Path::new("/kits/parts.ampspec"));
+        assert_eq!(
+            links::links(scene.path, scene.tree)[0].1,
+            Path::new("/kits/parts.ampspec")
+        );
     });
 }
 
@@ -164,17 +235,32 @@ fn tern60() -> String {
 #[test]
 fn hover_tells_meaning_numbers_and_margins() {
     let text = tern60();
-    let with = |wanted: &str| text.replacen(wanted, &format!("{}‸{}", &wanted[..1], &wanted[1..]), 1);
-    let said = |wanted: &str| at(&with(wanted), hover).unwrap_or_else(|| panic!("nothing of {wanted}")).markdown;
+    let with =
+        |wanted: &str| text.replacen(wanted, &format!("{}‸{}", &wanted[..1], &wanted[1..]), 1);
+    let said = |wanted: &str| {
+        at(&with(wanted), hover)
+            .unwrap_or_else(|| panic!("nothing of {wanted}"))
+            .markdown
+    };
     assert!(said("vceo 240").contains("V(BR)CEO"));
     assert!(said("stage out").contains("one stage of the board"));
     assert!(said("n16 p16 ref").contains("device n16"));
     assert!(said("n16 p16 ref").contains("voltage.device"));
     assert!(said("0.45 K/W").contains("thermal.sink"));
     assert!(said("28 Vac").contains("rail-idle"));
-    assert!(at("ampspec 1\nwaive thermal.s‸ink because \"x\"\n", hover).unwrap().markdown.contains("thermal.sink"));
+    assert!(
+        at("ampspec 1\nwaive thermal.s‸ink because \"x\"\n", hover)
+            .unwrap()
+            .markdown
+            .contains("thermal.sink")
+    );
     // text of the spec cannot become mark-up
-    let hostile = at("ampspec 1\ndevice n‸ \"<b>[x](y)\" npn { vceo 9 V }\n", hover).unwrap().markdown;
+    let hostile = at(
+        "ampspec 1\ndevice n‸ \"<b>[x](y)\" npn { vceo 9 V }\n",
+        hover,
+    )
+    .unwrap()
+    .markdown;
     assert!(hostile.contains("&lt;b&gt;\\[x\\](y)"), "{hostile}");
     let tree = parse(&*text);
     assert!(!needs_check(&tree, text.find("vceo").unwrap()));
@@ -187,16 +273,40 @@ fn numbers_stand_at_the_ends_of_their_lines() {
     Shelf::of(&[("a.ampspec", &text)]).ask("a.ampspec", |scene| {
         let all = Span::new(0, text.len());
         let found = hints(scene, all, &Wanted::default());
-        let secondary = found.iter().find(|h| text[..h.offset].ends_with("secondary 2 x 28 Vac")).unwrap();
+        let secondary = found
+            .iter()
+            .find(|h| text[..h.offset].ends_with("secondary 2 x 28 Vac"))
+            .unwrap();
         assert!(secondary.label.starts_with("rail idle "), "{secondary:?}");
         assert!(found.iter().any(|h| h.label.contains("% used")));
-        let none = Wanted { derived: false, used: false, names: Vec::new() };
+        let none = Wanted {
+            derived: false,
+            used: false,
+            names: Vec::new(),
+        };
         assert!(hints(scene, all, &none).is_empty());
-        let one = Wanted { derived: true, used: false, names: vec!["sink".to_owned()] };
-        assert!(hints(scene, all, &one).iter().all(|h| h.label.starts_with("sink ")));
+        let one = Wanted {
+            derived: true,
+            used: false,
+            names: vec!["sink".to_owned()],
+        };
+        assert!(
+            hints(scene, all, &one)
+                .iter()
+                .all(|h| h.label.starts_with("sink "))
+        );
         let over = lenses(scene);
-        assert!(over.iter().any(|l| l.span.slice(&text).starts_with("build mono") && l.label.contains("governed by")), "{over:?}");
-        assert!(over.iter().any(|l| l.span.slice(&text).starts_with("stage out")), "{over:?}");
+        assert!(
+            over.iter()
+                .any(|l| l.span.slice(&text).starts_with("build mono")
+                    && l.label.contains("governed by")),
+            "{over:?}"
+        );
+        assert!(
+            over.iter()
+                .any(|l| l.span.slice(&text).starts_with("stage out")),
+            "{over:?}"
+        );
     });
 }
 
@@ -205,8 +315,18 @@ fn fixed(text: &str, line: &str, title: &str) -> String {
     Shelf::of(&[("a.ampspec", text)]).ask("a.ampspec", |scene| {
         let start = text.find(line).unwrap();
         let all = fixes(scene, Span::new(start, start + line.len()));
-        let found = all.iter().find(|f| f.title.starts_with(title)).unwrap_or_else(|| panic!("no {title} in {all:#?}"));
-        let edits: Vec<Edit> = found.edits.iter().map(|(spot, text)| Edit { span: spot.span, text: text.clone() }).collect();
+        let found = all
+            .iter()
+            .find(|f| f.title.starts_with(title))
+            .unwrap_or_else(|| panic!("no {title} in {all:#?}"));
+        let edits: Vec<Edit> = found
+            .edits
+            .iter()
+            .map(|(spot, text)| Edit {
+                span: spot.span,
+                text: text.clone(),
+            })
+            .collect();
         apply(text, &edits).unwrap()
     })
 }
@@ -216,31 +336,70 @@ fn fixes_write_what_they_say() {
     let text = tern60();
     let misspelt = text.replace("insulator 0.35", "isulator 0.35");
     assert_eq!(fixed(&misspelt, "isulator", "write `insulator`"), text);
-    let lacking = text.replace("    junction 150 degC\n    junction-case", "    junction-case");
+    let lacking = text.replace(
+        "    junction 150 degC\n    junction-case",
+        "    junction-case",
+    );
     let added = fixed(&lacking, "device n16 npn", "add `junction` to device n16");
-    assert!(added.contains("    source authorised \"franchised distributor\"\n    junction \n}"), "{added}");
+    assert!(
+        added.contains("    source authorised \"franchised distributor\"\n    junction \n}"),
+        "{added}"
+    );
     let hot = text.replace("0.45 K/W at 50 K", "2 K/W at 50 K");
     let waived = fixed(&hot, "resistance 2 K/W at 50 K", "waive thermal.sink");
-    assert!(waived.ends_with("in mono because \"\" by \"\"\n"), "{waived}");
+    assert!(
+        waived.ends_with("in mono because \"\" by \"\"\n"),
+        "{waived}"
+    );
     // a waiver that is not filled in accepts nothing
     let report = crate::testing::report(&waived);
     assert!(report.builds[0].margins.iter().all(|m| m.waiver.is_none()));
-    let short = fixed("ampspec 1\ntransformer t { rating 300 VA }\n", "transformer t", "add `primary`");
-    assert!(short.contains("{\n    rating 300 VA\n    primary \n    secondary \n}"), "{short}");
+    let short = fixed(
+        "ampspec 1\ntransformer t { rating 300 VA }\n",
+        "transformer t",
+        "add `primary`",
+    );
+    assert!(
+        short.contains("{\n    rating 300 VA\n    primary \n    secondary \n}"),
+        "{short}"
+    );
 }
 
 #[test]
 fn shape_and_layout() {
-    let text = "ampspec 1\n# one\n# two\nload a {\n  nominal    8 ohm\n}\nload b { resistive 8 ohm }\n";
+    let text =
+        "ampspec 1\n# one\n# two\nload a {\n  nominal    8 ohm\n}\nload b { resistive 8 ohm }\n";
     let tree = parse(text);
-    let shown: Vec<_> = outline::outline(&tree).into_iter().map(|e| (e.name, e.children.len())).collect();
-    assert_eq!(shown, [("ampspec".to_owned(), 0), ("a".to_owned(), 1), ("b".to_owned(), 1)]);
-    let folded: Vec<_> = outline::folds(&tree).iter().map(|f| (f.span.slice(text).len(), f.comment)).collect();
+    let shown: Vec<_> = outline::outline(&tree)
+        .into_iter()
+        .map(|e| (e.name, e.children.len()))
+        .collect();
+    assert_eq!(
+        shown,
+        [
+            ("ampspec".to_owned(), 0),
+            ("a".to_owned(), 1),
+            ("b".to_owned(), 1)
+        ]
+    );
+    let folded: Vec<_> = outline::folds(&tree)
+        .iter()
+        .map(|f| (f.span.slice(text).len(), f.comment))
+        .collect();
     assert_eq!(folded, [(11, true), (29, false)]);
-    let grown: Vec<_> = outline::growing(&tree, text.find("ohm").unwrap()).iter().map(|s| s.slice(text).len()).collect();
+    let grown: Vec<_> = outline::growing(&tree, text.find("ohm").unwrap())
+        .iter()
+        .map(|s| s.slice(text).len())
+        .collect();
     assert_eq!(grown, [3, 5, 16, 29, text.len()]);
-    let edits: Vec<Edit> = lay::edits(&tree).into_iter().map(|(span, text)| Edit { span, text }).collect();
-    assert_eq!(apply(text, &edits).unwrap(), crate::tidy::tidy(text).unwrap());
+    let edits: Vec<Edit> = lay::edits(&tree)
+        .into_iter()
+        .map(|(span, text)| Edit { span, text })
+        .collect();
+    assert_eq!(
+        apply(text, &edits).unwrap(),
+        crate::tidy::tidy(text).unwrap()
+    );
     assert!(edits.iter().all(|e| e.span.len() < 30), "{edits:?}");
     // a line that is not read is left alone
     let broken = parse("load a {\n  nominal    \"8\n}\n");
@@ -251,8 +410,20 @@ fn shape_and_layout() {
 fn every_word_has_a_colour() {
     let text = "load a { resistive 8 ohm ±5 % } # c\n";
     let kinds = std::collections::HashMap::new();
-    let all: Vec<_> = tokens(&parse(text), &kinds).iter().map(|t| (t.span.slice(text), t.class)).collect();
-    let want = [("load", Class::Keyword), ("a", Class::Name), ("resistive", Class::Key), ("8", Class::Number), ("ohm", Class::Unit), ("±5", Class::Number), ("%", Class::Unit), ("# c", Class::Comment)];
+    let all: Vec<_> = tokens(&parse(text), &kinds)
+        .iter()
+        .map(|t| (t.span.slice(text), t.class))
+        .collect();
+    let want = [
+        ("load", Class::Keyword),
+        ("a", Class::Name),
+        ("resistive", Class::Key),
+        ("8", Class::Number),
+        ("ohm", Class::Unit),
+        ("±5", Class::Number),
+        ("%", Class::Unit),
+        ("# c", Class::Comment),
+    ];
     assert_eq!(all, want);
 }
 
@@ -261,7 +432,11 @@ fn every_word_has_a_colour() {
 fn comments_and_layout_carry_findings_over() {
     let text = tern60().replace("0.45 K/W at 50 K", "2 K/W at 50 K");
     let before = Shelf::of(&[("a.ampspec", &text)]).check("a.ampspec");
-    let relaid = format!("# Ω\n{}", text.replace(" at ", "   at  ").replace("stage out {", "stage out { # the last one"));
+    let relaid = format!(
+        "# Ω\n{}",
+        text.replace(" at ", "   at  ")
+            .replace("stage out {", "stage out { # the last one")
+    );
     let shelf = Shelf::of(&[("a.ampspec", &relaid)]);
     let after = shelf.check("a.ampspec");
     let (file, _) = before.sources.iter().next().unwrap();

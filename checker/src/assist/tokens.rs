@@ -67,9 +67,17 @@ pub fn tokens(tree: &Tree, kinds: &Kinds) -> Vec<Coloured> {
                     word(span.slice(&tree.text))
                 }
             }
-            PieceKind::Blank | PieceKind::Comma | PieceKind::Open | PieceKind::Close | PieceKind::Unread => continue,
+            PieceKind::Blank
+            | PieceKind::Comma
+            | PieceKind::Open
+            | PieceKind::Close
+            | PieceKind::Unread => continue,
         };
-        out.push(Coloured { span, class, declares });
+        out.push(Coloured {
+            span,
+            class,
+            declares,
+        });
     }
     out
 }
@@ -101,7 +109,10 @@ fn keys(tree: &Tree) -> Vec<(Span, Class)> {
                 if kind.is_some() {
                     out.push(key(block.kind, Class::Keyword));
                 }
-                let known = block.lines.iter().filter(|l| kind.is_some_and(|k| k.key(l.key.text(text)).is_some()));
+                let known = block
+                    .lines
+                    .iter()
+                    .filter(|l| kind.is_some_and(|k| k.key(l.key.text(text)).is_some()));
                 out.extend(known.map(|l| key(l.key, Class::Key)));
             }
         }

@@ -73,7 +73,9 @@ impl Web {
             if web.at.contains_key(&path) || web.pages.len() >= MOST_FILES {
                 continue;
             }
-            let Ok(tree) = files.tree(&path) else { continue };
+            let Ok(tree) = files.tree(&path) else {
+                continue;
+            };
             let base = path.parent().unwrap_or(Path::new(""));
             let uses: Vec<PathBuf> = lower::uses(&tree)
                 .into_iter()
@@ -148,13 +150,19 @@ impl Web {
     /// Every block that can be named in this file.
     #[must_use]
     pub fn declarations(&self, path: &Path) -> Vec<Declaration> {
-        self.around(path).into_iter().flat_map(declarations).collect()
+        self.around(path)
+            .into_iter()
+            .flat_map(declarations)
+            .collect()
     }
 
     /// The block of this name as seen from this file.
     #[must_use]
     pub fn find(&self, path: &Path, name: &str) -> Option<Declaration> {
-        self.around(path).into_iter().flat_map(declarations).find(|d| d.name == name)
+        self.around(path)
+            .into_iter()
+            .flat_map(declarations)
+            .find(|d| d.name == name)
     }
 
     /// Names and kinds that can be named in this file.
@@ -173,20 +181,30 @@ impl Web {
     #[must_use]
     pub fn name_at(&self, path: &Path, offset: usize) -> Option<Name> {
         let page = self.page(path)?;
-        of_tree(&page.tree, &self.kinds(path)).into_iter().find(|n| n.span.touches(offset))
+        of_tree(&page.tree, &self.kinds(path))
+            .into_iter()
+            .find(|n| n.span.touches(offset))
     }
 
     /// Every place where the block of this name, as seen from this file, is declared or used.
     #[must_use]
     pub fn occurrences(&self, path: &Path, name: &str) -> Vec<(Spot, Role)> {
         // the projects that hold the declaration are those in which the name means it
-        let home = self.find(path, name).map_or_else(|| path.to_owned(), |d| d.spot.path);
+        let home = self
+            .find(path, name)
+            .map_or_else(|| path.to_owned(), |d| d.spot.path);
         let mut found = Vec::new();
         for page in self.around(&home) {
             let kinds = self.kinds(&page.path);
             for one in of_tree(&page.tree, &kinds) {
                 if one.span.slice(&page.tree.text) == name {
-                    found.push((Spot { path: page.path.clone(), span: one.span }, one.role));
+                    found.push((
+                        Spot {
+                            path: page.path.clone(),
+                            span: one.span,
+                        },
+                        one.role,
+                    ));
                 }
             }
         }
@@ -201,12 +219,18 @@ pub fn declarations(page: &Page) -> impl Iterator<Item = Declaration> + '_ {
     let text = &page.tree.text;
     page.tree.blocks().filter_map(move |block| {
         let name = block.name()?;
-        let title = block.header.iter().find(|t| t.kind == ampspec_grammar::TokenKind::Text);
+        let title = block
+            .header
+            .iter()
+            .find(|t| t.kind == ampspec_grammar::TokenKind::Text);
         Some(Declaration {
             name: name.text(text).to_owned(),
             kind: crate::vocabulary::block_kind(block.kind.text(text))?,
             title: title.map(|t| t.content(text).to_owned()),
-            spot: Spot { path: page.path.clone(), span: name.span },
+            spot: Spot {
+                path: page.path.clone(),
+                span: name.span,
+            },
             header: block.header_span,
             whole: block.span,
         })

@@ -13,7 +13,9 @@ use super::statement::{Bought, Declared, Group, Select, Slot, Statement, Value};
 use crate::finding::{FileId, Finding, Related, Severity, Site, TextEdit};
 use crate::quantity::{self, Band, Dimension, FaultKind, FuseSpeed, NoteSeverity, Reading, Slip};
 use crate::vocabulary::shape::CONNECTING;
-use crate::vocabulary::{BLOCKS, Block, Extent, Item, Key, STATEMENTS, Selector, Shape, Takes, block_kind, nearest};
+use crate::vocabulary::{
+    BLOCKS, Block, Extent, Item, Key, STATEMENTS, Selector, Shape, Takes, block_kind, nearest,
+};
 
 /// Most channels, pairs or counts that a number may state; above it the text is asked about.
 const MOST: f64 = 10_000.0;
@@ -57,7 +59,10 @@ pub struct Lowered {
 pub fn declared_kinds(tree: &Tree) -> impl Iterator<Item = (&str, &'static Block)> {
     tree.blocks().filter_map(|block| {
         let name = block.name()?;
-        Some((name.text(&tree.text), block_kind(block.kind.text(&tree.text))?))
+        Some((
+            name.text(&tree.text),
+            block_kind(block.kind.text(&tree.text))?,
+        ))
     })
 }
 
@@ -82,7 +87,13 @@ pub fn uses(tree: &Tree) -> Vec<(String, Span)> {
 /// Lower one file. `kinds` knows every name declared in any file of the check.
 #[must_use]
 pub fn lower(file: FileId, tree: &Tree, kinds: &HashMap<String, &'static Block>) -> Lowered {
-    let mut lowering = Lowering { file, tree, text: &tree.text, kinds, out: Lowered::default() };
+    let mut lowering = Lowering {
+        file,
+        tree,
+        text: &tree.text,
+        kinds,
+        out: Lowered::default(),
+    };
     lowering.problems();
     lowering.items();
     lowering.one_a_line();
@@ -109,26 +120,52 @@ struct Atom<'a> {
 
 impl Lowering<'_> {
     fn site(&self, span: Span) -> Site {
-        Site { file: self.file, span }
+        Site {
+            file: self.file,
+            span,
+        }
     }
 
-    fn say(&mut self, rule: &'static str, severity: Severity, span: Span, message: String, hint: String) -> &mut Finding {
+    fn say(
+        &mut self,
+        rule: &'static str,
+        severity: Severity,
+        span: Span,
+        message: String,
+        hint: String,
+    ) -> &mut Finding {
         let site = self.site(span);
-        self.out.findings.push(Finding::error(rule, site, message, hint).at(severity));
+        self.out
+            .findings
+            .push(Finding::error(rule, site, message, hint).at(severity));
         let last = self.out.findings.len() - 1;
         &mut self.out.findings[last]
     }
 
-    fn error(&mut self, rule: &'static str, span: Span, message: String, hint: String) -> &mut Finding {
+    fn error(
+        &mut self,
+        rule: &'static str,
+        span: Span,
+        message: String,
+        hint: String,
+    ) -> &mut Finding {
         self.say(rule, Severity::Error, span, message, hint)
     }
 
     /// What the grammar could not read.
     fn problems(&mut self) {
         for problem in &self.tree.problems {
-            let related = problem.related.iter().map(|(message, span)| Related { message: message.clone(), site: self.site(*span) }).collect();
+            let related = problem
+                .related
+                .iter()
+                .map(|(message, span)| Related {
+                    message: message.clone(),
+                    site: self.site(*span),
+                })
+                .collect();
             let (message, hint) = (problem.message.clone(), problem.hint.clone());
-            self.error("syntax.text", problem.span, message, hint).related = related;
+            self.error("syntax.text", problem.span, message, hint)
+                .related = related;
         }
     }
 
@@ -138,14 +175,22 @@ impl Lowering<'_> {
         let tree = self.tree;
         let mut told: HashSet<usize> = HashSet::new();
         let mut order: Vec<usize> = (0..self.out.findings.len()).collect();
-        order.sort_by_key(|&at| self.out.findings.get(at).map(|f| (Reverse(f.severity), f.site.span)));
+        order.sort_by_key(|&at| {
+            self.out
+                .findings
+                .get(at)
+                .map(|f| (Reverse(f.severity), f.site.span))
+        });
         let mut kept = vec![true; order.len()];
         for at in order {
-            let Some(finding) = self.out.findings.get(at) else { continue };
+            let Some(finding) = self.out.findings.get(at) else {
+                continue;
+            };
             if !finding.rule.starts_with("syntax.") || finding.rule == "syntax.text" {
                 continue;
             }
-            let fresh = !tree.is_faulty(finding.site.span) && told.insert(tree.line_index().line_of(finding.site.span.start));
+            let fresh = !tree.is_faulty(finding.site.span)
+                && told.insert(tree.line_index().line_of(finding.site.span.start));
             if let Some(keep) = kept.get_mut(at) {
                 *keep = fresh;
             }
@@ -168,7 +213,12 @@ impl Lowering<'_> {
         let word = line.key.text(self.text);
         match word {
             "ampspec" => {
-                let version: Vec<_> = line.groups.iter().flat_map(|g| &g.tokens).map(|t| t.text(self.text)).collect();
+                let version: Vec<_> = line
+                    .groups
+                    .iter()
+                    .flat_map(|g| &g.tokens)
+                    .map(|t| t.text(self.text))
+                    .collect();
                 if version != ["1"] {
                     self.error(
                         "syntax.version",
@@ -177,50 +227,111 @@ impl Lowering<'_> {
                         "write `ampspec 1`".to_owned(),
                     );
                 } else if !first {
-                    self.error("syntax.version", line.span, "the version stands on the first line".to_owned(), "move `ampspec 1` to the top".to_owned());
+                    self.error(
+                        "syntax.version",
+                        line.span,
+                        "the version stands on the first line".to_owned(),
+                        "move `ampspec 1` to the top".to_owned(),
+                    );
                 }
             }
             "use" => {
-                let texts = line.groups.iter().flat_map(|g| &g.tokens).filter(|t| t.kind == TokenKind::Text).count();
+                let texts = line
+                    .groups
+                    .iter()
+                    .flat_map(|g| &g.tokens)
+                    .filter(|t| t.kind == TokenKind::Text)
+                    .count();
                 let tokens = line.groups.iter().map(|g| g.tokens.len()).sum::<usize>();
                 if texts != 1 || tokens != 1 {
-                    self.error("syntax.value", line.span, "`use` wants one path in quotes".to_owned(), "write `use \"parts/output.ampspec\"`".to_owned());
+                    self.error(
+                        "syntax.value",
+                        line.span,
+                        "`use` wants one path in quotes".to_owned(),
+                        "write `use \"parts/output.ampspec\"`".to_owned(),
+                    );
                 }
             }
             "waive" => self.waive(line),
             // the grammar has told what is wrong with this line
             _ if self.tree.is_faulty(line.span) => {}
             _ => {
-                let names = STATEMENTS.iter().map(|k| k.name).chain(BLOCKS.iter().map(|b| b.kind));
+                let names = STATEMENTS
+                    .iter()
+                    .map(|k| k.name)
+                    .chain(BLOCKS.iter().map(|b| b.kind));
                 let near = nearest(word, names);
                 let block = block_kind(word).is_some();
                 let hint = if block {
                     format!("a block opens with a brace: `{word} NAME {{`")
                 } else if BLOCKS.iter().any(|b| b.key(word).is_some()) {
-                    let homes: Vec<_> = BLOCKS.iter().filter(|b| b.key(word).is_some()).map(|b| b.kind).collect();
-                    format!("`{word}` is a key of {}: it stands inside such a block", homes.join(", "))
+                    let homes: Vec<_> = BLOCKS
+                        .iter()
+                        .filter(|b| b.key(word).is_some())
+                        .map(|b| b.kind)
+                        .collect();
+                    format!(
+                        "`{word}` is a key of {}: it stands inside such a block",
+                        homes.join(", ")
+                    )
                 } else {
-                    did_you_mean(&near, "outside blocks stand `ampspec`, `use`, `waive` and block headers such as `stage out {`")
+                    did_you_mean(
+                        &near,
+                        "outside blocks stand `ampspec`, `use`, `waive` and block headers such as `stage out {`",
+                    )
                 };
-                self.unknown("syntax.statement", line.key, format!("`{word}` is no statement"), hint, &near);
+                self.unknown(
+                    "syntax.statement",
+                    line.key,
+                    format!("`{word}` is no statement"),
+                    hint,
+                    &near,
+                );
             }
         }
     }
 
-    fn unknown(&mut self, rule: &'static str, token: Token, message: String, hint: String, near: &[&str]) {
+    fn unknown(
+        &mut self,
+        rule: &'static str,
+        token: Token,
+        message: String,
+        hint: String,
+        near: &[&str],
+    ) {
         let site = self.site(token.span);
-        let edits = near.iter().map(|n| TextEdit { site, text: (*n).to_owned() }).collect();
+        let edits = near
+            .iter()
+            .map(|n| TextEdit {
+                site,
+                text: (*n).to_owned(),
+            })
+            .collect();
         self.error(rule, token.span, message, hint).edits = edits;
     }
 
     fn waive(&mut self, line: &grammar::Line) {
-        let tokens: Vec<Token> = line.groups.iter().flat_map(|g| g.tokens.iter().copied()).collect();
-        let mut waiver = WaiverText { site: Some(self.site(line.span)), ..WaiverText::default() };
+        let tokens: Vec<Token> = line
+            .groups
+            .iter()
+            .flat_map(|g| g.tokens.iter().copied())
+            .collect();
+        let mut waiver = WaiverText {
+            site: Some(self.site(line.span)),
+            ..WaiverText::default()
+        };
         let mut tokens = tokens.into_iter();
         match tokens.next() {
-            Some(rule) if rule.kind == TokenKind::Word => waiver.rule = rule.text(self.text).to_owned(),
+            Some(rule) if rule.kind == TokenKind::Word => {
+                waiver.rule = rule.text(self.text).to_owned()
+            }
             _ => {
-                self.error("syntax.value", line.span, "`waive` names no rule".to_owned(), waive_form());
+                self.error(
+                    "syntax.value",
+                    line.span,
+                    "`waive` names no rule".to_owned(),
+                    waive_form(),
+                );
                 return;
             }
         }
@@ -254,7 +365,13 @@ impl Lowering<'_> {
             let near = nearest(word, BLOCKS.iter().map(|b| b.kind));
             let kinds: Vec<_> = BLOCKS.iter().map(|b| b.kind).collect();
             let hint = did_you_mean(&near, &format!("blocks are {}", kinds.join(", ")));
-            self.unknown("syntax.block", block.kind, format!("`{word}` is no kind of block"), hint, &near);
+            self.unknown(
+                "syntax.block",
+                block.kind,
+                format!("`{word}` is no kind of block"),
+                hint,
+                &near,
+            );
             return;
         };
         // a block without a name is a problem that the grammar has told
@@ -272,21 +389,39 @@ impl Lowering<'_> {
         };
         if quantity::is_unit(&declared.name) {
             let message = format!("`{}` is a unit and cannot be a name", declared.name);
-            self.error("syntax.name", name.span, message, "choose another name".to_owned());
+            self.error(
+                "syntax.name",
+                name.span,
+                message,
+                "choose another name".to_owned(),
+            );
         }
         self.header(block, &mut declared);
         for line in &block.lines {
-            let Some(statement) = self.line(kind, line) else { continue };
-            if let Some(before) = declared.lines.iter().find(|s| s.replaced_by(&statement) && statement.change.is_none()) {
+            let Some(statement) = self.line(kind, line) else {
+                continue;
+            };
+            if let Some(before) = declared
+                .lines
+                .iter()
+                .find(|s| s.replaced_by(&statement) && statement.change.is_none())
+            {
                 let before = before.key_site;
-                let message = format!("`{}` is stated twice in `{} {}`", statement.key.name, kind.kind, declared.name);
+                let message = format!(
+                    "`{}` is stated twice in `{} {}`",
+                    statement.key.name, kind.kind, declared.name
+                );
                 let hint = if statement.key.repeats {
                     "keep one of the two, or give them different selectors".to_owned()
                 } else {
                     "keep one of the two".to_owned()
                 };
-                let related = vec![Related { message: "first stated here; this line is the one used".to_owned(), site: before }];
-                self.error("data.duplicate", line.key.span, message, hint).related = related;
+                let related = vec![Related {
+                    message: "first stated here; this line is the one used".to_owned(),
+                    site: before,
+                }];
+                self.error("data.duplicate", line.key.span, message, hint)
+                    .related = related;
                 continue;
             }
             declared.lines.push(Arc::new(statement));
@@ -305,11 +440,15 @@ impl Lowering<'_> {
             } else if word == "from" {
                 match tokens.next() {
                     Some(other) if other.kind == TokenKind::Word => {
-                        declared.from = Some((other.text(self.text).to_owned(), self.site(other.span)));
+                        declared.from =
+                            Some((other.text(self.text).to_owned(), self.site(other.span)));
                     }
                     _ => {
                         let message = "`from` names no block to start from".to_owned();
-                        let hint = format!("write `{} {} from OTHER {{`", declared.kind.kind, declared.name);
+                        let hint = format!(
+                            "write `{} {} from OTHER {{`",
+                            declared.kind.kind, declared.name
+                        );
                         self.error("syntax.word", token.span, message, hint);
                     }
                 }
@@ -318,15 +457,31 @@ impl Lowering<'_> {
                 let usual = if declared.kind.flavours.is_empty() {
                     "a header is `KIND NAME \"title\" from OTHER {`".to_owned()
                 } else {
-                    format!("here may stand {}, a title in quotes, or `from OTHER`", declared.kind.flavours.join(", "))
+                    format!(
+                        "here may stand {}, a title in quotes, or `from OTHER`",
+                        declared.kind.flavours.join(", ")
+                    )
                 };
                 let hint = did_you_mean(&near, &usual);
-                self.unknown("syntax.word", token, format!("`{word}` is not understood in this header"), hint, &near);
+                self.unknown(
+                    "syntax.word",
+                    token,
+                    format!("`{word}` is not understood in this header"),
+                    hint,
+                    &near,
+                );
             }
         }
-        if !declared.kind.flavours.is_empty() && declared.flavour.is_none() && declared.from.is_none() {
+        if !declared.kind.flavours.is_empty()
+            && declared.flavour.is_none()
+            && declared.from.is_none()
+        {
             let message = format!("device `{}` does not say what it is", declared.name);
-            let hint = format!("add one of {}: `device {} npn {{`", declared.kind.flavours.join(", "), declared.name);
+            let hint = format!(
+                "add one of {}: `device {} npn {{`",
+                declared.kind.flavours.join(", "),
+                declared.name
+            );
             self.error("syntax.word", declared.name_site.span, message, hint);
         }
     }
@@ -351,11 +506,21 @@ impl Lowering<'_> {
         statement
     }
 
-    fn statement(&mut self, kind: &'static Block, key: Token, groups: &[&[Token]], span: Span) -> Option<Statement> {
+    fn statement(
+        &mut self,
+        kind: &'static Block,
+        key: Token,
+        groups: &[&[Token]],
+        span: Span,
+    ) -> Option<Statement> {
         let word = key.text(self.text);
         let Some(found) = kind.key(word) else {
             let near = nearest(word, kind.keys.iter().map(|k| k.name));
-            let elsewhere: Vec<_> = BLOCKS.iter().filter(|b| b.key(word).is_some()).map(|b| b.kind).collect();
+            let elsewhere: Vec<_> = BLOCKS
+                .iter()
+                .filter(|b| b.key(word).is_some())
+                .map(|b| b.kind)
+                .collect();
             let usual = if elsewhere.is_empty() {
                 let keys: Vec<_> = kind.keys.iter().map(|k| k.name).collect();
                 format!("keys of a {} are {}", kind.kind, keys.join(", "))
@@ -363,7 +528,13 @@ impl Lowering<'_> {
                 format!("`{word}` is a key of {}", elsewhere.join(", "))
             };
             let hint = did_you_mean(&near, &usual);
-            self.unknown("syntax.key", key, format!("a {} has no key `{word}`", kind.kind), hint, &near);
+            self.unknown(
+                "syntax.key",
+                key,
+                format!("a {} has no key `{word}`", kind.kind),
+                hint,
+                &near,
+            );
             return None;
         };
         let mut statement = Statement {
@@ -379,11 +550,20 @@ impl Lowering<'_> {
         if shape.special == Some("CHANGE") {
             return self.change(statement, key, groups);
         }
-        let only: Vec<&str> = groups.iter().flat_map(|g| g.iter()).map(|t| t.text(self.text)).collect();
+        let only: Vec<&str> = groups
+            .iter()
+            .flat_map(|g| g.iter())
+            .map(|t| t.text(self.text))
+            .collect();
         if only == ["none"] {
             if found.required() {
                 let message = format!("`{word}` cannot be `none`");
-                self.error("syntax.value", span, message, format!("a {} needs it: {}", kind.kind, found.meaning));
+                self.error(
+                    "syntax.value",
+                    span,
+                    message,
+                    format!("a {} needs it: {}", kind.kind, found.meaning),
+                );
                 return None;
             }
             statement.none = true;
@@ -395,12 +575,22 @@ impl Lowering<'_> {
             return None;
         }
         if groups.len() > 1 && !shape.list {
-            let at = groups.get(1).and_then(|g| g.first()).map_or(span, |t| t.span);
-            self.error("syntax.value", at, format!("`{word}` takes one group, without commas"), expected(found));
+            let at = groups
+                .get(1)
+                .and_then(|g| g.first())
+                .map_or(span, |t| t.span);
+            self.error(
+                "syntax.value",
+                at,
+                format!("`{word}` takes one group, without commas"),
+                expected(found),
+            );
         }
         for (at, tokens) in groups.iter().enumerate() {
             let mut rest = *tokens;
-            if at == 0 && let Some(selector) = &shape.selector {
+            if at == 0
+                && let Some(selector) = &shape.selector
+            {
                 let (select, used) = self.selector(found, selector, key, tokens)?;
                 statement.select = Some(select);
                 rest = tokens.get(used..).unwrap_or(&[]);
@@ -423,21 +613,41 @@ impl Lowering<'_> {
                 _ => None,
             });
         }
-        if statement.groups.is_empty() { None } else { Some(statement) }
+        if statement.groups.is_empty() {
+            None
+        } else {
+            Some(statement)
+        }
     }
 
-    fn change(&mut self, mut statement: Statement, key: Token, groups: &[&[Token]]) -> Option<Statement> {
+    fn change(
+        &mut self,
+        mut statement: Statement,
+        key: Token,
+        groups: &[&[Token]],
+    ) -> Option<Statement> {
         let first = groups.first().copied().unwrap_or(&[]);
         let (Some(block), Some(inner)) = (first.first(), first.get(1)) else {
             let message = "`change` wants a block, a key and its value".to_owned();
-            self.error("syntax.value", key.span, message, "write `change out pairs 3`".to_owned());
+            self.error(
+                "syntax.value",
+                key.span,
+                message,
+                "write `change out pairs 3`".to_owned(),
+            );
             return None;
         };
         let name = block.text(self.text);
         let Some(kind) = self.kinds.get(name).copied() else {
             let near = nearest(name, self.kinds.keys().map(String::as_str));
             let hint = did_you_mean(&near, "name a declared block first: `change out pairs 3`");
-            self.unknown("data.missing", *block, format!("no block is called `{name}`"), hint, &near);
+            self.unknown(
+                "data.missing",
+                *block,
+                format!("no block is called `{name}`"),
+                hint,
+                &near,
+            );
             return None;
         };
         let mut rest: Vec<&[Token]> = vec![first.get(2..).unwrap_or(&[])];
@@ -445,16 +655,32 @@ impl Lowering<'_> {
         let inner = self.statement(kind, *inner, &rest, statement.site.span)?;
         if inner.change.is_some() {
             let message = "a `change` cannot hold another `change`".to_owned();
-            self.error("syntax.value", statement.site.span, message, "name the block and key to change directly".to_owned());
+            self.error(
+                "syntax.value",
+                statement.site.span,
+                message,
+                "name the block and key to change directly".to_owned(),
+            );
             return None;
         }
         statement.change = Some((name.to_owned(), Arc::new(inner)));
         Some(statement)
     }
 
-    fn selector(&mut self, key: &'static Key, selector: &Selector, at: Token, tokens: &[Token]) -> Option<(Select, usize)> {
+    fn selector(
+        &mut self,
+        key: &'static Key,
+        selector: &Selector,
+        at: Token,
+        tokens: &[Token],
+    ) -> Option<(Select, usize)> {
         let Some(first) = tokens.first().copied() else {
-            self.error("syntax.value", at.span, format!("`{}` lacks its selector", key.name), expected(key));
+            self.error(
+                "syntax.value",
+                at.span,
+                format!("`{}` lacks its selector", key.name),
+                expected(key),
+            );
             return None;
         };
         let word = first.text(self.text);
@@ -465,37 +691,73 @@ impl Lowering<'_> {
                     return Some((Select::Word(found), 1));
                 }
                 if *time {
-                    let texts: Vec<&str> = tokens.iter().take(MOST_TOKENS).map(|t| t.text(self.text)).collect();
-                    if let Reading::Read { quantity, .. } = quantity::read(&texts, Dimension::Time) {
+                    let texts: Vec<&str> = tokens
+                        .iter()
+                        .take(MOST_TOKENS)
+                        .map(|t| t.text(self.text))
+                        .collect();
+                    if let Reading::Read { quantity, .. } = quantity::read(&texts, Dimension::Time)
+                    {
                         return Some((Select::Time(quantity.value), quantity.used));
                     }
                 }
                 let near = nearest(word, words.iter().copied());
-                let choice = if *time { format!("{} or a time such as `100 ms`", words.join(", ")) } else { words.join(", ") };
-                let hint = did_you_mean(&near, &format!("the first word after `{}` is {choice}", key.name));
-                self.unknown("syntax.word", first, format!("`{word}` does not select a `{}`", key.name), hint, &near);
+                let choice = if *time {
+                    format!("{} or a time such as `100 ms`", words.join(", "))
+                } else {
+                    words.join(", ")
+                };
+                let hint = did_you_mean(
+                    &near,
+                    &format!("the first word after `{}` is {choice}", key.name),
+                );
+                self.unknown(
+                    "syntax.word",
+                    first,
+                    format!("`{word}` does not select a `{}`", key.name),
+                    hint,
+                    &near,
+                );
                 None
             }
         }
     }
 
-    fn group(&mut self, key: &'static Key, shape: &'static Shape, tokens: &[Token], at: Token) -> Option<Group> {
+    fn group(
+        &mut self,
+        key: &'static Key,
+        shape: &'static Shape,
+        tokens: &[Token],
+        at: Token,
+    ) -> Option<Group> {
         let span = match (tokens.first(), tokens.last()) {
             (Some(a), Some(b)) => a.span.cover(b.span),
             _ => {
                 if shape.items.iter().any(|i| !i.optional) {
-                    self.error("syntax.value", at.span, format!("nothing follows in `{}`", key.name), expected(key));
+                    self.error(
+                        "syntax.value",
+                        at.span,
+                        format!("nothing follows in `{}`", key.name),
+                        expected(key),
+                    );
                 }
                 return None;
             }
         };
-        let (values, bought) = match tokens.iter().position(|t| matches!(t.text(self.text), "ref" | "part" | "qty")) {
+        let (values, bought) = match tokens
+            .iter()
+            .position(|t| matches!(t.text(self.text), "ref" | "part" | "qty"))
+        {
             Some(end) if shape.bought => tokens.split_at(end),
             _ => (tokens, &tokens[tokens.len()..]),
         };
         let atoms = atoms(self.text, values, shape);
         let spelled = self.out.spellings.len();
-        let mut group = Group { slots: Vec::new(), bought: self.bought(bought), site: self.site(span) };
+        let mut group = Group {
+            slots: Vec::new(),
+            bought: self.bought(bought),
+            site: self.site(span),
+        };
         let mut faulty = false;
         let mut next = 0;
         while next < atoms.len() {
@@ -511,26 +773,57 @@ impl Lowering<'_> {
     }
 
     fn lacking(&mut self, key: &'static Key, shape: &Shape, group: &Group, span: Span) {
-        let lacks: Vec<String> = shape.items.iter().filter(|i| !i.optional && group.get(i.slot).is_none()).map(describe).collect();
+        let lacks: Vec<String> = shape
+            .items
+            .iter()
+            .filter(|i| !i.optional && group.get(i.slot).is_none())
+            .map(describe)
+            .collect();
         if !lacks.is_empty() {
             let message = format!("`{}` lacks {}", key.name, lacks.join(" and "));
             self.error("syntax.value", span, message, expected(key));
         } else if group.slots.is_empty() {
-            self.error("syntax.value", span, format!("nothing in `{}` could be read", key.name), expected(key));
+            self.error(
+                "syntax.value",
+                span,
+                format!("nothing in `{}` could be read", key.name),
+                expected(key),
+            );
         }
     }
 
     /// Read one item at the start of `atoms`; the number of atoms used.
-    fn item(&mut self, key: &'static Key, shape: &'static Shape, atoms: &[Atom<'_>], group: &mut Group, faulty: &mut bool) -> usize {
+    fn item(
+        &mut self,
+        key: &'static Key,
+        shape: &'static Shape,
+        atoms: &[Atom<'_>],
+        group: &mut Group,
+        faulty: &mut bool,
+    ) -> usize {
         let Some(atom) = atoms.first() else { return 1 };
         let word = atom.text;
         let free = |item: &&Item, group: &Group| group.get(item.slot).is_none();
         if atom.kind == TokenKind::Text {
-            match shape.items.iter().find(|i| i.takes == Takes::Text && free(i, group)) {
-                Some(item) => self.fill(group, item, Value::Text(word.trim_matches(['"', '“', '”', '„']).to_owned()), atom.span),
+            match shape
+                .items
+                .iter()
+                .find(|i| i.takes == Takes::Text && free(i, group))
+            {
+                Some(item) => self.fill(
+                    group,
+                    item,
+                    Value::Text(word.trim_matches(['"', '“', '”', '„']).to_owned()),
+                    atom.span,
+                ),
                 None => {
                     *faulty = true;
-                    self.error("syntax.word", atom.span, format!("no text is wanted in `{}`", key.name), expected(key));
+                    self.error(
+                        "syntax.word",
+                        atom.span,
+                        format!("no text is wanted in `{}`", key.name),
+                        expected(key),
+                    );
                 }
             }
             return 1;
@@ -540,7 +833,9 @@ impl Lowering<'_> {
                 return self.labelled(key, item, atoms, group, faulty);
             }
             let choice = shape.items.iter().find(|i| match &i.takes {
-                Takes::Choice(words) => i.label.is_none() && free(i, group) && words.contains(&word),
+                Takes::Choice(words) => {
+                    i.label.is_none() && free(i, group) && words.contains(&word)
+                }
                 _ => false,
             });
             if let Some(item) = choice
@@ -554,15 +849,26 @@ impl Lowering<'_> {
                 return 1;
             }
         }
-        if let Some(item) = shape.items.iter().find(|i| i.takes == Takes::Fraction && free(i, group))
+        if let Some(item) = shape
+            .items
+            .iter()
+            .find(|i| i.takes == Takes::Fraction && free(i, group))
             && let Some(value) = fraction(word)
         {
-            self.fill(group, item, Value::Fraction(value, word.to_owned()), atom.span);
+            self.fill(
+                group,
+                item,
+                Value::Fraction(value, word.to_owned()),
+                atom.span,
+            );
             return 1;
         }
         if atom.kind == TokenKind::Number
             && atoms.get(1).is_some_and(|a| a.kind == TokenKind::Times)
-            && let Some(item) = shape.items.iter().find(|i| i.takes == Takes::Count && free(i, group))
+            && let Some(item) = shape
+                .items
+                .iter()
+                .find(|i| i.takes == Takes::Count && free(i, group))
         {
             match whole(word) {
                 Some(n) => {
@@ -574,7 +880,12 @@ impl Lowering<'_> {
                 None => {
                     *faulty = true;
                     let message = format!("`{word}` is no whole number");
-                    self.error("syntax.number", atom.span, message, "a count is written `2 x`".to_owned());
+                    self.error(
+                        "syntax.number",
+                        atom.span,
+                        message,
+                        "a count is written `2 x`".to_owned(),
+                    );
                 }
             }
             return 2;
@@ -585,13 +896,20 @@ impl Lowering<'_> {
         let open: Vec<&'static Item> = shape
             .items
             .iter()
-            .filter(|i| i.label.is_none() && matches!(i.takes, Takes::Quantity { .. }) && group.get(i.slot).is_none())
+            .filter(|i| {
+                i.label.is_none()
+                    && matches!(i.takes, Takes::Quantity { .. })
+                    && group.get(i.slot).is_none()
+            })
             .collect();
         if let Some(used) = self.quantity(key, &open, atoms, group, faulty) {
             return used;
         }
         if atom.kind == TokenKind::Word
-            && let Some(item) = shape.items.iter().find(|i| matches!(i.takes, Takes::Name(_)) && free(i, group))
+            && let Some(item) = shape
+                .items
+                .iter()
+                .find(|i| matches!(i.takes, Takes::Name(_)) && free(i, group))
         {
             self.fill(group, item, Value::Name(word.to_owned()), atom.span);
             return 1;
@@ -621,14 +939,31 @@ impl Lowering<'_> {
         };
         let hint = did_you_mean(&near, &expected(key));
         let site = self.site(atom.span);
-        let edits = near.iter().map(|n| TextEdit { site, text: (*n).to_owned() }).collect();
+        let edits = near
+            .iter()
+            .map(|n| TextEdit {
+                site,
+                text: (*n).to_owned(),
+            })
+            .collect();
         self.error("syntax.word", atom.span, message, hint).edits = edits;
     }
 
     /// A label and what follows it.
-    fn labelled(&mut self, key: &'static Key, item: &'static Item, atoms: &[Atom<'_>], group: &mut Group, faulty: &mut bool) -> usize {
+    fn labelled(
+        &mut self,
+        key: &'static Key,
+        item: &'static Item,
+        atoms: &[Atom<'_>],
+        group: &mut Group,
+        faulty: &mut bool,
+    ) -> usize {
         let Some(label) = atoms.first() else { return 1 };
-        let skipped = atoms.iter().skip(1).take_while(|a| a.kind == TokenKind::Word && CONNECTING.contains(&a.text)).count();
+        let skipped = atoms
+            .iter()
+            .skip(1)
+            .take_while(|a| a.kind == TokenKind::Word && CONNECTING.contains(&a.text))
+            .count();
         let start = 1 + skipped;
         let rest = atoms.get(start..).unwrap_or(&[]);
         if group.get(item.slot).is_some() {
@@ -660,10 +995,20 @@ impl Lowering<'_> {
                     None => {
                         *faulty = true;
                         let near = nearest(value.text, words.iter().copied());
-                        let hint = did_you_mean(&near, &format!("after `{}` stands one of {}", label.text, words.join(", ")));
+                        let hint = did_you_mean(
+                            &near,
+                            &format!("after `{}` stands one of {}", label.text, words.join(", ")),
+                        );
                         let site = self.site(value.span);
-                        let edits = near.iter().map(|n| TextEdit { site, text: (*n).to_owned() }).collect();
-                        let message = format!("`{}` is not understood after `{}`", value.text, label.text);
+                        let edits = near
+                            .iter()
+                            .map(|n| TextEdit {
+                                site,
+                                text: (*n).to_owned(),
+                            })
+                            .collect();
+                        let message =
+                            format!("`{}` is not understood after `{}`", value.text, label.text);
                         self.error("syntax.word", value.span, message, hint).edits = edits;
                     }
                 }
@@ -674,40 +1019,76 @@ impl Lowering<'_> {
         }
     }
 
-    fn per(&mut self, item: &Item, words: &[&'static str], rest: &[Atom<'_>], label: &Atom<'_>, group: &mut Group, faulty: &mut bool) -> usize {
+    fn per(
+        &mut self,
+        item: &Item,
+        words: &[&'static str],
+        rest: &[Atom<'_>],
+        label: &Atom<'_>,
+        group: &mut Group,
+        faulty: &mut bool,
+    ) -> usize {
         let Some(first) = rest.first() else { return 0 };
         if let Some(found) = words.iter().find(|w| **w == first.text && **w != "N") {
-            self.fill(group, item, Value::Per(found, 1), label.span.cover(first.span));
+            self.fill(
+                group,
+                item,
+                Value::Per(found, 1),
+                label.span.cover(first.span),
+            );
             return 1;
         }
-        let follows = rest.get(1).is_some_and(|a| matches!(a.text, "channels" | "channel"));
-        if words.contains(&"N") && follows && let Some(n) = whole(first.text).filter(|n| *n > 0) {
+        let follows = rest
+            .get(1)
+            .is_some_and(|a| matches!(a.text, "channels" | "channel"));
+        if words.contains(&"N")
+            && follows
+            && let Some(n) = whole(first.text).filter(|n| *n > 0)
+        {
             let end = rest.get(1).map_or(first.span, |a| a.span);
             self.fill(group, item, Value::Per("channel", n), label.span.cover(end));
             return 2;
         }
         *faulty = true;
-        let mut choices: Vec<String> = words.iter().filter(|w| **w != "N").map(|w| (*w).to_owned()).collect();
+        let mut choices: Vec<String> = words
+            .iter()
+            .filter(|w| **w != "N")
+            .map(|w| (*w).to_owned())
+            .collect();
         if words.contains(&"N") {
             choices.push("a number of channels such as `per 2 channels`".to_owned());
         }
         let message = format!("`per {}` is not understood here", first.text);
-        self.error("syntax.word", first.span, message, format!("after `per` stands {}", choices.join(", ")));
+        self.error(
+            "syntax.word",
+            first.span,
+            message,
+            format!("after `per` stands {}", choices.join(", ")),
+        );
         1
     }
 
     /// The trade's forms that state two items at once: `28-0-28`, `T3.15A`.
-    fn compound(&mut self, shape: &'static Shape, atoms: &[Atom<'_>], group: &mut Group, faulty: &mut bool) -> Option<usize> {
+    fn compound(
+        &mut self,
+        shape: &'static Shape,
+        atoms: &[Atom<'_>],
+        group: &mut Group,
+        faulty: &mut bool,
+    ) -> Option<usize> {
         let texts = texts(atoms);
         let first = atoms.first()?;
-        let free = |slot: &str, group: &Group| shape.item(slot).filter(|_| group.get(slot).is_none());
+        let free =
+            |slot: &str, group: &Group| shape.item(slot).filter(|_| group.get(slot).is_none());
         if let (Some(count), Some(volts)) = (free("x", group), free("V", group))
             && let Some(found) = quantity::windings(&texts)
         {
             match found {
                 Ok(windings) => {
                     let used = windings.each.used.max(1);
-                    let span = atoms.get(used - 1).map_or(first.span, |a| first.span.cover(a.span));
+                    let span = atoms
+                        .get(used - 1)
+                        .map_or(first.span, |a| first.span.cover(a.span));
                     self.out.spellings.push((span, windings.canonical));
                     self.fill(group, count, Value::Count(2), span);
                     self.fill(group, volts, Value::Quantity(windings.each), span);
@@ -737,22 +1118,48 @@ impl Lowering<'_> {
     /// Report a fault; the number of atoms it spans.
     fn fault(&mut self, fault: quantity::Fault, atoms: &[Atom<'_>], more: String) -> usize {
         let used = fault.used.clamp(1, atoms.len().max(1));
-        let Some(span) = atoms.first().zip(atoms.get(used - 1)).map(|(a, b)| a.span.cover(b.span)) else { return used };
+        let Some(span) = atoms
+            .first()
+            .zip(atoms.get(used - 1))
+            .map(|(a, b)| a.span.cover(b.span))
+        else {
+            return used;
+        };
         let rule = match fault.kind {
             FaultKind::Ambiguous => "data.unit-suspect",
             FaultKind::Number | FaultKind::OutOfRange => "syntax.number",
-            FaultKind::MissingUnit | FaultKind::UnknownUnit | FaultKind::WrongDimension => "syntax.unit",
+            FaultKind::MissingUnit | FaultKind::UnknownUnit | FaultKind::WrongDimension => {
+                "syntax.unit"
+            }
             FaultKind::Tolerance => "syntax.tolerance",
         };
         let site = self.site(span);
         let finding = self.error(rule, span, fault.message, format!("{}{more}", fault.hint));
-        finding.edits = fault.readings.iter().map(|r| TextEdit { site, text: r.text.clone() }).collect();
-        finding.readings = fault.readings.into_iter().map(|r| (r.text, r.meaning)).collect();
+        finding.edits = fault
+            .readings
+            .iter()
+            .map(|r| TextEdit {
+                site,
+                text: r.text.clone(),
+            })
+            .collect();
+        finding.readings = fault
+            .readings
+            .into_iter()
+            .map(|r| (r.text, r.meaning))
+            .collect();
         used
     }
 
     /// Read a quantity into the item of `items` whose dimension fits. `None` if this is no quantity.
-    fn quantity(&mut self, key: &'static Key, items: &[&'static Item], atoms: &[Atom<'_>], group: &mut Group, faulty: &mut bool) -> Option<usize> {
+    fn quantity(
+        &mut self,
+        key: &'static Key,
+        items: &[&'static Item],
+        atoms: &[Atom<'_>],
+        group: &mut Group,
+        faulty: &mut bool,
+    ) -> Option<usize> {
         let dimension = |item: &Item| match item.takes {
             Takes::Quantity { dimension, .. } => Some(dimension),
             _ => None,
@@ -765,21 +1172,34 @@ impl Lowering<'_> {
             Reading::Not => None,
             Reading::Wrong(fault) => {
                 *faulty = true;
-                let labels: Vec<String> = key.shape().items.iter().filter(|i| i.label.is_some() && group.get(i.slot).is_none()).map(describe).collect();
+                let labels: Vec<String> = key
+                    .shape()
+                    .items
+                    .iter()
+                    .filter(|i| i.label.is_some() && group.get(i.slot).is_none())
+                    .map(describe)
+                    .collect();
                 let more = match (fault.kind, labels.is_empty()) {
-                    (FaultKind::WrongDimension, false) => format!("; `{}` also takes {}", key.name, labels.join(", ")),
+                    (FaultKind::WrongDimension, false) => {
+                        format!("; `{}` also takes {}", key.name, labels.join(", "))
+                    }
                     _ => String::new(),
                 };
                 Some(self.fault(fault, atoms, more))
             }
             Reading::Read { quantity, notes } => {
-                let item = items.iter().find(|i| dimension(i) == Some(quantity.dimension))?;
+                let item = items
+                    .iter()
+                    .find(|i| dimension(i) == Some(quantity.dimension))?;
                 Some(self.read(key, item, quantity, notes, atoms, group, faulty))
             }
         }
     }
 
-    #[expect(clippy::too_many_arguments, reason = "the state of one match, used here only")]
+    #[expect(
+        clippy::too_many_arguments,
+        reason = "the state of one match, used here only"
+    )]
     fn read(
         &mut self,
         key: &'static Key,
@@ -791,18 +1211,43 @@ impl Lowering<'_> {
         faulty: &mut bool,
     ) -> usize {
         let used = quantity.used.max(1);
-        let Takes::Quantity { dimension, tolerance, extent, .. } = item.takes else { return used };
-        let Some(first) = atoms.first() else { return used };
-        let span = atoms.get(used - 1).map_or(first.span, |a| first.span.cover(a.span));
+        let Takes::Quantity {
+            dimension,
+            tolerance,
+            extent,
+            ..
+        } = item.takes
+        else {
+            return used;
+        };
+        let Some(first) = atoms.first() else {
+            return used;
+        };
+        let span = atoms
+            .get(used - 1)
+            .map_or(first.span, |a| first.span.cover(a.span));
         self.spell(&notes, &atoms[..used.min(atoms.len())], span);
         for note in notes {
             self.note(note, span);
         }
         if quantity.tolerance.is_some() && !tolerance {
-            let message = format!("no tolerance is wanted after {} in `{}`", describe_value(item), key.name);
-            self.say("syntax.tolerance", Severity::Warning, span, message, "it is not used; leave it out".to_owned());
+            let message = format!(
+                "no tolerance is wanted after {} in `{}`",
+                describe_value(item),
+                key.name
+            );
+            self.say(
+                "syntax.tolerance",
+                Severity::Warning,
+                span,
+                message,
+                "it is not used; leave it out".to_owned(),
+            );
         }
-        if dimension == Dimension::Number && item.slot == "n" && (quantity.value.fract() != 0.0 || !(0.0..=MOST).contains(&quantity.value)) {
+        if dimension == Dimension::Number
+            && item.slot == "n"
+            && (quantity.value.fract() != 0.0 || !(0.0..=MOST).contains(&quantity.value))
+        {
             *faulty = true;
             let message = format!("`{}` wants a whole number", key.name);
             self.error("syntax.number", span, message, expected(key));
@@ -812,7 +1257,10 @@ impl Lowering<'_> {
         if extent != Extent::One && to {
             let rest = atoms.get(used + 1..).unwrap_or(&[]);
             match quantity::read(&texts(rest), dimension) {
-                Reading::Read { quantity: high, notes } => {
+                Reading::Read {
+                    quantity: high,
+                    notes,
+                } => {
                     let more = high.used.max(1);
                     let end = rest.get(more - 1).map_or(span, |a| a.span);
                     self.spell(&notes, &rest[..more.min(rest.len())], end);
@@ -823,7 +1271,12 @@ impl Lowering<'_> {
                     if high.value < quantity.value {
                         *faulty = true;
                         let message = "this range ends below its start".to_owned();
-                        self.error("syntax.value", whole, message, "write the lower value first".to_owned());
+                        self.error(
+                            "syntax.value",
+                            whole,
+                            message,
+                            "write the lower value first".to_owned(),
+                        );
                     }
                     self.plausible(key, item, quantity.value, span);
                     self.plausible(key, item, high.value, end);
@@ -840,7 +1293,16 @@ impl Lowering<'_> {
         if extent == Extent::Range {
             *faulty = true;
             let message = format!("`{}` wants a range", key.name);
-            self.error("syntax.value", span, message, format!("write both ends with their unit: `{} to {}`", atoms[0].text, describe_value(item)));
+            self.error(
+                "syntax.value",
+                span,
+                message,
+                format!(
+                    "write both ends with their unit: `{} to {}`",
+                    atoms[0].text,
+                    describe_value(item)
+                ),
+            );
             return used;
         }
         self.plausible(key, item, quantity.value, span);
@@ -863,28 +1325,67 @@ impl Lowering<'_> {
         if note.severity == NoteSeverity::Silent {
             return;
         }
-        let edit = TextEdit { site: self.site(span), text: note.canonical.clone() };
+        let edit = TextEdit {
+            site: self.site(span),
+            text: note.canonical.clone(),
+        };
         let hint = format!("write `{}`", note.canonical);
-        self.say("syntax.spelling", Severity::Information, span, note.message, hint).edits.push(edit);
+        self.say(
+            "syntax.spelling",
+            Severity::Information,
+            span,
+            note.message,
+            hint,
+        )
+        .edits
+        .push(edit);
     }
 
     /// Ask about a value outside what such a part ever has.
     fn plausible(&mut self, key: &'static Key, item: &Item, value: f64, span: Span) {
-        let Some((low, high)) = key.plausible(item.slot) else { return };
-        let Takes::Quantity { dimension, .. } = item.takes else { return };
-        let Some(found) = quantity::suspect(value, Band { low, high }, dimension, &slips(key, dimension)) else { return };
-        let what = if item.label.is_some() { format!("`{}` of `{}`", item.slot, key.name) } else { format!("`{}`", key.name) };
+        let Some((low, high)) = key.plausible(item.slot) else {
+            return;
+        };
+        let Takes::Quantity { dimension, .. } = item.takes else {
+            return;
+        };
+        let Some(found) =
+            quantity::suspect(value, Band { low, high }, dimension, &slips(key, dimension))
+        else {
+            return;
+        };
+        let what = if item.label.is_some() {
+            format!("`{}` of `{}`", item.slot, key.name)
+        } else {
+            format!("`{}`", key.name)
+        };
         let site = self.site(span);
         let hint = match &found.replacement {
-            Some(text) => format!("did you mean `{text}`? if the value is right, waive data.unit-suspect with the reason"),
-            None => "correct it; if the value is right, waive data.unit-suspect with the reason".to_owned(),
+            Some(text) => format!(
+                "did you mean `{text}`? if the value is right, waive data.unit-suspect with the reason"
+            ),
+            None => "correct it; if the value is right, waive data.unit-suspect with the reason"
+                .to_owned(),
         };
-        let finding = self.error("data.unit-suspect", span, format!("{what}: {}", found.text), hint);
-        finding.edits = found.replacement.into_iter().map(|text| TextEdit { site, text }).collect();
+        let finding = self.error(
+            "data.unit-suspect",
+            span,
+            format!("{what}: {}", found.text),
+            hint,
+        );
+        finding.edits = found
+            .replacement
+            .into_iter()
+            .map(|text| TextEdit { site, text })
+            .collect();
     }
 
     fn fill(&self, group: &mut Group, item: &Item, value: Value, span: Span) {
-        group.slots.push(Slot { slot: item.slot, value, site: self.site(span) });
+        group.slots.push(Slot {
+            slot: item.slot,
+            value,
+            site: self.site(span),
+        });
     }
 
     fn bought(&mut self, tokens: &[Token]) -> Bought {
@@ -893,12 +1394,21 @@ impl Lowering<'_> {
         while let Some(word) = tokens.next() {
             match word.text(self.text) {
                 "ref" => {
-                    while let Some(token) = tokens.next_if(|t| t.kind != TokenKind::Text && !matches!(t.text(self.text), "ref" | "part" | "qty")) {
+                    while let Some(token) = tokens.next_if(|t| {
+                        t.kind != TokenKind::Text
+                            && !matches!(t.text(self.text), "ref" | "part" | "qty")
+                    }) {
                         match designators(token.text(self.text)) {
                             Some(refs) => bought.refs.extend(refs),
                             None => {
-                                let message = format!("`{}` is no designator", token.text(self.text));
-                                self.error("syntax.word", token.span, message, "write `ref R21-R24 R31`".to_owned());
+                                let message =
+                                    format!("`{}` is no designator", token.text(self.text));
+                                self.error(
+                                    "syntax.word",
+                                    token.span,
+                                    message,
+                                    "write `ref R21-R24 R31`".to_owned(),
+                                );
                             }
                         }
                     }
@@ -906,18 +1416,33 @@ impl Lowering<'_> {
                 "part" => match tokens.next_if(|t| t.kind == TokenKind::Text) {
                     Some(token) => bought.part = Some(token.content(self.text).to_owned()),
                     None => {
-                        self.error("syntax.value", word.span, "`part` wants an order code in quotes".to_owned(), "write `part \"WW5-0R22J\"`".to_owned());
+                        self.error(
+                            "syntax.value",
+                            word.span,
+                            "`part` wants an order code in quotes".to_owned(),
+                            "write `part \"WW5-0R22J\"`".to_owned(),
+                        );
                     }
                 },
                 "qty" => match tokens.next().map(|t| (t, whole(t.text(self.text)))) {
                     Some((_, Some(n))) => bought.quantity = Some(n),
                     _ => {
-                        self.error("syntax.number", word.span, "`qty` wants a whole number".to_owned(), "write `qty 4`".to_owned());
+                        self.error(
+                            "syntax.number",
+                            word.span,
+                            "`qty` wants a whole number".to_owned(),
+                            "write `qty 4`".to_owned(),
+                        );
                     }
                 },
                 other => {
                     let message = format!("`{other}` is not understood after the designators");
-                    self.error("syntax.word", word.span, message, "a bought part ends `ref R21-R24 part \"code\" qty 4`".to_owned());
+                    self.error(
+                        "syntax.word",
+                        word.span,
+                        message,
+                        "a bought part ends `ref R21-R24 part \"code\" qty 4`".to_owned(),
+                    );
                 }
             }
         }
@@ -929,7 +1454,12 @@ impl Lowering<'_> {
 const MOST_TOKENS: usize = 12;
 
 fn texts<'a>(atoms: &[Atom<'a>]) -> Vec<&'a str> {
-    atoms.iter().take_while(|a| a.kind != TokenKind::Text).take(MOST_TOKENS).map(|a| a.text).collect()
+    atoms
+        .iter()
+        .take_while(|a| a.kind != TokenKind::Text)
+        .take(MOST_TOKENS)
+        .map(|a| a.text)
+        .collect()
 }
 
 /// Tokens as pieces that are read on their own: `2x28VAC` is a count, its sign and a quantity where
@@ -941,12 +1471,19 @@ fn atoms<'a>(text: &'a str, tokens: &[Token], shape: &Shape) -> Vec<Atom<'a>> {
         let span = token.span;
         let word = token.text(text);
         let mut rest = word;
-        let part = |text, kind| Atom { text, kind, span, split: true };
+        let part = |text, kind| Atom {
+            text,
+            kind,
+            span,
+            split: true,
+        };
         if counts
             && token.kind == TokenKind::Number
             && let Some((_, after)) = quantity::split_count(word)
         {
-            let digits = word.find(|c: char| !c.is_ascii_digit()).unwrap_or(word.len());
+            let digits = word
+                .find(|c: char| !c.is_ascii_digit())
+                .unwrap_or(word.len());
             out.push(part(&word[..digits], TokenKind::Number));
             out.push(part("x", TokenKind::Times));
             rest = after;
@@ -959,7 +1496,12 @@ fn atoms<'a>(text: &'a str, tokens: &[Token], shape: &Shape) -> Vec<Atom<'a>> {
                 out.push(part(a, TokenKind::Number));
                 out.push(part(b, TokenKind::Number));
             }
-            _ => out.push(Atom { text: rest, kind: token.kind, span, split: rest.len() < word.len() }),
+            _ => out.push(Atom {
+                text: rest,
+                kind: token.kind,
+                span,
+                split: rest.len() < word.len(),
+            }),
         }
     }
     out
@@ -970,7 +1512,9 @@ fn slips(key: &Key, dimension: Dimension) -> Vec<Slip> {
     let mut slips = Vec::new();
     match dimension {
         Dimension::Resistance => slips.extend(quantity::LETTER_CODE),
-        Dimension::ThermalResistance => slips.push(Slip::Reciprocal("its reciprocal, if the unit was meant the other way up")),
+        Dimension::ThermalResistance => slips.push(Slip::Reciprocal(
+            "its reciprocal, if the unit was meant the other way up",
+        )),
         _ => {}
     }
     if matches!(key.name, "secondary" | "rating") {
@@ -988,7 +1532,13 @@ fn did_you_mean(near: &[&str], usual: &str) -> String {
     match near {
         [] => usual.to_owned(),
         [one] => format!("did you mean `{one}`?"),
-        more => format!("did you mean {}?", more.iter().map(|n| format!("`{n}`")).collect::<Vec<_>>().join(" or ")),
+        more => format!(
+            "did you mean {}?",
+            more.iter()
+                .map(|n| format!("`{n}`"))
+                .collect::<Vec<_>>()
+                .join(" or ")
+        ),
     }
 }
 
@@ -996,7 +1546,17 @@ fn did_you_mean(near: &[&str], usual: &str) -> String {
 #[must_use]
 pub fn expected(key: &Key) -> String {
     let shape = key.shape();
-    let items: Vec<String> = shape.items.iter().map(|i| if i.optional { format!("[{}]", describe(i)) } else { describe(i) }).collect();
+    let items: Vec<String> = shape
+        .items
+        .iter()
+        .map(|i| {
+            if i.optional {
+                format!("[{}]", describe(i))
+            } else {
+                describe(i)
+            }
+        })
+        .collect();
     let selector = match &shape.selector {
         None => String::new(),
         Some(Selector::Rule) => "RULE ".to_owned(),
@@ -1004,8 +1564,17 @@ pub fn expected(key: &Key) -> String {
             format!("{}{} ", words.join("|"), if *time { "|time" } else { "" })
         }
     };
-    let more = if shape.list { ", and more groups after commas" } else { "" };
-    format!("write `{} {selector}{}`{more}: {}", key.name, items.join(" "), key.meaning)
+    let more = if shape.list {
+        ", and more groups after commas"
+    } else {
+        ""
+    };
+    format!(
+        "write `{} {selector}{}`{more}: {}",
+        key.name,
+        items.join(" "),
+        key.meaning
+    )
 }
 
 /// An item with its label, in words.
@@ -1013,7 +1582,10 @@ pub fn expected(key: &Key) -> String {
 pub fn describe(item: &Item) -> String {
     match (&item.takes, item.label) {
         (Takes::Per(words), _) => {
-            let words: Vec<&str> = words.iter().map(|w| if *w == "N" { "N channels" } else { w }).collect();
+            let words: Vec<&str> = words
+                .iter()
+                .map(|w| if *w == "N" { "N channels" } else { w })
+                .collect();
             format!("per {}", words.join("|"))
         }
         (Takes::Choice(words), Some(label)) => format!("{label} {}", words.join("|")),
@@ -1028,7 +1600,11 @@ fn describe_value(item: &Item) -> String {
     match &item.takes {
         Takes::Quantity { unit: "n", .. } => "a whole number".to_owned(),
         Takes::Quantity { unit: "num", .. } => "a number".to_owned(),
-        Takes::Quantity { unit, extent: Extent::Range, .. } => format!("{unit} to {unit}"),
+        Takes::Quantity {
+            unit,
+            extent: Extent::Range,
+            ..
+        } => format!("{unit} to {unit}"),
         Takes::Quantity { unit, .. } => (*unit).to_owned(),
         Takes::Choice(words) | Takes::Per(words) => words.join("|"),
         Takes::Name(kind) => format!("<{kind}>"),
@@ -1054,7 +1630,8 @@ fn designators(text: &str) -> Option<Vec<String>> {
     let split = |d: &str| -> Option<(String, u32)> {
         let at = d.find(|c: char| c.is_ascii_digit())?;
         let (letters, digits) = d.split_at(at);
-        (!letters.is_empty() && letters.chars().all(|c| c.is_alphabetic() || c == '_')).then_some(())?;
+        (!letters.is_empty() && letters.chars().all(|c| c.is_alphabetic() || c == '_'))
+            .then_some(())?;
         Some((letters.to_owned(), digits.parse().ok()?))
     };
     match text.split_once('-') {

@@ -9,7 +9,8 @@ use super::statement::{Bought, Group, Select, Slot, Value, bounds};
 use super::view::{Seen, View};
 use crate::finding::{Assumed, Measure, Site};
 use crate::physics::unit::{
-    Amp, AmpSquaredSecond, Celsius, Farad, Henry, Hertz, Joule, Kelvin, KelvinPerWatt, Ohm, Second, Volt, VoltPerKelvin, Watt,
+    Amp, AmpSquaredSecond, Celsius, Farad, Henry, Hertz, Joule, Kelvin, KelvinPerWatt, Ohm, Second,
+    Volt, VoltPerKelvin, Watt,
 };
 use crate::quantity::Form;
 
@@ -35,7 +36,10 @@ impl Needs {
     /// Not for want of a key.
     #[must_use]
     pub fn because(why: impl Into<String>) -> Self {
-        Self { keys: Vec::new(), because: why.into() }
+        Self {
+            keys: Vec::new(),
+            because: why.into(),
+        }
     }
     /// Both reasons.
     #[must_use]
@@ -68,7 +72,11 @@ pub fn both<A, B>(a: Result<A, Needs>, b: Result<B, Needs>) -> Result<(A, B), Ne
 ///
 /// # Errors
 /// When any is an error.
-pub fn three<A, B, C>(a: Result<A, Needs>, b: Result<B, Needs>, c: Result<C, Needs>) -> Result<(A, B, C), Needs> {
+pub fn three<A, B, C>(
+    a: Result<A, Needs>,
+    b: Result<B, Needs>,
+    c: Result<C, Needs>,
+) -> Result<(A, B, C), Needs> {
     let ((a, b), c) = both(both(a, b), c)?;
     Ok((a, b, c))
 }
@@ -119,8 +127,17 @@ impl<T> Field<T> {
     #[must_use]
     pub fn missing_part(&self, part: &str) -> Needs {
         let space = if part.is_empty() { "" } else { " " };
-        let key = format!("{} {} {}{space}{part}", self.owner.kind, self.owner.name, self.key);
-        Needs { keys: vec![Need { key, site: self.line.unwrap_or(self.owner.site) }], because: String::new() }
+        let key = format!(
+            "{} {} {}{space}{part}",
+            self.owner.kind, self.owner.name, self.key
+        );
+        Needs {
+            keys: vec![Need {
+                key,
+                site: self.line.unwrap_or(self.owner.site),
+            }],
+            because: String::new(),
+        }
     }
     /// A part of the value, or the name of the missing part.
     ///
@@ -174,7 +191,22 @@ pub trait FromSi: Copy {
 }
 
 macro_rules! from_si { ($($t:ident),*) => { $(impl FromSi for $t { fn from_si(value: f64) -> Self { Self(value) } })* }; }
-from_si!(Amp, AmpSquaredSecond, Celsius, Farad, Henry, Hertz, Joule, Kelvin, KelvinPerWatt, Ohm, Second, Volt, VoltPerKelvin, Watt);
+from_si!(
+    Amp,
+    AmpSquaredSecond,
+    Celsius,
+    Farad,
+    Henry,
+    Hertz,
+    Joule,
+    Kelvin,
+    KelvinPerWatt,
+    Ohm,
+    Second,
+    Volt,
+    VoltPerKelvin,
+    Watt
+);
 impl FromSi for f64 {
     fn from_si(value: f64) -> Self {
         value
@@ -188,7 +220,11 @@ fn get<T: FromSi>(group: &Group, slot: &str) -> Option<T> {
 fn spread<T: FromSi>(group: &Group, slot: &str) -> Option<Spread<T>> {
     let q = group.quantity(slot)?;
     let (low, high) = bounds(q);
-    Some(Spread { nominal: T::from_si(q.value), low: T::from_si(low), high: T::from_si(high) })
+    Some(Spread {
+        nominal: T::from_si(q.value),
+        low: T::from_si(low),
+        high: T::from_si(high),
+    })
 }
 
 /// Reads the blocks of one view, and keeps what was assumed on the way.
@@ -226,11 +262,27 @@ impl Page<'_, '_, '_> {
     fn word(&self, key: &'static str, slot: &'static str) -> Field<&'static str> {
         self.one(key, |g| g.word(slot))
     }
-    fn points<A: FromSi, B: FromSi>(&self, key: &'static str, a: &'static str, b: &'static str) -> Field<Vec<(A, B)>> {
-        self.field(key, |groups| groups.iter().map(|g| Some((get(g, a)?, get(g, b)?))).collect())
+    fn points<A: FromSi, B: FromSi>(
+        &self,
+        key: &'static str,
+        a: &'static str,
+        b: &'static str,
+    ) -> Field<Vec<(A, B)>> {
+        self.field(key, |groups| {
+            groups
+                .iter()
+                .map(|g| Some((get(g, a)?, get(g, b)?)))
+                .collect()
+        })
     }
     /// A default: used where the key is left out, and listed.
-    fn or<T>(&self, mut field: Field<T>, default: T, shown: Measure, why: &'static str) -> Field<T> {
+    fn or<T>(
+        &self,
+        mut field: Field<T>,
+        default: T,
+        shown: Measure,
+        why: &'static str,
+    ) -> Field<T> {
         if field.unstated() {
             field.value = Some(default);
             field.assumed = true;
@@ -242,7 +294,12 @@ impl Page<'_, '_, '_> {
         let key = format!("{} {} {key}", self.owner.kind, self.owner.name);
         let mut all = self.reader.assumed.borrow_mut();
         if !all.iter().any(|a| a.key == key) {
-            all.push(Assumed { key, value: value.into(), why, site: self.owner.site });
+            all.push(Assumed {
+                key,
+                value: value.into(),
+                why,
+                site: self.owner.site,
+            });
         }
     }
 }
@@ -825,7 +882,10 @@ impl<'v, 'a> Reader<'v, 'a> {
     /// A reader of this view.
     #[must_use]
     pub fn new(view: &'v View<'a>) -> Self {
-        Self { view, assumed: RefCell::default() }
+        Self {
+            view,
+            assumed: RefCell::default(),
+        }
     }
 
     /// What was assumed while reading.
@@ -839,8 +899,16 @@ impl<'v, 'a> Reader<'v, 'a> {
     }
 
     fn open(&self, seen: Rc<Seen<'a>>, kind: &'static str) -> Page<'_, 'v, 'a> {
-        let owner = Rc::new(Owner { kind, name: seen.declared.name.clone(), site: seen.declared.site });
-        Page { reader: self, seen, owner }
+        let owner = Rc::new(Owner {
+            kind,
+            name: seen.declared.name.clone(),
+            site: seen.declared.site,
+        });
+        Page {
+            reader: self,
+            seen,
+            owner,
+        }
     }
 
     /// The device of this name.
@@ -848,13 +916,24 @@ impl<'v, 'a> Reader<'v, 'a> {
         let p = self.page(name, "device")?;
         let kind = p.seen.flavour;
         let mosfet = matches!(kind, Some("nmos" | "pmos")) || p.seen.line("vdss").is_some();
-        let power = p.one("power", |g| Some((get(g, "W")?, get(g, "degC").unwrap_or(Celsius(25.0)))));
+        let power = p.one("power", |g| {
+            Some((get(g, "W")?, get(g, "degC").unwrap_or(Celsius(25.0))))
+        });
         let junction: Field<Celsius> = p.si("junction", "degC");
         let mut junction_case: Field<KelvinPerWatt> = p.si("junction-case", "K/W");
-        if let (true, Some((watt, case)), Some(tj)) = (junction_case.unstated(), power.get().copied(), junction.get()) {
+        if let (true, Some((watt, case)), Some(tj)) = (
+            junction_case.unstated(),
+            power.get().copied(),
+            junction.get(),
+        ) {
             let value = (*tj - case) / watt;
             if watt > Watt::ZERO && value > KelvinPerWatt::ZERO {
-                junction_case = p.or(junction_case, value, Measure::new(value.0, "K/W"), "(Tj,max - 25 degC) / Ptot");
+                junction_case = p.or(
+                    junction_case,
+                    value,
+                    Measure::new(value.0, "K/W"),
+                    "(Tj,max - 25 degC) / Ptot",
+                );
             }
         }
         let mut soa: Vec<SoaLine> = p
@@ -865,8 +944,16 @@ impl<'v, 'a> Reader<'v, 'a> {
                     Some(Select::Time(s)) => Some(Second(s)),
                     _ => None,
                 };
-                let points = line.groups.iter().map(|g| Some((get(g, "V")?, get(g, "A")?))).collect::<Option<_>>()?;
-                Some(SoaLine { pulse, points, site: line.site })
+                let points = line
+                    .groups
+                    .iter()
+                    .map(|g| Some((get(g, "V")?, get(g, "A")?)))
+                    .collect::<Option<_>>()?;
+                Some(SoaLine {
+                    pulse,
+                    points,
+                    site: line.site,
+                })
             })
             .collect();
         soa.sort_by(|a, b| {
@@ -877,8 +964,16 @@ impl<'v, 'a> Reader<'v, 'a> {
             .seen
             .all("hfe")
             .filter_map(|line| {
-                let points = line.groups.iter().map(|g| Some((get(g, "A")?, g.number("num")?))).collect::<Option<_>>()?;
-                Some(GainLine { minimum: line.select == Some(Select::Word("minimum")), points, site: line.site })
+                let points = line
+                    .groups
+                    .iter()
+                    .map(|g| Some((get(g, "A")?, g.number("num")?)))
+                    .collect::<Option<_>>()?;
+                Some(GainLine {
+                    minimum: line.select == Some(Select::Word("minimum")),
+                    points,
+                    site: line.site,
+                })
             })
             .collect();
         let mut soa_dc = p.field("soa", |_| None::<()>);
@@ -889,12 +984,38 @@ impl<'v, 'a> Reader<'v, 'a> {
         let mut hfe_field = p.field("hfe", |_| None::<()>);
         hfe_field.value = hfe.first().map(|_| ());
         let vbe = p.one("vbe", |g| Some((get(g, "V")?, get(g, "A"))));
-        let vbe = if mosfet { vbe } else { p.or(vbe, (Volt(0.65), None), Measure::new(0.65, "V"), "usual for silicon") };
-        let codes = p.seen.group("part").map(|g| ["text", "text2"].iter().filter_map(|s| g.text(s).map(str::to_owned)).collect()).unwrap_or_default();
+        let vbe = if mosfet {
+            vbe
+        } else {
+            p.or(
+                vbe,
+                (Volt(0.65), None),
+                Measure::new(0.65, "V"),
+                "usual for silicon",
+            )
+        };
+        let codes = p
+            .seen
+            .group("part")
+            .map(|g| {
+                ["text", "text2"]
+                    .iter()
+                    .filter_map(|s| g.text(s).map(str::to_owned))
+                    .collect()
+            })
+            .unwrap_or_default();
         Some(Rc::new(Device {
-            flavour: if mosfet { Flavour::Mosfet } else { Flavour::Bipolar },
+            flavour: if mosfet {
+                Flavour::Mosfet
+            } else {
+                Flavour::Bipolar
+            },
             kind,
-            breakdown: if mosfet { p.si("vdss", "V") } else { p.si("vceo", "V") },
+            breakdown: if mosfet {
+                p.si("vdss", "V")
+            } else {
+                p.si("vceo", "V")
+            },
             gate_limit: p.si("vgs", "V"),
             structure: p.word("structure", "lateral"),
             gate_source: p.points("gate-source", "V", "A"),
@@ -926,14 +1047,26 @@ impl<'v, 'a> Reader<'v, 'a> {
         let upper_name = group.and_then(|g| g.name("device"));
         let lower_name = group.and_then(|g| g.name("device2")).or(upper_name);
         // a stage that names no known device still answers for what its other lines say
-        let upper = upper_name.and_then(|n| self.device(n)).unwrap_or_else(|| self.nobody(&p));
+        let upper = upper_name
+            .and_then(|n| self.device(n))
+            .unwrap_or_else(|| self.nobody(&p));
         let lower = match lower_name {
             Some(n) if Some(n) != upper_name => self.device(n).unwrap_or_else(|| self.nobody(&p)),
             _ => upper.clone(),
         };
-        let resistor = |g: &Group| Some(Resistor { ohm: spread(g, "ohm")?, watt: get(g, "W"), pulse: get(g, "pulse") });
+        let resistor = |g: &Group| {
+            Some(Resistor {
+                ohm: spread(g, "ohm")?,
+                watt: get(g, "W"),
+                pulse: get(g, "pulse"),
+            })
+        };
         let connection = p.word("connection", "emitter-follower");
-        let usual = if upper.flavour == Flavour::Mosfet { "source-follower" } else { "emitter-follower" };
+        let usual = if upper.flavour == Flavour::Mosfet {
+            "source-follower"
+        } else {
+            "emitter-follower"
+        };
         let connection = *connection.get().unwrap_or(&usual);
         let mut devices = p.field("devices", |_| None::<()>);
         devices.value = upper_name.map(|_| ());
@@ -948,12 +1081,23 @@ impl<'v, 'a> Reader<'v, 'a> {
             idle: p.field("idle", |groups| Some(groups.iter().map(idle).collect())),
             insulator: p.si("insulator", "K/W"),
             own_sink: p.one("own-sink", |g| Some((get(g, "K/W")?, g.per()?.0))),
-            vbe_spread: if pairs.get().is_some_and(|n| *n > 1) && upper.flavour == Flavour::Bipolar {
-                p.or(p.si("vbe-spread", "V"), Volt(0.02), Measure::new(0.02, "V"), "usual between unmatched devices")
+            vbe_spread: if pairs.get().is_some_and(|n| *n > 1) && upper.flavour == Flavour::Bipolar
+            {
+                p.or(
+                    p.si("vbe-spread", "V"),
+                    Volt(0.02),
+                    Measure::new(0.02, "V"),
+                    "usual between unmatched devices",
+                )
             } else {
                 p.si("vbe-spread", "V")
             },
-            spread_across_sink: p.or(p.si("spread-across-sink", "K"), Kelvin::ZERO, Measure::new(0.0, "K"), "the default"),
+            spread_across_sink: p.or(
+                p.si("spread-across-sink", "K"),
+                Kelvin::ZERO,
+                Measure::new(0.0, "K"),
+                "the default",
+            ),
             gate_zener: p.si("gate-zener", "V"),
             driver_rail: p.si("driver-rail", "V"),
             sensor: p.one("sensor", |g| Some((g.word("on")?, get(g, "cooler")))),
@@ -969,9 +1113,20 @@ impl<'v, 'a> Reader<'v, 'a> {
 
     /// A device of which nothing is known: every rule that needs it says which key is missing.
     fn nobody(&self, p: &Page<'_, 'v, 'a>) -> Rc<Device> {
-        let owner = Rc::new(Owner { kind: "stage", name: format!("{} devices", p.owner.name), site: p.owner.site });
+        let owner = Rc::new(Owner {
+            kind: "stage",
+            name: format!("{} devices", p.owner.name),
+            site: p.owner.site,
+        });
         fn blank<T>(owner: &Rc<Owner>, key: &'static str) -> Field<T> {
-            Field { value: None, line: None, none: false, assumed: false, owner: owner.clone(), key }
+            Field {
+                value: None,
+                line: None,
+                none: false,
+                assumed: false,
+                owner: owner.clone(),
+                key,
+            }
         }
         Rc::new(Device {
             flavour: Flavour::Bipolar,
@@ -1024,20 +1179,32 @@ impl<'v, 'a> Reader<'v, 'a> {
     fn reservoirs(&self, p: &Page<'_, 'v, 'a>, key: &'static str) -> Field<Vec<Reservoir>> {
         let mut field = p.field(key, Self::reservoir);
         let toleranced = |g: &Group| g.quantity("F").is_some_and(|q| q.tolerance.is_some());
-        let bare = p.seen.line(key).is_some_and(|l| !l.groups.iter().all(toleranced));
+        let bare = p
+            .seen
+            .line(key)
+            .is_some_and(|l| !l.groups.iter().all(toleranced));
         if let (true, Some(all)) = (bare, field.value.as_mut()) {
             for one in all.iter_mut().filter(|r| r.farad.low == r.farad.high) {
                 one.farad.low = one.farad.nominal * 0.8;
                 one.farad.high = one.farad.nominal * 1.2;
             }
-            p.assume(&format!("{key} tolerance"), Measure::new(20.0, "%"), "usual for aluminium electrolytics");
+            p.assume(
+                &format!("{key} tolerance"),
+                Measure::new(20.0, "%"),
+                "usual for aluminium electrolytics",
+            );
         }
         field
     }
 
     fn amplifier(&self, name: &str) -> Option<Rc<Amplifier>> {
         let p = self.page(name, "amplifier")?;
-        let stage = |key: &str| p.seen.group(key).and_then(|g| g.name("stage")).and_then(|n| self.stage(n));
+        let stage = |key: &str| {
+            p.seen
+                .group(key)
+                .and_then(|g| g.name("stage"))
+                .and_then(|n| self.stage(n))
+        };
         let output = stage("output")?;
         let named = |key: &'static str, found: bool| {
             let mut field = p.field(key, |_| None::<()>);
@@ -1045,14 +1212,22 @@ impl<'v, 'a> Reader<'v, 'a> {
             field
         };
         let (driver, voltage_amplifier) = (stage("driver"), stage("voltage-amplifier"));
-        let network = p.seen.group("network").and_then(|g| g.name("network")).and_then(|n| self.network(n));
+        let network = p
+            .seen
+            .group("network")
+            .and_then(|g| g.name("network"))
+            .and_then(|n| self.network(n));
         let claims = |groups: &[Group]| groups.iter().map(claim).collect();
         let rated = p.field("rated", claims);
         if let Some(line) = p.seen.line("rated").filter(|l| !l.none) {
             if line.groups.iter().any(|g| g.word("one-channel").is_none()) {
                 p.assume("rated channels", None, "all channels driven");
             }
-            if line.groups.iter().any(|g| g.word("nominal-mains").is_none()) {
+            if line
+                .groups
+                .iter()
+                .any(|g| g.word("nominal-mains").is_none())
+            {
                 p.assume("rated mains", None, "nominal mains");
             }
         }
@@ -1071,10 +1246,27 @@ impl<'v, 'a> Reader<'v, 'a> {
             network_field: named("network", network.is_some()),
             predriver: stage("predriver"),
             rated,
-            band: p.or(p.one("band", |g| range(g, "Hz").map(|(a, b)| (Hertz(a), Hertz(b)))), (Hertz(20.0), Hertz(20e3)), Measure::new(20.0, "Hz"), "20 Hz to 20 kHz"),
-            drop: p.field("drop", |groups| groups.iter().map(|g| Some((get(g, "V")?, get(g, "A")))).collect()),
+            band: p.or(
+                p.one("band", |g| {
+                    range(g, "Hz").map(|(a, b)| (Hertz(a), Hertz(b)))
+                }),
+                (Hertz(20.0), Hertz(20e3)),
+                Measure::new(20.0, "Hz"),
+                "20 Hz to 20 kHz",
+            ),
+            drop: p.field("drop", |groups| {
+                groups
+                    .iter()
+                    .map(|g| Some((get(g, "V")?, get(g, "A"))))
+                    .collect()
+            }),
             gain: p.si("gain", "dB"),
-            channels_per_board: p.or(p.one("channels-per-board", |g| count(g, "n")), 1, Measure::new(1.0, "1"), "the default"),
+            channels_per_board: p.or(
+                p.one("channels-per-board", |g| count(g, "n")),
+                1,
+                Measure::new(1.0, "1"),
+                "the default",
+            ),
             board_reservoir,
             output,
             driver,
@@ -1087,8 +1279,12 @@ impl<'v, 'a> Reader<'v, 'a> {
     fn network(&self, name: &str) -> Option<Network> {
         let p = self.page(name, "network")?;
         Some(Network {
-            zobel: p.one("zobel", |g| Some((get(g, "ohm")?, get(g, "W")?, get(g, "F")?, get(g, "V")))),
-            coil: p.one("coil", |g| Some((get(g, "H")?, get(g, "damp"), get(g, "W")))),
+            zobel: p.one("zobel", |g| {
+                Some((get(g, "ohm")?, get(g, "W")?, get(g, "F")?, get(g, "V")))
+            }),
+            coil: p.one("coil", |g| {
+                Some((get(g, "H")?, get(g, "damp"), get(g, "W")))
+            }),
             owner: p.owner.clone(),
         })
     }
@@ -1105,19 +1301,39 @@ impl<'v, 'a> Reader<'v, 'a> {
         } else if let Some(g) = p.seen.group("table") {
             line = p.field("table", |_| Some(()));
             let site = g.get("text").map_or(g.site, |s: &Slot| s.site);
-            g.text("text").map_or(LoadKind::Unstated, |t| LoadKind::Table(t.to_owned(), site))
-        } else if let Some((re, le, lossy)) = p.seen.group("voice-coil").and_then(|g| Some((get(g, "ohm")?, get(g, "H")?, g.number("lossy")))) {
+            g.text("text")
+                .map_or(LoadKind::Unstated, |t| LoadKind::Table(t.to_owned(), site))
+        } else if let Some((re, le, lossy)) = p
+            .seen
+            .group("voice-coil")
+            .and_then(|g| Some((get(g, "ohm")?, get(g, "H")?, g.number("lossy"))))
+        {
             line = p.field("voice-coil", |_| Some(()));
             let resonances = p.seen.all("resonance").flat_map(|l| &l.groups);
-            let resonances = resonances.filter_map(|g| Some((get(g, "Hz")?, g.number("mechanical")?, g.number("electrical")?)));
+            let resonances = resonances.filter_map(|g| {
+                Some((
+                    get(g, "Hz")?,
+                    g.number("mechanical")?,
+                    g.number("electrical")?,
+                ))
+            });
             LoadKind::VoiceCoil(re, le, lossy, resonances.collect())
         } else if let Some(parallel) = p.seen.line("parallel").filter(|l| !l.none) {
             line = p.field("parallel", |_| Some(()));
-            let loads: Option<Vec<_>> = parallel.groups.iter().map(|g| self.load(g.name("load")?, depth + 1)).collect();
+            let loads: Option<Vec<_>> = parallel
+                .groups
+                .iter()
+                .map(|g| self.load(g.name("load")?, depth + 1))
+                .collect();
             loads.map_or(LoadKind::Unstated, LoadKind::Parallel)
         } else if let Some(z) = nominal.get().copied() {
             line = p.field("nominal", |_| Some(()));
-            let minimum = p.or(p.si("minimum", "ohm"), z * 0.8, Measure::new(0.8 * z.0, "ohm"), "80 % of nominal");
+            let minimum = p.or(
+                p.si("minimum", "ohm"),
+                z * 0.8,
+                Measure::new(0.8 * z.0, "ohm"),
+                "80 % of nominal",
+            );
             LoadKind::Nominal(z, minimum, p.si("angle", "deg"))
         } else {
             LoadKind::Unstated
@@ -1137,16 +1353,37 @@ impl<'v, 'a> Reader<'v, 'a> {
 
     fn heatsink(&self, name: &str) -> Option<Rc<Heatsink>> {
         let p = self.page(name, "heatsink")?;
-        if p.seen.group("resistance").is_some_and(|g| g.number("K").is_none()) {
-            p.assume("resistance at", Measure::new(50.0, "K"), "usual for catalogue figures");
+        if p.seen
+            .group("resistance")
+            .is_some_and(|g| g.number("K").is_none())
+        {
+            p.assume(
+                "resistance at",
+                Measure::new(50.0, "K"),
+                "usual for catalogue figures",
+            );
         }
-        let metres = |g: &Group, slots: [&str; 3]| Some([g.number(slots[0])?, g.number(slots[1])?, g.number(slots[2])?]);
+        let metres = |g: &Group, slots: [&str; 3]| {
+            Some([
+                g.number(slots[0])?,
+                g.number(slots[1])?,
+                g.number(slots[2])?,
+            ])
+        };
         Some(Rc::new(Heatsink {
-            resistance: p.one("resistance", |g| Some((get(g, "K/W")?, get(g, "K").unwrap_or(Kelvin(50.0))))),
+            resistance: p.one("resistance", |g| {
+                Some((get(g, "K/W")?, get(g, "K").unwrap_or(Kelvin(50.0))))
+            }),
             mass: p.si("mass", "kg"),
             touchable: p.word("touchable", "no"),
             plate: p.one("plate", |g| metres(g, ["width", "height", "thick"])),
-            fins: p.one("fins", |g| Some((count(g, "n")?, metres(g, ["length", "thick", "gap"])?, g.word("vertical")? == "vertical"))),
+            fins: p.one("fins", |g| {
+                Some((
+                    count(g, "n")?,
+                    metres(g, ["length", "thick", "gap"])?,
+                    g.word("vertical")? == "vertical",
+                ))
+            }),
             owner: p.owner.clone(),
         }))
     }
@@ -1156,7 +1393,11 @@ impl<'v, 'a> Reader<'v, 'a> {
         let secondary = p.one("secondary", |g| {
             let volt: Volt = get(g, "V")?;
             let total = g.word("centre-tapped-total").is_some();
-            Some(if total { (2 * g.count(), volt / 2.0) } else { (g.count(), volt) })
+            Some(if total {
+                (2 * g.count(), volt / 2.0)
+            } else {
+                (g.count(), volt)
+            })
         });
         let per = p.seen.group("rating").and_then(Group::per);
         let per_winding = per.is_some_and(|per| per.0 == "winding");
@@ -1164,21 +1405,32 @@ impl<'v, 'a> Reader<'v, 'a> {
             p.assume("rating per", None, "per transformer");
         }
         let windings = secondary.get().map_or(1, |s| s.0);
-        let times = if per_winding { f64::from(windings) } else { 1.0 };
+        let times = if per_winding {
+            f64::from(windings)
+        } else {
+            1.0
+        };
         let rating: Field<f64> = p.one("rating", |g| Some(g.number("VA")? * times));
-        let of_no_load = p.seen.group("regulation").is_some_and(|g| g.word("of") == Some("no-load"));
+        let of_no_load = p
+            .seen
+            .group("regulation")
+            .is_some_and(|g| g.word("of") == Some("no-load"));
         let regulation = p.one("regulation", |g| {
             let x = g.number("%")?;
             let rho = if of_no_load { x / (1.0 - x) } else { x };
             (rho.is_finite() && rho > 0.0).then_some(rho)
         });
         Some(Rc::new(Transformer {
-            primary: p.field("primary", |groups| groups.iter().map(|g| get(g, "V")).collect()),
+            primary: p.field("primary", |groups| {
+                groups.iter().map(|g| get(g, "V")).collect()
+            }),
             secondary,
             rating,
             per_winding,
             regulation,
-            resistance: p.one("resistance", |g| Some((get(g, "primary")?, get(g, "secondary")?))),
+            resistance: p.one("resistance", |g| {
+                Some((get(g, "primary")?, get(g, "secondary")?))
+            }),
             thermal_fuse: p.si("thermal-fuse", "degC"),
             owner: p.owner.clone(),
         }))
@@ -1197,14 +1449,25 @@ impl<'v, 'a> Reader<'v, 'a> {
                 drop: get(g, "drop").unwrap_or(Volt(0.9)),
             })
         });
-        if p.seen.group("rectifier").is_some_and(|g| g.number("drop").is_none()) {
-            p.assume("rectifier drop", Measure::new(0.9, "V"), "usual for one silicon diode");
+        if p.seen
+            .group("rectifier")
+            .is_some_and(|g| g.number("drop").is_none())
+        {
+            p.assume(
+                "rectifier drop",
+                Measure::new(0.9, "V"),
+                "usual for one silicon diode",
+            );
         }
         let mut fuses = Vec::new();
         for line in p.seen.all("fuse") {
-            let Some(Select::Word(place)) = line.select else { continue };
+            let Some(Select::Word(place)) = line.select else {
+                continue;
+            };
             for g in &line.groups {
-                let Some((rating, speed)) = get(g, "A").zip(g.word("slow")) else { continue };
+                let Some((rating, speed)) = get(g, "A").zip(g.word("slow")) else {
+                    continue;
+                };
                 fuses.push(FuseLine {
                     place,
                     rating,
@@ -1217,7 +1480,10 @@ impl<'v, 'a> Reader<'v, 'a> {
             }
         }
         let fuse_field = |place: &'static str, key: &'static str| {
-            let line = p.seen.lines.iter().find(|l| l.key.name == "fuse" && (l.select == Some(Select::Word(place)) || l.select.is_none()));
+            let line = p.seen.lines.iter().find(|l| {
+                l.key.name == "fuse"
+                    && (l.select == Some(Select::Word(place)) || l.select.is_none())
+            });
             Field {
                 value: line.filter(|l| !l.none && !l.groups.is_empty()).map(|_| ()),
                 line: line.map(|l| l.site),
@@ -1232,7 +1498,14 @@ impl<'v, 'a> Reader<'v, 'a> {
                 Some(cold) => (cold, get(g, "hot")),
                 None => (get(g, "ohm")?, None),
             };
-            Some(SoftStart { cold, hot, watt: get(g, "W"), bypass: get(g, "bypass"), energy: get(g, "energy"), thermal_fuse: get(g, "thermal-fuse") })
+            Some(SoftStart {
+                cold,
+                hot,
+                watt: get(g, "W"),
+                bypass: get(g, "bypass"),
+                energy: get(g, "energy"),
+                thermal_fuse: get(g, "thermal-fuse"),
+            })
         });
         Some(Rc::new(Supply {
             transformers: group.count(),
@@ -1241,15 +1514,25 @@ impl<'v, 'a> Reader<'v, 'a> {
             rectifier,
             reservoir: self.reservoirs(&p, "reservoir"),
             bleeder: p.one("bleeder", |g| {
-                let resistor = Resistor { ohm: spread(g, "ohm")?, watt: get(g, "W"), pulse: None };
+                let resistor = Resistor {
+                    ohm: spread(g, "ohm")?,
+                    watt: get(g, "W"),
+                    pulse: None,
+                };
                 Some((resistor, g.per()?.0 == "supply"))
             }),
             mains_fuse: fuse_field("mains", "fuse mains"),
             rail_fuse: fuse_field("rail", "fuse rail"),
             fuses,
             soft_start,
-            wiring: p.or(p.si("wiring", "ohm"), Ohm::ZERO, Measure::new(0.0, "ohm"), "the default"),
-            touchable: p.seen.group("terminals").and_then(|g| g.word("enclosed")) == Some("touchable"),
+            wiring: p.or(
+                p.si("wiring", "ohm"),
+                Ohm::ZERO,
+                Measure::new(0.0, "ohm"),
+                "the default",
+            ),
+            touchable: p.seen.group("terminals").and_then(|g| g.word("enclosed"))
+                == Some("touchable"),
             owner: p.owner.clone(),
         }))
     }
@@ -1257,7 +1540,10 @@ impl<'v, 'a> Reader<'v, 'a> {
     fn protection(&self, name: &str) -> Option<Rc<Protection>> {
         let p = self.page(name, "protection")?;
         let limit_line = p.field("limit-line", |groups| {
-            let points = groups.iter().map(|g| Some((get(g, "V")?, get(g, "A")?))).collect::<Option<_>>()?;
+            let points = groups
+                .iter()
+                .map(|g| Some((get(g, "V")?, get(g, "A")?)))
+                .collect::<Option<_>>()?;
             let bank = p.seen.line("limit-line")?.select == Some(Select::Word("bank"));
             Some(LimitLine { bank, points })
         });
@@ -1270,8 +1556,15 @@ impl<'v, 'a> Reader<'v, 'a> {
                 on: get(g, "on").unwrap_or(Volt(0.6)),
             })
         });
-        if p.seen.group("limiter").is_some_and(|g| g.number("on").is_none()) {
-            p.assume("limiter on", Measure::new(0.6, "V"), "usual for a small silicon transistor");
+        if p.seen
+            .group("limiter")
+            .is_some_and(|g| g.number("on").is_none())
+        {
+            p.assume(
+                "limiter on",
+                Measure::new(0.6, "V"),
+                "usual for a small silicon transistor",
+            );
         }
         let contacts = p.one("contacts", |g| {
             Some(Contacts {
@@ -1282,26 +1575,54 @@ impl<'v, 'a> Reader<'v, 'a> {
             })
         });
         let relay = p.field("relay", |groups| {
-            groups.iter().map(|g| Some((get(g, "A")?, get(g, "V")?, g.quantity("V")?.form != Form::Rms))).collect()
+            groups
+                .iter()
+                .map(|g| {
+                    Some((
+                        get(g, "A")?,
+                        get(g, "V")?,
+                        g.quantity("V")?.form != Form::Rms,
+                    ))
+                })
+                .collect()
         });
         let detector = p.one("detector", |g| {
             let above: Volt = get(g, "V")?;
             let below = get::<Volt>(g, "below").map_or(above, Volt::abs);
-            Some(Detector { above: above.abs(), below, ohm: get(g, "ohm")?, farad: get(g, "F")?, watches: g.word("watches")? })
+            Some(Detector {
+                above: above.abs(),
+                below,
+                ohm: get(g, "ohm")?,
+                farad: get(g, "F")?,
+                watches: g.word("watches")?,
+            })
         });
         Some(Rc::new(Protection {
             limit_line,
             limiter,
-            limiter_break: p.one("limiter-break", |g| Some(LimiterBreak { volts: get(g, "V")?, from_rail: get(g, "from-rail"), to_base: get(g, "to-base") })),
+            limiter_break: p.one("limiter-break", |g| {
+                Some(LimiterBreak {
+                    volts: get(g, "V")?,
+                    from_rail: get(g, "from-rail"),
+                    to_base: get(g, "to-base"),
+                })
+            }),
             detector,
             relay,
             contacts,
-            switch: p.one("switch", |g| Some((get(g, "V")?, get(g, "A")?, g.count(), get(g, "release")))),
+            switch: p.one("switch", |g| {
+                Some((get(g, "V")?, get(g, "A")?, g.count(), get(g, "release")))
+            }),
             crowbar: p.one("crowbar", |g| Some((get(g, "V")?, get(g, "A")?))),
             muting: p.si("muting", "s"),
             cutout: p.one("cutout", |g| {
                 let toleranced = g.quantity("degC")?.tolerance.is_some();
-                Some(Cutout { trip: spread(g, "degC")?, toleranced, place: g.word("on")?, cooler: get(g, "cooler") })
+                Some(Cutout {
+                    trip: spread(g, "degC")?,
+                    toleranced,
+                    place: g.word("on")?,
+                    cooler: get(g, "cooler"),
+                })
             }),
             owner: p.owner.clone(),
         }))
@@ -1320,18 +1641,41 @@ impl<'v, 'a> Reader<'v, 'a> {
             let first = all.next()?;
             all.next().is_none().then(|| first.name.clone())
         };
-        let name = p.seen.group("amplifier").and_then(|g| g.name("amplifier")).map(str::to_owned).or_else(only);
+        let name = p
+            .seen
+            .group("amplifier")
+            .and_then(|g| g.name("amplifier"))
+            .map(str::to_owned)
+            .or_else(only);
         let unnamed = p.field::<()>("amplifier", |_| None);
-        let amplifier = name.as_deref().and_then(|n| self.amplifier(n)).ok_or_else(|| match &name {
-            None => unnamed.missing(),
-            Some(name) => {
-                let site = self.view.project.find(self.view.name(name)).map_or(p.owner.site, |d| d.site);
-                Needs { keys: vec![Need { key: format!("amplifier {name} output"), site }], because: String::new() }
-            }
-        })?;
+        let amplifier =
+            name.as_deref()
+                .and_then(|n| self.amplifier(n))
+                .ok_or_else(|| match &name {
+                    None => unnamed.missing(),
+                    Some(name) => {
+                        let site = self
+                            .view
+                            .project
+                            .find(self.view.name(name))
+                            .map_or(p.owner.site, |d| d.site);
+                        Needs {
+                            keys: vec![Need {
+                                key: format!("amplifier {name} output"),
+                                site,
+                            }],
+                            because: String::new(),
+                        }
+                    }
+                })?;
         let channels = p.one("channels", |g| count(g, "n").filter(|n| *n > 0));
         let total = channels.get().copied().unwrap_or(1);
-        let per_board = amplifier.channels_per_board.get().copied().unwrap_or(1).max(1);
+        let per_board = amplifier
+            .channels_per_board
+            .get()
+            .copied()
+            .unwrap_or(1)
+            .max(1);
         let carried = |g: &Group| {
             g.per().map(|(word, n)| match word {
                 "build" => total,
@@ -1339,30 +1683,58 @@ impl<'v, 'a> Reader<'v, 'a> {
                 _ => n.max(1),
             })
         };
-        let supply = p.one("supply", |g| Some((self.supply(g.name("supply")?)?, carried(g)?.min(total))));
-        let heatsink = p.one("heatsink", |g| Some((self.heatsink(g.name("heatsink")?)?, carried(g)?.min(total))));
-        let mains = p.field("mains", |groups| groups.iter().map(|g| self.region(&p, g)).collect());
+        let supply = p.one("supply", |g| {
+            Some((self.supply(g.name("supply")?)?, carried(g)?.min(total)))
+        });
+        let heatsink = p.one("heatsink", |g| {
+            Some((self.heatsink(g.name("heatsink")?)?, carried(g)?.min(total)))
+        });
+        let mains = p.field("mains", |groups| {
+            groups.iter().map(|g| self.region(&p, g)).collect()
+        });
         let duty = p.one("duty", duty);
         Ok(Build {
-            bridged: p.seen.group("channels").and_then(|g| g.word("bridged")).is_some(),
+            bridged: p
+                .seen
+                .group("channels")
+                .and_then(|g| g.word("bridged"))
+                .is_some(),
             supply,
             rails: p.one("rails", |g| {
-                Some(Rails { idle: get(g, "idle")?, loaded: get(g, "loaded")?, at: get(g, "A")?, high: get(g, "high") })
+                Some(Rails {
+                    idle: get(g, "idle")?,
+                    loaded: get(g, "loaded")?,
+                    at: get(g, "A")?,
+                    high: get(g, "high"),
+                })
             }),
             heatsink,
             protection: p.one("protection", |g| self.protection(g.name("protection")?)),
             protected: p.seen.group("protection").and_then(carried),
             mains,
-            loads: p.field("loads", |groups| groups.iter().map(|g| self.load(g.name("load")?, 0)).collect()),
+            loads: p.field("loads", |groups| {
+                groups
+                    .iter()
+                    .map(|g| self.load(g.name("load")?, 0))
+                    .collect()
+            }),
             ambient: p.one("ambient", |g| match &g.get("degC")?.value {
                 Value::Range(a, b) => Some((Celsius(a.value), Celsius(b.value))),
                 Value::Quantity(q) => Some((Celsius(q.value), Celsius(q.value))),
                 _ => None,
             }),
-            enclosure: p.or(p.si("enclosure", "K"), Kelvin::ZERO, Measure::new(0.0, "K"), "the default"),
+            enclosure: p.or(
+                p.si("enclosure", "K"),
+                Kelvin::ZERO,
+                Measure::new(0.0, "K"),
+                "the default",
+            ),
             duty,
-            policy: p.one("policy", |g| g.name("policy").map(|n| self.view.name(n).to_owned())),
-            survives_short: p.seen.group("survives-short").and_then(|g| g.word("yes")) == Some("yes"),
+            policy: p.one("policy", |g| {
+                g.name("policy").map(|n| self.view.name(n).to_owned())
+            }),
+            survives_short: p.seen.group("survives-short").and_then(|g| g.word("yes"))
+                == Some("yes"),
             amplifier,
             channels,
             owner: p.owner.clone(),
@@ -1375,7 +1747,11 @@ impl<'v, 'a> Reader<'v, 'a> {
             Some(ends) => ends,
             None if nominal.tolerance.is_some() => bounds(nominal),
             None => {
-                p.assume("mains range", Measure::new(10.0, "%"), "IEC 60038 allows +-10 %");
+                p.assume(
+                    "mains range",
+                    Measure::new(10.0, "%"),
+                    "IEC 60038 allows +-10 %",
+                );
                 (0.9 * nominal.value, 1.1 * nominal.value)
             }
         };
@@ -1395,15 +1771,28 @@ impl<'v, 'a> Reader<'v, 'a> {
 #[must_use]
 pub fn duty(g: &Group) -> Option<Duty> {
     if let Some(Value::Fraction(fraction, shown)) = g.get("fraction").map(|s| &s.value) {
-        return Some(Duty { fraction: *fraction, shown: shown.clone() });
+        return Some(Duty {
+            fraction: *fraction,
+            shown: shown.clone(),
+        });
     }
     if g.word("full").is_some() {
-        return Some(Duty { fraction: 1.0, shown: "full".to_owned() });
+        return Some(Duty {
+            fraction: 1.0,
+            shown: "full".to_owned(),
+        });
     }
     let crest = g.number("crest")?;
     // a sine that just clips has a crest factor of 3.01 dB: full power
-    let fraction = crate::physics::math::pow(10.0, (10.0 * crate::physics::math::log10(2.0) - crest) / 10.0).min(1.0);
-    Some(Duty { fraction, shown: format!("crest {crest} dB") })
+    let fraction = crate::physics::math::pow(
+        10.0,
+        (10.0 * crate::physics::math::log10(2.0) - crest) / 10.0,
+    )
+    .min(1.0);
+    Some(Duty {
+        fraction,
+        shown: format!("crest {crest} dB"),
+    })
 }
 
 fn claim(g: &Group) -> Option<Claim> {
@@ -1417,7 +1806,13 @@ fn claim(g: &Group) -> Option<Claim> {
 }
 
 fn idle(g: &Group) -> Idle {
-    Idle { current: get(g, "A"), volts: get(g, "V"), per: g.per().map(|p| p.0), across: g.word("across"), site: g.site }
+    Idle {
+        current: get(g, "A"),
+        volts: get(g, "V"),
+        per: g.per().map(|p| p.0),
+        across: g.word("across"),
+        site: g.site,
+    }
 }
 
 fn range(g: &Group, slot: &str) -> Option<(f64, f64)> {

@@ -36,10 +36,21 @@ pub struct Project {
 ///
 /// # Errors
 /// When the root file itself cannot be read; the text says why.
-pub fn load(files: &dyn Files, path: &Path, shown: &str, root: &Path, policies: BuiltIn<'_>) -> Result<Project, String> {
+pub fn load(
+    files: &dyn Files,
+    path: &Path,
+    shown: &str,
+    root: &Path,
+    policies: BuiltIn<'_>,
+) -> Result<Project, String> {
     let tree = files.tree(path)?;
-    let mut project = Project { root: Some(files.resolve(root)), ..Project::default() };
-    let first = project.sources.add(files.resolve(path), shown.to_owned(), tree);
+    let mut project = Project {
+        root: Some(files.resolve(root)),
+        ..Project::default()
+    };
+    let first = project
+        .sources
+        .add(files.resolve(path), shown.to_owned(), tree);
     project.follow(files, first);
     project.lower();
     project.link(policies);
@@ -58,8 +69,15 @@ impl Project {
         self.blocks.iter().filter(move |b| b.kind.kind == kind)
     }
 
-    fn say(&mut self, rule: &'static str, site: Site, message: String, hint: String) -> &mut Finding {
-        self.findings.push(Finding::error(rule, site, message, hint));
+    fn say(
+        &mut self,
+        rule: &'static str,
+        site: Site,
+        message: String,
+        hint: String,
+    ) -> &mut Finding {
+        self.findings
+            .push(Finding::error(rule, site, message, hint));
         let last = self.findings.len() - 1;
         &mut self.findings[last]
     }
@@ -69,21 +87,33 @@ impl Project {
     /// # Errors
     /// When it leaves the root.
     pub fn beside(&self, files: &dyn Files, from: FileId, text: &str) -> Result<PathBuf, String> {
-        let base = self.sources.file(from).and_then(|f| f.path.parent()).unwrap_or(Path::new("")).to_path_buf();
+        let base = self
+            .sources
+            .file(from)
+            .and_then(|f| f.path.parent())
+            .unwrap_or(Path::new(""))
+            .to_path_buf();
         let path = files.resolve(&normal(&base.join(text)));
         match &self.root {
-            Some(root) if !path.starts_with(root) => Err("it lies outside the folder being checked".to_owned()),
+            Some(root) if !path.starts_with(root) => {
+                Err("it lies outside the folder being checked".to_owned())
+            }
             _ => Ok(path),
         }
     }
 
     fn follow(&mut self, files: &dyn Files, first: FileId) {
         // depth first, so that a cycle shows the chain that closes it
-        let mut open: Vec<(FileId, Vec<(String, ampspec_grammar::Span)>)> = vec![(first, self.uses(first))];
+        let mut open: Vec<(FileId, Vec<(String, ampspec_grammar::Span)>)> =
+            vec![(first, self.uses(first))];
         let mut chain: Vec<FileId> = vec![first];
         while let Some((file, rest)) = open.last_mut() {
             let file = *file;
-            let Some((text, span)) = (if rest.is_empty() { None } else { Some(rest.remove(0)) }) else {
+            let Some((text, span)) = (if rest.is_empty() {
+                None
+            } else {
+                Some(rest.remove(0))
+            }) else {
                 open.pop();
                 chain.pop();
                 continue;
@@ -92,32 +122,64 @@ impl Project {
             let path = match self.beside(files, file, &text) {
                 Ok(path) => path,
                 Err(why) => {
-                    self.say("data.use", site, format!("`{text}` is not read: {why}"), "a path is relative to this file and stays below the folder being checked".to_owned());
+                    self.say(
+                        "data.use",
+                        site,
+                        format!("`{text}` is not read: {why}"),
+                        "a path is relative to this file and stays below the folder being checked"
+                            .to_owned(),
+                    );
                     continue;
                 }
             };
             if let Some(known) = self.sources.find(&path) {
                 if chain.contains(&known) {
                     let other = self.uses_of(known).first().copied();
-                    let related = other.map(|site| Related { message: "the circle closes here".to_owned(), site });
+                    let related = other.map(|site| Related {
+                        message: "the circle closes here".to_owned(),
+                        site,
+                    });
                     let message = format!("`{text}` uses this file in turn");
-                    self.say("data.use", site, message, "take the shared parts into a file of their own".to_owned()).related = related.into_iter().collect();
+                    self.say(
+                        "data.use",
+                        site,
+                        message,
+                        "take the shared parts into a file of their own".to_owned(),
+                    )
+                    .related = related.into_iter().collect();
                 } else {
                     self.sources.note_use(file, known);
                 }
                 continue;
             }
             if self.sources.iter().count() >= MOST_FILES {
-                self.say("data.use", site, format!("`{text}` is not read: more than {MOST_FILES} files"), "use fewer files".to_owned());
+                self.say(
+                    "data.use",
+                    site,
+                    format!("`{text}` is not read: more than {MOST_FILES} files"),
+                    "use fewer files".to_owned(),
+                );
                 continue;
             }
             match files.tree(&path) {
                 Err(why) => {
-                    self.say("data.use", site, format!("`{text}` cannot be read: {why}"), "a path is relative to this file".to_owned());
+                    self.say(
+                        "data.use",
+                        site,
+                        format!("`{text}` cannot be read: {why}"),
+                        "a path is relative to this file".to_owned(),
+                    );
                 }
                 Ok(tree) => {
                     let base = self.sources.file(file).map_or("", |f| &f.name);
-                    let shown = normal(&Path::new(base).parent().unwrap_or(Path::new("")).join(&text)).to_string_lossy().replace('\\', "/");
+                    let shown = normal(
+                        &Path::new(base)
+                            .parent()
+                            .unwrap_or(Path::new(""))
+                            .join(&text),
+                    )
+                    .to_string_lossy()
+                    .replace('\\', "/");
                     let id = self.sources.add(path, shown, tree);
                     self.sources.note_use(file, id);
                     open.push((id, self.uses(id)));
@@ -128,15 +190,25 @@ impl Project {
     }
 
     fn uses(&self, file: FileId) -> Vec<(String, ampspec_grammar::Span)> {
-        self.sources.file(file).map(|f| lower::uses(&f.tree)).unwrap_or_default()
+        self.sources
+            .file(file)
+            .map(|f| lower::uses(&f.tree))
+            .unwrap_or_default()
     }
 
     fn uses_of(&self, file: FileId) -> Vec<Site> {
-        self.uses(file).into_iter().map(|(_, span)| Site { file, span }).collect()
+        self.uses(file)
+            .into_iter()
+            .map(|(_, span)| Site { file, span })
+            .collect()
     }
 
     fn lower(&mut self) {
-        let trees: Vec<_> = self.sources.iter().map(|(id, f)| (id, f.tree.clone())).collect();
+        let trees: Vec<_> = self
+            .sources
+            .iter()
+            .map(|(id, f)| (id, f.tree.clone()))
+            .collect();
         let mut kinds: HashMap<String, &'static Block> = HashMap::new();
         for (_, tree) in &trees {
             for (name, kind) in lower::declared_kinds(tree) {
@@ -151,8 +223,17 @@ impl Project {
                 if let Some(first) = self.find(&block.name) {
                     let (kind, site) = (first.kind.kind, first.name_site);
                     let message = format!("`{}` is declared twice", block.name);
-                    let related = vec![Related { message: format!("first declared here, as a {kind}; this one is used"), site }];
-                    self.say("data.duplicate", block.name_site, message, "give one of the two another name".to_owned()).related = related;
+                    let related = vec![Related {
+                        message: format!("first declared here, as a {kind}; this one is used"),
+                        site,
+                    }];
+                    self.say(
+                        "data.duplicate",
+                        block.name_site,
+                        message,
+                        "give one of the two another name".to_owned(),
+                    )
+                    .related = related;
                     continue;
                 }
                 self.by_name.insert(block.name.clone(), self.blocks.len());
@@ -169,14 +250,29 @@ impl Project {
                 self.check_from(block, from, *site, policies, &mut said);
             } else if block.kind.kind == "policy" {
                 let message = format!("policy `{}` starts from nothing", block.name);
-                let hint = format!("write `policy {} from {} {{`", block.name, policies.first().unwrap_or(&"bench"));
-                said.push(Finding::error("syntax.word", block.name_site, message, hint));
+                let hint = format!(
+                    "write `policy {} from {} {{`",
+                    block.name,
+                    policies.first().unwrap_or(&"bench")
+                );
+                said.push(Finding::error(
+                    "syntax.word",
+                    block.name_site,
+                    message,
+                    hint,
+                ));
             }
             for line in &block.lines {
                 let line = line.change.as_ref().map_or(line, |c| &c.1);
                 for slot in line.groups.iter().flat_map(|g| &g.slots) {
-                    let Value::Name(name) = &slot.value else { continue };
-                    let Some(Takes::Name(kind)) = line.key.shape().item(slot.slot).map(|i| i.takes.clone()) else { continue };
+                    let Value::Name(name) = &slot.value else {
+                        continue;
+                    };
+                    let Some(Takes::Name(kind)) =
+                        line.key.shape().item(slot.slot).map(|i| i.takes.clone())
+                    else {
+                        continue;
+                    };
                     self.check_name(name, kind, slot.site, policies, &mut said);
                 }
                 if let Some(Select::Rule(_)) = &line.select {
@@ -187,7 +283,14 @@ impl Project {
         self.findings.extend(said);
     }
 
-    fn check_from(&self, block: &Declared, from: &str, site: Site, policies: BuiltIn<'_>, said: &mut Vec<Finding>) {
+    fn check_from(
+        &self,
+        block: &Declared,
+        from: &str,
+        site: Site,
+        policies: BuiltIn<'_>,
+        said: &mut Vec<Finding>,
+    ) {
         if block.kind.kind == "policy" && policies.contains(&from) {
             return;
         }
@@ -198,8 +301,16 @@ impl Project {
             if !seen.insert(at) {
                 if at == block.name {
                     let message = format!("`{}` starts from itself", block.name);
-                    let related = vec![Related { message: "by way of this".to_owned(), site: next.site }];
-                    let mut f = Finding::error("data.cycle", site, message, "break the circle: one of them must not have a `from`".to_owned());
+                    let related = vec![Related {
+                        message: "by way of this".to_owned(),
+                        site: next.site,
+                    }];
+                    let mut f = Finding::error(
+                        "data.cycle",
+                        site,
+                        message,
+                        "break the circle: one of them must not have a `from`".to_owned(),
+                    );
                     f.related = related;
                     said.push(f);
                 }
@@ -212,28 +323,67 @@ impl Project {
         }
     }
 
-    fn check_name(&self, name: &str, kind: &'static str, site: Site, policies: BuiltIn<'_>, said: &mut Vec<Finding>) {
+    fn check_name(
+        &self,
+        name: &str,
+        kind: &'static str,
+        site: Site,
+        policies: BuiltIn<'_>,
+        said: &mut Vec<Finding>,
+    ) {
         match self.find(name) {
             Some(found) if kind == "any" || found.kind.kind == kind => {}
             Some(found) => {
                 let message = format!("`{name}` is a {}; a {kind} is wanted here", found.kind.kind);
                 let mut f = Finding::error("data.missing", site, message, format!("name a {kind}"));
-                f.related = vec![Related { message: "declared here".to_owned(), site: found.name_site }];
+                f.related = vec![Related {
+                    message: "declared here".to_owned(),
+                    site: found.name_site,
+                }];
                 said.push(f);
             }
             None if kind == "policy" && policies.contains(&name) => {}
             None => {
-                let names = self.blocks.iter().filter(|b| kind == "any" || b.kind.kind == kind).map(|b| b.name.as_str());
-                let near = nearest(name, names.chain(if kind == "policy" { policies } else { &[] }.iter().copied()));
-                let what = if kind == "any" { "part".to_owned() } else { kind.to_owned() };
+                let names = self
+                    .blocks
+                    .iter()
+                    .filter(|b| kind == "any" || b.kind.kind == kind)
+                    .map(|b| b.name.as_str());
+                let near = nearest(
+                    name,
+                    names.chain(
+                        if kind == "policy" { policies } else { &[] }
+                            .iter()
+                            .copied(),
+                    ),
+                );
+                let what = if kind == "any" {
+                    "part".to_owned()
+                } else {
+                    kind.to_owned()
+                };
                 let message = format!("no {what} is called `{name}`");
                 let hint = if near.is_empty() {
-                    format!("declare it: `{what} {name} {{`, or take in the file that does with `use`")
+                    format!(
+                        "declare it: `{what} {name} {{`, or take in the file that does with `use`"
+                    )
                 } else {
-                    format!("did you mean {}?", near.iter().map(|n| format!("`{n}`")).collect::<Vec<_>>().join(" or "))
+                    format!(
+                        "did you mean {}?",
+                        near.iter()
+                            .map(|n| format!("`{n}`"))
+                            .collect::<Vec<_>>()
+                            .join(" or ")
+                    )
                 };
                 let mut f = Finding::error("data.missing", site, message, hint);
-                f.edits = near.iter().map(|n| TextEdit { site, text: (*n).to_owned() }).collect();
+                f.edits = near
+                    .iter()
+                    .map(|n| TextEdit {
+                        site,
+                        text: (*n).to_owned(),
+                    })
+                    .collect();
                 said.push(f);
             }
         }

@@ -189,5 +189,6 @@ pub struct Declared {
 /// Lower and upper bound of a toleranced quantity; the value itself where no tolerance is stated.
 #[must_use]
 pub fn bounds(q: &Quantity) -> (f64, f64) {
-    q.tolerance.map_or((q.value, q.value), |t| t.limits(q.value))
+    q.tolerance
+        .map_or((q.value, q.value), |t| t.limits(q.value))
 }

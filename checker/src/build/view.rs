@@ -31,7 +31,9 @@ impl Seen<'_> {
     }
     /// Every line of a key that repeats.
     pub fn all<'s>(&'s self, key: &'s str) -> impl Iterator<Item = &'s Arc<Statement>> {
-        self.lines.iter().filter(move |l| l.key.name == key && !l.none)
+        self.lines
+            .iter()
+            .filter(move |l| l.key.name == key && !l.none)
     }
     /// The first group of the line of a key.
     #[must_use]
@@ -57,7 +59,12 @@ pub struct View<'a> {
 impl<'a> View<'a> {
     /// The view of `build` with `alternate`, and with `extra` changes that a proposal tries.
     #[must_use]
-    pub fn new(project: &'a Project, build: &'a Declared, alternate: Option<&'a Declared>, extra: &[(String, Arc<Statement>)]) -> Self {
+    pub fn new(
+        project: &'a Project,
+        build: &'a Declared,
+        alternate: Option<&'a Declared>,
+        extra: &[(String, Arc<Statement>)],
+    ) -> Self {
         let mut changes = Vec::new();
         let mut replaced = HashMap::new();
         let mut chain = chain_of(project, build);
@@ -77,7 +84,14 @@ impl<'a> View<'a> {
             }
         }
         changes.extend(extra.iter().cloned());
-        Self { project, build, alternate, changes, replaced, reached: RefCell::default() }
+        Self {
+            project,
+            build,
+            alternate,
+            changes,
+            replaced,
+            reached: RefCell::default(),
+        }
     }
 
     /// The name in force for a name on a line.
@@ -120,7 +134,11 @@ impl<'a> View<'a> {
                 }
             }
         }
-        Seen { declared, lines, flavour }
+        Seen {
+            declared,
+            lines,
+            flavour,
+        }
     }
 
     /// Names of the blocks this view has reached so far.
@@ -137,7 +155,10 @@ fn chain_of<'a>(project: &'a Project, block: &'a Declared) -> Vec<&'a Declared> 
     let mut chain = vec![block];
     let mut at = block;
     while let Some(next) = at.from.as_ref().and_then(|(name, _)| project.find(name)) {
-        if next.kind.kind != block.kind.kind || chain.len() >= MOST_FROM || chain.iter().any(|b| b.name == next.name) {
+        if next.kind.kind != block.kind.kind
+            || chain.len() >= MOST_FROM
+            || chain.iter().any(|b| b.name == next.name)
+        {
             break;
         }
         chain.push(next);
@@ -163,8 +184,11 @@ fn put(lines: &mut Vec<Arc<Statement>>, line: &Arc<Statement>) {
 
 /// The blocks a line names, for walking from a build to everything it uses.
 pub fn names(line: &Statement) -> impl Iterator<Item = &str> {
-    line.groups.iter().flat_map(|g| &g.slots).filter_map(|s| match &s.value {
-        Value::Name(name) => Some(name.as_str()),
-        _ => None,
-    })
+    line.groups
+        .iter()
+        .flat_map(|g| &g.slots)
+        .filter_map(|s| match &s.value {
+            Value::Name(name) => Some(name.as_str()),
+            _ => None,
+        })
 }

@@ -83,7 +83,11 @@ pub fn root(f: impl Fn(f64) -> f64, lo: f64, hi: f64, tolerance: f64) -> Option<
             before = half;
         }
         (a, fa) = (b, fb);
-        b += if step.abs() > tol { step } else { tol.copysign(half) };
+        b += if step.abs() > tol {
+            step
+        } else {
+            tol.copysign(half)
+        };
         fb = f(b);
         if !fb.is_finite() {
             return None;
@@ -142,7 +146,11 @@ pub fn maximum(f: impl Fn(f64) -> f64, lo: f64, hi: f64, tolerance: f64) -> (f64
             before = if x < middle { b - x } else { a - x };
             step = GOLDEN * before;
         }
-        let u = if step.abs() >= tol { x + step } else { x + tol.copysign(step) };
+        let u = if step.abs() >= tol {
+            x + step
+        } else {
+            x + tol.copysign(step)
+        };
         let fu = f(u);
         if fu >= fx {
             if u < x {
@@ -162,7 +170,10 @@ pub fn maximum(f: impl Fn(f64) -> f64, lo: f64, hi: f64, tolerance: f64) -> (f64
             if fu >= f_second || second.total_cmp(&x).is_eq() {
                 (third, f_third) = (second, f_second);
                 (second, f_second) = (u, fu);
-            } else if fu >= f_third || third.total_cmp(&x).is_eq() || third.total_cmp(&second).is_eq() {
+            } else if fu >= f_third
+                || third.total_cmp(&x).is_eq()
+                || third.total_cmp(&second).is_eq()
+            {
                 (third, f_third) = (u, fu);
             }
         }
@@ -185,7 +196,11 @@ pub fn straight_lines(points: &[(f64, f64)], x: f64) -> Option<f64> {
     if points.len() == 1 {
         return Some(first.1);
     }
-    let right = points.iter().position(|p| p.0 >= x).unwrap_or(points.len() - 1).max(1);
+    let right = points
+        .iter()
+        .position(|p| p.0 >= x)
+        .unwrap_or(points.len() - 1)
+        .max(1);
     let ((x0, y0), (x1, y1)) = (points[right - 1], points[right]);
     if x1 <= x0 {
         return Some(last.1);

@@ -212,7 +212,13 @@ impl<'a> Locus<'a> {
             spot.amps * math::pow(spot.volts.max(0.0), s)
         };
         let step = (to - from) / f64::from(STEPS);
-        let position = |k: u32| if k == STEPS { to } else { from + step * f64::from(k) };
+        let position = |k: u32| {
+            if k == STEPS {
+                to
+            } else {
+                from + step * f64::from(k)
+            }
+        };
         let mut best = (to, value(to));
         for k in 0..STEPS {
             let here = value(position(k));

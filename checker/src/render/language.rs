@@ -40,7 +40,12 @@ pub fn markdown() -> String {
         for block in BLOCKS {
             writeln!(out, "## {}\n\n{}", block.kind, sentence(block.meaning))?;
             if !block.flavours.is_empty() {
-                writeln!(out, "\nThe header says which: `{} NAME {{{}}}`.", block.kind, block.flavours.join("|"))?;
+                writeln!(
+                    out,
+                    "\nThe header says which: `{} NAME {{{}}}`.",
+                    block.kind,
+                    block.flavours.join("|")
+                )?;
             }
             writeln!(out)?;
             table(out, block.keys, Some(block))?;
@@ -50,23 +55,45 @@ pub fn markdown() -> String {
 }
 
 fn table(out: &mut String, keys: &[Key], block: Option<&Block>) -> std::fmt::Result {
-    writeln!(out, "| key | shape | default | meaning | read by |\n|---|---|---|---|---|")?;
+    writeln!(
+        out,
+        "| key | shape | default | meaning | read by |\n|---|---|---|---|---|"
+    )?;
     for key in keys {
         let repeats = if key.repeats { " \\*" } else { "" };
-        let symbol = if key.symbol.is_empty() { String::new() } else { format!(" ({})", key.symbol) };
+        let symbol = if key.symbol.is_empty() {
+            String::new()
+        } else {
+            format!(" ({})", key.symbol)
+        };
         let readers: Vec<&str> = match block {
-            Some(block) => rules::all().filter(|r| r.reads.contains(&format!("{}.{}", block.kind, key.name).as_str())).map(|r| r.name).collect(),
+            Some(block) => rules::all()
+                .filter(|r| {
+                    r.reads
+                        .contains(&format!("{}.{}", block.kind, key.name).as_str())
+                })
+                .map(|r| r.name)
+                .collect(),
             None => Vec::new(),
         };
         let shape = key.shape.replace('|', "\\|");
         let meaning = key.meaning.replace('|', "\\|");
-        writeln!(out, "| `{}`{repeats} | `{shape}` | {} | {meaning}{symbol} | {} |", key.name, key.default, readers.join(", "))?;
+        writeln!(
+            out,
+            "| `{}`{repeats} | `{shape}` | {} | {meaning}{symbol} | {} |",
+            key.name,
+            key.default,
+            readers.join(", ")
+        )?;
     }
     writeln!(out)
 }
 
 fn sentence(text: &str) -> String {
     let mut letters = text.chars();
-    let first = letters.next().map(|c| c.to_uppercase().collect::<String>()).unwrap_or_default();
+    let first = letters
+        .next()
+        .map(|c| c.to_uppercase().collect::<String>())
+        .unwrap_or_default();
     format!("{first}{}.", letters.as_str())
 }

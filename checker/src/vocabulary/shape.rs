@@ -152,7 +152,11 @@ fn selector(text: &'static str) -> Selector {
 }
 
 fn choices(braced: &'static str) -> Vec<&'static str> {
-    braced.trim_start_matches('{').trim_end_matches('}').split(' ').collect()
+    braced
+        .trim_start_matches('{')
+        .trim_end_matches('}')
+        .split(' ')
+        .collect()
 }
 
 fn item(word: &'static str) -> Option<Item> {
@@ -160,7 +164,14 @@ fn item(word: &'static str) -> Option<Item> {
         Some(w) => (w, true),
         None => (word, false),
     };
-    let make = |slot, label, takes| Some(Item { slot, label, takes, optional });
+    let make = |slot, label, takes| {
+        Some(Item {
+            slot,
+            label,
+            takes,
+            optional,
+        })
+    };
     if word == "\"text\"" {
         return make("text", None, Takes::Text);
     }
@@ -198,7 +209,16 @@ fn item(word: &'static str) -> Option<Item> {
         None => (rest, false),
     };
     let dimension = dimension(unit)?;
-    make(label.unwrap_or(unit), label, Takes::Quantity { unit, dimension, tolerance, extent })
+    make(
+        label.unwrap_or(unit),
+        label,
+        Takes::Quantity {
+            unit,
+            dimension,
+            tolerance,
+            extent,
+        },
+    )
 }
 
 /// What a unit of the table measures.

@@ -12,7 +12,12 @@ use super::{Block, Key, block, key};
 /// Statements outside blocks.
 pub const STATEMENTS: &[Key] = &[
     key("ampspec", "n", "req", "language version, first line"),
-    key("use", "\"text\"", "req", "another file, relative to this one"),
+    key(
+        "use",
+        "\"text\"",
+        "req",
+        "another file, relative to this one",
+    ),
     key(
         "waive",
         "WAIVE",

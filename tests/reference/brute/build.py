@@ -275,8 +275,8 @@ def generate(seed, index, folder):
     cold = float(rng.choice([0, 5, 10, 15, 20]))
     b["ambient"] = (cold, float(rng.choice([30, 35, 40, 45])))
     b["enclosure"] = float(rng.choice([0, 0, 3, 5]))
-    b["duty"] = {"1/8": 1 / 8, "1/3": 1 / 3, "1/10": 1 / 10, "full": 1.0}[str(rng.choice(["1/8", "1/3", "1/10", "1/8", "full"]))]
-    b["duty_text"] = {1 / 8: "1/8", 1 / 3: "1/3", 1 / 10: "1/10", 1.0: "full"}[b["duty"]]
+    b["duty_text"] = str(rng.choice(["1/8", "1/3", "1/10", "1/8", "1/2"]))
+    b["duty"] = 1 / int(b["duty_text"][2:])
 
     # Protection and network.
     line_bank = bool(rng.random() < 0.6)

@@ -45,6 +45,8 @@ class Case:
         # A tolerance that is not stated is zero, but a reservoir's is then 20 % either way.
         up, down = s["cap_tol"] if any(s["cap_tol"]) else (0.2, 0.2)
         self.cap_corners = [1 - down, 1.0, 1 + up]
+        ends = sorted({1.0, 1 - out["re_low"], 1 + out["re_tol"][0]})
+        self.heat_corners = [(cap, factor) for cap in self.cap_corners for factor in ends]
 
     def rail(self, level, cap=1.0):
         """The rail at `low`, `volts` (nominal) or `high` mains, with a reservoir scaled by `cap`."""
@@ -160,14 +162,14 @@ class Case:
         out, drv = self.b["out"], self.b["drv"]
         for load in self.b["loads"]:
             ohms = self.resistance(load)
-            for cap in self.cap_corners:
-                for factor in {1.0, 1 - out["re_low"], 1 + out["re_tol"][0]}:
-                    for bank, mean_amps, rail, level in self.heat_at(load, cap, self.re * factor):
-                        driver = self.worst_driver_heat(rail, level, ohms)
-                        on_sink = 0.0 if drv["own"] or math.isnan(driver) else 2 * driver
-                        sink = self.sink(2 * bank + on_sink)
-                        watts = bank / self.pairs * stage_.share_one(mean_amps, self.stage)
-                        found.append(dict(load=load["name"], sink=sink, watts=watts, bank=bank, driver=driver, case=self.case_temperature(sink, watts)))
+            for cap, factor in self.heat_corners:
+                for bank, mean_amps, rail, level in self.heat_at(load, cap, self.re * factor):
+                    driver = self.worst_driver_heat(rail, level, ohms)
+                    on_sink = 0.0 if drv["own"] or math.isnan(driver) else 2 * driver
+                    sink = self.sink(2 * bank + on_sink)
+                    watts = bank / self.pairs * stage_.share_one(mean_amps, self.stage)
+                    case = self.case_temperature(sink, watts)
+                    found.append(dict(load=load["name"], sink=sink, watts=watts, bank=bank, driver=driver, case=case))
         return found
 
     @property
@@ -181,11 +183,18 @@ class Case:
 
     def driver_case(self, h):
         drv = self.b["drv"]
-        base = h["sink"] if not drv["own"] else self.hottest + h["driver"] * drv["own"]
+        base = h["sink"] + self.spot if not drv["own"] else self.hottest + h["driver"] * drv["own"]
         return base + h["driver"] * drv["cs"]
 
     def case_temperature(self, sink, watts):
-        return sink + watts * self.b["out"]["cs"] + self.b["out"]["across"] * self.b.get("across_weight", 1.0)
+        """Case of the hottest device: it alone stands above the others, and the sink is their mean."""
+        out = self.b["out"]
+        return sink + self.spot + watts * out["cs"]
+
+    @property
+    def spot(self):
+        """How far the hottest place is above the mean of the sink."""
+        return self.b["out"]["across"] * (1 - 1 / (2 * self.pairs * self.b["per_sink"]))
 
 
 def gain_at(points, amps):
@@ -237,7 +246,8 @@ def clip(case, ohms, cap):
     def headroom(volts):
         amps = volts / ohms
         mean = case.drawn(amps)
-        trough = supply_.steady(rail, mean).trough - rail.esr * (case.share_channels * amps - mean)
+        # The halves of a bridge draw on a rail in turn.
+        trough = supply_.steady(rail, mean).trough - rail.esr * (case.share_channels / case.halves * amps - mean)
         return float(np.min(trough - volts * sine - stage_.drop_at(case.b["drop"], amps * sine)))
 
     high = case.burst("volts", ohms)
@@ -353,7 +363,7 @@ def idle_sink(case):
     drv = case.b["drv"]
     found = []
     share = stage_.share_one(case.idle, case.stage)
-    for cap in case.cap_corners:
+    for cap in sorted({cap for cap, _ in case.heat_corners}):
         rail = supply_.steady(case.rail("high", cap), case.drawn(0.0)).mean
         on_sink = 0.0 if drv["own"] else 2 * case.driver_heat(rail, 0.0, 8.0)
         found.append((case.sink(2 * rail * case.pairs * case.idle + on_sink), rail * case.idle * share, share))
@@ -508,7 +518,7 @@ def search(function, band, knots=(), flat=False, turn=np.pi):
     got = np.where(np.isnan(got), -np.inf, got)
     order = np.argsort(got.max(axis=(1, 2)))[::-1]
     boxes = []
-    for k in order[:5]:
+    for k in order[:3]:
         j, m = np.unravel_index(int(np.argmax(got[k])), got.shape[1:])
         if flat:
             span, lower, upper = 0.0, middle, middle
@@ -626,11 +636,12 @@ def switching_on(builds):
                 unsagged = case.unsagged(level)
                 full = one["volts"] / unsagged * 100
                 w.note("supply.soft-start-timing", "psu soft-start", full, 40.0, 100 * 80 / max(full, 1e-9), level=level)
-            if level == "high" and not drawn:
+            if level == "high":
                 joules = s["soft"] * (2 * turns) ** 2 * one["before"]
                 w.note("supply.inrush-resistor-energy", "psu soft-start", joules, 250.0 * 10 / 10, 100 * joules / (0.8 * 250))
-                peak = max(one["early"], one["late"])
                 limit = s["surge"] ** 2 * 8.3e-3 / 2
-                each = (one["first"] + one["square"]) / 2
-                w.below("current.rectifier-surge", "psu rectifier", 100 * max(peak / s["surge"], each / limit), 100.0, 0.8, peak=peak, each=each, late=one["late"], square=one["square"])
+                peak = max(one["early"], one["late"]) / s["surge"]
+                # Of one diode: every second pulse, at most the first half-cycle and half of the rest.
+                each = 0.0 if drawn else (one["first"] + one["square"]) / 2 / limit
+                w.below("current.rectifier-surge", "psu rectifier", 100 * max(peak, each), 100.0, 0.8)
     return found

@@ -1,6 +1,7 @@
 """Safe operating area: the derated curve, and its use by a locus, by exhaustive sampling."""
 
 import numpy as np
+from scipy.optimize import minimize
 
 
 def allowed(device, case, volts):
@@ -48,4 +49,27 @@ def zoom(function, boxes, points, rounds, shrink):
             if got[k] > best[0]:
                 best = (float(got[k]), centre.copy())
             half = half * shrink
+    if best[1] is None:
+        return best
+    # A last walk without a grid, begun again until it stands still.
+    lower, upper = boxes[0][2], boxes[0][3]
+    free = [k for k in range(len(lower)) if upper[k] > lower[k]]
+
+    def less(x):
+        at = best[1].copy()
+        at[free] = np.clip(x, np.array(lower)[free], np.array(upper)[free])
+        got = float(function(*[np.array([a]) for a in at])[0])
+        return 1e9 if np.isnan(got) else -got
+
+    for _ in range(3):
+        start = best[1][free]
+        simplex = np.vstack([start, start + np.diag(1e-4 * np.maximum(np.abs(start), 1e-3))])
+        got = minimize(less, start, method="Nelder-Mead", options=dict(initial_simplex=simplex, xatol=1e-12, fatol=1e-13, maxfev=110))
+        gained = -got.fun - best[0]
+        if gained > 0:
+            at = best[1].copy()
+            at[free] = np.clip(got.x, np.array(lower)[free], np.array(upper)[free])
+            best = (float(-got.fun), at)
+        if gained < 1e-10 * best[0]:
+            break
     return best

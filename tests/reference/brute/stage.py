@@ -29,13 +29,18 @@ def burst(rail, drop, ohms):
 
 
 def burst_array(rail, drop, ohms):
-    """`burst` for an array of moduli, by bisection on every one at once."""
-    lo, hi = np.zeros_like(ohms), np.full_like(ohms, rail)
-    for _ in range(50):
-        mid = 0.5 * (lo + hi)
-        over = mid - rail + drop_at(drop, mid / ohms) > 0
-        hi, lo = np.where(over, mid, hi), np.where(over, lo, mid)
-    return 0.5 * (lo + hi)
+    """`burst` for an array of moduli: V = rail - drop(V / |Z|) repeated by secant until it stands."""
+    old = rail + 0.0 * ohms
+    miss_old = rail - drop_at(drop, old / ohms) - old
+    new = old + miss_old
+    for _ in range(12):
+        miss = rail - drop_at(drop, new / ohms) - new
+        if np.max(np.abs(miss)) < 1e-13 * rail:
+            break
+        moved = miss - miss_old
+        slope = np.where(np.abs(moved) > 1e-15, (new - old) / np.where(np.abs(moved) > 1e-15, moved, 1.0), -1.0)
+        old, miss_old, new = new, miss, new - miss * slope
+    return new
 
 
 def share(mean, count, spread, ohms, low):

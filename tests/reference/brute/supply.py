@@ -248,9 +248,11 @@ def sag_batch(rails, idles, channels, ohms, need, bottom, judge, bridged, per_cy
         """Least of rail less what the output needs, per build and phase."""
         level = loads * volts[:, None] / ohm
         wanted = np.array([need[b](volts[b] * np.maximum(table[::2], 0)) for b in range(len(need))])
-        v = peak - fall + 0 * phases
+        # Begun where the last march ended: a weak supply takes long to settle.
+        v = begin["volts"] + 0 * phases
+        periods = begin["periods"]
         least = np.full_like(v, np.inf)
-        for k in range(per_cycle * (settle + judge)):
+        for k in range(per_cycle * (periods + judge)):
             j = k % per_cycle
             t = k * h
             at = lambda n: idle + level * np.where(halves, 0.5 * abs(table[n]), max(table[n], 0.0))
@@ -258,32 +260,39 @@ def sag_batch(rails, idles, channels, ohms, need, bottom, judge, bridged, per_cy
             out, mid, nxt = at(2 * j), at(2 * j + 1), at(2 * j + 2)
             i = np.maximum(wave[0] - v + esr * out, 0) / total
             a = (i - out) / farads
-            if k >= per_cycle * settle and 0 < 2 * j < per_cycle:
+            if k >= per_cycle * periods and 0 < 2 * j < per_cycle:
                 least = np.minimum(least, v + esr * (i - out) - wanted[:, j : j + 1])
             b = (np.maximum(wave[1] - v - h / 2 * a + esr * mid, 0) / total - mid) / farads
             c = (np.maximum(wave[1] - v - h / 2 * b + esr * mid, 0) / total - mid) / farads
             d = (np.maximum(wave[2] - v - h * c + esr * nxt, 0) / total - nxt) / farads
             v = v + h / 6 * (a + 2 * b + 2 * c + d)
+        begin.update(volts=v.mean(axis=1, keepdims=True), periods=settle)
         return least
 
+    begin = dict(volts=peak - fall, periods=4 * settle)
     count = len(rails)
-    centre, width = np.full((count, 1), np.pi / 2), np.pi
-    guess = np.array([r.unsagged for r in rails]) * 0.75
-    for spread in (12, 9, 9):
-        phases = centre + width * (np.arange(spread) - (spread - 1) / 2)[None, :] / spread
-        x0, x1 = guess, guess * 0.995
-        y0 = headroom(x0, phases, many).min(axis=1)
-        for _ in range(4):
+    every = np.arange(count)
+
+    def secant(volts, phases, rounds):
+        """Amplitude at which the least headroom over these phases is zero, and the phase that has it."""
+        x0, y0 = volts, headroom(volts, phases, many).min(axis=1)
+        x1 = volts + np.clip(y0 / 1.2, -0.3 * volts, 0.3 * volts)
+        for _ in range(rounds):
             rooms = headroom(x1, phases, many)
             y1 = rooms.min(axis=1)
-            safe = np.where(np.abs(y1 - y0) > 1e-12, y1 - y0, 1.0)
-            step = np.where(np.abs(y1 - y0) > 1e-12, -y1 * (x1 - x0) / safe, 0.0)
+            moved = np.abs(y1 - y0) > 1e-12
+            step = np.where(moved, -y1 * (x1 - x0) / np.where(moved, y1 - y0, 1.0), 0.0)
             x0, y0, x1 = x1, y1, np.maximum(x1 + np.clip(step, -0.3 * x1, 0.3 * x1), 0.1)
-            if np.max(np.abs(step) / x1) < 1e-9:
-                break
-        guess = x1
-        centre = phases[np.arange(count), np.argmin(rooms, axis=1)][:, None] + np.zeros((count, 1))
-        width = 2.5 * width / spread
+        return x1, phases[every, np.argmin(rooms, axis=1)]
+
+    phases = np.pi * np.arange(16)[None, :] / 16 + np.zeros((count, 1))
+    guess, best = secant(np.array([r.unsagged for r in rails]) * 0.75, phases, 4)
+    reach = np.pi / 16
+    for _ in range(5):
+        near = best[:, None] + reach * np.linspace(-1, 1, 9)[None, :]
+        best = near[every, np.argmin(headroom(guess, near, many), axis=1)]
+        reach /= 3.5
+    guess, _ = secant(guess, best[:, None], 3)
     return guess
 
 

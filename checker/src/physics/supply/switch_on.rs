@@ -140,7 +140,8 @@ pub fn soft_start(
     bypass: Second,
 ) -> Option<SoftStart> {
     let slow = rail.with_series(referred)?;
-    let half_cycles = (bypass.0 * rail.omega / PI).floor();
+    // whole half-cycles; a bypass at the end of one, in decimals, must not lose it to rounding
+    let half_cycles = (bypass.0 * rail.omega / PI * (1.0 + 1e-9)).floor();
     let sound = (0.0..=MOST_HALF_CYCLES as f64).contains(&half_cycles)
         && referred.0 >= 0.0
         && idle.0 >= 0.0
@@ -151,12 +152,12 @@ pub fn soft_start(
     let mut square = 0.0;
     let mut inside = rail.floor;
     for _ in 0..half_cycles as usize {
-        let current = if slow.volts(inside) > BIASED.0 {
-            idle
-        } else {
-            Amp::ZERO
-        };
-        let next = charging_half_cycle(&slow, current, inside);
+        // idle is drawn for the whole of the half-cycle in which the rail comes up to it: it puts off
+        // the charge and warms the resistor, so both err to the safe side
+        let mut next = charging_half_cycle(&slow, idle, inside);
+        if slow.volts(next.level) <= BIASED.0 {
+            next = charging_half_cycle(&slow, Amp::ZERO, inside);
+        }
         (square, inside) = (square + next.square(PI), next.level);
     }
     let reached = Volt(slow.volts(inside));

@@ -24,35 +24,84 @@ rule! {
 
 /// One margin for each line that names designators or a count.
 pub fn check(case: &Case<'_>, out: &mut Margins<'_>) {
-    let board = case.build.amplifier.channels_per_board.get().copied().unwrap_or(1);
+    let board = case
+        .build
+        .amplifier
+        .channels_per_board
+        .get()
+        .copied()
+        .unwrap_or(1);
     for stage in case.followers() {
-        let Some(pairs) = stage.pairs.get() else { continue };
+        let Some(pairs) = stage.pairs.get() else {
+            continue;
+        };
         let needed = 2 * pairs * board;
         let part = case.device_part(stage, crate::analysis::case::Side::Upper);
-        judge(out, part, stage.devices.site(), &stage.bought, needed, "2 x pairs x channels on a board");
+        judge(
+            out,
+            part,
+            stage.devices.site(),
+            &stage.bought,
+            needed,
+            "2 x pairs x channels on a board",
+        );
         if let Some(bought) = &stage.emitter_bought {
             let part = crate::analysis::case::line_part(&stage.emitter);
-            judge(out, part, stage.emitter.site(), bought, needed, "2 x pairs x channels on a board");
+            judge(
+                out,
+                part,
+                stage.emitter.site(),
+                bought,
+                needed,
+                "2 x pairs x channels on a board",
+            );
         }
     }
     if let Some((supply, _)) = case.build.supply.get() {
-        let groups = supply.reservoir.get().map(Vec::as_slice).unwrap_or_default();
+        let groups = supply
+            .reservoir
+            .get()
+            .map(Vec::as_slice)
+            .unwrap_or_default();
         for group in groups {
             let part = crate::analysis::case::line_part(&supply.reservoir);
-            judge(out, part, group.site, &group.bought, 2 * group.count, "count x two rails");
+            judge(
+                out,
+                part,
+                group.site,
+                &group.bought,
+                2 * group.count,
+                "count x two rails",
+            );
         }
     }
 }
 
 fn judge(out: &mut Margins<'_>, part: Part, site: Site, bought: &Bought, needed: u32, how: &str) {
-    let named = if bought.refs.is_empty() { bought.quantity } else { u32::try_from(bought.refs.len()).ok() };
+    let named = if bought.refs.is_empty() {
+        bought.quantity
+    } else {
+        u32::try_from(bought.refs.len()).ok()
+    };
     let Some(named) = named else { return };
     let (verdict, note) = if named == needed {
         (Verdict::Ok, String::new())
     } else {
-        (Verdict::Over, format!("the line names {named}; {needed} are needed ({how})"))
+        (
+            Verdict::Over,
+            format!("the line names {named}; {needed} are needed ({how})"),
+        )
     };
-    out.judge(&RULE, part, site, verdict, Stress { note, ..Stress::default() });
+    out.judge(
+        &RULE,
+        part,
+        site,
+        verdict,
+        Stress {
+            note,
+            ..Stress::default()
+        },
+    );
 }
 
 #[cfg(test)]
@@ -62,13 +111,22 @@ mod tests {
 
     #[test]
     fn counts_agree_on_the_demo_kit() {
-        assert_eq!(verdict(&tern60(&[]), "bom.quantity", "out emitter"), Verdict::Ok);
-        assert_eq!(verdict(&tern60(&[]), "bom.quantity", "toroid reservoir"), Verdict::Ok);
+        assert_eq!(
+            verdict(&tern60(&[]), "bom.quantity", "out emitter"),
+            Verdict::Ok
+        );
+        assert_eq!(
+            verdict(&tern60(&[]), "bom.quantity", "toroid reservoir"),
+            Verdict::Ok
+        );
     }
 
     #[test]
     fn three_pairs_need_more_than_four_resistors() {
         let three = tern60(&[("pairs               2", "pairs               3")]);
-        assert_eq!(verdict(&three, "bom.quantity", "out emitter"), Verdict::Over);
+        assert_eq!(
+            verdict(&three, "bom.quantity", "out emitter"),
+            Verdict::Over
+        );
     }
 }

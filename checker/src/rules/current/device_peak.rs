@@ -49,7 +49,12 @@ pub fn check(case: &Case<'_>, out: &mut Margins<'_>) {
             if let Some(open) = found.as_ref().ok().and_then(|l| case.unknown_part(l)) {
                 out.compare(&RULE, part(), site, Err(open));
             }
-            out.compare(&RULE, part(), site, found.and_then(|l| stress(case, l, *side)));
+            out.compare(
+                &RULE,
+                part(),
+                site,
+                found.and_then(|l| stress(case, l, *side)),
+            );
         }
     }
 }
@@ -57,14 +62,26 @@ pub fn check(case: &Case<'_>, out: &mut Margins<'_>) {
 fn stress(case: &Case<'_>, load: &Driven, side: Side) -> Result<Stress, Needs> {
     let stage = case.output();
     let device = stage.device(side);
-    let (rating, (volts, bank), (parallel, rail)) =
-        three(device.current.need().copied(), case.greatest_current(Mains::High, load), both(case.bench(), case.unsagged(Mains::High)))?;
+    let (rating, (volts, bank), (parallel, rail)) = three(
+        device.current.need().copied(),
+        case.greatest_current(Mains::High, load),
+        both(case.bench(), case.unsagged(Mains::High)),
+    )?;
     let parallel = parallel.bank(side);
     let most = parallel.most_loaded(bank);
     let spot = load.minimum_seen();
-    let mut related = vec![Related { message: "its least impedance".to_owned(), site: load.site }];
-    related.extend(device.current.stated_at().map(|site| Related { message: "the rating".to_owned(), site }));
-    related.extend(case.build.amplifier.drop.stated_at().map(|site| Related { message: "what is lost of the rail".to_owned(), site }));
+    let mut related = vec![Related {
+        message: "its least impedance".to_owned(),
+        site: load.site,
+    }];
+    related.extend(device.current.stated_at().map(|site| Related {
+        message: "the rating".to_owned(),
+        site,
+    }));
+    related.extend(case.build.amplifier.drop.stated_at().map(|site| Related {
+        message: "what is lost of the rail".to_owned(),
+        site,
+    }));
     related.extend(case.rail_sites(None));
     Ok(Stress {
         value: most.0,
@@ -80,14 +97,61 @@ fn stress(case: &Case<'_>, load: &Driven, side: Side) -> Result<Stress, Needs> {
             ..case.witness()
         },
         working: vec![
-            solved("Vu", "unsagged rail, high mains", "V0 - Vd", rail.0, "V", "definition of the unsagged rail"),
-            solved("|Z|min", "least impedance that one channel sees, cold coil", "", spot.value, "ohm", ""),
-            solved("V(burst)", "peak output", "Vu - drop(V(burst)/|Z|min)", volts.0, "V", "drop as stated"),
-            solved("Î", "peak current of the bank", "V(burst)/|Z|min", bank.0, "A", "Ohm's law"),
-            stated("N", "devices of one polarity", f64::from(parallel.devices()), "1", stage.pairs.stated_at()),
-            solved("share", "of the most loaded device", "I1·N/I", parallel.share(bank), "1", "junction voltage and emitter resistor in balance"),
+            solved(
+                "Vu",
+                "unsagged rail, high mains",
+                "V0 - Vd",
+                rail.0,
+                "V",
+                "definition of the unsagged rail",
+            ),
+            solved(
+                "|Z|min",
+                "least impedance that one channel sees, cold coil",
+                "",
+                spot.value,
+                "ohm",
+                "",
+            ),
+            solved(
+                "V(burst)",
+                "peak output",
+                "Vu - drop(V(burst)/|Z|min)",
+                volts.0,
+                "V",
+                "drop as stated",
+            ),
+            solved(
+                "Î",
+                "peak current of the bank",
+                "V(burst)/|Z|min",
+                bank.0,
+                "A",
+                "Ohm's law",
+            ),
+            stated(
+                "N",
+                "devices of one polarity",
+                f64::from(parallel.devices()),
+                "1",
+                stage.pairs.stated_at(),
+            ),
+            solved(
+                "share",
+                "of the most loaded device",
+                "I1·N/I",
+                parallel.share(bank),
+                "1",
+                "junction voltage and emitter resistor in balance",
+            ),
             solved("i", "through it", "share·Î/N", most.0, "A", ""),
-            stated("IC", "continuous current", rating.0, "A", device.current.stated_at()),
+            stated(
+                "IC",
+                "continuous current",
+                rating.0,
+                "A",
+                device.current.stated_at(),
+            ),
         ],
         related,
         ..Stress::default()
@@ -105,9 +169,19 @@ mod tests {
     /// 43.8068/7.885714 = 5.55521 A. Hand calculation.
     #[test]
     fn one_pair_carries_the_whole_peak() {
-        let text = tern60(&[("pairs              2", "pairs              1"), ("loads              hall-8, bench-8", "loads              bench-8")]);
+        let text = tern60(&[
+            ("pairs              2", "pairs              1"),
+            (
+                "loads              hall-8, bench-8",
+                "loads              bench-8",
+            ),
+        ]);
         let m = margin(&text, RULE.name, "n16");
-        assert!((m.stress.unwrap().value - 5.55521).abs() < 1e-4, "{:?}", m.stress);
+        assert!(
+            (m.stress.unwrap().value - 5.55521).abs() < 1e-4,
+            "{:?}",
+            m.stress
+        );
         assert!((m.allowance.unwrap().value - 12.8).abs() < 1e-12);
     }
 
@@ -118,12 +192,18 @@ mod tests {
         let with = |amps: &str| {
             tern60(&[
                 ("pairs              2", "pairs              1"),
-                ("loads              hall-8, bench-8", "loads              bench-8"),
+                (
+                    "loads              hall-8, bench-8",
+                    "loads              bench-8",
+                ),
                 ("current            16 A peak 28 A", amps),
             ])
         };
         let at = |amps: &str| verdict(&with(amps), RULE.name, "n16");
-        assert_eq!(at("current            6.95 A peak 28 A"), crate::finding::Verdict::Ok);
+        assert_eq!(
+            at("current            6.95 A peak 28 A"),
+            crate::finding::Verdict::Ok
+        );
         assert_eq!(at("current            6.94 A peak 28 A"), Thin);
         assert_eq!(at("current            5.56 A peak 28 A"), Thin);
         assert_eq!(at("current            5.55 A peak 28 A"), Over);
@@ -144,18 +224,42 @@ mod tests {
     fn bridged_sees_half_the_load() {
         let text = tern60(&[
             ("pairs              2", "pairs              1"),
-            ("loads              hall-8, bench-8", "loads              bench-8"),
+            (
+                "loads              hall-8, bench-8",
+                "loads              bench-8",
+            ),
             ("channels           1", "channels           2 bridged"),
         ]);
         let m = margin(&text, RULE.name, "n16");
-        assert!((m.stress.unwrap().value - 10.7220).abs() < 1e-3, "{:?}", m.stress);
+        assert!(
+            (m.stress.unwrap().value - 10.7220).abs() < 1e-3,
+            "{:?}",
+            m.stress
+        );
     }
 
     #[test]
     fn what_is_missing_is_named() {
-        let m = margin(&tern60(&[("    current            16 A peak 28 A\n", "")]), RULE.name, "n16");
-        assert_eq!((m.verdict, m.needs.as_slice()), (Unchecked, &["device n16 current".to_owned()][..]));
-        let m = margin(&tern60(&[("    drop               1.8 V at 0 A, 3.8 V at 7 A  # loaded rail to peak output\n", "")]), RULE.name, "n16");
-        assert_eq!((m.verdict, m.needs.as_slice()), (Unchecked, &["amplifier tern60 drop".to_owned()][..]));
+        let m = margin(
+            &tern60(&[("    current            16 A peak 28 A\n", "")]),
+            RULE.name,
+            "n16",
+        );
+        assert_eq!(
+            (m.verdict, m.needs.as_slice()),
+            (Unchecked, &["device n16 current".to_owned()][..])
+        );
+        let m = margin(
+            &tern60(&[(
+                "    drop               1.8 V at 0 A, 3.8 V at 7 A  # loaded rail to peak output\n",
+                "",
+            )]),
+            RULE.name,
+            "n16",
+        );
+        assert_eq!(
+            (m.verdict, m.needs.as_slice()),
+            (Unchecked, &["amplifier tern60 drop".to_owned()][..])
+        );
     }
 }

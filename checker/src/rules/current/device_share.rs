@@ -30,26 +30,33 @@ rule! {
     example: "tern60", [("emitter            0R22 ±5 % 5 W", "emitter            0R01 ±5 % 5 W"), ("vbe-spread         20 mV", "vbe-spread         60 mV")],
 }
 
-/// One margin for each declared output device, where several are in parallel: at the greatest peak
-/// that any load draws.
+/// One margin for each declared output device, where several are in parallel: at the peak of the load
+/// at which they share least evenly.
 pub fn check(case: &Case<'_>, out: &mut Margins<'_>) {
     let stage = case.output();
     if stage.pairs.get() == Some(&1) {
         return;
     }
     for side in stage.sides() {
-        out.compare(&RULE, case.device_part(stage, *side), stage.emitter.site(), stress(case, *side));
+        out.compare(
+            &RULE,
+            case.device_part(stage, *side),
+            stage.emitter.site(),
+            stress(case, *side),
+        );
     }
 }
 
-/// The load that draws the greatest peak.
-fn heaviest<'c>(case: &'c Case<'_>) -> Result<&'c Driven, Needs> {
+/// The load at whose peak the devices of a side share least evenly: a small peak leaves it to the
+/// junctions, a large one to the resistors, and either can be the worse.
+fn least_even<'c>(case: &'c Case<'_>, side: Side) -> Result<&'c Driven, Needs> {
+    let bank = case.bench()?.bank(side);
     let mut worst: Option<(&Driven, f64)> = None;
     for load in case.loads()? {
         let load = load.as_ref().map_err(Clone::clone)?;
-        let peak = case.greatest_current(Mains::High, load)?.1.0;
-        if worst.is_none_or(|(_, w)| peak > w) {
-            worst = Some((load, peak));
+        let share = bank.share(case.greatest_current(Mains::High, load)?.1);
+        if worst.is_none_or(|(_, w)| share > w) {
+            worst = Some((load, share));
         }
     }
     worst.map(|w| w.0).ok_or_else(|| case.build.loads.missing())
@@ -57,25 +64,81 @@ fn heaviest<'c>(case: &'c Case<'_>) -> Result<&'c Driven, Needs> {
 
 fn stress(case: &Case<'_>, side: Side) -> Result<Stress, Needs> {
     let stage = case.output();
-    let (bench, load, rail) = three(case.bench(), heaviest(case), case.unsagged(Mains::High))?;
+    let (bench, load, rail) = three(
+        case.bench(),
+        least_even(case, side),
+        case.unsagged(Mains::High),
+    )?;
     let (volts, peak) = case.greatest_current(Mains::High, load)?;
     let bank = bench.bank(side);
     let share = bank.share(peak);
     let mut working = vec![
-        solved("Î", "peak current of the bank", "V(burst)/|Z|min", peak.0, "A", "Ohm's law"),
-        stated("N", "devices of one polarity", f64::from(bank.devices()), "1", stage.pairs.stated_at()),
-        stated("RE", "emitter resistor, nominal", bank.emitter().0, "ohm", stage.emitter.stated_at()),
-        solved("I1", "through the most loaded", "", bank.most_loaded(peak).0, "A", "equal base-emitter loops"),
-        solved("I2", "through each other", "", bank.least_loaded(peak).0, "A", "equal base-emitter loops"),
+        solved(
+            "Î",
+            "peak current of the bank",
+            "V(burst)/|Z|min",
+            peak.0,
+            "A",
+            "Ohm's law",
+        ),
+        stated(
+            "N",
+            "devices of one polarity",
+            f64::from(bank.devices()),
+            "1",
+            stage.pairs.stated_at(),
+        ),
+        stated(
+            "RE",
+            "emitter resistor, nominal",
+            bank.emitter().0,
+            "ohm",
+            stage.emitter.stated_at(),
+        ),
+        solved(
+            "I1",
+            "through the most loaded",
+            "",
+            bank.most_loaded(peak).0,
+            "A",
+            "equal base-emitter loops",
+        ),
+        solved(
+            "I2",
+            "through each other",
+            "",
+            bank.least_loaded(peak).0,
+            "A",
+            "equal base-emitter loops",
+        ),
         solved("share", "of the most loaded", "I1·N/Î", share, "1", ""),
     ];
     if let Ok(idle) = case.idle() {
-        working.push(solved("share(idle)", "at the idle current, for information", "I1·N/I", bank.share(idle * f64::from(bank.devices())), "1", "equal base-emitter loops"));
+        working.push(solved(
+            "share(idle)",
+            "at the idle current, for information",
+            "I1·N/I",
+            bank.share(idle * f64::from(bank.devices())),
+            "1",
+            "equal base-emitter loops",
+        ));
     }
     let (spread, _) = both(stage.vbe_spread.need().copied(), Ok(()))?;
-    working.push(stated("ΔVBE", "spread between the devices", spread.0, "V", stage.vbe_spread.stated_at()));
-    let mut related = vec![Related { message: "draws the peak".to_owned(), site: load.site }];
-    related.extend(stage.vbe_spread.stated_at().map(|site| Related { message: "spread between the devices".to_owned(), site }));
+    working.push(stated(
+        "ΔVBE",
+        "spread between the devices",
+        spread.0,
+        "V",
+        stage.vbe_spread.stated_at(),
+    ));
+    let mut related = vec![Related {
+        message: "draws the peak".to_owned(),
+        site: load.site,
+    }];
+    related.extend(stage.vbe_spread.stated_at().map(|site| Related {
+        message: "spread between the devices".to_owned(),
+        site,
+    }));
     Ok(Stress {
         value: share,
         rating: f64::NAN,
@@ -105,12 +168,31 @@ mod tests {
     /// 2·3.0079/4.0079 = 1.501: over; at 13 mV 2·1.6584/2.6584 = 1.2477: ok. Hand calculation.
     #[test]
     fn without_resistors_the_junctions_decide() {
-        let with = |spread: &str| tern60(&[("emitter            0R22 ±5 % 5 W pulse 20 A ref R21-R24 part \"WW5-0R22J\"", "emitter            none"), ("50 mA per device, 11 mV across emitter", "50 mA per device"), ("vbe-spread         20 mV", spread)]);
+        let with = |spread: &str| {
+            tern60(&[
+                (
+                    "emitter            0R22 ±5 % 5 W pulse 20 A ref R21-R24 part \"WW5-0R22J\"",
+                    "emitter            none",
+                ),
+                ("50 mA per device, 11 mV across emitter", "50 mA per device"),
+                ("vbe-spread         20 mV", spread),
+            ])
+        };
         let m = margin(&with("vbe-spread         20 mV"), RULE.name, "n16");
-        assert!((m.stress.unwrap().value - 1.3706).abs() < 5e-4, "{:?}", m.stress);
+        assert!(
+            (m.stress.unwrap().value - 1.3706).abs() < 5e-4,
+            "{:?}",
+            m.stress
+        );
         assert_eq!(m.verdict, Thin);
-        assert_eq!(verdict(&with("vbe-spread         28.3 mV"), RULE.name, "n16"), Over);
-        assert_eq!(verdict(&with("vbe-spread         13 mV"), RULE.name, "n16"), Ok);
+        assert_eq!(
+            verdict(&with("vbe-spread         28.3 mV"), RULE.name, "n16"),
+            Over
+        );
+        assert_eq!(
+            verdict(&with("vbe-spread         13 mV"), RULE.name, "n16"),
+            Ok
+        );
     }
 
     #[test]
@@ -121,7 +203,20 @@ mod tests {
 
     #[test]
     fn an_unstated_resistor_is_named() {
-        let m = margin(&tern60(&[("emitter            0R22 ±5 % 5 W pulse 20 A ref R21-R24 part \"WW5-0R22J\"", ""), ("50 mA per device, 11 mV across emitter", "50 mA per device")]), RULE.name, "n16");
-        assert_eq!((m.verdict, m.needs.as_slice()), (Unchecked, &["stage out emitter".to_owned()][..]));
+        let m = margin(
+            &tern60(&[
+                (
+                    "emitter            0R22 ±5 % 5 W pulse 20 A ref R21-R24 part \"WW5-0R22J\"",
+                    "",
+                ),
+                ("50 mA per device, 11 mV across emitter", "50 mA per device"),
+            ]),
+            RULE.name,
+            "n16",
+        );
+        assert_eq!(
+            (m.verdict, m.needs.as_slice()),
+            (Unchecked, &["stage out emitter".to_owned()][..])
+        );
     }
 }

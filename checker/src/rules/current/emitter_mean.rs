@@ -38,7 +38,12 @@ pub fn check(case: &Case<'_>, out: &mut Margins<'_>) {
     }
     let (part, site) = (|| line_part(field), field.site());
     for played in case.played() {
-        out.compare(&RULE, part(), site, played.and_then(|(load, heat)| stress(case, load, heat)));
+        out.compare(
+            &RULE,
+            part(),
+            site,
+            played.and_then(|(load, heat)| stress(case, load, heat)),
+        );
     }
 }
 
@@ -62,17 +67,70 @@ fn stress(case: &Case<'_>, load: &Driven, heat: &Heat) -> Result<Stress, Needs> 
             ..case.witness()
         },
         working: vec![
-            solved("Î", "peak current of the bank at the duty", "√(2·d·Pref·R)/R", heat.duty.peak.0, "A", "definition of the duty"),
-            solved("share", "of the most loaded device", "I1·N/I", share, "1", "junction voltage and emitter resistor in balance"),
-            solved("Pidle", "from the idle current, added whole", "Iq²·RE", still.0, "W", "Joule's law"),
-            solved("P", "in the most loaded resistor", "share²·(Î/N)²·RE/4 + Pidle", warm.watts.0, "W", "r.m.s. of a half-sine"),
-            solved("T", "air round it, hottest room", "Ta + Tencl", warm.air.0, "degC", ""),
-            solved("Prated", "allowed at that temperature", "P70·(155 - T)/85 above 70 degC", warm.rating.0, "W", "Yageo MFR, Vishay MRS25 derating curves"),
+            solved(
+                "Î",
+                "peak current of the bank at the duty",
+                "√(2·d·Pref·R)/R",
+                heat.duty.peak.0,
+                "A",
+                "definition of the duty",
+            ),
+            solved(
+                "share",
+                "of the most loaded device",
+                "I1·N/I",
+                share,
+                "1",
+                "junction voltage and emitter resistor in balance",
+            ),
+            solved(
+                "Pidle",
+                "from the idle current, added whole",
+                "Iq²·RE",
+                still.0,
+                "W",
+                "Joule's law",
+            ),
+            solved(
+                "P",
+                "in the most loaded resistor",
+                "share²·(Î/N)²·RE/4 + Pidle",
+                warm.watts.0,
+                "W",
+                "r.m.s. of a half-sine",
+            ),
+            solved(
+                "T",
+                "air round it, hottest room",
+                "Ta + Tencl",
+                warm.air.0,
+                "degC",
+                "",
+            ),
+            solved(
+                "Prated",
+                "allowed at that temperature",
+                "P70·(155 - T)/85 above 70 degC",
+                warm.rating.0,
+                "W",
+                "Yageo MFR, Vishay MRS25 derating curves",
+            ),
         ]
         .into_iter()
-        .chain(stage.emitter.get().map(|r| stated("RE", "emitter resistor", r.ohm.nominal.0, "ohm", stage.emitter.stated_at())))
+        .chain(stage.emitter.get().map(|r| {
+            stated(
+                "RE",
+                "emitter resistor",
+                r.ohm.nominal.0,
+                "ohm",
+                stage.emitter.stated_at(),
+            )
+        }))
         .collect(),
-        related: vec![Related { message: "into this load".to_owned(), site: load.site }],
+        related: vec![Related {
+            message: "into this load".to_owned(),
+            site: load.site,
+        }],
         ..Stress::default()
     })
 }
@@ -91,14 +149,30 @@ mod tests {
     fn one_pair_by_hand() {
         let text = tern60(&[
             ("pairs              2", "pairs              1"),
-            ("loads              hall-8, bench-8", "loads              bench-8"),
-            ("idle               50 mA per device, 11 mV across emitter", "idle               none"),
+            (
+                "loads              hall-8, bench-8",
+                "loads              bench-8",
+            ),
+            (
+                "idle               50 mA per device, 11 mV across emitter",
+                "idle               none",
+            ),
         ]);
         let m = margin(&text, RULE.name, "out emitter");
-        assert!((m.stress.unwrap().value - 0.164640).abs() < 2e-5, "{:?}", m.stress);
+        assert!(
+            (m.stress.unwrap().value - 0.164640).abs() < 2e-5,
+            "{:?}",
+            m.stress
+        );
         // 45 degC inside: not derated
         assert!((m.rating.unwrap().value - 5.0).abs() < 1e-12);
-        let rated = |w: &str| verdict(&text.replace("0R22 ±5 % 5 W", &format!("0R22 ±5 % {w} W")), RULE.name, "out emitter");
+        let rated = |w: &str| {
+            verdict(
+                &text.replace("0R22 ±5 % 5 W", &format!("0R22 ±5 % {w} W")),
+                RULE.name,
+                "out emitter",
+            )
+        };
         // 50 % of 0.3294 W is 0.16470 W, of 0.3291 W 0.16455 W; 0.1646 W is below the stress
         assert_eq!(rated("0.3294"), Ok);
         assert_eq!(rated("0.3291"), Thin);
@@ -108,15 +182,32 @@ mod tests {
     /// Air at 40 + 60 = 100 degC: 5 W·(155 - 100)/85 = 3.2353 W.
     #[test]
     fn hot_air_takes_from_the_rating() {
-        let m = margin(&tern60(&[("enclosure          5 K", "enclosure          60 K")]), RULE.name, "out emitter");
+        let m = margin(
+            &tern60(&[("enclosure          5 K", "enclosure          60 K")]),
+            RULE.name,
+            "out emitter",
+        );
         assert!((m.rating.unwrap().value - 5.0 * 55.0 / 85.0).abs() < 1e-9);
     }
 
     #[test]
     fn watts_not_stated_are_named_and_none_has_no_margin() {
-        let m = margin(&tern60(&[("0R22 ±5 % 5 W pulse 20 A", "0R22 ±5 % pulse 20 A")]), RULE.name, "out emitter");
-        assert_eq!((m.verdict, m.needs.as_slice()), (Unchecked, &["stage out emitter W".to_owned()][..]));
-        let none = report(&tern60(&[("emitter            0R22 ±5 % 5 W pulse 20 A ref R21-R24 part \"WW5-0R22J\"", "emitter            none"), ("50 mA per device, 11 mV across emitter", "50 mA per device")]));
+        let m = margin(
+            &tern60(&[("0R22 ±5 % 5 W pulse 20 A", "0R22 ±5 % pulse 20 A")]),
+            RULE.name,
+            "out emitter",
+        );
+        assert_eq!(
+            (m.verdict, m.needs.as_slice()),
+            (Unchecked, &["stage out emitter W".to_owned()][..])
+        );
+        let none = report(&tern60(&[
+            (
+                "emitter            0R22 ±5 % 5 W pulse 20 A ref R21-R24 part \"WW5-0R22J\"",
+                "emitter            none",
+            ),
+            ("50 mA per device, 11 mV across emitter", "50 mA per device"),
+        ]));
         assert!(!none.builds[0].margins.iter().any(|m| m.rule == RULE.name));
     }
 }

@@ -47,15 +47,23 @@ pub fn check(case: &Case<'_>, out: &mut Margins<'_>) {
             if let Some(open) = found.as_ref().ok().and_then(|l| case.unknown_part(l)) {
                 out.compare(&RULE, line_part(field), field.site(), Err(open));
             }
-            out.compare(&RULE, line_part(field), field.site(), found.and_then(|l| stress(case, l, *side)));
+            out.compare(
+                &RULE,
+                line_part(field),
+                field.site(),
+                found.and_then(|l| stress(case, l, *side)),
+            );
         }
     }
 }
 
 fn stress(case: &Case<'_>, load: &Driven, side: Side) -> Result<Stress, Needs> {
     let field = &case.output().emitter;
-    let (pulse, (volts, peak), (bench, rail)) =
-        three(field.part("pulse", |r| r.pulse), case.greatest_current(Mains::High, load), both(case.bench(), case.unsagged(Mains::High)))?;
+    let (pulse, (volts, peak), (bench, rail)) = three(
+        field.part("pulse", |r| r.pulse),
+        case.greatest_current(Mains::High, load),
+        both(case.bench(), case.unsagged(Mains::High)),
+    )?;
     let bank = bench.bank(side);
     let most = bank.most_loaded(peak);
     Ok(Stress {
@@ -71,13 +79,36 @@ fn stress(case: &Case<'_>, load: &Driven, side: Side) -> Result<Stress, Needs> {
             ..case.witness()
         },
         working: vec![
-            solved("Î", "peak current of the bank", "V(burst)/|Z|min", peak.0, "A", "Ohm's law"),
-            stated("N", "devices of one polarity", f64::from(bank.devices()), "1", case.output().pairs.stated_at()),
-            solved("share", "of the most loaded device", "I1·N/I", bank.share(peak), "1", "junction voltage and emitter resistor in balance"),
+            solved(
+                "Î",
+                "peak current of the bank",
+                "V(burst)/|Z|min",
+                peak.0,
+                "A",
+                "Ohm's law",
+            ),
+            stated(
+                "N",
+                "devices of one polarity",
+                f64::from(bank.devices()),
+                "1",
+                case.output().pairs.stated_at(),
+            ),
+            solved(
+                "share",
+                "of the most loaded device",
+                "I1·N/I",
+                bank.share(peak),
+                "1",
+                "junction voltage and emitter resistor in balance",
+            ),
             solved("i", "through its resistor", "share·Î/N", most.0, "A", ""),
             stated("Ipulse", "pulse current", pulse.0, "A", field.stated_at()),
         ],
-        related: vec![Related { message: "its least impedance".to_owned(), site: load.site }],
+        related: vec![Related {
+            message: "its least impedance".to_owned(),
+            site: load.site,
+        }],
         ..Stress::default()
     })
 }
@@ -94,19 +125,28 @@ mod tests {
         let with = |pulse: &str| {
             tern60(&[
                 ("pairs              2", "pairs              1"),
-                ("loads              hall-8, bench-8", "loads              bench-8"),
+                (
+                    "loads              hall-8, bench-8",
+                    "loads              bench-8",
+                ),
                 ("pulse 20 A", pulse),
             ])
         };
         let m = margin(&with("pulse 20 A"), RULE.name, "out emitter");
         assert!((m.stress.unwrap().value - 5.55521).abs() < 1e-4);
         assert_eq!(verdict(&with("pulse 5.56 A"), RULE.name, "out emitter"), Ok);
-        assert_eq!(verdict(&with("pulse 5.55 A"), RULE.name, "out emitter"), Over);
+        assert_eq!(
+            verdict(&with("pulse 5.55 A"), RULE.name, "out emitter"),
+            Over
+        );
     }
 
     #[test]
     fn an_unstated_pulse_is_named() {
         let m = margin(&tern60(&[(" pulse 20 A", "")]), RULE.name, "out emitter");
-        assert_eq!((m.verdict, m.needs.as_slice()), (Unchecked, &["stage out emitter pulse".to_owned()][..]));
+        assert_eq!(
+            (m.verdict, m.needs.as_slice()),
+            (Unchecked, &["stage out emitter pulse".to_owned()][..])
+        );
     }
 }

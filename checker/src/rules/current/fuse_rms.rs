@@ -35,7 +35,9 @@ rule! {
 
 /// One margin for the fuses of each place: the load that draws most.
 pub fn check(case: &Case<'_>, out: &mut Margins<'_>) {
-    let Some(supply) = case.fitted(&RULE, out) else { return };
+    let Some(supply) = case.fitted(&RULE, out) else {
+        return;
+    };
     for place in ["mains", "secondary", "rail", "speaker"] {
         let part = case.fuse_part(supply, place);
         // fuses of other places are not missed where none is stated
@@ -57,31 +59,90 @@ pub fn check(case: &Case<'_>, out: &mut Margins<'_>) {
     }
 }
 
-fn stress(case: &Case<'_>, supply: &Supply, fuse: &FuseLine, load: &Driven) -> Result<Stress, Needs> {
-    let (flow, air, channels) = three(case.sine_flow(load), case.air_inside(), case.channels_per_supply())?;
-    let fed = if fuse.per == Some("channel") { 1 } else { channels };
+fn stress(
+    case: &Case<'_>,
+    supply: &Supply,
+    fuse: &FuseLine,
+    load: &Driven,
+) -> Result<Stress, Needs> {
+    let (flow, air, channels) = three(
+        case.sine_flow(load),
+        case.air_inside(),
+        case.channels_per_supply(),
+    )?;
+    let fed = if fuse.per == Some("channel") {
+        1
+    } else {
+        channels
+    };
     let (current, step) = match fuse.place {
         "mains" => {
             let behind = Case::transformers_behind(supply, fuse);
             let current = flow.primary * f64::from(behind);
-            (current, solved("I", "mains, pulses of the rectifier", "Σ windings Irms·Vs(1 + ρ)/Vtap", current.0, "A", "periodic solution of the rectifier"))
+            (
+                current,
+                solved(
+                    "I",
+                    "mains, pulses of the rectifier",
+                    "Σ windings Irms·Vs(1 + ρ)/Vtap",
+                    current.0,
+                    "A",
+                    "periodic solution of the rectifier",
+                ),
+            )
         }
-        "secondary" => (flow.winding, solved("I", "one winding", "periodic solution of the rectifier", flow.winding.0, "A", "")),
+        "secondary" => (
+            flow.winding,
+            solved(
+                "I",
+                "one winding",
+                "periodic solution of the rectifier",
+                flow.winding.0,
+                "A",
+                "",
+            ),
+        ),
         "rail" => rail(case, &flow, fed)?,
         _ => {
             let current = flow.peak / SQRT_2;
-            (current, solved("I", "one loudspeaker", "Î/√2", current.0, "A", "r.m.s. of a sine"))
+            (
+                current,
+                solved(
+                    "I",
+                    "one loudspeaker",
+                    "Î/√2",
+                    current.0,
+                    "A",
+                    "r.m.s. of a sine",
+                ),
+            )
         }
     };
     let factor = temperature_factor(air);
     let mut working = case.rail_steps(&flow, "√(2PR) of the claimed power, else what is sustained");
     working.push(step);
-    working.push(stated("IN", "rated current", fuse.rating.0, "A", [fuse.site]));
-    working.push(solved("IT", "rated current in the air inside", "IN·(1 - 0.005·(T - 25))", fuse.rating.0 * factor, "A", "0.5 %/K above 25 degC"));
+    working.push(stated(
+        "IN",
+        "rated current",
+        fuse.rating.0,
+        "A",
+        [fuse.site],
+    ));
+    working.push(solved(
+        "IT",
+        "rated current in the air inside",
+        "IN·(1 - 0.005·(T - 25))",
+        fuse.rating.0 * factor,
+        "A",
+        "0.5 %/K above 25 degC",
+    ));
     Ok(Stress {
         value: current.0,
         rating: fuse.rating.0 * factor,
-        witness: Witness { ambient_c: Some(air.0), ..case.at_flow(load, &flow, None) },
+        witness: Witness {
+            ambient_c: Some(air.0),
+            ..case.at_flow(load, &flow, None)
+        },
         working,
         related: case.loading_sites(load),
         ..Stress::default()
@@ -99,7 +160,17 @@ fn rail(case: &Case<'_>, flow: &Flow, fed: u32) -> Result<(Amp, Step), Needs> {
         Draw::BothHalves => peak / SQRT_2,
     };
     let current = Amp((signal.0 * signal.0 + idle.0 * idle.0).sqrt());
-    Ok((current, solved("I", "one rail", "√((n·Î/2)² + (n·N·Iq)²), bridged n·Î/(2√2)", current.0, "A", "r.m.s. of half-sines")))
+    Ok((
+        current,
+        solved(
+            "I",
+            "one rail",
+            "√((n·Î/2)² + (n·N·Iq)²), bridged n·Î/(2√2)",
+            current.0,
+            "A",
+            "r.m.s. of half-sines",
+        ),
+    ))
 }
 
 #[cfg(test)]
@@ -114,7 +185,13 @@ mod tests {
         let m = margin(&tern60(&[]), super::RULE.name, "toroid fuse rail");
         assert!((m.stress.unwrap().value - 1.9391).abs() < 1e-3);
         assert!((m.rating.unwrap().value - 4.5).abs() < 1e-9);
-        let at = |amps: &str| verdict(&tern60(&[("5 A fast", &format!("{amps} A fast"))]), super::RULE.name, "toroid fuse rail");
+        let at = |amps: &str| {
+            verdict(
+                &tern60(&[("5 A fast", &format!("{amps} A fast"))]),
+                super::RULE.name,
+                "toroid fuse rail",
+            )
+        };
         assert_eq!(at("2.7"), Verdict::Ok);
         assert_eq!(at("2.69"), Verdict::Thin);
         assert_eq!(at("2.1"), Verdict::Over);
@@ -131,7 +208,10 @@ mod tests {
     /// Loudspeaker 3.873/√2 = 2.7386 A; a winding 2.9188 A. By hand and as above.
     #[test]
     fn other_places() {
-        let text = tern60(&[("    fuse rail          5 A fast", "    fuse rail          5 A fast\n    fuse speaker       4 A fast\n    fuse secondary     6.3 A slow")]);
+        let text = tern60(&[(
+            "    fuse rail          5 A fast",
+            "    fuse rail          5 A fast\n    fuse speaker       4 A fast\n    fuse secondary     6.3 A slow",
+        )]);
         let of = |part: &str| margin(&text, super::RULE.name, part).stress.unwrap().value;
         assert!((of("toroid fuse speaker") - 2.7386).abs() < 1e-3);
         assert!((of("toroid fuse secondary") / 2.9188 - 1.0).abs() < 1e-3);
@@ -139,11 +219,42 @@ mod tests {
 
     #[test]
     fn says_what_is_missing() {
-        let m = margin(&tern60(&[("    fuse rail          5 A fast\n", "")]), super::RULE.name, "toroid fuse rail");
-        assert_eq!((m.verdict, m.needs), (Verdict::Unchecked, vec!["supply toroid fuse rail".to_owned()]));
-        let m = margin(&tern60(&[("    fuse mains         2.5 A slow melts 90 A2s tap 230 V\n", "")]), super::RULE.name, "toroid fuse mains");
-        assert_eq!((m.verdict, m.needs), (Verdict::Unchecked, vec!["supply toroid fuse mains".to_owned()]));
-        let none = crate::testing::report(&tern60(&[("fuse mains         2.5 A slow melts 90 A2s tap 230 V", "fuse none")]));
-        assert!(none.builds[0].margins.iter().all(|m| m.rule != super::RULE.name || m.part.name != "toroid fuse mains"));
+        let m = margin(
+            &tern60(&[("    fuse rail          5 A fast\n", "")]),
+            super::RULE.name,
+            "toroid fuse rail",
+        );
+        assert_eq!(
+            (m.verdict, m.needs),
+            (
+                Verdict::Unchecked,
+                vec!["supply toroid fuse rail".to_owned()]
+            )
+        );
+        let m = margin(
+            &tern60(&[(
+                "    fuse mains         2.5 A slow melts 90 A2s tap 230 V\n",
+                "",
+            )]),
+            super::RULE.name,
+            "toroid fuse mains",
+        );
+        assert_eq!(
+            (m.verdict, m.needs),
+            (
+                Verdict::Unchecked,
+                vec!["supply toroid fuse mains".to_owned()]
+            )
+        );
+        let none = crate::testing::report(&tern60(&[(
+            "fuse mains         2.5 A slow melts 90 A2s tap 230 V",
+            "fuse none",
+        )]));
+        assert!(
+            none.builds[0]
+                .margins
+                .iter()
+                .all(|m| m.rule != super::RULE.name || m.part.name != "toroid fuse mains")
+        );
     }
 }

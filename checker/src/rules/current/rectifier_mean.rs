@@ -32,24 +32,55 @@ const CAPACITOR_LOAD: f64 = 0.8;
 
 /// One margin for the rectifier: the load that draws most.
 pub fn check(case: &Case<'_>, out: &mut Margins<'_>) {
-    let Some(supply) = case.fitted(&RULE, out) else { return };
+    let Some(supply) = case.fitted(&RULE, out) else {
+        return;
+    };
     let each = supply.rectifier.get().map_or(1, |r| r.bridges);
     for found in case.per_load(|load| stress(case, supply, load)) {
-        out.compare(&RULE, case.supply_part(supply, "rectifier", each), supply.rectifier.site(), found);
+        out.compare(
+            &RULE,
+            case.supply_part(supply, "rectifier", each),
+            supply.rectifier.site(),
+            found,
+        );
     }
 }
 
 fn stress(case: &Case<'_>, supply: &Supply, load: &Driven) -> Result<Stress, Needs> {
     let field = &supply.rectifier;
-    let (bridge, flow, bridges) = three(field.part("A", |r| r.mean), case.duty_flow(load), field.need().map(|r| r.bridges))?;
+    let (bridge, flow, bridges) = three(
+        field.part("A", |r| r.mean),
+        case.duty_flow(load),
+        field.need().map(|r| r.bridges),
+    )?;
     // more bridges than two stand side by side
     let side_by_side = f64::from((bridges / 2).max(1));
     let diode = flow.rail / 2.0 / side_by_side;
     let rating = bridge * CAPACITOR_LOAD / 2.0;
     let mut working = case.rail_steps(&flow, "√(2·d·Pref·R)");
-    working.push(solved("ID", "mean of one diode", "Idc/2", diode.0, "A", "two diodes take turns on each rail"));
-    working.push(stated("IO", "output current of the bridge", bridge.0, "A", field.stated_at()));
-    working.push(solved("IF", "its share for one diode, capacitor load", "0.8·IO/2", rating.0, "A", "printed on bridge data sheets"));
+    working.push(solved(
+        "ID",
+        "mean of one diode",
+        "Idc/2",
+        diode.0,
+        "A",
+        "two diodes take turns on each rail",
+    ));
+    working.push(stated(
+        "IO",
+        "output current of the bridge",
+        bridge.0,
+        "A",
+        field.stated_at(),
+    ));
+    working.push(solved(
+        "IF",
+        "its share for one diode, capacitor load",
+        "0.8·IO/2",
+        rating.0,
+        "A",
+        "printed on bridge data sheets",
+    ));
     Ok(Stress {
         value: diode.0,
         rating: rating.0,
@@ -73,7 +104,13 @@ mod tests {
         assert!((m.stress.unwrap().value - 0.318_73).abs() < 1e-4);
         assert!((m.rating.unwrap().value - 10.0).abs() < 1e-9);
         // 80 % of 0.4 A/A: 0.31873 A is inside at 1 A, outside at 0.99 A, past the rating at 0.79 A
-        let at = |amps: &str| verdict(&tern60(&[("400 V 25 A", &format!("400 V {amps} A"))]), super::RULE.name, "toroid rectifier");
+        let at = |amps: &str| {
+            verdict(
+                &tern60(&[("400 V 25 A", &format!("400 V {amps} A"))]),
+                super::RULE.name,
+                "toroid rectifier",
+            )
+        };
         assert_eq!(at("1"), Verdict::Ok);
         assert_eq!(at("0.99"), Verdict::Thin);
         assert_eq!(at("0.79"), Verdict::Over);
@@ -81,7 +118,17 @@ mod tests {
 
     #[test]
     fn says_what_is_missing() {
-        let m = margin(&tern60(&[("400 V 25 A", "400 V")]), super::RULE.name, "toroid rectifier");
-        assert_eq!((m.verdict, m.needs), (Verdict::Unchecked, vec!["supply toroid rectifier A".to_owned()]));
+        let m = margin(
+            &tern60(&[("400 V 25 A", "400 V")]),
+            super::RULE.name,
+            "toroid rectifier",
+        );
+        assert_eq!(
+            (m.verdict, m.needs),
+            (
+                Verdict::Unchecked,
+                vec!["supply toroid rectifier A".to_owned()]
+            )
+        );
     }
 }

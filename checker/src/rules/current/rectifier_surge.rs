@@ -35,14 +35,19 @@ const HALF_SINE_S: f64 = 8.3e-3;
 
 /// One margin for the rectifier: peak or I²t, the surge through the soft start or past it.
 pub fn check(case: &Case<'_>, out: &mut Margins<'_>) {
-    let Some(supply) = case.fitted(&RULE, out) else { return };
+    let Some(supply) = case.fitted(&RULE, out) else {
+        return;
+    };
     let each = supply.rectifier.get().map_or(1, |r| r.bridges);
     let part = || case.supply_part(supply, "rectifier", each);
     let site = supply.rectifier.site();
     match case.switch_on(true) {
         Err(needs) => out.compare(&RULE, part(), site, Err(needs)),
         Ok(surges) => {
-            for (surge, when) in [(Some(surges.first), "at switch-on"), (surges.second, "when the soft start is bypassed")] {
+            for (surge, when) in [
+                (Some(surges.first), "at switch-on"),
+                (surges.second, "when the soft start is bypassed"),
+            ] {
                 if let Some(surge) = surge {
                     out.compare(&RULE, part(), site, stress(case, supply, surge, when));
                 }
@@ -69,12 +74,38 @@ fn stress(case: &Case<'_>, supply: &Supply, surge: Surge, when: &str) -> Result<
             ..case.witness()
         },
         working: vec![
-            solved("Ipk", "peak, closing at zero or at crest", "", surge.peak.0, "A", "charging through the winding, exact"),
+            solved(
+                "Ipk",
+                "peak, closing at zero or at crest",
+                "",
+                surge.peak.0,
+                "A",
+                "charging through the winding, exact",
+            ),
             stated("IFSM", "rating", limit.0, "A", field.stated_at()),
-            solved("I2t", "of one diode", "(first half-cycle + all)/2", diode.0, "A2s", "pulses shrink, diodes take turns"),
-            solved("I2t max", "what IFSM stands for", "IFSM²·8.3 ms/2", stands, "A2s", "I2t of a half-sine"),
+            solved(
+                "I2t",
+                "of one diode",
+                "(first half-cycle + all)/2",
+                diode.0,
+                "A2s",
+                "pulses shrink, diodes take turns",
+            ),
+            solved(
+                "I2t max",
+                "what IFSM stands for",
+                "IFSM²·8.3 ms/2",
+                stands,
+                "A2s",
+                "I2t of a half-sine",
+            ),
         ],
-        related: case.rail_sites(supply.soft_start.stated_at().map(|site| ("the soft start", site))),
+        related: case.rail_sites(
+            supply
+                .soft_start
+                .stated_at()
+                .map(|site| ("the soft start", site)),
+        ),
         note: when.to_owned(),
         ..Stress::default()
     })
@@ -93,7 +124,11 @@ mod tests {
     /// 373.5 to 375): 37.67 % by peak, 6.02 % by I²t. Through the soft start 34.56 A, 11.52 %.
     #[test]
     fn against_small_steps() {
-        let m = margin(&tern60(&[(SOFT, "    soft-start         none")]), super::RULE.name, "toroid rectifier");
+        let m = margin(
+            &tern60(&[(SOFT, "    soft-start         none")]),
+            super::RULE.name,
+            "toroid rectifier",
+        );
         assert!((m.stress.unwrap().value - 37.67).abs() < 0.1);
         let square = m.working.iter().find(|s| s.symbol == "I2t").unwrap().value;
         assert!((square / 22.49 - 1.0).abs() < 5e-3);
@@ -104,7 +139,16 @@ mod tests {
     /// 113.01 A is 79.6 % of 142 A, 80.7 % of 140 A, past 113 A. By hand.
     #[test]
     fn limits() {
-        let at = |surge: &str| margin(&tern60(&[(SOFT, "    soft-start         none"), ("surge 300 A", surge)]), super::RULE.name, "toroid rectifier");
+        let at = |surge: &str| {
+            margin(
+                &tern60(&[
+                    (SOFT, "    soft-start         none"),
+                    ("surge 300 A", surge),
+                ]),
+                super::RULE.name,
+                "toroid rectifier",
+            )
+        };
         assert_eq!(at("surge 142 A").verdict, Verdict::Ok);
         assert_eq!(at("surge 140 A").verdict, Verdict::Thin);
         assert_eq!(at("surge 110 A").verdict, Verdict::Over);

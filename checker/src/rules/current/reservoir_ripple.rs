@@ -32,7 +32,10 @@ rule! {
 }
 
 /// No sheet's multipliers are stated: the rating holds at every frequency.
-const NO_MULTIPLIERS: RippleMultipliers = RippleMultipliers { charging: 1.0, audio: 1.0 };
+const NO_MULTIPLIERS: RippleMultipliers = RippleMultipliers {
+    charging: 1.0,
+    audio: 1.0,
+};
 
 /// One margin for each kind of capacitor: the load that draws most.
 pub fn check(case: &Case<'_>, out: &mut Margins<'_>) {
@@ -40,7 +43,12 @@ pub fn check(case: &Case<'_>, out: &mut Margins<'_>) {
     if banks.iter().all(|b| b.on_board)
         && let Some(supply) = case.fitted(&RULE, out)
     {
-        out.compare(&RULE, case.supply_part(supply, "reservoir", 1), supply.reservoir.site(), Err(supply.reservoir.missing()));
+        out.compare(
+            &RULE,
+            case.supply_part(supply, "reservoir", 1),
+            supply.reservoir.site(),
+            Err(supply.reservoir.missing()),
+        );
     }
     for (at, bank) in banks.iter().enumerate() {
         for found in case.per_load(|load| stress(case, &banks, at, load)) {
@@ -53,15 +61,53 @@ fn stress(case: &Case<'_>, banks: &[Bank<'_>], at: usize, load: &Driven) -> Resu
     let (flow, shares) = both(case.duty_flow(load), case.ripple_shares(banks))?;
     let lost = || Needs::because("the reservoir cannot be worked out");
     let (bank, share) = banks.get(at).zip(shares.get(at)).ok_or_else(lost)?;
-    let rating = bank.stated.ripple.ok_or_else(|| field_missing(case, bank))?;
-    let all = reservoir_ripple(flow.ripple_charging, flow.ripple_audio, NO_MULTIPLIERS).ok_or_else(lost)?;
+    let rating = bank
+        .stated
+        .ripple
+        .ok_or_else(|| field_missing(case, bank))?;
+    let all = reservoir_ripple(flow.ripple_charging, flow.ripple_audio, NO_MULTIPLIERS)
+        .ok_or_else(lost)?;
     let one = all * *share;
     let mut working = case.rail_steps(&flow, "√(2·d·Pref·R)");
-    working.push(solved("Irms", "charging current of one rail", "periodic solution of the rectifier", flow.charging.0, "A", ""));
-    working.push(solved("Ich", "ripple from charging, all capacitors of one rail", "√(Irms² - Idc²)", flow.ripple_charging.0, "A", "charge balance"));
-    working.push(solved("Iaf", "ripple from the signal", "0.3856·ΣÎ, bridged 0.3078·ΣÎ", flow.ripple_audio.0, "A", "mean and r.m.s. of half-sines"));
-    working.push(solved("I", "one capacitor", "share·√(Ich² + Iaf²)", one.0, "A", "currents of different frequency add by squares"));
-    working.push(stated("IR", "rated ripple current", rating.0, "A", [bank.stated.site]));
+    working.push(solved(
+        "Irms",
+        "charging current of one rail",
+        "periodic solution of the rectifier",
+        flow.charging.0,
+        "A",
+        "",
+    ));
+    working.push(solved(
+        "Ich",
+        "ripple from charging, all capacitors of one rail",
+        "√(Irms² - Idc²)",
+        flow.ripple_charging.0,
+        "A",
+        "charge balance",
+    ));
+    working.push(solved(
+        "Iaf",
+        "ripple from the signal",
+        "0.3856·ΣÎ, bridged 0.3078·ΣÎ",
+        flow.ripple_audio.0,
+        "A",
+        "mean and r.m.s. of half-sines",
+    ));
+    working.push(solved(
+        "I",
+        "one capacitor",
+        "share·√(Ich² + Iaf²)",
+        one.0,
+        "A",
+        "currents of different frequency add by squares",
+    ));
+    working.push(stated(
+        "IR",
+        "rated ripple current",
+        rating.0,
+        "A",
+        [bank.stated.site],
+    ));
     Ok(Stress {
         value: one.0,
         rating: rating.0,
@@ -93,7 +139,13 @@ mod tests {
         let m = margin(&tern60(&[]), super::RULE.name, "toroid reservoir");
         assert!((m.stress.unwrap().value / 0.7928 - 1.0).abs() < 2e-3);
         // 90 % of 0.9 A is 0.81 A, of 0.87 A 0.783 A
-        let at = |amps: &str| verdict(&tern60(&[("ripple 4 A", &format!("ripple {amps} A"))]), super::RULE.name, "toroid reservoir");
+        let at = |amps: &str| {
+            verdict(
+                &tern60(&[("ripple 4 A", &format!("ripple {amps} A"))]),
+                super::RULE.name,
+                "toroid reservoir",
+            )
+        };
         assert_eq!(at("0.9"), Verdict::Ok);
         assert_eq!(at("0.87"), Verdict::Thin);
         assert_eq!(at("0.78"), Verdict::Over);
@@ -103,15 +155,31 @@ mod tests {
     /// 4/35 it has half, each of the big ones a quarter. By hand.
     #[test]
     fn low_resistance_takes_more() {
-        let text = tern60(&[("board-reservoir    none", "board-reservoir    1 x 470 uF ±20 % 63 V esr 17.5 mohm ripple 0.5 A per rail")]);
-        let (board, big) = (margin(&text, super::RULE.name, "tern60 board-reservoir"), margin(&text, super::RULE.name, "toroid reservoir"));
+        let text = tern60(&[(
+            "board-reservoir    none",
+            "board-reservoir    1 x 470 uF ±20 % 63 V esr 17.5 mohm ripple 0.5 A per rail",
+        )]);
+        let (board, big) = (
+            margin(&text, super::RULE.name, "tern60 board-reservoir"),
+            margin(&text, super::RULE.name, "toroid reservoir"),
+        );
         assert!((board.stress.unwrap().value / big.stress.unwrap().value - 2.0).abs() < 1e-9);
         assert_eq!(board.verdict, Verdict::Over);
     }
 
     #[test]
     fn says_what_is_missing() {
-        let m = margin(&tern60(&[(" ripple 4 A", "")]), super::RULE.name, "toroid reservoir");
-        assert_eq!((m.verdict, m.needs), (Verdict::Unchecked, vec!["supply toroid reservoir ripple".to_owned()]));
+        let m = margin(
+            &tern60(&[(" ripple 4 A", "")]),
+            super::RULE.name,
+            "toroid reservoir",
+        );
+        assert_eq!(
+            (m.verdict, m.needs),
+            (
+                Verdict::Unchecked,
+                vec!["supply toroid reservoir ripple".to_owned()]
+            )
+        );
     }
 }

@@ -29,9 +29,16 @@ rule! {
 
 /// One margin for the transformer: the load that draws most.
 pub fn check(case: &Case<'_>, out: &mut Margins<'_>) {
-    let Some(supply) = case.fitted(&RULE, out) else { return };
+    let Some(supply) = case.fitted(&RULE, out) else {
+        return;
+    };
     for found in case.per_load(|load| stress(case, supply, load)) {
-        out.compare(&RULE, case.transformer_part(supply), supply.transformer_field.site(), found);
+        out.compare(
+            &RULE,
+            case.transformer_part(supply),
+            supply.transformer_field.site(),
+            found,
+        );
     }
 }
 
@@ -39,9 +46,29 @@ fn stress(case: &Case<'_>, supply: &Supply, load: &Driven) -> Result<Stress, Nee
     let field = &supply.transformer.rating;
     let (rating, flow) = both(field.need().copied(), case.duty_flow(load))?;
     let mut working = case.rail_steps(&flow, "√(2·d·Pref·R)");
-    working.push(solved("Irms", "one winding", "periodic solution of the rectifier", flow.winding.0, "A", ""));
-    working.push(solved("VA", "one transformer", "Σ windings Vs·Irms", flow.volt_amps, "VA", "rated volts stand for the heating of the copper"));
-    working.push(stated("rating", "one transformer", rating, "VA", field.stated_at()));
+    working.push(solved(
+        "Irms",
+        "one winding",
+        "periodic solution of the rectifier",
+        flow.winding.0,
+        "A",
+        "",
+    ));
+    working.push(solved(
+        "VA",
+        "one transformer",
+        "Σ windings Vs·Irms",
+        flow.volt_amps,
+        "VA",
+        "rated volts stand for the heating of the copper",
+    ));
+    working.push(stated(
+        "rating",
+        "one transformer",
+        rating,
+        "VA",
+        field.stated_at(),
+    ));
     Ok(Stress {
         value: flow.volt_amps,
         rating,
@@ -69,17 +96,31 @@ mod tests {
     /// Two channels on it take more than one and a half times as much; two transformers halve it.
     #[test]
     fn channels_and_transformers_share() {
-        let used = |edits: &[(&str, &str)]| margin(&tern60(edits), super::RULE.name, "t300").used_percent.unwrap();
+        let used = |edits: &[(&str, &str)]| {
+            margin(&tern60(edits), super::RULE.name, "t300")
+                .used_percent
+                .unwrap()
+        };
         let channels = ("    channels           1\n", "    channels           2\n");
         let one = used(&[]);
         let two = used(&[channels]);
-        let both = used(&[channels, ("    transformer        t300", "    transformer        2 x t300")]);
+        let both = used(&[
+            channels,
+            (
+                "    transformer        t300",
+                "    transformer        2 x t300",
+            ),
+        ]);
         assert!(two > 1.5 * one && two < 2.0 * one && both < two && both > 0.9 * one);
     }
 
     #[test]
     fn says_what_is_missing() {
-        let m = margin(&tern60(&[("    rating             300 VA per transformer\n", "")]), super::RULE.name, "t300");
+        let m = margin(
+            &tern60(&[("    rating             300 VA per transformer\n", "")]),
+            super::RULE.name,
+            "t300",
+        );
         assert_eq!(m.verdict, Verdict::Unchecked);
         assert!(m.needs.contains(&"transformer t300 rating".to_owned()));
     }

@@ -34,8 +34,13 @@ rule! {
 
 /// One margin for the transformer: the load that draws most.
 pub fn check(case: &Case<'_>, out: &mut Margins<'_>) {
-    let Some(supply) = case.fitted(&RULE, out) else { return };
-    let (part, site) = (case.transformer_part(supply), supply.transformer_field.site());
+    let Some(supply) = case.fitted(&RULE, out) else {
+        return;
+    };
+    let (part, site) = (
+        case.transformer_part(supply),
+        supply.transformer_field.site(),
+    );
     let entry = case.policy.entry(&RULE);
     let counts = entry.severity.is_some() || entry.site.is_some();
     let mut worst: Option<Stress> = None;
@@ -50,7 +55,10 @@ pub fn check(case: &Case<'_>, out: &mut Margins<'_>) {
         }
     }
     if let Some(stress) = worst {
-        let note = format!("{:.0} VA of {:.0} VA at the continuous rated sine; information", stress.value, stress.rating);
+        let note = format!(
+            "{:.0} VA of {:.0} VA at the continuous rated sine; information",
+            stress.value, stress.rating
+        );
         out.judge(&RULE, part, site, Verdict::Ok, Stress { note, ..stress });
     }
 }
@@ -59,9 +67,29 @@ fn stress(case: &Case<'_>, supply: &Supply, load: &Driven) -> Result<Stress, Nee
     let field = &supply.transformer.rating;
     let (rating, flow) = both(field.need().copied(), case.sine_flow(load))?;
     let mut working = case.rail_steps(&flow, "√(2PR) of the claimed power, else what is sustained");
-    working.push(solved("Irms", "one winding", "periodic solution of the rectifier", flow.winding.0, "A", ""));
-    working.push(solved("VA", "one transformer", "Σ windings Vs·Irms", flow.volt_amps, "VA", "rated volts stand for the heating of the copper"));
-    working.push(stated("rating", "one transformer", rating, "VA", field.stated_at()));
+    working.push(solved(
+        "Irms",
+        "one winding",
+        "periodic solution of the rectifier",
+        flow.winding.0,
+        "A",
+        "",
+    ));
+    working.push(solved(
+        "VA",
+        "one transformer",
+        "Σ windings Vs·Irms",
+        flow.volt_amps,
+        "VA",
+        "rated volts stand for the heating of the copper",
+    ));
+    working.push(stated(
+        "rating",
+        "one transformer",
+        rating,
+        "VA",
+        field.stated_at(),
+    ));
     Ok(Stress {
         value: flow.volt_amps,
         rating,
@@ -78,8 +106,14 @@ mod tests {
     use crate::testing::{margin, tern60};
 
     fn with(va: &str, policy: &str) -> Margin {
-        let named = format!("policy stage from bench {{ {policy} }}\nbuild mono {{\n    policy             stage");
-        margin(&tern60(&[("300 VA", va), ("build mono {", &named)]), super::RULE.name, "t300")
+        let named = format!(
+            "policy stage from bench {{ {policy} }}\nbuild mono {{\n    policy             stage"
+        );
+        margin(
+            &tern60(&[("300 VA", va), ("build mono {", &named)]),
+            super::RULE.name,
+            "t300",
+        )
     }
 
     /// 60 W into 8 ohm: Idc = 3.873/π + 0.1 = 1.3328 A; a small-step integration written apart from
@@ -87,16 +121,32 @@ mod tests {
     #[test]
     fn information_with_the_figure() {
         let m = margin(&tern60(&[]), super::RULE.name, "t300");
-        assert_eq!((m.verdict, m.severity, m.note.as_str()), (Verdict::Ok, Severity::Information, "163 VA of 300 VA at the continuous rated sine; information"));
+        assert_eq!(
+            (m.verdict, m.severity, m.note.as_str()),
+            (
+                Verdict::Ok,
+                Severity::Information,
+                "163 VA of 300 VA at the continuous rated sine; information"
+            )
+        );
         // past the rating it is still information
-        assert_eq!(margin(&tern60(&[("300 VA", "120 VA")]), super::RULE.name, "t300").verdict, Verdict::Ok);
+        assert_eq!(
+            margin(&tern60(&[("300 VA", "120 VA")]), super::RULE.name, "t300").verdict,
+            Verdict::Ok
+        );
     }
 
     #[test]
     fn counts_where_the_policy_says_so() {
         let m = with("120 VA", "severity current.transformer-sine warning");
         assert_eq!((m.verdict, m.severity), (Verdict::Over, Severity::Warning));
-        assert_eq!(with("300 VA", "allow current.transformer-sine 50 %").verdict, Verdict::Thin);
-        assert_eq!(with("300 VA", "allow current.transformer-sine 100 %").verdict, Verdict::Ok);
+        assert_eq!(
+            with("300 VA", "allow current.transformer-sine 50 %").verdict,
+            Verdict::Thin
+        );
+        assert_eq!(
+            with("300 VA", "allow current.transformer-sine 100 %").verdict,
+            Verdict::Ok
+        );
     }
 }

@@ -22,19 +22,31 @@ pub fn check(project: &Project, findings: &mut Vec<Finding>) {
     if builds == 0 {
         if let Some(amplifier) = project.of_kind("amplifier").next() {
             let message = "no build is declared, so nothing is checked".to_owned();
-            let hint = "add one: `build mono {` with channels, supply, heatsink, mains, loads and ambient".to_owned();
-            findings.push(Finding::error("data.unused", amplifier.name_site, message, hint).at(Severity::Warning));
+            let hint =
+                "add one: `build mono {` with channels, supply, heatsink, mains, loads and ambient"
+                    .to_owned();
+            findings.push(
+                Finding::error("data.unused", amplifier.name_site, message, hint)
+                    .at(Severity::Warning),
+            );
         }
         return;
     }
     let root = project.sources.iter().next().map(|(id, _)| id);
     let mut seen: HashSet<&str> = HashSet::new();
-    let mut open: Vec<&str> = project.blocks.iter().filter(|b| matches!(b.kind.kind, "build" | "alternate")).map(|b| b.name.as_str()).collect();
+    let mut open: Vec<&str> = project
+        .blocks
+        .iter()
+        .filter(|b| matches!(b.kind.kind, "build" | "alternate"))
+        .map(|b| b.name.as_str())
+        .collect();
     if project.of_kind("amplifier").count() == 1 {
         open.extend(project.of_kind("amplifier").map(|b| b.name.as_str()));
     }
     while let Some(name) = open.pop() {
-        let Some(block) = project.find(name) else { continue };
+        let Some(block) = project.find(name) else {
+            continue;
+        };
         if !seen.insert(&block.name) {
             continue;
         }
@@ -47,10 +59,16 @@ pub fn check(project: &Project, findings: &mut Vec<Finding>) {
             }
         }
     }
-    for block in project.blocks.iter().filter(|b| Some(b.site.file) == root && !seen.contains(b.name.as_str())) {
+    for block in project
+        .blocks
+        .iter()
+        .filter(|b| Some(b.site.file) == root && !seen.contains(b.name.as_str()))
+    {
         let message = format!("no build reaches {} `{}`", block.kind.kind, block.name);
         let hint = "name it where it is used, or remove it".to_owned();
-        findings.push(Finding::error("data.unused", block.name_site, message, hint).at(Severity::Warning));
+        findings.push(
+            Finding::error("data.unused", block.name_site, message, hint).at(Severity::Warning),
+        );
     }
 }
 
@@ -64,12 +82,24 @@ mod tests {
         assert!(library.is_empty(), "{library:#?}");
         let lone = kit("tern60");
         let lone = lone.split("build mono").next().unwrap().to_owned();
-        assert!(report(&lone).findings.iter().any(|f| f.message.contains("no build is declared")));
+        assert!(
+            report(&lone)
+                .findings
+                .iter()
+                .any(|f| f.message.contains("no build is declared"))
+        );
     }
 
     #[test]
     fn what_an_alternate_brings_in_is_used() {
-        let text = tern60(&[("build mono {", "alternate maker-b \"maker B\" { replace n16 with n16b }\ndevice n16b npn from n16 { part \"N16-B\" }\nbuild mono {")]);
-        assert!(report(&text).findings.is_empty(), "{:#?}", report(&text).findings);
+        let text = tern60(&[(
+            "build mono {",
+            "alternate maker-b \"maker B\" { replace n16 with n16b }\ndevice n16b npn from n16 { part \"N16-B\" }\nbuild mono {",
+        )]);
+        assert!(
+            report(&text).findings.is_empty(),
+            "{:#?}",
+            report(&text).findings
+        );
     }
 }

@@ -193,6 +193,10 @@ fn stress(
 }
 
 #[cfg(test)]
+#[allow(
+    clippy::disallowed_methods,
+    reason = "the twin must not share the functions under test"
+)]
 mod tests {
     use crate::finding::Verdict;
     use crate::testing::{margin, tern60};

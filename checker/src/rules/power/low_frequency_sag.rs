@@ -51,16 +51,45 @@ fn stress(case: &Case<'_>, claim: &Claim) -> Result<Stress, Needs> {
     let frequency = band.bottom();
     let clip = case.sustained_low(asked.mains, asked.driven, asked.seen, frequency)?;
     let power = case.power_of(clip, asked.seen);
-    let known = Witness { amplitude_v: Some(clip.0), power_w: Some(power.0), frequency_hz: Some(frequency.0), ..case.witness() };
+    let known = Witness {
+        amplitude_v: Some(clip.0),
+        power_w: Some(power.0),
+        frequency_hz: Some(frequency.0),
+        ..case.witness()
+    };
     Ok(Stress {
         value: power.0,
         rating: claim.power.0 * HALF_DECIBEL * HALF_DECIBEL,
         witness: witness(case, claim, &asked, known),
         working: vec![
             stated("Pclaim", "claimed", claim.power.0, "W", [claim.site]),
-            stated("f", "bottom of the band", frequency.0, "Hz", case.build.amplifier.band.stated_at()),
-            solved("V̂", "peak output of one channel", "rail(t) >= v(t) + drop(|i(t)|) throughout", clip.0, "V", ""),
-            solved("P", "power into the load", if case.build.bridged { "(2V̂)²/2R" } else { "V̂²/2R" }, power.0, "W", "power of a sine"),
+            stated(
+                "f",
+                "bottom of the band",
+                frequency.0,
+                "Hz",
+                case.build.amplifier.band.stated_at(),
+            ),
+            solved(
+                "V̂",
+                "peak output of one channel",
+                "rail(t) >= v(t) + drop(|i(t)|) throughout",
+                clip.0,
+                "V",
+                "",
+            ),
+            solved(
+                "P",
+                "power into the load",
+                if case.build.bridged {
+                    "(2V̂)²/2R"
+                } else {
+                    "V̂²/2R"
+                },
+                power.0,
+                "W",
+                "power of a sine",
+            ),
         ],
         related: related(case),
         ..Stress::default()
@@ -72,7 +101,8 @@ mod tests {
     use crate::finding::Verdict;
     use crate::testing::{margin, tern60};
 
-    const CLAIMS: &str = "60 W into 8 ohm all-channels nominal-mains, 100 W into 4 ohm all-channels nominal-mains";
+    const CLAIMS: &str =
+        "60 W into 8 ohm all-channels nominal-mains, 100 W into 4 ohm all-channels nominal-mains";
 
     fn claim(text: &str) -> crate::finding::Margin {
         margin(&tern60(&[(CLAIMS, text)]), super::RULE.name, "tern60 rated")
@@ -98,10 +128,19 @@ mod tests {
     #[test]
     fn says_what_is_missing() {
         let text = tern60(&[
-            ("    supply             toroid per build\n", "    rails              idle 42 V loaded 38 V at 2 A\n"),
-            ("    mains              230 V ±10 % 50 Hz loop 0.3 ohm tap 230 V\n", ""),
+            (
+                "    supply             toroid per build\n",
+                "    rails              idle 42 V loaded 38 V at 2 A\n",
+            ),
+            (
+                "    mains              230 V ±10 % 50 Hz loop 0.3 ohm tap 230 V\n",
+                "",
+            ),
         ]);
         let m = margin(&text, super::RULE.name, "tern60 rated");
-        assert_eq!((m.verdict, m.needs), (Verdict::Unchecked, vec!["build mono supply".to_owned()]));
+        assert_eq!(
+            (m.verdict, m.needs),
+            (Verdict::Unchecked, vec!["build mono supply".to_owned()])
+        );
     }
 }

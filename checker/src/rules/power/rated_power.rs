@@ -58,21 +58,66 @@ fn stress(case: &Case<'_>, claim: &Claim) -> Result<Stress, Needs> {
     let rail = case.trough(asked.mains, asked.driven, clip / asked.seen)?;
     let mut working = vec![
         stated("Pclaim", "claimed", claim.power.0, "W", [claim.site]),
-        solved("Idc", "mean current on each rail", "Σ(Î/π + N·Iq)", rail.current.0, "A", "mean of a half-sine"),
-        solved("Vt", "rail at its lowest, least reservoir", "trough(Idc) - ESR·(ΣÎ - Idc)", rail.lowest.0, "V", "periodic solution of the rectifier"),
-        solved("V̂", "peak output of one channel", "V̂ + drop(V̂/R) = Vt", clip.0, "V", ""),
-        solved("P", "power into the load", expression(case), power.0, "W", "power of a sine"),
+        solved(
+            "Idc",
+            "mean current on each rail",
+            "Σ(Î/π + N·Iq)",
+            rail.current.0,
+            "A",
+            "mean of a half-sine",
+        ),
+        solved(
+            "Vt",
+            "rail at its lowest, least reservoir",
+            "trough(Idc) - ESR·(ΣÎ - Idc)",
+            rail.lowest.0,
+            "V",
+            "periodic solution of the rectifier",
+        ),
+        solved(
+            "V̂",
+            "peak output of one channel",
+            "V̂ + drop(V̂/R) = Vt",
+            clip.0,
+            "V",
+            "",
+        ),
+        solved(
+            "P",
+            "power into the load",
+            expression(case),
+            power.0,
+            "W",
+            "power of a sine",
+        ),
     ];
     // the other end of the mains, as information
     if asked.mains == Mains::Nominal
         && let Ok(low) = case.sustained(Mains::Low, asked.driven, asked.seen)
     {
-        working.push(solved("Plow", "the same at low mains, information", "", case.power_of(low, asked.seen).0, "W", ""));
+        working.push(solved(
+            "Plow",
+            "the same at low mains, information",
+            "",
+            case.power_of(low, asked.seen).0,
+            "W",
+            "",
+        ));
     }
     Ok(Stress {
         value: power.0,
         rating: claim.power.0 * HALF_DECIBEL,
-        witness: witness(case, claim, &asked, Witness { amplitude_v: Some(clip.0), power_w: Some(power.0), rail_v: Some(rail.lowest.0), ..case.witness() }),
+        witness: witness(
+            case,
+            claim,
+            &asked,
+            Witness {
+                amplitude_v: Some(clip.0),
+                power_w: Some(power.0),
+                rail_v: Some(rail.lowest.0),
+                ..case.witness()
+            },
+        ),
         working,
         related: related(case),
         ..Stress::default()
@@ -80,7 +125,11 @@ fn stress(case: &Case<'_>, claim: &Claim) -> Result<Stress, Needs> {
 }
 
 fn expression(case: &Case<'_>) -> &'static str {
-    if case.build.bridged { "(2V̂)²/2R" } else { "V̂²/2R" }
+    if case.build.bridged {
+        "(2V̂)²/2R"
+    } else {
+        "V̂²/2R"
+    }
 }
 
 /// Where a claim is judged, with what is known of the point.
@@ -90,7 +139,11 @@ pub fn witness(case: &Case<'_>, claim: &Claim, asked: &Asked, known: Witness) ->
         mains_v: case.mains_volts(asked.mains),
         load: Some(format!("{} ohm", claim.load.0)),
         frequency_hz: known.frequency_hz.or(Some(1000.0)),
-        channels_driven: if claim.all_channels { known.channels_driven } else { Some(asked.driven) },
+        channels_driven: if claim.all_channels {
+            known.channels_driven
+        } else {
+            Some(asked.driven)
+        },
         tolerance: capacitors.into_iter().collect(),
         ..known
     }
@@ -98,10 +151,22 @@ pub fn witness(case: &Case<'_>, claim: &Claim, asked: &Asked, known: Witness) ->
 
 /// The lines that set a sustained power.
 pub fn related(case: &Case<'_>) -> Vec<Related> {
-    let mut related = case.rail_sites(case.build.amplifier.drop.stated_at().map(|site| ("the drop", site)));
+    let mut related = case.rail_sites(
+        case.build
+            .amplifier
+            .drop
+            .stated_at()
+            .map(|site| ("the drop", site)),
+    );
     if let Some((supply, channels)) = case.build.supply.get() {
-        related.push(Related { message: format!("{channels} channel(s) on each supply"), site: case.build.supply.site() });
-        related.extend(supply.reservoir.stated_at().map(|site| Related { message: "the reservoir".to_owned(), site }));
+        related.push(Related {
+            message: format!("{channels} channel(s) on each supply"),
+            site: case.build.supply.site(),
+        });
+        related.extend(supply.reservoir.stated_at().map(|site| Related {
+            message: "the reservoir".to_owned(),
+            site,
+        }));
     }
     related
 }
@@ -111,7 +176,8 @@ mod tests {
     use crate::finding::{Margin, Verdict};
     use crate::testing::{margin, report, tern60};
 
-    const CLAIMS: &str = "60 W into 8 ohm all-channels nominal-mains, 100 W into 4 ohm all-channels nominal-mains";
+    const CLAIMS: &str =
+        "60 W into 8 ohm all-channels nominal-mains, 100 W into 4 ohm all-channels nominal-mains";
 
     fn claim(text: &str) -> Margin {
         margin(&tern60(&[(CLAIMS, text)]), super::RULE.name, "tern60 rated")
@@ -119,7 +185,10 @@ mod tests {
 
     fn near(margin: &Margin, watts: f64, part: f64) {
         let found = margin.stress.unwrap().value;
-        assert!((found / watts - 1.0).abs() < part, "{found} W, not {watts} W");
+        assert!(
+            (found / watts - 1.0).abs() < part,
+            "{found} W, not {watts} W"
+        );
     }
 
     /// A small-step integration of rectifier and reservoir written apart from this program (C 20 % low,
@@ -144,10 +213,20 @@ mod tests {
     fn given_rails() {
         let text = tern60(&[
             (CLAIMS, "60 W into 8 ohm"),
-            ("    supply             toroid per build\n", "    rails              idle 42 V loaded 41.999999 V at 1 A\n"),
-            ("    mains              230 V ±10 % 50 Hz loop 0.3 ohm tap 230 V\n", ""),
+            (
+                "    supply             toroid per build\n",
+                "    rails              idle 42 V loaded 41.999999 V at 1 A\n",
+            ),
+            (
+                "    mains              230 V ±10 % 50 Hz loop 0.3 ohm tap 230 V\n",
+                "",
+            ),
         ]);
-        near(&margin(&text, super::RULE.name, "tern60 rated"), 94.156, 1e-4);
+        near(
+            &margin(&text, super::RULE.name, "tern60 rated"),
+            94.156,
+            1e-4,
+        );
     }
 
     /// Bridged on such rails, 4 ohm for each half: V̂ = 40.2/(1 + 2/7/4) = 37.52 V,
@@ -156,28 +235,62 @@ mod tests {
     fn two_channels_bridged() {
         let text = tern60(&[
             (CLAIMS, "60 W into 8 ohm"),
-            ("    channels           1\n", "    channels           2 bridged\n"),
-            ("    supply             toroid per build\n", "    rails              idle 42 V loaded 41.999999 V at 1 A\n"),
-            ("    mains              230 V ±10 % 50 Hz loop 0.3 ohm tap 230 V\n", ""),
+            (
+                "    channels           1\n",
+                "    channels           2 bridged\n",
+            ),
+            (
+                "    supply             toroid per build\n",
+                "    rails              idle 42 V loaded 41.999999 V at 1 A\n",
+            ),
+            (
+                "    mains              230 V ±10 % 50 Hz loop 0.3 ohm tap 230 V\n",
+                "",
+            ),
         ]);
-        near(&margin(&text, super::RULE.name, "tern60 rated"), 351.94, 1e-4);
+        near(
+            &margin(&text, super::RULE.name, "tern60 rated"),
+            351.94,
+            1e-4,
+        );
     }
 
     /// One channel of two on a supply gives more than both at once.
     #[test]
     fn channels_share_a_supply() {
         let two = |which: &str| {
-            let text = tern60(&[(CLAIMS, &format!("60 W into 4 ohm {which}")), ("    channels           1\n", "    channels           2\n")]);
-            margin(&text, super::RULE.name, "tern60 rated").stress.unwrap().value
+            let text = tern60(&[
+                (CLAIMS, &format!("60 W into 4 ohm {which}")),
+                ("    channels           1\n", "    channels           2\n"),
+            ]);
+            margin(&text, super::RULE.name, "tern60 rated")
+                .stress
+                .unwrap()
+                .value
         };
         assert!(two("one-channel") > 1.1 * two("all-channels"));
     }
 
     #[test]
     fn says_what_is_missing_and_none_claims_nothing() {
-        let m = margin(&tern60(&[("    drop               1.8 V at 0 A, 3.8 V at 7 A  # loaded rail to peak output\n", "")]), super::RULE.name, "tern60 rated");
-        assert_eq!((m.verdict, m.needs), (Verdict::Unchecked, vec!["amplifier tern60 drop".to_owned()]));
+        let m = margin(
+            &tern60(&[(
+                "    drop               1.8 V at 0 A, 3.8 V at 7 A  # loaded rail to peak output\n",
+                "",
+            )]),
+            super::RULE.name,
+            "tern60 rated",
+        );
+        assert_eq!(
+            (m.verdict, m.needs),
+            (Verdict::Unchecked, vec!["amplifier tern60 drop".to_owned()])
+        );
         let silent = report(&tern60(&[(CLAIMS, "none")]));
-        assert!(silent.builds[0].margins.iter().all(|m| m.rule != super::RULE.name));
+        assert!(
+            silent.builds[0]
+                .margins
+                .iter()
+                .all(|m| m.rule != super::RULE.name)
+        );
     }
 }

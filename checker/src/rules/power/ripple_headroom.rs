@@ -54,18 +54,58 @@ fn stress(case: &Case<'_>, claim: &Claim) -> Result<Stress, Needs> {
     let (drop, asked) = both(case.drop(), case.asked(claim))?;
     let rail = case.trough(asked.mains, asked.driven, asked.peak)?;
     let needed = asked.amplitude + drop.at(asked.peak);
-    let known = Witness { amplitude_v: Some(asked.amplitude.0), power_w: Some(claim.power.0), rail_v: Some(rail.lowest.0), ..case.witness() };
+    let known = Witness {
+        amplitude_v: Some(asked.amplitude.0),
+        power_w: Some(claim.power.0),
+        rail_v: Some(rail.lowest.0),
+        ..case.witness()
+    };
     Ok(Stress {
         value: rail.lowest.0,
         rating: needed.0 * HALF_DECIBEL,
         witness: witness(case, claim, &asked, known),
         working: vec![
             stated("Pclaim", "claimed", claim.power.0, "W", [claim.site]),
-            solved("V̂", "peak output of one channel", "√(2PR), bridged half of it", asked.amplitude.0, "V", "power of a sine"),
-            solved("need", "rail that the peak needs", "V̂ + drop(Î)", needed.0, "V", ""),
-            solved("Idc", "mean current on each rail", "Σ(Î/π + N·Iq)", rail.current.0, "A", "mean of a half-sine"),
-            solved("Vm", "mean rail, least reservoir", "periodic solution of the rectifier", rail.mean.0, "V", ""),
-            solved("Vt", "its lowest point", "trough - ESR·(ΣÎ - Idc)", rail.lowest.0, "V", "periodic solution of the rectifier"),
+            solved(
+                "V̂",
+                "peak output of one channel",
+                "√(2PR), bridged half of it",
+                asked.amplitude.0,
+                "V",
+                "power of a sine",
+            ),
+            solved(
+                "need",
+                "rail that the peak needs",
+                "V̂ + drop(Î)",
+                needed.0,
+                "V",
+                "",
+            ),
+            solved(
+                "Idc",
+                "mean current on each rail",
+                "Σ(Î/π + N·Iq)",
+                rail.current.0,
+                "A",
+                "mean of a half-sine",
+            ),
+            solved(
+                "Vm",
+                "mean rail, least reservoir",
+                "periodic solution of the rectifier",
+                rail.mean.0,
+                "V",
+                "",
+            ),
+            solved(
+                "Vt",
+                "its lowest point",
+                "trough - ESR·(ΣÎ - Idc)",
+                rail.lowest.0,
+                "V",
+                "periodic solution of the rectifier",
+            ),
         ],
         related: related(case),
         ..Stress::default()
@@ -77,13 +117,18 @@ mod tests {
     use crate::finding::Verdict;
     use crate::testing::{margin, tern60};
 
-    const CLAIMS: &str = "60 W into 8 ohm all-channels nominal-mains, 100 W into 4 ohm all-channels nominal-mains";
+    const CLAIMS: &str =
+        "60 W into 8 ohm all-channels nominal-mains, 100 W into 4 ohm all-channels nominal-mains";
 
     /// 60 W into 8 ohm: V̂ = √960 = 30.984 V, Î = 3.873 A, drop 1.8 + 3.873·2/7 = 2.907 V: 33.890 V.
     /// A small-step integration written apart from this program leaves 37.373 V: 90.68 %.
     #[test]
     fn against_small_steps() {
-        let m = margin(&tern60(&[(CLAIMS, "60 W into 8 ohm")]), super::RULE.name, "tern60 rated");
+        let m = margin(
+            &tern60(&[(CLAIMS, "60 W into 8 ohm")]),
+            super::RULE.name,
+            "tern60 rated",
+        );
         assert!((m.stress.unwrap().value - 37.373).abs() < 0.02);
         assert!((m.allowance.unwrap().value - 33.890).abs() < 1e-3);
         assert!((m.used_percent.unwrap() - 90.68).abs() < 0.05);
@@ -91,7 +136,14 @@ mod tests {
 
     #[test]
     fn too_little_for_the_peak() {
-        let at = |claim: &str| margin(&tern60(&[(CLAIMS, claim)]), super::RULE.name, "tern60 rated").verdict;
+        let at = |claim: &str| {
+            margin(
+                &tern60(&[(CLAIMS, claim)]),
+                super::RULE.name,
+                "tern60 rated",
+            )
+            .verdict
+        };
         assert_eq!(at("72 W into 8 ohm"), Verdict::Ok);
         assert_eq!(at("76 W into 8 ohm"), Verdict::Thin);
         assert_eq!(at("90 W into 8 ohm"), Verdict::Over);
@@ -99,7 +151,11 @@ mod tests {
 
     #[test]
     fn says_what_is_missing() {
-        let m = margin(&tern60(&[("2 x 28 Vac", "none")]), super::RULE.name, "tern60 rated");
+        let m = margin(
+            &tern60(&[("2 x 28 Vac", "none")]),
+            super::RULE.name,
+            "tern60 rated",
+        );
         assert_eq!(m.verdict, Verdict::Unchecked);
         assert!(m.needs.contains(&"transformer t300 secondary".to_owned()));
     }

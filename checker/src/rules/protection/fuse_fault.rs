@@ -129,6 +129,10 @@ fn stress(case: &Case<'_>, load: &Driven) -> Result<Option<Judged>, Needs> {
 }
 
 #[cfg(test)]
+#[allow(
+    clippy::disallowed_methods,
+    reason = "the twin must not share the functions under test"
+)]
 mod tests {
     use crate::finding::Verdict;
     use crate::testing::{margin, report, tern60};

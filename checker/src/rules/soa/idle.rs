@@ -28,7 +28,12 @@ rule! {
 pub fn check(case: &Case<'_>, out: &mut Margins<'_>) {
     let stage = case.output();
     for side in stage.sides() {
-        out.compare(&RULE, case.device_part(stage, *side), stage.idle.site(), case.idle_stress(&RULE, *side));
+        out.compare(
+            &RULE,
+            case.device_part(stage, *side),
+            stage.idle.site(),
+            case.idle_stress(&RULE, *side),
+        );
     }
 }
 
@@ -43,10 +48,18 @@ mod tests {
     /// power 180/45.6068 = 3.9468 A of k. Hand calculation.
     #[test]
     fn the_idle_point_by_hand() {
-        let m = margin(&tern60(&[("pairs              2", "pairs              1")]), RULE.name, "n16");
+        let m = margin(
+            &tern60(&[("pairs              2", "pairs              1")]),
+            RULE.name,
+            "n16",
+        );
         let k = (150.0 - m.witness.case_c.unwrap()) / 125.0;
         assert!((m.stress.unwrap().value - 0.05).abs() < 1e-12);
-        assert!((m.rating.unwrap().value - 3.9413 * k).abs() < 1e-3, "{:?} {k}", m.rating);
+        assert!(
+            (m.rating.unwrap().value - 3.9413 * k).abs() < 1e-3,
+            "{:?} {k}",
+            m.rating
+        );
         assert_eq!(m.witness.mains_v, Some(253.0));
     }
 
@@ -60,7 +73,17 @@ mod tests {
 
     #[test]
     fn an_unstated_idle_is_named() {
-        let m = margin(&tern60(&[("    idle               50 mA per device, 11 mV across emitter\n", "")]), RULE.name, "n16");
-        assert_eq!((m.verdict, m.needs.as_slice()), (Unchecked, &["stage out idle".to_owned()][..]));
+        let m = margin(
+            &tern60(&[(
+                "    idle               50 mA per device, 11 mV across emitter\n",
+                "",
+            )]),
+            RULE.name,
+            "n16",
+        );
+        assert_eq!(
+            (m.verdict, m.needs.as_slice()),
+            (Unchecked, &["stage out idle".to_owned()][..])
+        );
     }
 }

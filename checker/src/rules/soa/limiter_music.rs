@@ -34,16 +34,27 @@ pub fn check(case: &Case<'_>, out: &mut Margins<'_>) {
         return;
     }
     let (part, site) = match case.build.protection.get() {
-        None => (line_part(&case.build.protection), case.build.protection.site()),
-        Some(p) if p.limiter.get().is_none() && p.limit_line.get().is_some() => (line_part(&p.limit_line), p.limit_line.site()),
+        None => (
+            line_part(&case.build.protection),
+            case.build.protection.site(),
+        ),
+        Some(p) if p.limiter.get().is_none() && p.limit_line.get().is_some() => {
+            (line_part(&p.limit_line), p.limit_line.site())
+        }
         Some(p) => (line_part(&p.limiter), p.limiter.site()),
     };
     for played in case.played() {
-        if let Some(open) = played.as_ref().ok().and_then(|(load, _)| case.unknown_part(load)) {
+        if let Some(open) = played
+            .as_ref()
+            .ok()
+            .and_then(|(load, _)| case.unknown_part(load))
+        {
             out.compare(&RULE, part.clone(), site, Err(open));
         }
         for side in case.unlike_banks() {
-            let stress = played.clone().and_then(|(load, heat)| case.clearance_stress(heat, load, *side));
+            let stress = played
+                .clone()
+                .and_then(|(load, heat)| case.clearance_stress(heat, load, *side));
             out.compare(&RULE, part.clone(), site, stress);
         }
     }
@@ -56,32 +67,74 @@ mod tests {
     use crate::testing::{margin, tern60, verdict};
 
     const LINE: &str = "    limit-line bank    10 A at 0 V, 10 A at 15 V, 6.4 A at 30 V, 3.6 A at 50 V, 1.8 A at 70 V, 1 A at 95 V\n";
-    const ALONE: (&str, &str) = ("loads              hall-8, bench-8", "loads              bench-8");
+    const ALONE: (&str, &str) = (
+        "loads              hall-8, bench-8",
+        "loads              bench-8",
+    );
 
     /// A flat line of the bank is nearest at the peak: bench-8 at -5 % draws (41.3699 - 1.8)/(7.6 + 0.285714) =
     /// 5.01792 A at nominal mains. 5.52 A is 1.10006 times that, 5.51 A 1.09806, 5.01 A 0.9984. Hand calculation.
     #[test]
     fn a_flat_line_against_the_peak() {
         let with = |line: &str| tern60(&[ALONE, (LINE, line)]);
-        let m = margin(&with("    limit-line bank    5.52 A at 0 V\n"), RULE.name, "guard limit-line");
-        assert!((m.stress.unwrap().value - 5.52 / 5.01792).abs() < 1e-5, "{:?}", m.stress);
+        let m = margin(
+            &with("    limit-line bank    5.52 A at 0 V\n"),
+            RULE.name,
+            "guard limit-line",
+        );
+        assert!(
+            (m.stress.unwrap().value - 5.52 / 5.01792).abs() < 1e-5,
+            "{:?}",
+            m.stress
+        );
         assert_eq!(m.verdict, Ok);
-        assert_eq!(verdict(&with("    limit-line bank    5.51 A at 0 V\n"), RULE.name, "guard limit-line"), Thin);
-        assert_eq!(verdict(&with("    limit-line bank    5.01 A at 0 V\n"), RULE.name, "guard limit-line"), Over);
+        assert_eq!(
+            verdict(
+                &with("    limit-line bank    5.51 A at 0 V\n"),
+                RULE.name,
+                "guard limit-line"
+            ),
+            Thin
+        );
+        assert_eq!(
+            verdict(
+                &with("    limit-line bank    5.01 A at 0 V\n"),
+                RULE.name,
+                "guard limit-line"
+            ),
+            Over
+        );
     }
 
     /// A line of the device is compared with the most loaded device, which carries more than half.
     #[test]
     fn a_device_line_meets_the_most_loaded() {
-        let m = margin(&tern60(&[ALONE, (LINE, "    limit-line device   3 A at 0 V\n")]), RULE.name, "guard limit-line");
+        let m = margin(
+            &tern60(&[ALONE, (LINE, "    limit-line device   3 A at 0 V\n")]),
+            RULE.name,
+            "guard limit-line",
+        );
         let ratio = m.stress.unwrap().value;
-        assert!(ratio < 3.0 / (5.01792 / 2.0) && ratio > 3.0 / (5.01792 * 0.55), "{ratio}");
+        assert!(
+            ratio < 3.0 / (5.01792 / 2.0) && ratio > 3.0 / (5.01792 * 0.55),
+            "{ratio}"
+        );
     }
 
     /// R3 so small that no current is left at both rails: 0.65 V turn-on, 1 k from the rail.
     #[test]
     fn a_line_that_ends_before_both_rails_acts_with_no_load() {
-        let m = margin(&tern60(&[ALONE, (LINE, "    limiter            sense 220R base 220R rail 4k7\n")]), RULE.name, "guard limiter");
+        let m = margin(
+            &tern60(&[
+                ALONE,
+                (
+                    LINE,
+                    "    limiter            sense 220R base 220R rail 4k7\n",
+                ),
+            ]),
+            RULE.name,
+            "guard limiter",
+        );
         assert_eq!(m.verdict, Over);
         assert!(m.note.contains("no load"), "{}", m.note);
     }

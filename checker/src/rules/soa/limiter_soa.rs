@@ -33,8 +33,14 @@ pub fn check(case: &Case<'_>, out: &mut Margins<'_>) {
     let stage = case.output();
     for side in stage.sides() {
         for played in case.played() {
-            let stress = played.and_then(|(load, heat)| case.limiter_stress(&RULE, heat, load, *side));
-            out.compare(&RULE, case.device_part(stage, *side), case.limiter_site(), stress);
+            let stress =
+                played.and_then(|(load, heat)| case.limiter_stress(&RULE, heat, load, *side));
+            out.compare(
+                &RULE,
+                case.device_part(stage, *side),
+                case.limiter_site(),
+                stress,
+            );
         }
     }
 }
@@ -52,9 +58,17 @@ mod tests {
     /// Between (50 V, 3.6 A) and (100 V, 0.9 A) the slope is -2 exactly: 3.6·(50/91.2136)² = 1.08175 A of k.
     #[test]
     fn a_flat_line_is_worst_at_both_rails() {
-        let m = margin(&tern60(&[ONE, (LINE, "    limit-line device   0.5 A at 0 V\n")]), RULE.name, "n16");
+        let m = margin(
+            &tern60(&[ONE, (LINE, "    limit-line device   0.5 A at 0 V\n")]),
+            RULE.name,
+            "n16",
+        );
         let k = (150.0 - m.witness.case_c.unwrap()) / 125.0;
-        assert!((m.witness.device_v.unwrap() - 91.2136).abs() < 1e-3, "{:?}", m.witness);
+        assert!(
+            (m.witness.device_v.unwrap() - 91.2136).abs() < 1e-3,
+            "{:?}",
+            m.witness
+        );
         assert!((m.stress.unwrap().value - 0.5).abs() < 1e-9);
         assert!((m.rating.unwrap().value - 1.08175 * k).abs() < 1e-4);
         assert_eq!(m.verdict, Ok);
@@ -66,29 +80,60 @@ mod tests {
     /// At v = 91.2136 V: (9.7575 - 8.1299)/0.95 = 1.7133 A.
     #[test]
     fn a_limiter_of_parts_is_taken_cold() {
-        let text = tern60(&[ONE, (LINE, "    limiter            sense 220R base 100R rail 11k on 0.65 V\n")]);
+        let text = tern60(&[
+            ONE,
+            (
+                LINE,
+                "    limiter            sense 220R base 100R rail 11k on 0.65 V\n",
+            ),
+        ]);
         let m = margin(&text, RULE.name, "n16");
         let von = m.working.iter().find(|s| s.symbol == "Von").unwrap().value;
         assert!((von - 0.680).abs() < 1e-12);
         let v = m.witness.device_v.unwrap();
         let line = (0.68 / 0.65 * 9.327 - 0.08913 * v) / 0.95;
-        assert!((m.stress.unwrap().value - line).abs() < 5e-3, "{:?} {line}", m.stress);
+        assert!(
+            (m.stress.unwrap().value - line).abs() < 5e-3,
+            "{:?} {line}",
+            m.stress
+        );
         assert_eq!(m.verdict, Over);
     }
 
     /// What a resistor in parallel with the base resistor does, the base resistor itself does.
     #[test]
     fn a_shunt_stands_in_parallel() {
-        let with = |parts: &str| margin(&tern60(&[ONE, (LINE, parts)]), RULE.name, "n16").stress.unwrap().value;
-        let (a, b) = (with("    limiter            sense 220R base 200R shunt 200R rail 11k\n"), with("    limiter            sense 220R base 100R rail 11k\n"));
+        let with = |parts: &str| {
+            margin(&tern60(&[ONE, (LINE, parts)]), RULE.name, "n16")
+                .stress
+                .unwrap()
+                .value
+        };
+        let (a, b) = (
+            with("    limiter            sense 220R base 200R shunt 200R rail 11k\n"),
+            with("    limiter            sense 220R base 100R rail 11k\n"),
+        );
         assert!((a - b).abs() < 1e-9);
     }
 
     #[test]
     fn a_break_without_its_resistors_is_named() {
-        let m = margin(&tern60(&[(LINE, "    limiter            sense 220R base 150R rail 47k\n    limiter-break      15 V\n")]), RULE.name, "n16");
+        let m = margin(
+            &tern60(&[(
+                LINE,
+                "    limiter            sense 220R base 150R rail 47k\n    limiter-break      15 V\n",
+            )]),
+            RULE.name,
+            "n16",
+        );
         assert_eq!(m.verdict, Unchecked);
-        assert_eq!(m.needs, ["protection guard limiter-break from-rail", "protection guard limiter-break to-base"]);
+        assert_eq!(
+            m.needs,
+            [
+                "protection guard limiter-break from-rail",
+                "protection guard limiter-break to-base"
+            ]
+        );
     }
 
     #[test]
@@ -96,6 +141,9 @@ mod tests {
         let none = report(&tern60(&[(LINE, "    limit-line         none\n")]));
         assert!(!none.builds[0].margins.iter().any(|m| m.rule == RULE.name));
         let m = margin(&tern60(&[(LINE, "")]), RULE.name, "n16");
-        assert_eq!((m.verdict, m.needs.as_slice()), (Unchecked, &["protection guard limiter".to_owned()][..]));
+        assert_eq!(
+            (m.verdict, m.needs.as_slice()),
+            (Unchecked, &["protection guard limiter".to_owned()][..])
+        );
     }
 }

@@ -32,8 +32,15 @@ pub fn check(case: &Case<'_>, out: &mut Margins<'_>) {
     let stage = case.output();
     for side in stage.sides() {
         for played in case.played() {
-            let stress = played.and_then(|(load, heat)| case.locus_stress(&RULE, load, heat, *side, Angle::OwnAtBottom));
-            out.compare(&RULE, case.device_part(stage, *side), stage.pairs.site(), stress);
+            let stress = played.and_then(|(load, heat)| {
+                case.locus_stress(&RULE, load, heat, *side, Angle::OwnAtBottom)
+            });
+            out.compare(
+                &RULE,
+                case.device_part(stage, *side),
+                stage.pairs.site(),
+                stress,
+            );
         }
     }
 }
@@ -49,7 +56,17 @@ mod tests {
     /// √(5.6702² + 0.2191²) = 5.6744 ohm.
     #[test]
     fn the_coil_decides_far_below_resonance() {
-        let m = margin(&tern60(&[("resonance          42 Hz", "resonance          2 kHz"), ("loads              hall-8, bench-8", "loads              hall-8")]), RULE.name, "n16");
+        let m = margin(
+            &tern60(&[
+                ("resonance          42 Hz", "resonance          2 kHz"),
+                (
+                    "loads              hall-8, bench-8",
+                    "loads              hall-8",
+                ),
+            ]),
+            RULE.name,
+            "n16",
+        );
         let z = m.working.iter().find(|s| s.symbol == "|Z|").unwrap().value;
         assert!((z - 5.6744).abs() < 1e-3, "{z}");
         assert_eq!(m.witness.frequency_hz.map(f64::round), Some(20.0));

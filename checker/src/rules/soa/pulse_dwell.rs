@@ -46,7 +46,12 @@ pub fn check(case: &Case<'_>, out: &mut Margins<'_>) {
     for side in stage.sides() {
         for played in case.played() {
             let stress = played.and_then(|(load, heat)| stress(case, load, heat, *side));
-            out.compare(&RULE, case.device_part(stage, *side), stage.pairs.site(), stress);
+            out.compare(
+                &RULE,
+                case.device_part(stage, *side),
+                stage.pairs.site(),
+                stress,
+            );
         }
     }
 }
@@ -77,9 +82,30 @@ fn stress(case: &Case<'_>, load: &Driven, heat: &Heat, side: Side) -> Result<Str
             ..case.witness()
         },
         working: vec![
-            solved("Vu", "unsagged rail", "V0 - Vd", ready.rail.0, "V", "definition of the unsagged rail"),
-            solved("Tcase", "case of the hottest device at the duty", "Tsink + P·θcs", ready.case.0, "degC", "energy balance"),
-            solved("dwell", "longest time above the d.c. curve in one period", "", dwell.0, "s", ""),
+            solved(
+                "Vu",
+                "unsagged rail",
+                "V0 - Vd",
+                ready.rail.0,
+                "V",
+                "definition of the unsagged rail",
+            ),
+            solved(
+                "Tcase",
+                "case of the hottest device at the duty",
+                "Tsink + P·θcs",
+                ready.case.0,
+                "degC",
+                "energy balance",
+            ),
+            solved(
+                "dwell",
+                "longest time above the d.c. curve in one period",
+                "",
+                dwell.0,
+                "s",
+                "",
+            ),
             stated("τ", "longest pulse curve", pulse.0, "s", site),
         ],
         related: case.safe_area_sites(side, Some(load)),
@@ -93,12 +119,25 @@ mod tests {
     use crate::finding::Verdict::{Ok, Over};
     use crate::testing::{edited, margin, report, tern60};
 
-    const QUICK: [(&str, &str); 2] =
-        [("    duty               1/8\n", "    duty               1/8\n    policy quick\n"), ("network net {", "policy quick from bench { curve pulse }\n\nnetwork net {")];
+    const QUICK: [(&str, &str); 2] = [
+        (
+            "    duty               1/8\n",
+            "    duty               1/8\n    policy quick\n",
+        ),
+        (
+            "network net {",
+            "policy quick from bench { curve pulse }\n\nnetwork net {",
+        ),
+    ];
 
     #[test]
     fn only_a_policy_with_pulse_credit_is_asked() {
-        assert!(!report(&tern60(&[])).builds[0].margins.iter().any(|m| m.rule == RULE.name));
+        assert!(
+            !report(&tern60(&[])).builds[0]
+                .margins
+                .iter()
+                .any(|m| m.rule == RULE.name)
+        );
         // the sound kit stays below its d.c. curve: no time above it
         let m = margin(&tern60(&QUICK), RULE.name, "n16");
         assert_eq!((m.verdict, m.stress.unwrap().value), (Ok, 0.0));
@@ -108,11 +147,20 @@ mod tests {
     /// drives a hard load; a 100 ms curve covers it, a 1 ms curve does not.
     #[test]
     fn the_longest_pulse_must_last() {
-        let hard = edited(&tern60(&QUICK), &[("pairs              2", "pairs              1"), ("resistive 8 ohm ±5 %", "nominal 4 ohm")]);
+        let hard = edited(
+            &tern60(&QUICK),
+            &[
+                ("pairs              2", "pairs              1"),
+                ("resistive 8 ohm ±5 %", "nominal 4 ohm"),
+            ],
+        );
         let m = margin(&hard, RULE.name, "n16");
         let dwell = m.stress.unwrap().value;
         assert!(dwell > 1e-3 && dwell < 0.025, "{dwell}");
         assert_eq!(m.verdict, Ok);
-        assert_eq!(margin(&hard.replace("soa 100 ms ", "soa 1 ms "), RULE.name, "n16").verdict, Over);
+        assert_eq!(
+            margin(&hard.replace("soa 100 ms ", "soa 1 ms "), RULE.name, "n16").verdict,
+            Over
+        );
     }
 }

@@ -32,12 +32,26 @@ pub fn check(case: &Case<'_>, out: &mut Margins<'_>) {
     let stage = case.output();
     for side in stage.sides() {
         for played in case.played() {
-            let open = played.as_ref().ok().and_then(|(load, _)| case.unknown_part(load));
+            let open = played
+                .as_ref()
+                .ok()
+                .and_then(|(load, _)| case.unknown_part(load));
             if let Some(open) = open {
-                out.compare(&RULE, case.device_part(stage, *side), stage.pairs.site(), Err(open));
+                out.compare(
+                    &RULE,
+                    case.device_part(stage, *side),
+                    stage.pairs.site(),
+                    Err(open),
+                );
             }
-            let stress = played.and_then(|(load, heat)| case.locus_stress(&RULE, load, heat, *side, Angle::Own));
-            out.compare(&RULE, case.device_part(stage, *side), stage.pairs.site(), stress);
+            let stress = played
+                .and_then(|(load, heat)| case.locus_stress(&RULE, load, heat, *side, Angle::Own));
+            out.compare(
+                &RULE,
+                case.device_part(stage, *side),
+                stage.pairs.site(),
+                stress,
+            );
         }
     }
 }
@@ -51,7 +65,13 @@ mod tests {
     const ONE: (&str, &str) = ("pairs              2", "pairs              1");
 
     fn only(load: &'static str) -> [(&'static str, &'static str); 2] {
-        [("resistive 8 ohm ±5 %", load), ("loads              hall-8, bench-8", "loads              bench-8")]
+        [
+            ("resistive 8 ohm ±5 %", load),
+            (
+                "loads              hall-8, bench-8",
+                "loads              bench-8",
+            ),
+        ]
     }
 
     /// One pair, no emitter resistor, no drop, 8 ohm at 45 degrees as stated minimum: |Z| 8 ohm, so V̂ = Vu
@@ -61,14 +81,26 @@ mod tests {
     #[test]
     fn constant_power_meets_the_closed_form() {
         let [a, b] = only("nominal 8 ohm\n minimum 8 ohm\n angle 45 deg");
-        let curve = "soa dc             16 A at 11 V, 3.6 A at 50 V, 0.9 A at 100 V, 110 mA at 240 V";
+        let curve =
+            "soa dc             16 A at 11 V, 3.6 A at 50 V, 0.9 A at 100 V, 110 mA at 240 V";
         let text = tern60(&[
-            ONE, a, b,
-            ("emitter            0R22 ±5 % 5 W pulse 20 A ref R21-R24 part \"WW5-0R22J\"", "emitter            none"),
+            ONE,
+            a,
+            b,
+            (
+                "emitter            0R22 ±5 % 5 W pulse 20 A ref R21-R24 part \"WW5-0R22J\"",
+                "emitter            none",
+            ),
             ("50 mA per device, 11 mV across emitter", "50 mA per device"),
-            ("drop               1.8 V at 0 A, 3.8 V at 7 A", "drop               0 V"),
+            (
+                "drop               1.8 V at 0 A, 3.8 V at 7 A",
+                "drop               0 V",
+            ),
             (curve, "soa dc             36 A at 10 V, 1.5 A at 240 V"),
-            ("current            16 A peak 28 A", "current            40 A peak 50 A"),
+            (
+                "current            16 A peak 28 A",
+                "current            40 A peak 50 A",
+            ),
             ("power              180 W", "power              360 W"),
         ]);
         let m = margin(&text, RULE.name, "n16");
@@ -85,10 +117,20 @@ mod tests {
     fn nominal_alone_takes_the_policy_angle() {
         let [a, b] = only("nominal 8 ohm");
         let m = margin(&tern60(&[a, b]), RULE.name, "n16");
-        let step = |symbol: &str| m.working.iter().find(|s| s.symbol == symbol).map(|s| s.value);
-        assert!((step("φ").unwrap() - 45.0).abs() < 1e-9, "lagging before leading");
+        let step = |symbol: &str| {
+            m.working
+                .iter()
+                .find(|s| s.symbol == symbol)
+                .map(|s| s.value)
+        };
+        assert!(
+            (step("φ").unwrap() - 45.0).abs() < 1e-9,
+            "lagging before leading"
+        );
         assert!((step("|Z|").unwrap() - 6.4).abs() < 1e-12);
-        assert!(step("used(60)").unwrap() > 100.0 * m.stress.unwrap().value / m.rating.unwrap().value);
+        assert!(
+            step("used(60)").unwrap() > 100.0 * m.stress.unwrap().value / m.rating.unwrap().value
+        );
     }
 
     /// The reactive load is the worse one, and the sound kit stands it.
@@ -104,7 +146,15 @@ mod tests {
     #[test]
     fn beyond_breakdown_is_over() {
         let [a, b] = only("nominal 8 ohm\n minimum 6 ohm\n angle 80 deg");
-        let m = margin(&tern60(&[a, b, ("vceo               240 V", "vceo               60 V")]), RULE.name, "n16");
+        let m = margin(
+            &tern60(&[
+                a,
+                b,
+                ("vceo               240 V", "vceo               60 V"),
+            ]),
+            RULE.name,
+            "n16",
+        );
         assert_eq!(m.verdict, Over);
         assert!(m.note.contains("breakdown"), "{}", m.note);
     }
@@ -130,32 +180,64 @@ mod tests {
     #[test]
     fn a_vertical_mosfet_needs_linear_mode_data() {
         let vertical = |soa: &str| heron80(&[(LATERAL, &format!("structure vertical\n    {soa}"))]);
-        for soa in ["", "soa dc 16 A at 15.625 V, 5 A at 50 V, 1.25 A at 200 V", "soa 10 ms 30 A at 20 V, 3 A at 200 V"] {
+        for soa in [
+            "",
+            "soa dc 16 A at 15.625 V, 5 A at 50 V, 1.25 A at 200 V",
+            "soa 10 ms 30 A at 20 V, 3 A at 200 V",
+        ] {
             let m = vertical(soa);
             assert_eq!(m.verdict, Unchecked, "{soa}");
-            assert!(m.note.contains("no linear-mode data") && m.note.contains('%'), "{}", m.note);
+            assert!(
+                m.note.contains("no linear-mode data") && m.note.contains('%'),
+                "{}",
+                m.note
+            );
         }
-        assert_eq!(vertical("soa dc 16 A at 15.625 V, 5 A at 50 V, 0.9 A at 200 V").verdict, Ok);
-        assert_eq!(vertical("soa dc 16 A at 10 V, 1 A at 50 V, 0.1 A at 200 V").verdict, Over);
+        assert_eq!(
+            vertical("soa dc 16 A at 15.625 V, 5 A at 50 V, 0.9 A at 200 V").verdict,
+            Ok
+        );
+        assert_eq!(
+            vertical("soa dc 16 A at 10 V, 1 A at 50 V, 0.1 A at 200 V").verdict,
+            Over
+        );
     }
 
     /// What the hyperbola alone already forbids is over, whatever the data lack.
     #[test]
     fn the_hyperbola_condemns_without_a_curve() {
-        assert_eq!(heron80(&[(LATERAL, "structure vertical"), (MOSFET_POWER, "power 60 W at 25 degC")]).verdict, Over);
+        assert_eq!(
+            heron80(&[
+                (LATERAL, "structure vertical"),
+                (MOSFET_POWER, "power 60 W at 25 degC")
+            ])
+            .verdict,
+            Over
+        );
     }
 
     #[test]
     fn an_unstated_structure_is_named() {
         let m = heron80(&[(LATERAL, "")]);
-        assert_eq!((m.verdict, m.needs.as_slice()), (Unchecked, &["device ln16 structure".to_owned()][..]));
+        assert_eq!(
+            (m.verdict, m.needs.as_slice()),
+            (Unchecked, &["device ln16 structure".to_owned()][..])
+        );
     }
 
     /// Power stated at another case temperature lies on the same derating line: 180 W at 25 degC to nothing at
     /// 150 degC is 144 W at 50 degC.
     #[test]
     fn power_at_another_case_is_the_same_line() {
-        let used = |power: &str| margin(&tern60(&[("power              180 W at 25 degC", power)]), RULE.name, "n16").used_percent.unwrap();
+        let used = |power: &str| {
+            margin(
+                &tern60(&[("power              180 W at 25 degC", power)]),
+                RULE.name,
+                "n16",
+            )
+            .used_percent
+            .unwrap()
+        };
         assert!((used("power 180 W at 25 degC") - used("power 144 W at 50 degC")).abs() < 1e-9);
     }
 
@@ -163,23 +245,58 @@ mod tests {
     #[test]
     fn pulse_credit_only_where_the_policy_says() {
         let hard = tern60(&[ONE, ("resistive 8 ohm ±5 %", "nominal 6 ohm")]);
-        let quick = edited(&hard, &[("duty               1/8", "duty 1/8\n    policy quick"), ("network net {", "policy quick from bench { curve pulse }\n\nnetwork net {")]);
-        let (dc, pulse) = (margin(&hard, RULE.name, "n16"), margin(&quick, RULE.name, "n16"));
+        let quick = edited(
+            &hard,
+            &[
+                ("duty               1/8", "duty 1/8\n    policy quick"),
+                (
+                    "network net {",
+                    "policy quick from bench { curve pulse }\n\nnetwork net {",
+                ),
+            ],
+        );
+        let (dc, pulse) = (
+            margin(&hard, RULE.name, "n16"),
+            margin(&quick, RULE.name, "n16"),
+        );
         assert_eq!(dc.witness.curve.as_deref(), Some("dc"));
-        assert!(pulse.used_percent < dc.used_percent, "{:?} {:?}", pulse.used_percent, dc.used_percent);
+        assert!(
+            pulse.used_percent < dc.used_percent,
+            "{:?} {:?}",
+            pulse.used_percent,
+            dc.used_percent
+        );
         assert!(pulse.witness.curve.unwrap().ends_with("ms"));
     }
 
     #[test]
     fn strict_judges_at_high_mains() {
-        let at = |policy: &str| margin(&tern60(&[("    duty               1/8", policy)]), RULE.name, "n16").witness.mains_v;
-        assert_eq!(at("    duty               1/8\n    policy strict"), Some(253.0));
+        let at = |policy: &str| {
+            margin(
+                &tern60(&[("    duty               1/8", policy)]),
+                RULE.name,
+                "n16",
+            )
+            .witness
+            .mains_v
+        };
+        assert_eq!(
+            at("    duty               1/8\n    policy strict"),
+            Some(253.0)
+        );
         assert_eq!(at("    duty               1/8"), Some(230.0));
     }
 
     #[test]
     fn a_load_that_says_nothing_is_unchecked() {
-        let m = margin(&tern60(&[("load bench-8 { resistive 8 ohm ±5 % }", "load bench-8 { dc 3 ohm }")]), RULE.name, "n16");
+        let m = margin(
+            &tern60(&[(
+                "load bench-8 { resistive 8 ohm ±5 % }",
+                "load bench-8 { dc 3 ohm }",
+            )]),
+            RULE.name,
+            "n16",
+        );
         assert_eq!(m.verdict, Unchecked);
     }
 }

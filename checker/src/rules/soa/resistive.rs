@@ -32,12 +32,26 @@ pub fn check(case: &Case<'_>, out: &mut Margins<'_>) {
     let stage = case.output();
     for side in stage.sides() {
         for played in case.played() {
-            let open = played.as_ref().ok().and_then(|(load, _)| case.unknown_part(load));
+            let open = played
+                .as_ref()
+                .ok()
+                .and_then(|(load, _)| case.unknown_part(load));
             if let Some(open) = open {
-                out.compare(&RULE, case.device_part(stage, *side), stage.pairs.site(), Err(open));
+                out.compare(
+                    &RULE,
+                    case.device_part(stage, *side),
+                    stage.pairs.site(),
+                    Err(open),
+                );
             }
-            let stress = played.and_then(|(load, heat)| case.locus_stress(&RULE, load, heat, *side, Angle::Zero));
-            out.compare(&RULE, case.device_part(stage, *side), stage.pairs.site(), stress);
+            let stress = played
+                .and_then(|(load, heat)| case.locus_stress(&RULE, load, heat, *side, Angle::Zero));
+            out.compare(
+                &RULE,
+                case.device_part(stage, *side),
+                stage.pairs.site(),
+                stress,
+            );
         }
     }
 }
@@ -48,7 +62,13 @@ mod tests {
     use crate::finding::Verdict::{Over, Unchecked};
     use crate::testing::{margin, tern60};
 
-    const ALONE: [(&str, &str); 2] = [("pairs              2", "pairs              1"), ("loads              hall-8, bench-8", "loads              bench-8")];
+    const ALONE: [(&str, &str); 2] = [
+        ("pairs              2", "pairs              1"),
+        (
+            "loads              hall-8, bench-8",
+            "loads              bench-8",
+        ),
+    ];
 
     /// One pair into 7.6 ohm (8 ohm - 5 %), Vu 41.3699 V as in current.emitter-mean. The line is
     /// v = 41.3699 - i·(7.6 + 0.22). From 11 V to 50 V the curve falls as v^-s, s = ln(16/3.6)/ln(50/11) =
@@ -59,7 +79,11 @@ mod tests {
     fn one_pair_by_hand() {
         let m = margin(&tern60(&ALONE), RULE.name, "n16");
         let k = (150.0 - m.witness.case_c.unwrap()) / 125.0;
-        assert!((m.witness.device_v.unwrap() - 20.530).abs() < 2e-3, "{:?}", m.witness);
+        assert!(
+            (m.witness.device_v.unwrap() - 20.530).abs() < 2e-3,
+            "{:?}",
+            m.witness
+        );
         assert!((m.stress.unwrap().value - 2.6649).abs() < 2e-4);
         assert!((m.rating.unwrap().value - 8.6522 * k).abs() < 2e-3);
         assert!(k > 0.5 && k < 0.9, "{k}");
@@ -69,8 +93,17 @@ mod tests {
     /// rail, so a resistive line is covered; ending at 20 V it is not.
     #[test]
     fn a_curve_that_ends_too_soon_passes_nothing() {
-        let curve = "soa dc             16 A at 11 V, 3.6 A at 50 V, 0.9 A at 100 V, 110 mA at 240 V";
-        let m = margin(&tern60(&[ALONE[0], ALONE[1], (curve, "soa dc 16 A at 11 V, 8.9 A at 20 V")]), RULE.name, "n16");
+        let curve =
+            "soa dc             16 A at 11 V, 3.6 A at 50 V, 0.9 A at 100 V, 110 mA at 240 V";
+        let m = margin(
+            &tern60(&[
+                ALONE[0],
+                ALONE[1],
+                (curve, "soa dc 16 A at 11 V, 8.9 A at 20 V"),
+            ]),
+            RULE.name,
+            "n16",
+        );
         assert_eq!(m.verdict, Unchecked);
         assert!(m.note.contains("ends at 20 V"), "{}", m.note);
     }
@@ -78,21 +111,42 @@ mod tests {
     /// A case as hot as the junction may be leaves nothing.
     #[test]
     fn no_rating_left_is_over() {
-        let m = margin(&tern60(&[("resistance         0.45 K/W at 50 K", "resistance         9 K/W at 50 K")]), RULE.name, "n16");
+        let m = margin(
+            &tern60(&[(
+                "resistance         0.45 K/W at 50 K",
+                "resistance         9 K/W at 50 K",
+            )]),
+            RULE.name,
+            "n16",
+        );
         assert_eq!((m.verdict, m.used_percent), (Over, None));
     }
 
     #[test]
     fn what_is_missing_is_named() {
-        for (line, key) in [("    junction           150 degC\n    junction-case      0.69 K/W\n", "device n16 junction"), ("    insulator          0.35 K/W \"mica and grease\"\n", "stage out insulator")] {
+        for (line, key) in [
+            (
+                "    junction           150 degC\n    junction-case      0.69 K/W\n",
+                "device n16 junction",
+            ),
+            (
+                "    insulator          0.35 K/W \"mica and grease\"\n",
+                "stage out insulator",
+            ),
+        ] {
             let m = margin(&tern60(&[(line, "")]), RULE.name, "n16");
             assert_eq!(m.verdict, Unchecked, "{key}");
             assert!(m.needs.iter().any(|n| n == key), "{key}: {:?}", m.needs);
         }
         // without a curve the hyperbola is not enough to pass
-        let curve = "    soa dc             16 A at 11 V, 3.6 A at 50 V, 0.9 A at 100 V, 110 mA at 240 V\n";
+        let curve =
+            "    soa dc             16 A at 11 V, 3.6 A at 50 V, 0.9 A at 100 V, 110 mA at 240 V\n";
         let m = margin(&tern60(&[(curve, "")]), RULE.name, "n16");
         assert_eq!(m.verdict, Unchecked);
-        assert!(m.needs.iter().any(|n| n == "device n16 soa dc"), "{:?}", m.needs);
+        assert!(
+            m.needs.iter().any(|n| n == "device n16 soa dc"),
+            "{:?}",
+            m.needs
+        );
     }
 }

@@ -34,8 +34,21 @@ pub fn check(case: &Case<'_>, out: &mut Margins<'_>) {
         let part = || case.device_part(stage, *side);
         if let Some((needs, site)) = without(case) {
             if case.build.survives_short {
-                let note = format!("the build claims to survive a short, and {}", case.acts_instead());
-                out.judge(&RULE, part(), site, Verdict::Over, Stress { witness: case.witness(), note, ..Stress::default() });
+                let note = format!(
+                    "the build claims to survive a short, and {}",
+                    case.acts_instead()
+                );
+                out.judge(
+                    &RULE,
+                    part(),
+                    site,
+                    Verdict::Over,
+                    Stress {
+                        witness: case.witness(),
+                        note,
+                        ..Stress::default()
+                    },
+                );
             } else {
                 out.compare(&RULE, part(), site, Err(needs));
             }
@@ -45,7 +58,9 @@ pub fn check(case: &Case<'_>, out: &mut Margins<'_>) {
         for played in case.played() {
             match played.and_then(|(_, heat)| case.short_stresses(&RULE, heat, *side)) {
                 Err(needs) => out.compare(&RULE, part(), site, Err(needs)),
-                Ok(stresses) => stresses.into_iter().for_each(|s| out.compare(&RULE, part(), site, Ok(s))),
+                Ok(stresses) => stresses
+                    .into_iter()
+                    .for_each(|s| out.compare(&RULE, part(), site, Ok(s))),
             }
         }
     }
@@ -78,14 +93,29 @@ mod tests {
     /// 4·(150 - 94)/(188.862 - 94) = 2.36133 A, the lesser. Hand calculation.
     #[test]
     fn the_mean_heat_decides_by_hand() {
-        let text = tern60(&[("pairs              2", "pairs              1"), (LINE, "    limit-line device   4 A at 0 V\n"), ("cutout             80 degC", "cutout             85 degC")]);
+        let text = tern60(&[
+            ("pairs              2", "pairs              1"),
+            (LINE, "    limit-line device   4 A at 0 V\n"),
+            ("cutout             80 degC", "cutout             85 degC"),
+        ]);
         let m = margin(&text, RULE.name, "n16");
         assert!((m.stress.unwrap().value - 4.0).abs() < 1e-9);
-        assert!((m.rating.unwrap().value - 2.36133).abs() < 1e-4, "{:?}", m.rating);
+        assert!(
+            (m.rating.unwrap().value - 2.36133).abs() < 1e-4,
+            "{:?}",
+            m.rating
+        );
         assert!((m.witness.device_v.unwrap() - 44.7268).abs() < 1e-3);
         assert_eq!(m.verdict, Over);
         // 2.3 A: Tj = 94 + 52.4478·1.04 = 148.55 degC, and the curve has more
-        assert_eq!(verdict(&text.replace("device   4 A at 0 V", "device   2.3 A at 0 V"), RULE.name, "n16"), Ok);
+        assert_eq!(
+            verdict(
+                &text.replace("device   4 A at 0 V", "device   2.3 A at 0 V"),
+                RULE.name,
+                "n16"
+            ),
+            Ok
+        );
     }
 
     #[test]
@@ -95,9 +125,15 @@ mod tests {
         assert_eq!(m.verdict, Unchecked);
         assert_eq!(m.needs, ["protection guard limiter"]);
         assert!(m.note.contains("5.000 A rail fuse"), "{}", m.note);
-        let claimed = edited(&bare, &[("duty               1/8", "duty 1/8\n    survives-short yes")]);
+        let claimed = edited(
+            &bare,
+            &[("duty               1/8", "duty 1/8\n    survives-short yes")],
+        );
         assert_eq!(verdict(&claimed, RULE.name, "n16"), Over);
-        let none = tern60(&[(LINE, "    limit-line         none\n    limiter            none\n")]);
+        let none = tern60(&[(
+            LINE,
+            "    limit-line         none\n    limiter            none\n",
+        )]);
         let m = margin(&none, RULE.name, "n16");
         assert_eq!((m.verdict, m.needs.len()), (Unchecked, 0));
     }

@@ -33,25 +33,52 @@ rule! {
 
 /// One margin for a bypassed resistor: the load that draws most.
 pub fn check(case: &Case<'_>, out: &mut Margins<'_>) {
-    let Some(supply) = case.fitted(&RULE, out) else { return };
+    let Some(supply) = case.fitted(&RULE, out) else {
+        return;
+    };
     let field = &supply.soft_start;
     if field.unstated() {
-        return out.compare(&RULE, case.supply_part(supply, "soft-start", 1), field.site(), Err(field.missing()));
+        return out.compare(
+            &RULE,
+            case.supply_part(supply, "soft-start", 1),
+            field.site(),
+            Err(field.missing()),
+        );
     }
-    let Some(soft) = field.get().filter(|s| s.hot.is_none()) else { return };
+    let Some(soft) = field.get().filter(|s| s.hot.is_none()) else {
+        return;
+    };
     let (part, site) = (case.supply_part(supply, "soft-start", 1), field.site());
     if let Some(opens) = soft.thermal_fuse {
         let note = format!("the thermal fuse opens at {:.0} degC", opens.0);
-        return out.judge(&RULE, part, site, Verdict::Ok, Stress { note, ..Stress::default() });
+        return out.judge(
+            &RULE,
+            part,
+            site,
+            Verdict::Ok,
+            Stress {
+                note,
+                ..Stress::default()
+            },
+        );
     }
     for found in case.per_load(|load| stress(case, supply, soft, load)) {
         out.compare(&RULE, part.clone(), site, found);
     }
 }
 
-fn stress(case: &Case<'_>, supply: &Supply, soft: &SoftStart, load: &Driven) -> Result<Stress, Needs> {
+fn stress(
+    case: &Case<'_>,
+    supply: &Supply,
+    soft: &SoftStart,
+    load: &Driven,
+) -> Result<Stress, Needs> {
     let field = &supply.soft_start;
-    let (rated, duty, air) = three(field.part("W", |s| s.watt), case.duty_signal(load), case.air_inside())?;
+    let (rated, duty, air) = three(
+        field.part("W", |s| s.watt),
+        case.duty_signal(load),
+        case.air_inside(),
+    )?;
     let (watts, current) = case.stuck_watts(soft.cold, duty.rail_current)?;
     let rating = resistor_rating(rated, air);
     Ok(Stress {
@@ -65,10 +92,37 @@ fn stress(case: &Case<'_>, supply: &Supply, soft: &SoftStart, load: &Driven) -> 
             ..case.witness()
         },
         working: vec![
-            stated("R", "soft-start resistor", soft.cold.0, "ohm", field.stated_at()),
-            solved("Idc", "mean current on each rail", "n·(Î/π + N·Iq), or all that the rail gives", current.0, "A", "mean of a half-sine"),
-            solved("P", "in the resistor", "R·Imains²", watts, "W", "periodic solution of the rectifier"),
-            solved("Pmax", "rating in the air inside", "P70, less above 70 degC", rating.0, "W", "makers' derating curve"),
+            stated(
+                "R",
+                "soft-start resistor",
+                soft.cold.0,
+                "ohm",
+                field.stated_at(),
+            ),
+            solved(
+                "Idc",
+                "mean current on each rail",
+                "n·(Î/π + N·Iq), or all that the rail gives",
+                current.0,
+                "A",
+                "mean of a half-sine",
+            ),
+            solved(
+                "P",
+                "in the resistor",
+                "R·Imains²",
+                watts,
+                "W",
+                "periodic solution of the rectifier",
+            ),
+            solved(
+                "Pmax",
+                "rating in the air inside",
+                "P70, less above 70 degC",
+                rating.0,
+                "W",
+                "makers' derating curve",
+            ),
         ],
         related: case.loading_sites(load),
         ..Stress::default()
@@ -81,7 +135,11 @@ mod tests {
     use crate::testing::{margin, tern60};
 
     fn soft(text: &str) -> crate::finding::Margin {
-        margin(&tern60(&[("27R 10 W bypass 400 ms thermal-fuse 130 degC", text)]), super::RULE.name, "toroid soft-start")
+        margin(
+            &tern60(&[("27R 10 W bypass 400 ms thermal-fuse 130 degC", text)]),
+            super::RULE.name,
+            "toroid soft-start",
+        )
     }
 
     /// At the 0.63745 A of the duty a small-step integration written apart from this program has
@@ -97,7 +155,10 @@ mod tests {
     #[test]
     fn a_thermal_fuse_ends_it() {
         let m = soft("27R 1 W bypass 400 ms thermal-fuse 130 degC");
-        assert_eq!((m.verdict, m.note.as_str()), (Verdict::Ok, "the thermal fuse opens at 130 degC"));
+        assert_eq!(
+            (m.verdict, m.note.as_str()),
+            (Verdict::Ok, "the thermal fuse opens at 130 degC")
+        );
     }
 
     /// So much resistance that the rail gives out before the duty is reached still has an answer.
@@ -109,6 +170,12 @@ mod tests {
     #[test]
     fn says_what_is_missing() {
         let m = soft("27R bypass 400 ms");
-        assert_eq!((m.verdict, m.needs), (Verdict::Unchecked, vec!["supply toroid soft-start W".to_owned()]));
+        assert_eq!(
+            (m.verdict, m.needs),
+            (
+                Verdict::Unchecked,
+                vec!["supply toroid soft-start W".to_owned()]
+            )
+        );
     }
 }

@@ -33,13 +33,16 @@ rule! {
 
 /// One margin for the mains fuses.
 pub fn check(case: &Case<'_>, out: &mut Margins<'_>) {
-    let Some(supply) = case.fitted(&RULE, out) else { return };
+    let Some(supply) = case.fitted(&RULE, out) else {
+        return;
+    };
     let part = case.fuse_part(supply, "mains");
     match case.mains_fuses() {
         Err(needs) => out.compare(&RULE, part, supply.mains_fuse.site(), Err(needs)),
         Ok(fuses) => {
             for fuse in fuses {
-                let found = stress(case, supply, fuse).and_then(|stress| survives(case, supply, stress));
+                let found =
+                    stress(case, supply, fuse).and_then(|stress| survives(case, supply, stress));
                 out.compare(&RULE, part.clone(), fuse.site, found);
             }
         }
@@ -52,18 +55,31 @@ fn survives(case: &Case<'_>, supply: &Supply, stress: Stress) -> Result<Stress, 
         Allow::Percent(percent) => percent / 100.0,
         _ => 1.0,
     };
-    if supply.soft_start.unstated() && stress.value > share * stress.rating { Err(supply.soft_start.missing()) } else { Ok(stress) }
+    if supply.soft_start.unstated() && stress.value > share * stress.rating {
+        Err(supply.soft_start.missing())
+    } else {
+        Ok(stress)
+    }
 }
 
 fn stress(case: &Case<'_>, supply: &Supply, fuse: &FuseLine) -> Result<Stress, Needs> {
-    let melts = fuse.melts.ok_or_else(|| supply.mains_fuse.missing_part("melts"));
+    let melts = fuse
+        .melts
+        .ok_or_else(|| supply.mains_fuse.missing_part("melts"));
     let behind = Case::transformers_behind(supply, fuse);
     let (melts, surge) = both(melts, case.mains_surge(behind, true))?;
     let mut working = steps(&surge);
     if supply.soft_start.get().is_some()
         && let Ok(bare) = case.mains_surge(behind, false)
     {
-        working.push(solved("bare", "without the soft start, information", "", bare.worse().0, "A2s", ""));
+        working.push(solved(
+            "bare",
+            "without the soft start, information",
+            "",
+            bare.worse().0,
+            "A2s",
+            "",
+        ));
     }
     working.push(stated("melts", "melting I2t", melts.0, "A2s", [fuse.site]));
     Ok(Stress {
@@ -82,7 +98,11 @@ fn stress(case: &Case<'_>, supply: &Supply, fuse: &FuseLine) -> Result<Stress, N
             ("the soft start", supply.soft_start.stated_at()),
             ("the mains", case.region.map(|r| r.site)),
         ]),
-        note: if surge.core > surge.reservoir { "the saturated core is worse".to_owned() } else { "the empty reservoirs are worse".to_owned() },
+        note: if surge.core > surge.reservoir {
+            "the saturated core is worse".to_owned()
+        } else {
+            "the empty reservoirs are worse".to_owned()
+        },
         ..Stress::default()
     })
 }
@@ -91,10 +111,38 @@ fn stress(case: &Case<'_>, supply: &Supply, fuse: &FuseLine) -> Result<Stress, N
 #[must_use]
 pub fn steps(surge: &MainsSurge) -> Vec<crate::finding::Step> {
     vec![
-        solved("Rpri", "copper of one primary", "stated, else ρ·Vtap²/2VA", surge.primary.0, "ohm", "least-copper design"),
-        solved("Rmains", "mains", "stated, else 0.3 ohm", surge.mains.0, "ohm", "common practice, no source"),
-        solved("core", "I2t of a saturated core", "Ipk²/(4f)", surge.core.0, "A2s", "half a sine"),
-        solved("empty", "I2t of empty reservoirs, bypass included", "", surge.reservoir.0, "A2s", "charging through the winding, exact"),
+        solved(
+            "Rpri",
+            "copper of one primary",
+            "stated, else ρ·Vtap²/2VA",
+            surge.primary.0,
+            "ohm",
+            "least-copper design",
+        ),
+        solved(
+            "Rmains",
+            "mains",
+            "stated, else 0.3 ohm",
+            surge.mains.0,
+            "ohm",
+            "common practice, no source",
+        ),
+        solved(
+            "core",
+            "I2t of a saturated core",
+            "Ipk²/(4f)",
+            surge.core.0,
+            "A2s",
+            "half a sine",
+        ),
+        solved(
+            "empty",
+            "I2t of empty reservoirs, bypass included",
+            "",
+            surge.reservoir.0,
+            "A2s",
+            "charging through the winding, exact",
+        ),
     ]
 }
 
@@ -114,17 +162,39 @@ mod tests {
         let m = margin(&tern60(&[]), super::RULE.name, "toroid fuse mains");
         assert!((m.stress.unwrap().value - 0.571_33).abs() < 1e-4);
         let step = |symbol: &str| m.working.iter().find(|s| s.symbol == symbol).unwrap().value;
-        assert!((step("empty") / 0.4815 - 1.0).abs() < 5e-3, "{}", step("empty"));
+        assert!(
+            (step("empty") / 0.4815 - 1.0).abs() < 5e-3,
+            "{}",
+            step("empty")
+        );
         assert!((step("bare") - 15.283).abs() < 1e-3);
-        let bare = margin(&tern60(&[(SOFT, "    soft-start         none\n")]), super::RULE.name, "toroid fuse mains");
-        let empty = bare.working.iter().find(|s| s.symbol == "empty").unwrap().value;
+        let bare = margin(
+            &tern60(&[(SOFT, "    soft-start         none\n")]),
+            super::RULE.name,
+            "toroid fuse mains",
+        );
+        let empty = bare
+            .working
+            .iter()
+            .find(|s| s.symbol == "empty")
+            .unwrap()
+            .value;
         assert!((empty / 1.628 - 1.0).abs() < 5e-3, "{empty}");
     }
 
     /// 50 % of 30.6 A²s is 15.3 A²s, of 30.5 A²s 15.25 A²s. By hand.
     #[test]
     fn limits() {
-        let at = |melts: &str| verdict(&tern60(&[(SOFT, "    soft-start         none\n"), ("90 A2s", &format!("{melts} A2s"))]), super::RULE.name, "toroid fuse mains");
+        let at = |melts: &str| {
+            verdict(
+                &tern60(&[
+                    (SOFT, "    soft-start         none\n"),
+                    ("90 A2s", &format!("{melts} A2s")),
+                ]),
+                super::RULE.name,
+                "toroid fuse mains",
+            )
+        };
         assert_eq!(at("30.6"), Verdict::Ok);
         assert_eq!(at("30.5"), Verdict::Thin);
         assert_eq!(at("15.2"), Verdict::Over);
@@ -133,15 +203,37 @@ mod tests {
     /// With no word of a soft start the fuse may pass without it, not fail for want of it.
     #[test]
     fn an_unstated_soft_start() {
-        let with = |melts: &str| margin(&tern60(&[(SOFT, ""), ("90 A2s", melts)]), super::RULE.name, "toroid fuse mains");
+        let with = |melts: &str| {
+            margin(
+                &tern60(&[(SOFT, ""), ("90 A2s", melts)]),
+                super::RULE.name,
+                "toroid fuse mains",
+            )
+        };
         assert_eq!(with("90 A2s").verdict, Verdict::Ok);
         let m = with("20 A2s");
-        assert_eq!((m.verdict, m.needs), (Verdict::Unchecked, vec!["supply toroid soft-start".to_owned()]));
+        assert_eq!(
+            (m.verdict, m.needs),
+            (
+                Verdict::Unchecked,
+                vec!["supply toroid soft-start".to_owned()]
+            )
+        );
     }
 
     #[test]
     fn says_what_is_missing() {
-        let m = margin(&tern60(&[(" melts 90 A2s", "")]), super::RULE.name, "toroid fuse mains");
-        assert_eq!((m.verdict, m.needs), (Verdict::Unchecked, vec!["supply toroid fuse mains melts".to_owned()]));
+        let m = margin(
+            &tern60(&[(" melts 90 A2s", "")]),
+            super::RULE.name,
+            "toroid fuse mains",
+        );
+        assert_eq!(
+            (m.verdict, m.needs),
+            (
+                Verdict::Unchecked,
+                vec!["supply toroid fuse mains melts".to_owned()]
+            )
+        );
     }
 }

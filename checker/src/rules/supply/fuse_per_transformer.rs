@@ -27,10 +27,20 @@ rule! {
 
 /// One margin for the mains fuses that feed more than one transformer.
 pub fn check(case: &Case<'_>, out: &mut Margins<'_>) {
-    let Some(supply) = case.fitted(&RULE, out) else { return };
+    let Some(supply) = case.fitted(&RULE, out) else {
+        return;
+    };
     let fuses = case.mains_fuses().unwrap_or_default();
-    for fuse in fuses.into_iter().filter(|f| Case::transformers_behind(supply, f) > 1) {
-        out.compare(&RULE, case.fuse_part(supply, "mains"), fuse.site, stress(case, supply, fuse, 1));
+    for fuse in fuses
+        .into_iter()
+        .filter(|f| Case::transformers_behind(supply, f) > 1)
+    {
+        out.compare(
+            &RULE,
+            case.fuse_part(supply, "mains"),
+            fuse.site,
+            stress(case, supply, fuse, 1),
+        );
     }
 }
 
@@ -45,12 +55,26 @@ mod tests {
         let shared = tern60(super::RULE.example.edits);
         let m = margin(&shared, super::RULE.name, "toroid fuse mains");
         assert!(m.verdict == Verdict::Thin && (m.stress.unwrap().value - 3.833_33).abs() < 1e-5);
-        assert_eq!(margin(&shared, "supply.fuse-band", "toroid fuse mains").verdict, Verdict::Ok);
+        assert_eq!(
+            margin(&shared, "supply.fuse-band", "toroid fuse mains").verdict,
+            Verdict::Ok
+        );
     }
 
     #[test]
     fn a_fuse_for_each_is_not_shared() {
-        let each = tern60(&[("    transformer        t300", "    transformer        2 x t300"), ("A2s tap 230 V", "A2s tap 230 V per transformer")]);
-        assert!(report(&each).builds[0].margins.iter().all(|m| m.rule != super::RULE.name));
+        let each = tern60(&[
+            (
+                "    transformer        t300",
+                "    transformer        2 x t300",
+            ),
+            ("A2s tap 230 V", "A2s tap 230 V per transformer"),
+        ]);
+        assert!(
+            report(&each).builds[0]
+                .margins
+                .iter()
+                .all(|m| m.rule != super::RULE.name)
+        );
     }
 }

@@ -36,14 +36,30 @@ const OVERLOAD_S: f64 = 5.0;
 
 /// One margin for the soft start.
 pub fn check(case: &Case<'_>, out: &mut Margins<'_>) {
-    let Some(supply) = case.fitted(&RULE, out) else { return };
+    let Some(supply) = case.fitted(&RULE, out) else {
+        return;
+    };
     let field = &supply.soft_start;
     if field.unstated() {
-        return out.compare(&RULE, case.supply_part(supply, "soft-start", 1), field.site(), Err(field.missing()));
+        return out.compare(
+            &RULE,
+            case.supply_part(supply, "soft-start", 1),
+            field.site(),
+            Err(field.missing()),
+        );
     }
     let Some(soft) = field.get() else { return };
-    let found = if soft.hot.is_some() { thermistor(case, supply) } else { resistor(case, supply, soft) };
-    out.compare(&RULE, case.supply_part(supply, "soft-start", 1), field.site(), found);
+    let found = if soft.hot.is_some() {
+        thermistor(case, supply)
+    } else {
+        resistor(case, supply, soft)
+    };
+    out.compare(
+        &RULE,
+        case.supply_part(supply, "soft-start", 1),
+        field.site(),
+        found,
+    );
 }
 
 fn resistor(case: &Case<'_>, supply: &Supply, soft: &SoftStart) -> Result<Stress, Needs> {
@@ -53,14 +69,45 @@ fn resistor(case: &Case<'_>, supply: &Supply, soft: &SoftStart) -> Result<Stress
         (None, Some(watt)) => Ok(OVERLOAD * OVERLOAD_S * watt.0),
         (None, None) => Err(field.missing_part("W")),
     };
-    let (stands, start, surge) = three(stands, case.through_soft_start(Mains::High), case.mains_surge(supply.transformers.max(1), true))?;
+    let (stands, start, surge) = three(
+        stands,
+        case.through_soft_start(Mains::High),
+        case.mains_surge(supply.transformers.max(1), true),
+    )?;
     let core = surge.core.0 * soft.cold.0;
     let joules = start.energy.0.max(core);
     let working = vec![
-        stated("R", "soft-start resistor", soft.cold.0, "ohm", field.stated_at()),
-        solved("E", "until the bypass, empty reservoirs", "Σ R·i²", start.energy.0, "J", "charging through winding and resistor, exact"),
-        solved("Ecore", "half a cycle of a saturated core", "R·I2t", core, "J", "half a sine"),
-        solved("Emax", "what it stands", "stated, else 5·P·5 s", stands, "J", "from memory"),
+        stated(
+            "R",
+            "soft-start resistor",
+            soft.cold.0,
+            "ohm",
+            field.stated_at(),
+        ),
+        solved(
+            "E",
+            "until the bypass, empty reservoirs",
+            "Σ R·i²",
+            start.energy.0,
+            "J",
+            "charging through winding and resistor, exact",
+        ),
+        solved(
+            "Ecore",
+            "half a cycle of a saturated core",
+            "R·I2t",
+            core,
+            "J",
+            "half a sine",
+        ),
+        solved(
+            "Emax",
+            "what it stands",
+            "stated, else 5·P·5 s",
+            stands,
+            "J",
+            "from memory",
+        ),
     ];
     Ok(at(case, supply, joules, stands, working))
 }
@@ -69,14 +116,34 @@ fn thermistor(case: &Case<'_>, supply: &Supply) -> Result<Stress, Needs> {
     let field = &supply.soft_start;
     let (stands, (joules, rail)) = both(field.part("energy", |s| s.energy), case.stored())?;
     let working = vec![
-        solved("V0", "rail, no load, high mains", "m·√2·Vs·(1 + ρ)", rail.0, "V", "definition of regulation"),
-        solved("E", "both rails, greatest reservoir", "2·½CV0²", joules, "J", "a limiter of any resistance loses that"),
+        solved(
+            "V0",
+            "rail, no load, high mains",
+            "m·√2·Vs·(1 + ρ)",
+            rail.0,
+            "V",
+            "definition of regulation",
+        ),
+        solved(
+            "E",
+            "both rails, greatest reservoir",
+            "2·½CV0²",
+            joules,
+            "J",
+            "a limiter of any resistance loses that",
+        ),
         stated("Emax", "what it stands", stands.0, "J", field.stated_at()),
     ];
     Ok(at(case, supply, joules, stands.0, working))
 }
 
-fn at(case: &Case<'_>, supply: &Supply, value: f64, rating: f64, working: Vec<crate::finding::Step>) -> Stress {
+fn at(
+    case: &Case<'_>,
+    supply: &Supply,
+    value: f64,
+    rating: f64,
+    working: Vec<crate::finding::Step>,
+) -> Stress {
     Stress {
         value,
         rating,
@@ -87,7 +154,10 @@ fn at(case: &Case<'_>, supply: &Supply, value: f64, rating: f64, working: Vec<cr
             ..case.witness()
         },
         working,
-        related: places([("the reservoir", supply.reservoir.stated_at()), ("the mains", case.region.map(|r| r.site))]),
+        related: places([
+            ("the reservoir", supply.reservoir.stated_at()),
+            ("the mains", case.region.map(|r| r.site)),
+        ]),
         ..Stress::default()
     }
 }
@@ -98,7 +168,11 @@ mod tests {
     use crate::testing::{margin, tern60};
 
     fn soft(text: &str) -> crate::finding::Margin {
-        margin(&tern60(&[("27R 10 W bypass 400 ms thermal-fuse 130 degC", text)]), super::RULE.name, "toroid soft-start")
+        margin(
+            &tern60(&[("27R 10 W bypass 400 ms thermal-fuse 130 degC", text)]),
+            super::RULE.name,
+            "toroid soft-start",
+        )
     }
 
     /// A saturated core puts 27·10.6895²/200 = 15.426 J into the resistor: by hand. Empty reservoirs
@@ -122,8 +196,17 @@ mod tests {
         let m = soft("ntc 10 ohm hot 0.2 ohm energy 100 J");
         assert!((m.stress.unwrap().value - 24.502).abs() < 1e-2);
         assert_eq!(m.verdict, Verdict::Ok);
-        assert_eq!(soft("ntc 10 ohm hot 0.2 ohm energy 20 J").verdict, Verdict::Over);
+        assert_eq!(
+            soft("ntc 10 ohm hot 0.2 ohm energy 20 J").verdict,
+            Verdict::Over
+        );
         let m = soft("ntc 10 ohm hot 0.2 ohm");
-        assert_eq!((m.verdict, m.needs), (Verdict::Unchecked, vec!["supply toroid soft-start energy".to_owned()]));
+        assert_eq!(
+            (m.verdict, m.needs),
+            (
+                Verdict::Unchecked,
+                vec!["supply toroid soft-start energy".to_owned()]
+            )
+        );
     }
 }

@@ -30,8 +30,16 @@ rule! {
 
 /// One margin for the build's supply: the load that draws most.
 pub fn check(case: &Case<'_>, out: &mut Margins<'_>) {
-    let Some(supply) = case.fitted(&RULE, out) else { return };
-    let part = Part { name: supply.owner.name.clone(), block: case.build.owner.name.clone(), key: "supply", quantity: case.supplies(), ..Part::default() };
+    let Some(supply) = case.fitted(&RULE, out) else {
+        return;
+    };
+    let part = Part {
+        name: supply.owner.name.clone(),
+        block: case.build.owner.name.clone(),
+        key: "supply",
+        quantity: case.supplies(),
+        ..Part::default()
+    };
     for found in case.per_load(|load| stress(case, load)) {
         out.compare(&RULE, part.clone(), case.build.supply.site(), found);
     }
@@ -39,7 +47,11 @@ pub fn check(case: &Case<'_>, out: &mut Margins<'_>) {
 
 fn stress(case: &Case<'_>, load: &Driven) -> Result<Stress, Needs> {
     let rating = &case.supply()?.transformer.rating;
-    let (channels, most, rated) = three(case.channels_per_supply(), case.most_channels(load), rating.need().copied())?;
+    let (channels, most, rated) = three(
+        case.channels_per_supply(),
+        case.most_channels(load),
+        rating.need().copied(),
+    )?;
     let duty = case.duty_signal(load)?;
     Ok(Stress {
         value: f64::from(channels),
@@ -53,10 +65,36 @@ fn stress(case: &Case<'_>, load: &Driven) -> Result<Stress, Needs> {
             ..case.witness()
         },
         working: vec![
-            stated("n", "channels on one supply", f64::from(channels), "1", [case.build.supply.site()]),
-            stated("VA", "rating of one transformer", rated, "VA", rating.stated_at()),
-            solved("V̂", "duty amplitude", "√(2·d·Pref·R)", duty.amplitude.0, "V", "definition of the duty"),
-            solved("n max", "channels it carries", "greatest n with Σ windings Vs·Irms <= VA", f64::from(most), "1", "periodic solution of the rectifier"),
+            stated(
+                "n",
+                "channels on one supply",
+                f64::from(channels),
+                "1",
+                [case.build.supply.site()],
+            ),
+            stated(
+                "VA",
+                "rating of one transformer",
+                rated,
+                "VA",
+                rating.stated_at(),
+            ),
+            solved(
+                "V̂",
+                "duty amplitude",
+                "√(2·d·Pref·R)",
+                duty.amplitude.0,
+                "V",
+                "definition of the duty",
+            ),
+            solved(
+                "n max",
+                "channels it carries",
+                "greatest n with Σ windings Vs·Irms <= VA",
+                f64::from(most),
+                "1",
+                "periodic solution of the rectifier",
+            ),
         ],
         related: case.loading_sites(load),
         ..Stress::default()
@@ -76,7 +114,10 @@ mod tests {
         let most = m.rating.unwrap().value;
         assert!((3.0..=4.0).contains(&most), "{most}");
         let with = |channels: u32| {
-            let text = tern60(&[("    channels           1\n", &format!("    channels           {channels}\n"))]);
+            let text = tern60(&[(
+                "    channels           1\n",
+                &format!("    channels           {channels}\n"),
+            )]);
             margin(&text, super::RULE.name, "toroid").verdict
         };
         assert_eq!(with(most as u32), Verdict::Ok);
@@ -87,10 +128,17 @@ mod tests {
     #[test]
     fn agrees_with_the_transformer() {
         for channels in 1..=5 {
-            let text = tern60(&[("    channels           1\n", &format!("    channels           {channels}\n"))]);
+            let text = tern60(&[(
+                "    channels           1\n",
+                &format!("    channels           {channels}\n"),
+            )]);
             let over = margin(&text, super::RULE.name, "toroid").verdict == Verdict::Over;
             let transformer = margin(&text, "current.transformer-duty", "t300");
-            assert_eq!(over, transformer.verdict == Verdict::Over, "{channels} channels");
+            assert_eq!(
+                over,
+                transformer.verdict == Verdict::Over,
+                "{channels} channels"
+            );
         }
     }
 

@@ -40,9 +40,13 @@ const USUAL_WITHOUT_VA: f64 = 300.0;
 
 /// One margin for a supply above 300 VA that has no soft start.
 pub fn check(case: &Case<'_>, out: &mut Margins<'_>) {
-    let Some(supply) = case.fitted(&RULE, out) else { return };
+    let Some(supply) = case.fitted(&RULE, out) else {
+        return;
+    };
     let field = &supply.soft_start;
-    let Some(rating) = supply.transformer.rating.get() else { return };
+    let Some(rating) = supply.transformer.rating.get() else {
+        return;
+    };
     let volt_amps = rating * f64::from(supply.transformers.max(1));
     if field.get().is_some() || volt_amps <= USUAL_WITHOUT_VA {
         return;
@@ -53,25 +57,55 @@ pub fn check(case: &Case<'_>, out: &mut Margins<'_>) {
     }
     let fuses = case.mains_fuses().unwrap_or_default();
     if fuses.is_empty() {
-        let note = format!("{volt_amps:.0} VA without soft start; no mains fuse says what it stands");
-        return out.judge(&RULE, part, site, Verdict::Ok, Stress { note, ..Stress::default() });
+        let note =
+            format!("{volt_amps:.0} VA without soft start; no mains fuse says what it stands");
+        return out.judge(
+            &RULE,
+            part,
+            site,
+            Verdict::Ok,
+            Stress {
+                note,
+                ..Stress::default()
+            },
+        );
     }
     for fuse in fuses {
-        out.compare(&RULE, part.clone(), site, stress(case, supply, fuse, volt_amps));
+        out.compare(
+            &RULE,
+            part.clone(),
+            site,
+            stress(case, supply, fuse, volt_amps),
+        );
     }
 }
 
-fn stress(case: &Case<'_>, supply: &Supply, fuse: &FuseLine, volt_amps: f64) -> Result<Stress, Needs> {
-    let melts = fuse.melts.ok_or_else(|| supply.mains_fuse.missing_part("melts"));
+fn stress(
+    case: &Case<'_>,
+    supply: &Supply,
+    fuse: &FuseLine,
+    volt_amps: f64,
+) -> Result<Stress, Needs> {
+    let melts = fuse
+        .melts
+        .ok_or_else(|| supply.mains_fuse.missing_part("melts"));
     let behind = Case::transformers_behind(supply, fuse);
-    let (melts, surge): (AmpSquaredSecond, MainsSurge) = both(melts, case.mains_surge(behind, false))?;
+    let (melts, surge): (AmpSquaredSecond, MainsSurge) =
+        both(melts, case.mains_surge(behind, false))?;
     Ok(Stress {
         value: surge.worse().0,
         rating: melts.0,
-        witness: Witness { mains_v: case.mains_volts(crate::analysis::rails::Mains::High), channels_driven: None, ..case.witness() },
+        witness: Witness {
+            mains_v: case.mains_volts(crate::analysis::rails::Mains::High),
+            channels_driven: None,
+            ..case.witness()
+        },
         working: fuse_inrush::steps(&surge),
         related: fuse_band::stress(case, supply, fuse, behind)?.related,
-        note: format!("{volt_amps:.0} VA without soft start: {:.0} A for an instant; common practice is one above {USUAL_WITHOUT_VA:.0} VA", surge.peak.0),
+        note: format!(
+            "{volt_amps:.0} VA without soft start: {:.0} A for an instant; common practice is one above {USUAL_WITHOUT_VA:.0} VA",
+            surge.peak.0
+        ),
         ..Stress::default()
     })
 }
@@ -85,7 +119,11 @@ mod tests {
     const NONE: &str = "    soft-start         none\n";
 
     fn big(soft: &str, melts: &str) -> crate::finding::Margin {
-        margin(&tern60(&[(SOFT, soft), ("300 VA", "500 VA"), ("90 A2s", melts)]), super::RULE.name, "toroid soft-start")
+        margin(
+            &tern60(&[(SOFT, soft), ("300 VA", "500 VA"), ("90 A2s", melts)]),
+            super::RULE.name,
+            "toroid soft-start",
+        )
     }
 
     /// Rpri = 0.07·230²/1000 = 3.703 ohm, √2·253/4.003 = 89.382 A, I²t = 39.946 A²s. By hand.
@@ -102,13 +140,28 @@ mod tests {
     #[test]
     fn not_stated_is_unchecked() {
         let m = big("", "90 A2s");
-        assert_eq!((m.verdict, m.needs), (Verdict::Unchecked, vec!["supply toroid soft-start".to_owned()]));
+        assert_eq!(
+            (m.verdict, m.needs),
+            (
+                Verdict::Unchecked,
+                vec!["supply toroid soft-start".to_owned()]
+            )
+        );
     }
 
     #[test]
     fn small_ones_go_without() {
-        for text in [tern60(&[(SOFT, NONE)]), tern60(&[(SOFT, "")]), tern60(&[("300 VA", "500 VA")])] {
-            assert!(report(&text).builds[0].margins.iter().all(|m| m.rule != super::RULE.name));
+        for text in [
+            tern60(&[(SOFT, NONE)]),
+            tern60(&[(SOFT, "")]),
+            tern60(&[("300 VA", "500 VA")]),
+        ] {
+            assert!(
+                report(&text).builds[0]
+                    .margins
+                    .iter()
+                    .all(|m| m.rule != super::RULE.name)
+            );
         }
     }
 }

@@ -32,10 +32,17 @@ rule! {
 
 /// One margin for a soft start that is bypassed.
 pub fn check(case: &Case<'_>, out: &mut Margins<'_>) {
-    let Some(supply) = case.fitted(&RULE, out) else { return };
+    let Some(supply) = case.fitted(&RULE, out) else {
+        return;
+    };
     let field = &supply.soft_start;
     if field.unstated() {
-        return out.compare(&RULE, case.supply_part(supply, "soft-start", 1), field.site(), Err(field.missing()));
+        return out.compare(
+            &RULE,
+            case.supply_part(supply, "soft-start", 1),
+            field.site(),
+            Err(field.missing()),
+        );
     }
     let Some(soft) = field.get() else { return };
     // an NTC may stay in circuit for good
@@ -43,13 +50,22 @@ pub fn check(case: &Case<'_>, out: &mut Margins<'_>) {
         return;
     }
     for mains in [Mains::High, Mains::Low] {
-        out.compare(&RULE, case.supply_part(supply, "soft-start", 1), field.site(), stress(case, supply, mains));
+        out.compare(
+            &RULE,
+            case.supply_part(supply, "soft-start", 1),
+            field.site(),
+            stress(case, supply, mains),
+        );
     }
 }
 
 fn stress(case: &Case<'_>, supply: &Supply, mains: Mains) -> Result<Stress, Needs> {
     let field = &supply.soft_start;
-    let (soft, unsagged, stated_as) = three(case.through_soft_start(mains), case.unsagged(mains), field.need())?;
+    let (soft, unsagged, stated_as) = three(
+        case.through_soft_start(mains),
+        case.unsagged(mains),
+        field.need(),
+    )?;
     let percent = 100.0 * (soft.reached / unsagged);
     Ok(Stress {
         value: percent,
@@ -62,13 +78,42 @@ fn stress(case: &Case<'_>, supply: &Supply, mains: Mains) -> Result<Stress, Need
             ..case.witness()
         },
         working: vec![
-            stated("R", "soft-start resistor", stated_as.cold.0, "ohm", field.stated_at()),
-            stated("t", "bypassed after", stated_as.bypass.map_or(0.0, |t| t.0), "s", field.stated_at()),
-            solved("Iq", "idle current on each rail, all channels", "n·N·Iq", case.idle_of_supply()?.0, "A", ""),
-            solved("V", "rail then", "half-cycle by half-cycle", soft.reached.0, "V", "charging through winding and resistor, exact"),
+            stated(
+                "R",
+                "soft-start resistor",
+                stated_as.cold.0,
+                "ohm",
+                field.stated_at(),
+            ),
+            stated(
+                "t",
+                "bypassed after",
+                stated_as.bypass.map_or(0.0, |t| t.0),
+                "s",
+                field.stated_at(),
+            ),
+            solved(
+                "Iq",
+                "idle current on each rail, all channels",
+                "n·N·Iq",
+                case.idle_of_supply()?.0,
+                "A",
+                "",
+            ),
+            solved(
+                "V",
+                "rail then",
+                "half-cycle by half-cycle",
+                soft.reached.0,
+                "V",
+                "charging through winding and resistor, exact",
+            ),
             solved("Vu", "unsagged rail", "V0 - Vd", unsagged.0, "V", ""),
         ],
-        related: places([("the reservoir", supply.reservoir.stated_at()), ("the idle current", case.output().idle.stated_at())]),
+        related: places([
+            ("the reservoir", supply.reservoir.stated_at()),
+            ("the idle current", case.output().idle.stated_at()),
+        ]),
         ..Stress::default()
     })
 }
@@ -79,7 +124,11 @@ mod tests {
     use crate::testing::{margin, report, tern60};
 
     fn soft(text: &str) -> crate::finding::Margin {
-        margin(&tern60(&[("27R 10 W bypass 400 ms", text)]), super::RULE.name, "toroid soft-start")
+        margin(
+            &tern60(&[("27R 10 W bypass 400 ms", text)]),
+            super::RULE.name,
+            "toroid soft-start",
+        )
     }
 
     /// A small-step integration written apart from this program reaches 44.18 V of 45.607 V at high
@@ -91,24 +140,64 @@ mod tests {
         assert!((m.stress.unwrap().value - 96.5).abs() < 0.3);
         let m = soft("27R 10 W bypass 30 ms");
         assert_eq!(m.verdict, Verdict::Thin);
-        assert!((m.stress.unwrap().value - 61.5).abs() < 0.5, "{:?}", m.stress);
+        assert!(
+            (m.stress.unwrap().value - 61.5).abs() < 0.5,
+            "{:?}",
+            m.stress
+        );
     }
 
     /// 1k seen from a rail is 2·(28·1.07/230)²·1000 = 33.9 ohm; 1 A of idle current would lose 33.9 V in
     /// it if it flowed all the time, and more in pulses: of some 37 V at low mains little is left.
     #[test]
     fn too_much_resistance_never_gets_there() {
-        let text = tern60(&[("27R 10 W bypass 400 ms", "1k 10 W bypass 10 s"), ("50 mA per device, 11 mV across emitter", "500 mA per device")]);
-        assert_eq!(margin(&text, super::RULE.name, "toroid soft-start").verdict, Verdict::Over);
+        let text = tern60(&[
+            ("27R 10 W bypass 400 ms", "1k 10 W bypass 10 s"),
+            (
+                "50 mA per device, 11 mV across emitter",
+                "500 mA per device",
+            ),
+        ]);
+        assert_eq!(
+            margin(&text, super::RULE.name, "toroid soft-start").verdict,
+            Verdict::Over
+        );
     }
 
     #[test]
     fn says_what_is_missing_and_leaves_a_thermistor_alone() {
         let m = soft("27R 10 W");
-        assert_eq!((m.verdict, m.needs), (Verdict::Unchecked, vec!["supply toroid soft-start bypass".to_owned()]));
-        let m = margin(&tern60(&[("    soft-start         27R 10 W bypass 400 ms thermal-fuse 130 degC\n", "")]), super::RULE.name, "toroid soft-start");
-        assert_eq!((m.verdict, m.needs), (Verdict::Unchecked, vec!["supply toroid soft-start".to_owned()]));
-        let ntc = tern60(&[("27R 10 W bypass 400 ms", "ntc 10 ohm hot 0.2 ohm energy 100 J")]);
-        assert!(report(&ntc).builds[0].margins.iter().all(|m| m.rule != super::RULE.name));
+        assert_eq!(
+            (m.verdict, m.needs),
+            (
+                Verdict::Unchecked,
+                vec!["supply toroid soft-start bypass".to_owned()]
+            )
+        );
+        let m = margin(
+            &tern60(&[(
+                "    soft-start         27R 10 W bypass 400 ms thermal-fuse 130 degC\n",
+                "",
+            )]),
+            super::RULE.name,
+            "toroid soft-start",
+        );
+        assert_eq!(
+            (m.verdict, m.needs),
+            (
+                Verdict::Unchecked,
+                vec!["supply toroid soft-start".to_owned()]
+            )
+        );
+        let ntc = tern60(&[(
+            "27R 10 W bypass 400 ms",
+            "ntc 10 ohm hot 0.2 ohm energy 100 J",
+        )]);
+        assert!(
+            report(&ntc).builds[0]
+                .margins
+                .iter()
+                .all(|m| m.rule != super::RULE.name)
+        );
     }
 }

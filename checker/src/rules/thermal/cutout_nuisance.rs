@@ -33,16 +33,30 @@ rule! {
 
 /// One margin for the cutout: the load that heats the sink most. None fitted has none.
 pub fn check(case: &Case<'_>, out: &mut Margins<'_>) {
-    let Some(site) = cutout_site(case) else { return };
-    let part = || case.build.protection.get().map_or_else(|| line_part(&case.build.protection), |p| line_part(&p.cutout));
+    let Some(site) = cutout_site(case) else {
+        return;
+    };
+    let part = || {
+        case.build.protection.get().map_or_else(
+            || line_part(&case.build.protection),
+            |p| line_part(&p.cutout),
+        )
+    };
     for played in case.played() {
-        out.compare(&RULE, part(), site, played.and_then(|(load, heat)| stress(case, load, heat)));
+        out.compare(
+            &RULE,
+            part(),
+            site,
+            played.and_then(|(load, heat)| stress(case, load, heat)),
+        );
     }
 }
 
 fn stress(case: &Case<'_>, load: &Driven, heat: &Heat) -> Result<Stress, Needs> {
     let cutout = case.cutout()?;
-    let room = cutout.headroom(heat.hot_spot).ok_or_else(|| Needs::because("the cutout has no earliest trip"))?;
+    let room = cutout
+        .headroom(heat.hot_spot)
+        .ok_or_else(|| Needs::because("the cutout has no earliest trip"))?;
     let (sink, _) = case.heatsink()?;
     Ok(Stress {
         value: room.0,
@@ -59,12 +73,48 @@ fn stress(case: &Case<'_>, load: &Driven, heat: &Heat) -> Result<Stress, Needs> 
             ..case.witness()
         },
         working: vec![
-            solved("Ts", "sink beside the devices at the duty, hottest room", "Ta + ΣP·Rsa", heat.hot_spot.0, "degC", "energy balance"),
-            stated("cooler", "how much cooler the cutout's place is", cutout.cooler.0, "K", case.protection()?.cutout.stated_at()),
-            solved("early", "earliest trip", "trip - tolerance", (cutout.trip - cutout.tolerance).0, "degC", ""),
-            solved("room", "between them", "(trip - tolerance) - (Ts - cooler)", room.0, "K", ""),
+            solved(
+                "Ts",
+                "sink beside the devices at the duty, hottest room",
+                "Ta + ΣP·Rsa",
+                heat.hot_spot.0,
+                "degC",
+                "energy balance",
+            ),
+            stated(
+                "cooler",
+                "how much cooler the cutout's place is",
+                cutout.cooler.0,
+                "K",
+                case.protection()?.cutout.stated_at(),
+            ),
+            solved(
+                "early",
+                "earliest trip",
+                "trip - tolerance",
+                (cutout.trip - cutout.tolerance).0,
+                "degC",
+                "",
+            ),
+            solved(
+                "room",
+                "between them",
+                "(trip - tolerance) - (Ts - cooler)",
+                room.0,
+                "K",
+                "",
+            ),
         ],
-        related: vec![Related { message: "into this load".to_owned(), site: load.site }, Related { message: "the sink".to_owned(), site: sink.resistance.site() }],
+        related: vec![
+            Related {
+                message: "into this load".to_owned(),
+                site: load.site,
+            },
+            Related {
+                message: "the sink".to_owned(),
+                site: sink.resistance.site(),
+            },
+        ],
         ..Stress::default()
     })
 }
@@ -78,10 +128,22 @@ mod tests {
     /// (trip - 5) - (Ts - 4) from the sink's own figure, and the verdicts round 5 K and 0 K.
     #[test]
     fn room_by_hand() {
-        let sink = margin(&tern60(&[]), "thermal.sink", "fins").stress.unwrap().value;
+        let sink = margin(&tern60(&[]), "thermal.sink", "fins")
+            .stress
+            .unwrap()
+            .value;
         let m = margin(&tern60(&[]), RULE.name, "guard cutout");
         assert!((m.stress.unwrap().value - (75.0 - (sink - 4.0))).abs() < 1e-9);
-        let at = |trip: f64| verdict(&tern60(&[("cutout             80 degC", &format!("cutout             {trip:.3} degC"))]), RULE.name, "guard cutout");
+        let at = |trip: f64| {
+            verdict(
+                &tern60(&[(
+                    "cutout             80 degC",
+                    &format!("cutout             {trip:.3} degC"),
+                )]),
+                RULE.name,
+                "guard cutout",
+            )
+        };
         let none = sink - 4.0 + 5.0; // the trip that leaves no room
         assert_eq!(at(none + 5.01), Ok);
         assert_eq!(at(none + 4.99), Thin);

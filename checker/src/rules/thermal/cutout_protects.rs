@@ -34,7 +34,9 @@ rule! {
 
 /// One margin for each declared output device. A cutout known not to be fitted has none.
 pub fn check(case: &Case<'_>, out: &mut Margins<'_>) {
-    let Some(site) = cutout_site(case) else { return };
+    let Some(site) = cutout_site(case) else {
+        return;
+    };
     let stage = case.output();
     for side in stage.sides() {
         for played in case.played() {
@@ -65,9 +67,21 @@ fn stress(case: &Case<'_>, load: &Driven, heat: &Heat, side: Side) -> Result<Str
     case.settled(&ready, &found, 1.0)?;
     let room = limit - latest;
     // a sink as hot as the junction may be leaves no room at all
-    let by_heat = if room.0 > 0.0 { 100.0 * ((junction - latest) / room) } else { 1e6 };
-    let by_curve = if found.allowed.0 > 0.0 { 100.0 * found.used } else { 1e6 };
-    let note = if by_heat >= by_curve { "the junction decides" } else { "the safe area decides" };
+    let by_heat = if room.0 > 0.0 {
+        100.0 * ((junction - latest) / room)
+    } else {
+        1e6
+    };
+    let by_curve = if found.allowed.0 > 0.0 {
+        100.0 * found.used
+    } else {
+        1e6
+    };
+    let note = if by_heat >= by_curve {
+        "the junction decides"
+    } else {
+        "the safe area decides"
+    };
     Ok(Stress {
         value: by_heat.max(by_curve),
         rating: 100.0,
@@ -87,15 +101,60 @@ fn stress(case: &Case<'_>, load: &Driven, heat: &Heat, side: Side) -> Result<Str
             ..case.witness()
         },
         working: vec![
-            solved("Tt", "sink when the cutout opens at the latest", "trip + tolerance + gradient", latest.0, "degC", ""),
-            solved("P", "mean heat of the most loaded device at the duty", "", watts.0, "W", "energy balance of class B"),
-            solved("Tcase", "its case then", "Tt + P·θcs", hot.0, "degC", "energy balance"),
-            solved("Tj", "its junction then, mean", "Tcase + P·θjc", junction.0, "degC", "energy balance"),
-            solved("used(Tj)", "of the junction's room above the sink", "(Tj - Tt)/(Tj,max - Tt)", by_heat, "%", ""),
-            solved("used(soa)", "of the safe area at that case", "i/Iallowed", by_curve, "%", "log-log curve of the data sheet, derated"),
+            solved(
+                "Tt",
+                "sink when the cutout opens at the latest",
+                "trip + tolerance + gradient",
+                latest.0,
+                "degC",
+                "",
+            ),
+            solved(
+                "P",
+                "mean heat of the most loaded device at the duty",
+                "",
+                watts.0,
+                "W",
+                "energy balance of class B",
+            ),
+            solved(
+                "Tcase",
+                "its case then",
+                "Tt + P·θcs",
+                hot.0,
+                "degC",
+                "energy balance",
+            ),
+            solved(
+                "Tj",
+                "its junction then, mean",
+                "Tcase + P·θjc",
+                junction.0,
+                "degC",
+                "energy balance",
+            ),
+            solved(
+                "used(Tj)",
+                "of the junction's room above the sink",
+                "(Tj - Tt)/(Tj,max - Tt)",
+                by_heat,
+                "%",
+                "",
+            ),
+            solved(
+                "used(soa)",
+                "of the safe area at that case",
+                "i/Iallowed",
+                by_curve,
+                "%",
+                "log-log curve of the data sheet, derated",
+            ),
         ],
         related: {
-            let mut related = vec![Related { message: "into this load".to_owned(), site: load.site }];
+            let mut related = vec![Related {
+                message: "into this load".to_owned(),
+                site: load.site,
+            }];
             related.extend(case.safe_area_sites(side, None));
             related
         },
@@ -126,19 +185,47 @@ mod tests {
     fn an_unstated_tolerance_is_assumed() {
         let text = tern60(&[("80 degC ±5 K on sink", "80 degC on sink")]);
         assert!((margin(&text, RULE.name, "n16").witness.sink_c.unwrap() - 87.0).abs() < 1e-12);
-        assert!(report(&text).builds[0].assumed.iter().any(|a| a.key == "protection guard cutout tolerance"));
+        assert!(
+            report(&text).builds[0]
+                .assumed
+                .iter()
+                .any(|a| a.key == "protection guard cutout tolerance")
+        );
     }
 
     #[test]
     fn a_trip_above_the_junction_limit_protects_nothing() {
-        assert_eq!(verdict(&tern60(&[("cutout             80 degC ±5 K on sink cooler 4 K", "cutout             110 degC ±5 K on sink cooler 40 K")]), RULE.name, "n16"), Over);
+        assert_eq!(
+            verdict(
+                &tern60(&[(
+                    "cutout             80 degC ±5 K on sink cooler 4 K",
+                    "cutout             110 degC ±5 K on sink cooler 40 K"
+                )]),
+                RULE.name,
+                "n16"
+            ),
+            Over
+        );
     }
 
     #[test]
     fn an_unstated_gradient_is_named_and_none_has_no_margin() {
-        let m = margin(&tern60(&[(" on sink cooler 4 K", " on sink")]), RULE.name, "n16");
-        assert_eq!((m.verdict, m.needs.as_slice()), (Unchecked, &["protection guard cutout cooler".to_owned()][..]));
-        let none = report(&tern60(&[("cutout             80 degC ±5 K on sink cooler 4 K", "cutout             none")]));
+        let m = margin(
+            &tern60(&[(" on sink cooler 4 K", " on sink")]),
+            RULE.name,
+            "n16",
+        );
+        assert_eq!(
+            (m.verdict, m.needs.as_slice()),
+            (
+                Unchecked,
+                &["protection guard cutout cooler".to_owned()][..]
+            )
+        );
+        let none = report(&tern60(&[(
+            "cutout             80 degC ±5 K on sink cooler 4 K",
+            "cutout             none",
+        )]));
         assert!(!none.builds[0].margins.iter().any(|m| m.rule == RULE.name));
     }
 }

@@ -51,13 +51,35 @@ pub fn check(case: &Case<'_>, out: &mut Margins<'_>) {
     }
 }
 
-fn stress(case: &Case<'_>, stage: &Stage, load: &Driven, heat: &Heat, side: Side) -> Result<Stress, Needs> {
+fn stress(
+    case: &Case<'_>,
+    stage: &Stage,
+    load: &Driven,
+    heat: &Heat,
+    side: Side,
+) -> Result<Stress, Needs> {
     let device = stage.device(side);
-    let (limit, found) = both(device.junction.need().copied(), case.driver_temperatures(stage, heat, side))?;
-    let mut related = vec![Related { message: "into this load".to_owned(), site: load.site }];
-    related.extend(stage.insulator.stated_at().map(|site| Related { message: "case to sink".to_owned(), site }));
-    related.extend(device.junction_case.stated_at().map(|site| Related { message: "junction to case".to_owned(), site }));
-    let onto = if found.own_sink { "its own sink" } else { "the output sink at its hottest place" };
+    let (limit, found) = both(
+        device.junction.need().copied(),
+        case.driver_temperatures(stage, heat, side),
+    )?;
+    let mut related = vec![Related {
+        message: "into this load".to_owned(),
+        site: load.site,
+    }];
+    related.extend(stage.insulator.stated_at().map(|site| Related {
+        message: "case to sink".to_owned(),
+        site,
+    }));
+    related.extend(device.junction_case.stated_at().map(|site| Related {
+        message: "junction to case".to_owned(),
+        site,
+    }));
+    let onto = if found.own_sink {
+        "its own sink"
+    } else {
+        "the output sink at its hottest place"
+    };
     Ok(Stress {
         value: found.junction.0,
         rating: limit.0,
@@ -77,11 +99,45 @@ fn stress(case: &Case<'_>, stage: &Stage, load: &Driven, heat: &Heat, side: Side
             ..case.witness()
         },
         working: vec![
-            solved("P", "mean heat of one driver", "mean of (Vm - v_out - VBE)·i_d", found.watts.0, "W", "base current point by point along the locus"),
-            solved("Ts", onto, "Ta + Tencl + P·Rown, or the output sink", found.sink.0, "degC", "energy balance"),
-            solved("Tcase", "its case", "Ts + P·θcs", found.case.0, "degC", "energy balance"),
-            solved("Tj", "its junction", "Tcase + P·θjc", found.junction.0, "degC", "energy balance"),
-            stated("Tj,max", "limit", limit.0, "degC", device.junction.stated_at()),
+            solved(
+                "P",
+                "mean heat of one driver",
+                "mean of (Vm - v_out - VBE)·i_d",
+                found.watts.0,
+                "W",
+                "base current point by point along the locus",
+            ),
+            solved(
+                "Ts",
+                onto,
+                "Ta + Tencl + P·Rown, or the output sink",
+                found.sink.0,
+                "degC",
+                "energy balance",
+            ),
+            solved(
+                "Tcase",
+                "its case",
+                "Ts + P·θcs",
+                found.case.0,
+                "degC",
+                "energy balance",
+            ),
+            solved(
+                "Tj",
+                "its junction",
+                "Tcase + P·θjc",
+                found.junction.0,
+                "degC",
+                "energy balance",
+            ),
+            stated(
+                "Tj,max",
+                "limit",
+                limit.0,
+                "degC",
+                device.junction.stated_at(),
+            ),
         ],
         related,
         ..Stress::default()
@@ -95,7 +151,12 @@ mod tests {
     use crate::testing::{margin, report, tern60};
 
     fn value(text: &str, symbol: &str) -> f64 {
-        margin(text, RULE.name, "d3").working.iter().find(|s| s.symbol == symbol).unwrap().value
+        margin(text, RULE.name, "d3")
+            .working
+            .iter()
+            .find(|s| s.symbol == symbol)
+            .unwrap()
+            .value
     }
 
     /// On a sink of its own: 45 degC inside + P·6 K/W + P·(1 + (150 - 25)/30) = 45 + P·(6 + 1 + 4.16667).
@@ -111,7 +172,10 @@ mod tests {
     /// `per stage`: both drivers of one pair warm the same sink.
     #[test]
     fn a_sink_for_the_stage_takes_both() {
-        let (own, both) = (tern60(&[]), tern60(&[("6 K/W per device", "6 K/W per stage")]));
+        let (own, both) = (
+            tern60(&[]),
+            tern60(&[("6 K/W per device", "6 K/W per stage")]),
+        );
         let rise = |text: &str| (value(text, "Ts") - 45.0) / value(text, "P");
         assert!((rise(&own) - 6.0).abs() < 1e-9);
         assert!((rise(&both) - 12.0).abs() < 1e-9);
@@ -128,9 +192,22 @@ mod tests {
 
     #[test]
     fn no_mounting_is_unchecked_and_no_driver_has_no_margin() {
-        let m = margin(&tern60(&[("    insulator          1 K/W\n    own-sink           6 K/W per device\n", "")]), RULE.name, "d3");
-        assert_eq!((m.verdict, m.needs.as_slice()), (Unchecked, &["stage drv insulator".to_owned()][..]));
-        let none = report(&tern60(&[("driver             drv", "driver             none")]));
+        let m = margin(
+            &tern60(&[(
+                "    insulator          1 K/W\n    own-sink           6 K/W per device\n",
+                "",
+            )]),
+            RULE.name,
+            "d3",
+        );
+        assert_eq!(
+            (m.verdict, m.needs.as_slice()),
+            (Unchecked, &["stage drv insulator".to_owned()][..])
+        );
+        let none = report(&tern60(&[(
+            "driver             drv",
+            "driver             none",
+        )]));
         assert!(!none.builds[0].margins.iter().any(|m| m.rule == RULE.name));
     }
 }

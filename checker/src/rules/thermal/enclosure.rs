@@ -40,14 +40,36 @@ fn stress(case: &Case<'_>) -> Result<Stress, Needs> {
         value: inside.0,
         rating: f64::NAN,
         ambient: hottest.0,
-        witness: Witness { ambient_c: Some(hottest.0), ..Witness::default() },
+        witness: Witness {
+            ambient_c: Some(hottest.0),
+            ..Witness::default()
+        },
         working: vec![
-            stated("Ta", "hottest air round the case", hottest.0, "degC", case.build.ambient.stated_at()),
-            stated("Tencl", "rise inside", (inside - hottest).0, "K", field.stated_at()),
+            stated(
+                "Ta",
+                "hottest air round the case",
+                hottest.0,
+                "degC",
+                case.build.ambient.stated_at(),
+            ),
+            stated(
+                "Tencl",
+                "rise inside",
+                (inside - hottest).0,
+                "K",
+                field.stated_at(),
+            ),
             solved("T", "air inside", "Ta + Tencl", inside.0, "degC", ""),
         ],
-        related: vec![Related { message: "the hottest room".to_owned(), site: case.build.ambient.site() }],
-        note: if field.assumed { "no rise inside is stated: none is assumed".to_owned() } else { String::new() },
+        related: vec![Related {
+            message: "the hottest room".to_owned(),
+            site: case.build.ambient.site(),
+        }],
+        note: if field.assumed {
+            "no rise inside is stated: none is assumed".to_owned()
+        } else {
+            String::new()
+        },
     })
 }
 
@@ -60,7 +82,16 @@ mod tests {
     /// 40 degC round the case: 20 K inside is the allowance of 60 degC, 30 K the limit of 70 degC.
     #[test]
     fn limits() {
-        let at = |rise: &str| verdict(&tern60(&[("enclosure          5 K", &format!("enclosure          {rise}"))]), RULE.name, "mono enclosure");
+        let at = |rise: &str| {
+            verdict(
+                &tern60(&[(
+                    "enclosure          5 K",
+                    &format!("enclosure          {rise}"),
+                )]),
+                RULE.name,
+                "mono enclosure",
+            )
+        };
         assert_eq!(at("20 K"), Ok);
         assert_eq!(at("20.1 K"), Thin);
         assert_eq!(at("30 K"), Thin);
@@ -69,7 +100,14 @@ mod tests {
 
     #[test]
     fn an_unstated_room_is_named() {
-        let m = margin(&tern60(&[("    ambient            10 degC to 40 degC\n", "")]), RULE.name, "mono enclosure");
-        assert_eq!((m.verdict, m.needs.as_slice()), (Unchecked, &["build mono ambient".to_owned()][..]));
+        let m = margin(
+            &tern60(&[("    ambient            10 degC to 40 degC\n", "")]),
+            RULE.name,
+            "mono enclosure",
+        );
+        assert_eq!(
+            (m.verdict, m.needs.as_slice()),
+            (Unchecked, &["build mono ambient".to_owned()][..])
+        );
     }
 }

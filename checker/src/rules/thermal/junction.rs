@@ -37,7 +37,12 @@ pub fn check(case: &Case<'_>, out: &mut Margins<'_>) {
     for side in stage.sides() {
         for played in case.played() {
             let stress = played.and_then(|(load, heat)| stress(case, load, heat, *side));
-            out.compare(&RULE, case.device_part(stage, *side), stage.pairs.site(), stress);
+            out.compare(
+                &RULE,
+                case.device_part(stage, *side),
+                stage.pairs.site(),
+                stress,
+            );
         }
     }
 }
@@ -45,13 +50,28 @@ pub fn check(case: &Case<'_>, out: &mut Margins<'_>) {
 fn stress(case: &Case<'_>, load: &Driven, heat: &Heat, side: Side) -> Result<Stress, Needs> {
     let stage = case.output();
     let device = stage.device(side);
-    let (limit, found) = both(device.junction.need().copied(), case.temperatures(heat, side))?;
+    let (limit, found) = both(
+        device.junction.need().copied(),
+        case.temperatures(heat, side),
+    )?;
     let watts = heat.device[at(side)];
-    let mut related = vec![Related { message: "into this load".to_owned(), site: load.site }];
-    related.extend(stage.insulator.stated_at().map(|site| Related { message: "case to sink".to_owned(), site }));
-    related.extend(device.junction_case.stated_at().map(|site| Related { message: "junction to case".to_owned(), site }));
+    let mut related = vec![Related {
+        message: "into this load".to_owned(),
+        site: load.site,
+    }];
+    related.extend(stage.insulator.stated_at().map(|site| Related {
+        message: "case to sink".to_owned(),
+        site,
+    }));
+    related.extend(device.junction_case.stated_at().map(|site| Related {
+        message: "junction to case".to_owned(),
+        site,
+    }));
     if let Ok((sink, _)) = case.heatsink() {
-        related.push(Related { message: "the sink".to_owned(), site: sink.resistance.site() });
+        related.push(Related {
+            message: "the sink".to_owned(),
+            site: sink.resistance.site(),
+        });
     }
     Ok(Stress {
         value: found.junction.0,
@@ -72,14 +92,52 @@ fn stress(case: &Case<'_>, load: &Driven, heat: &Heat, side: Side) -> Result<Str
             ..case.witness()
         },
         working: vec![
-            solved("P", "mean heat of the most loaded device", "share·(Vm(Î/π + N·Iq) - V̂Î/4 - Î²RE/4N)/N", watts.0, "W", "energy balance of class B"),
-            solved("Ts", "sink at the hottest place", "Ta + ΣP·Rsa, spread across the sink", found.sink.0, "degC", "energy balance"),
-            solved("Tcase", "its case", "Ts + P·θcs", found.case.0, "degC", "energy balance"),
-            solved("Tj", "its junction", "Tcase + P·θjc", found.junction.0, "degC", "energy balance"),
-            stated("Tj,max", "limit", limit.0, "degC", device.junction.stated_at()),
+            solved(
+                "P",
+                "mean heat of the most loaded device",
+                "share·(Vm(Î/π + N·Iq) - V̂Î/4 - Î²RE/4N)/N",
+                watts.0,
+                "W",
+                "energy balance of class B",
+            ),
+            solved(
+                "Ts",
+                "sink at the hottest place",
+                "Ta + ΣP·Rsa, spread across the sink",
+                found.sink.0,
+                "degC",
+                "energy balance",
+            ),
+            solved(
+                "Tcase",
+                "its case",
+                "Ts + P·θcs",
+                found.case.0,
+                "degC",
+                "energy balance",
+            ),
+            solved(
+                "Tj",
+                "its junction",
+                "Tcase + P·θjc",
+                found.junction.0,
+                "degC",
+                "energy balance",
+            ),
+            stated(
+                "Tj,max",
+                "limit",
+                limit.0,
+                "degC",
+                device.junction.stated_at(),
+            ),
         ],
         related,
-        note: if heat.idle_decides { "idle current alone heats it more than the duty".to_owned() } else { String::new() },
+        note: if heat.idle_decides {
+            "idle current alone heats it more than the duty".to_owned()
+        } else {
+            String::new()
+        },
     })
 }
 
@@ -106,7 +164,16 @@ mod tests {
     #[test]
     fn thin_and_over_meet_at_the_limits() {
         let found = margin(&tern60(&[]), RULE.name, "n16").stress.unwrap().value;
-        let at = |limit: f64| verdict(&tern60(&[("junction           150 degC\n    junction-case      0.69", &format!("junction           {limit:.3} degC\n    junction-case      0.69"))]), RULE.name, "n16");
+        let at = |limit: f64| {
+            verdict(
+                &tern60(&[(
+                    "junction           150 degC\n    junction-case      0.69",
+                    &format!("junction           {limit:.3} degC\n    junction-case      0.69"),
+                )]),
+                RULE.name,
+                "n16",
+            )
+        };
         assert_eq!(at(found + 25.01), Ok);
         assert_eq!(at(found + 24.99), Thin);
         assert_eq!(at(found - 0.01), Over);
@@ -114,7 +181,14 @@ mod tests {
 
     #[test]
     fn an_unstated_insulator_is_named() {
-        let m = margin(&tern60(&[("    insulator          0.35 K/W \"mica and grease\"\n", "")]), RULE.name, "n16");
-        assert_eq!((m.verdict, m.needs.as_slice()), (Unchecked, &["stage out insulator".to_owned()][..]));
+        let m = margin(
+            &tern60(&[("    insulator          0.35 K/W \"mica and grease\"\n", "")]),
+            RULE.name,
+            "n16",
+        );
+        assert_eq!(
+            (m.verdict, m.needs.as_slice()),
+            (Unchecked, &["stage out insulator".to_owned()][..])
+        );
     }
 }

@@ -38,20 +38,34 @@ pub fn check(case: &Case<'_>, out: &mut Margins<'_>) {
     for side in stage.sides() {
         for played in case.played() {
             let stress = played.and_then(|(load, heat)| stress(case, load, heat, *side));
-            out.compare(&RULE, case.device_part(stage, *side), stage.pairs.site(), stress);
+            out.compare(
+                &RULE,
+                case.device_part(stage, *side),
+                stage.pairs.site(),
+                stress,
+            );
         }
     }
 }
 
 fn stress(case: &Case<'_>, load: &Driven, heat: &Heat, side: Side) -> Result<Stress, Needs> {
     let device = case.output().device(side);
-    let (limit, peak) = both(device.junction.need().copied(), case.peak_junction(heat, load, side))?;
+    let (limit, peak) = both(
+        device.junction.need().copied(),
+        case.peak_junction(heat, load, side),
+    )?;
     // a bound that fits proves it; one that does not proves nothing
     if peak.bounded && peak.junction > limit {
         return Err(device.foster.missing());
     }
-    let mut related = vec![Related { message: "into this load".to_owned(), site: load.site }];
-    related.extend(device.foster.stated_at().map(|site| Related { message: "transient thermal terms".to_owned(), site }));
+    let mut related = vec![Related {
+        message: "into this load".to_owned(),
+        site: load.site,
+    }];
+    related.extend(device.foster.stated_at().map(|site| Related {
+        message: "transient thermal terms".to_owned(),
+        site,
+    }));
     Ok(Stress {
         value: peak.junction.0,
         rating: limit.0,
@@ -70,18 +84,77 @@ fn stress(case: &Case<'_>, load: &Driven, heat: &Heat, side: Side) -> Result<Str
             ..case.witness()
         },
         working: vec![
-            solved("Vu", "unsagged rail, nominal mains", "V0 - Vd", peak.rail.0, "V", "definition of the unsagged rail"),
-            solved("V̂", "peak output", "Vu - drop(V̂/|Z|)", peak.amplitude.0, "V", "drop as stated"),
-            solved("share", "of the most loaded device, at the mean current", "I1·N/I", peak.share, "1", "junction voltage and emitter resistor in balance"),
-            solved("Tcase", "case of the hottest device at the duty", "Ts + P·θcs", peak.case.0, "degC", "energy balance"),
-            solved("ΔT", "greatest rise above the case from the signal", "periodic answer of the Foster terms", peak.rise.0, "K", "closed form, own derivation"),
-            solved("ΔTidle", "rise from the idle current, added whole", "Vu·Iq·ΣR", peak.idle_rise.0, "K", "energy balance"),
-            solved("Tj,pk", "hottest moment", "Tcase + ΔT + ΔTidle", peak.junction.0, "degC", ""),
-            stated("Tj,max", "limit", limit.0, "degC", device.junction.stated_at()),
+            solved(
+                "Vu",
+                "unsagged rail, nominal mains",
+                "V0 - Vd",
+                peak.rail.0,
+                "V",
+                "definition of the unsagged rail",
+            ),
+            solved(
+                "V̂",
+                "peak output",
+                "Vu - drop(V̂/|Z|)",
+                peak.amplitude.0,
+                "V",
+                "drop as stated",
+            ),
+            solved(
+                "share",
+                "of the most loaded device, at the mean current",
+                "I1·N/I",
+                peak.share,
+                "1",
+                "junction voltage and emitter resistor in balance",
+            ),
+            solved(
+                "Tcase",
+                "case of the hottest device at the duty",
+                "Ts + P·θcs",
+                peak.case.0,
+                "degC",
+                "energy balance",
+            ),
+            solved(
+                "ΔT",
+                "greatest rise above the case from the signal",
+                "periodic answer of the Foster terms",
+                peak.rise.0,
+                "K",
+                "closed form, own derivation",
+            ),
+            solved(
+                "ΔTidle",
+                "rise from the idle current, added whole",
+                "Vu·Iq·ΣR",
+                peak.idle_rise.0,
+                "K",
+                "energy balance",
+            ),
+            solved(
+                "Tj,pk",
+                "hottest moment",
+                "Tcase + ΔT + ΔTidle",
+                peak.junction.0,
+                "degC",
+                "",
+            ),
+            stated(
+                "Tj,max",
+                "limit",
+                limit.0,
+                "degC",
+                device.junction.stated_at(),
+            ),
         ],
         related,
-        note: if peak.bounded { "no transient terms are stated: an upper bound, by a junction without heat capacity".to_owned() } else { String::new() },
-        ..Stress::default()
+        note: if peak.bounded {
+            "no transient terms are stated: an upper bound, by a junction without heat capacity"
+                .to_owned()
+        } else {
+            String::new()
+        },
     })
 }
 
@@ -94,12 +167,22 @@ mod tests {
     const TERMS: &str = "foster             0.07 K/W 1 ms, 0.22 K/W 12 ms, 0.40 K/W 110 ms";
     const ALONE: [(&str, &str); 3] = [
         ("pairs              2", "pairs              1"),
-        ("loads              hall-8, bench-8", "loads              bench-8"),
-        ("idle               50 mA per device, 11 mV across emitter", "idle               none"),
+        (
+            "loads              hall-8, bench-8",
+            "loads              bench-8",
+        ),
+        (
+            "idle               50 mA per device, 11 mV across emitter",
+            "idle               none",
+        ),
     ];
 
     fn rise(terms: &str) -> f64 {
-        let m = margin(&tern60(&[ALONE[0], ALONE[1], ALONE[2], (TERMS, terms)]), RULE.name, "n16");
+        let m = margin(
+            &tern60(&[ALONE[0], ALONE[1], ALONE[2], (TERMS, terms)]),
+            RULE.name,
+            "n16",
+        );
         m.working.iter().find(|s| s.symbol == "ΔT").unwrap().value
     }
 
@@ -109,8 +192,16 @@ mod tests {
     /// 54.7145 W as in soa.resistive, times 0.69: 37.7530 K. Hand calculation.
     #[test]
     fn slow_terms_see_the_mean_and_fast_ones_the_peak() {
-        assert!((rise("foster 0.69 K/W 10000 s") - 11.628).abs() < 0.01, "{}", rise("foster 0.69 K/W 10000 s"));
-        assert!((rise("foster 0.69 K/W 1 us") - 37.753).abs() < 0.01, "{}", rise("foster 0.69 K/W 1 us"));
+        assert!(
+            (rise("foster 0.69 K/W 10000 s") - 11.628).abs() < 0.01,
+            "{}",
+            rise("foster 0.69 K/W 10000 s")
+        );
+        assert!(
+            (rise("foster 0.69 K/W 1 us") - 37.753).abs() < 0.01,
+            "{}",
+            rise("foster 0.69 K/W 1 us")
+        );
     }
 
     #[test]
@@ -127,9 +218,16 @@ mod tests {
     fn unstated_terms_are_bounded_or_named() {
         assert!((rise("") - 37.753).abs() < 0.01, "{}", rise(""));
         let m = margin(&tern60(&[(TERMS, "")]), RULE.name, "n16");
-        assert!(m.verdict == Ok && m.note.contains("upper bound"), "{}", m.note);
+        assert!(
+            m.verdict == Ok && m.note.contains("upper bound"),
+            "{}",
+            m.note
+        );
         let hot = [RULE.example.edits, &[(TERMS, "")]].concat();
         let m = margin(&tern60(&hot), RULE.name, "n16");
-        assert_eq!((m.verdict, m.needs.as_slice()), (Unchecked, &["device n16 foster".to_owned()][..]));
+        assert_eq!(
+            (m.verdict, m.needs.as_slice()),
+            (Unchecked, &["device n16 foster".to_owned()][..])
+        );
     }
 }

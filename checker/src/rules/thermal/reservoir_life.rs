@@ -16,7 +16,7 @@ rule! {
     compares: "life of the reservoir capacitors, continuous at the duty, hottest room, with the hours wanted",
     stress: "expected life in hours",
     rating: "least life",
-    formula: "L = L0·2^((T0 - Tcore)/10), Tcore = Ta + Tencl + ΔT·(I/Irated)²",
+    formula: "L = L0·2^((T0 - max(Tcore, 40 degC))/10), Tcore = Ta + Tencl + ΔT·(I/Irated)²",
     source: "10 K rule (Cosel FAQ a0057, read; Cornell Dubilier application guide, from memory); hours common practice, no source",
     reads: ["supply.reservoir", "amplifier.board-reservoir", "build.supply", "build.ambient", "build.enclosure", "build.duty", "build.loads", "stage.idle"],
     sense: AtLeast,
@@ -35,11 +35,19 @@ pub fn check(case: &Case<'_>, out: &mut Margins<'_>) {
     if banks.iter().all(|b| b.on_board)
         && let Some(supply) = case.fitted(&RULE, out)
     {
-        out.compare(&RULE, case.supply_part(supply, "reservoir", 1), supply.reservoir.site(), Err(supply.reservoir.missing()));
+        out.compare(
+            &RULE,
+            case.supply_part(supply, "reservoir", 1),
+            supply.reservoir.site(),
+            Err(supply.reservoir.missing()),
+        );
     }
     let shares = case.ripple_shares(&banks);
     for (at, bank) in banks.iter().enumerate() {
-        let share = shares.as_ref().map_err(Clone::clone).map(|all| all.get(at).copied().unwrap_or(1.0));
+        let share = shares
+            .as_ref()
+            .map_err(Clone::clone)
+            .map(|all| all.get(at).copied().unwrap_or(1.0));
         for found in case.per_load(|load| stress(case, load, bank, share.clone()?)) {
             out.compare(&RULE, bank.part.clone(), bank.stated.site, found);
         }
@@ -53,14 +61,45 @@ fn stress(case: &Case<'_>, load: &Driven, bank: &Bank<'_>, share: f64) -> Result
     Ok(Stress {
         value: life.hours,
         rating: f64::NAN,
-        witness: Witness { ambient_c: case.hottest().ok().map(|t| t.0), ..case.at_flow(load, &flow, Some(&case.duty().shown)) },
+        witness: Witness {
+            ambient_c: case.hottest().ok().map(|t| t.0),
+            ..case.at_flow(load, &flow, Some(&case.duty().shown))
+        },
         working: vec![
             stated("L0", "hours as stated", life.stated_hours, "h", line),
             stated("T0", "at", life.stated_at.0, "degC", line),
-            solved("T", "air round them, hottest room", "Ta + Tencl", life.air.0, "degC", ""),
-            solved("I", "ripple current of one at the duty, charging and signal", "share·√(Ich² + Iaf²)", life.ripple.0, "A", "charge balance; r.m.s. of half-sines"),
-            solved("Tcore", "its core", "T + ΔT·(I/Irated)²", life.core.0, "degC", "10 K rule holds for the core"),
-            solved("L", "hours expected", "L0·2^((T0 - Tcore)/10)", life.hours, "h", "10 K rule"),
+            solved(
+                "T",
+                "air round them, hottest room",
+                "Ta + Tencl",
+                life.air.0,
+                "degC",
+                "",
+            ),
+            solved(
+                "I",
+                "ripple current of one at the duty, charging and signal",
+                "share·√(Ich² + Iaf²)",
+                life.ripple.0,
+                "A",
+                "charge balance; r.m.s. of half-sines",
+            ),
+            solved(
+                "Tcore",
+                "its core",
+                "T + ΔT·(I/Irated)²",
+                life.core.0,
+                "degC",
+                "10 K rule holds for the core",
+            ),
+            solved(
+                "L",
+                "hours expected",
+                "L0·2^((T0 - max(Tcore, 40))/10)",
+                life.hours,
+                "h",
+                "10 K rule",
+            ),
         ],
         related: case.loading_sites(load),
         ..Stress::default()
@@ -77,8 +116,16 @@ mod tests {
     /// 320 000 h, less what (ripple/90)² of 5 K takes, below 0.1 %.
     #[test]
     fn six_doublings() {
-        let m = margin(&tern60(&[("ripple 4 A", "ripple 90 A")]), RULE.name, "toroid reservoir");
-        assert!((m.stress.unwrap().value / 320_000.0 - 1.0).abs() < 1e-3, "{:?}", m.stress);
+        let m = margin(
+            &tern60(&[("ripple 4 A", "ripple 90 A")]),
+            RULE.name,
+            "toroid reservoir",
+        );
+        assert!(
+            (m.stress.unwrap().value / 320_000.0 - 1.0).abs() < 1e-3,
+            "{:?}",
+            m.stress
+        );
         assert_eq!(m.verdict, Ok);
     }
 
@@ -86,7 +133,18 @@ mod tests {
     #[test]
     fn verdicts_by_the_hours() {
         let at = |hours: &str| {
-            verdict(&tern60(&[("ripple 4 A", "ripple 90 A"), ("life 5000 h life-at 105 degC", &format!("life {hours} life-at 85 degC")), ("enclosure          5 K", "enclosure          45 K")]), RULE.name, "toroid reservoir")
+            verdict(
+                &tern60(&[
+                    ("ripple 4 A", "ripple 90 A"),
+                    (
+                        "life 5000 h life-at 105 degC",
+                        &format!("life {hours} life-at 85 degC"),
+                    ),
+                    ("enclosure          5 K", "enclosure          45 K"),
+                ]),
+                RULE.name,
+                "toroid reservoir",
+            )
         };
         assert_eq!(at("10100 h"), Ok);
         assert_eq!(at("9900 h"), Thin);
@@ -95,8 +153,18 @@ mod tests {
 
     #[test]
     fn unstated_hours_and_ripple_are_named() {
-        let m = margin(&tern60(&[(" ripple 4 A life 5000 h life-at 105 degC", "")]), RULE.name, "toroid reservoir");
+        let m = margin(
+            &tern60(&[(" ripple 4 A life 5000 h life-at 105 degC", "")]),
+            RULE.name,
+            "toroid reservoir",
+        );
         assert_eq!(m.verdict, Unchecked);
-        assert_eq!(m.needs, ["supply toroid reservoir life", "supply toroid reservoir ripple"]);
+        assert_eq!(
+            m.needs,
+            [
+                "supply toroid reservoir life",
+                "supply toroid reservoir ripple"
+            ]
+        );
     }
 }

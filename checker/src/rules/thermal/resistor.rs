@@ -31,7 +31,9 @@ rule! {
 
 /// One margin for the bleeder. None fitted, or rails that are given, have none.
 pub fn check(case: &Case<'_>, out: &mut Margins<'_>) {
-    let Some(supply) = case.fitted(&RULE, out) else { return };
+    let Some(supply) = case.fitted(&RULE, out) else {
+        return;
+    };
     let field = &supply.bleeder;
     if !field.none {
         out.compare(&RULE, line_part(field), field.site(), stress(case));
@@ -53,11 +55,38 @@ fn stress(case: &Case<'_>) -> Result<Stress, Needs> {
             ..case.witness()
         },
         working: vec![
-            solved("V", "across it, high mains, no load", "Vu, or 2·Vu from rail to rail", volts.0, "V", "definition of the unsagged rail"),
-            stated("R", "at its least", resistor.ohm.low.0, "ohm", field.stated_at()),
+            solved(
+                "V",
+                "across it, high mains, no load",
+                "Vu, or 2·Vu from rail to rail",
+                volts.0,
+                "V",
+                "definition of the unsagged rail",
+            ),
+            stated(
+                "R",
+                "at its least",
+                resistor.ohm.low.0,
+                "ohm",
+                field.stated_at(),
+            ),
             solved("P", "in it", "V²/R", warm.watts.0, "W", "Joule's law"),
-            solved("T", "air round it, hottest room", "Ta + Tencl", warm.air.0, "degC", ""),
-            solved("Prated", "allowed at that temperature", "P70·(155 - T)/85 above 70 degC", warm.rating.0, "W", "Yageo MFR, Vishay MRS25 derating curves"),
+            solved(
+                "T",
+                "air round it, hottest room",
+                "Ta + Tencl",
+                warm.air.0,
+                "degC",
+                "",
+            ),
+            solved(
+                "Prated",
+                "allowed at that temperature",
+                "P70·(155 - T)/85 above 70 degC",
+                warm.rating.0,
+                "W",
+                "Yageo MFR, Vishay MRS25 derating curves",
+            ),
         ],
         related: case.rail_sites(None),
         ..Stress::default()
@@ -75,8 +104,18 @@ mod tests {
     #[test]
     fn by_hand() {
         let m = margin(&tern60(&[]), RULE.name, "toroid bleeder");
-        assert!((m.stress.unwrap().value - 0.663471).abs() < 1e-5, "{:?}", m.stress);
-        let rated = |w: &str| verdict(&tern60(&[("3k3 ±5 % 3 W", &format!("3k3 ±5 % {w} W"))]), RULE.name, "toroid bleeder");
+        assert!(
+            (m.stress.unwrap().value - 0.663471).abs() < 1e-5,
+            "{:?}",
+            m.stress
+        );
+        let rated = |w: &str| {
+            verdict(
+                &tern60(&[("3k3 ±5 % 3 W", &format!("3k3 ±5 % {w} W"))]),
+                RULE.name,
+                "toroid bleeder",
+            )
+        };
         assert_eq!(rated("1.33"), Ok);
         assert_eq!(rated("1.32"), Thin);
         assert_eq!(rated("0.66"), Over);
@@ -85,7 +124,11 @@ mod tests {
     /// From rail to rail it stands at twice the volts: four times the watts.
     #[test]
     fn rail_to_rail() {
-        let m = margin(&tern60(&[("3 W per rail", "3 W per supply")]), RULE.name, "toroid bleeder");
+        let m = margin(
+            &tern60(&[("3 W per rail", "3 W per supply")]),
+            RULE.name,
+            "toroid bleeder",
+        );
         assert!((m.stress.unwrap().value - 4.0 * 0.663471).abs() < 5e-5);
     }
 
@@ -95,8 +138,15 @@ mod tests {
         let none = report(&tern60(&[(line, "    bleeder none\n")]));
         assert!(!none.builds[0].margins.iter().any(|m| m.rule == RULE.name));
         let m = margin(&tern60(&[(line, "")]), RULE.name, "toroid bleeder");
-        assert_eq!((m.verdict, m.needs.as_slice()), (Unchecked, &["supply toroid bleeder".to_owned()][..]));
-        let m = margin(&tern60(&[("3k3 ±5 % 3 W", "3k3 ±5 %")]), RULE.name, "toroid bleeder");
+        assert_eq!(
+            (m.verdict, m.needs.as_slice()),
+            (Unchecked, &["supply toroid bleeder".to_owned()][..])
+        );
+        let m = margin(
+            &tern60(&[("3k3 ±5 % 3 W", "3k3 ±5 %")]),
+            RULE.name,
+            "toroid bleeder",
+        );
         assert_eq!(m.needs, ["supply toroid bleeder W"]);
     }
 }

@@ -34,7 +34,11 @@ pub fn check(case: &Case<'_>, out: &mut Margins<'_>) {
     let Ok((sink, _)) = case.heatsink() else {
         return out.compare(&RULE, line_part(field), field.site(), Err(field.missing()));
     };
-    let line = if sink.resistance.stated_at().is_some() { &sink.resistance.site() } else { &sink.owner.site };
+    let line = if sink.resistance.stated_at().is_some() {
+        &sink.resistance.site()
+    } else {
+        &sink.owner.site
+    };
     let mut part = line_part(&sink.resistance);
     part.name.clone_from(&sink.owner.name);
     out.compare(&RULE, part, *line, stress(case));
@@ -44,9 +48,19 @@ fn stress(case: &Case<'_>) -> Result<Stress, Needs> {
     let (load, heat) = case.hottest_load()?;
     let (sink, channels) = case.heatsink()?;
     let hottest = case.hottest()?;
-    let mut related = vec![Related { message: format!("{channels} channel(s) on each"), site: case.build.heatsink.site() }];
-    related.push(Related { message: "heats it most".to_owned(), site: load.site });
-    let note = if heat.idle_decides { "idle current alone heats it more than the duty" } else { "" };
+    let mut related = vec![Related {
+        message: format!("{channels} channel(s) on each"),
+        site: case.build.heatsink.site(),
+    }];
+    related.push(Related {
+        message: "heats it most".to_owned(),
+        site: load.site,
+    });
+    let note = if heat.idle_decides {
+        "idle current alone heats it more than the duty"
+    } else {
+        ""
+    };
     Ok(Stress {
         value: heat.sink.0,
         rating: f64::NAN,
@@ -64,17 +78,80 @@ fn stress(case: &Case<'_>) -> Result<Stress, Needs> {
             ..case.witness()
         },
         working: vec![
-            solved("V̂", "duty amplitude", "√(2·d·Pref·R)", heat.duty.amplitude.0, "V", "definition of the duty"),
-            solved("Vm", "mean rail at the duty, all channels", "rectifier steady state", heat.rail.0, "V", "periodic solution of the rectifier"),
-            solved("Psig", "heat of one bank from the signal", "Vm·Î/π - V̂Î/4 - Î²RE/4N", heat.bank[0].signal.0, "W", "energy balance"),
-            solved("Pidle", "heat of one bank from the idle current", "Vm·N·Iq", heat.bank[0].idle.0, "W", "energy balance"),
-            solved("Pother", "other stages on the sink, one channel", "", heat.other.0, "W", ""),
-            solved("P", "all of it, one sink", "channels·(P+ + P- + Pother)", heat.total.0, "W", ""),
-            stated("Ta", "hottest air inside", heat.air.0, "degC", case.build.ambient.stated_at()),
-            solved("T", "heatsink", "Ta + P·Rsa", heat.sink.0, "degC", "Rsa falls with rise to the power 1/4"),
+            solved(
+                "V̂",
+                "duty amplitude",
+                "√(2·d·Pref·R)",
+                heat.duty.amplitude.0,
+                "V",
+                "definition of the duty",
+            ),
+            solved(
+                "Vm",
+                "mean rail at the duty, all channels",
+                "rectifier steady state",
+                heat.rail.0,
+                "V",
+                "periodic solution of the rectifier",
+            ),
+            solved(
+                "Psig",
+                "heat of one bank from the signal",
+                "Vm·Î/π - V̂Î/4 - Î²RE/4N",
+                heat.bank[0].signal.0,
+                "W",
+                "energy balance",
+            ),
+            solved(
+                "Pidle",
+                "heat of one bank from the idle current",
+                "Vm·N·Iq",
+                heat.bank[0].idle.0,
+                "W",
+                "energy balance",
+            ),
+            solved(
+                "Pother",
+                "other stages on the sink, one channel",
+                "",
+                heat.other.0,
+                "W",
+                "",
+            ),
+            solved(
+                "P",
+                "all of it, one sink",
+                "channels·(P+ + P- + Pother)",
+                heat.total.0,
+                "W",
+                "",
+            ),
+            stated(
+                "Ta",
+                "hottest air inside",
+                heat.air.0,
+                "degC",
+                case.build.ambient.stated_at(),
+            ),
+            solved(
+                "T",
+                "heatsink",
+                "Ta + P·Rsa",
+                heat.sink.0,
+                "degC",
+                "Rsa falls with rise to the power 1/4",
+            ),
         ]
         .into_iter()
-        .chain(sink.resistance.get().map(|(r, _)| stated("R0", "stated resistance", r.0, "K/W", sink.resistance.stated_at())))
+        .chain(sink.resistance.get().map(|(r, _)| {
+            stated(
+                "R0",
+                "stated resistance",
+                r.0,
+                "K/W",
+                sink.resistance.stated_at(),
+            )
+        }))
         .collect(),
         related,
         note: note.to_owned(),

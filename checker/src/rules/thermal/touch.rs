@@ -33,7 +33,9 @@ rule! {
 
 /// One margin for the build's heatsink, where it is declared touchable.
 pub fn check(case: &Case<'_>, out: &mut Margins<'_>) {
-    let Ok((sink, _)) = case.heatsink() else { return };
+    let Ok((sink, _)) = case.heatsink() else {
+        return;
+    };
     let contact = match sink.touchable.get() {
         Some(&"brushed") => Contact::Brushed,
         Some(&"held") => Contact::Held,
@@ -66,14 +68,43 @@ fn stress(case: &Case<'_>, load: &Driven, heat: &Heat, contact: Contact) -> Resu
             ..case.witness()
         },
         working: vec![
-            solved("P", "all of the heat on one sink", "channels·(P+ + P- + Pother)", heat.total.0, "W", "energy balance of class B"),
-            solved("T", "the sink, room at 25 degC", "25 + Tencl + P·Rsa", warm.0, "degC", "Rsa falls with rise to the power 1/4"),
-            stated("limit", "touch limit of metal", limit.0, "degC", sink.touchable.stated_at()),
+            solved(
+                "P",
+                "all of the heat on one sink",
+                "channels·(P+ + P- + Pother)",
+                heat.total.0,
+                "W",
+                "energy balance of class B",
+            ),
+            solved(
+                "T",
+                "the sink, room at 25 degC",
+                "25 + Tencl + P·Rsa",
+                warm.0,
+                "degC",
+                "Rsa falls with rise to the power 1/4",
+            ),
+            stated(
+                "limit",
+                "touch limit of metal",
+                limit.0,
+                "degC",
+                sink.touchable.stated_at(),
+            ),
         ],
         related: vec![
-            Related { message: "into this load".to_owned(), site: load.site },
-            Related { message: "declared touchable".to_owned(), site: sink.touchable.site() },
-            Related { message: format!("{channels} channel(s) on each"), site: case.build.heatsink.site() },
+            Related {
+                message: "into this load".to_owned(),
+                site: load.site,
+            },
+            Related {
+                message: "declared touchable".to_owned(),
+                site: sink.touchable.site(),
+            },
+            Related {
+                message: format!("{channels} channel(s) on each"),
+                site: case.build.heatsink.site(),
+            },
         ],
         ..Stress::default()
     })
@@ -89,8 +120,14 @@ mod tests {
     #[test]
     fn judged_in_a_room_at_25_degrees() {
         for (word, limit) in [("brushed", 60.0), ("held", 48.0)] {
-            let text = tern60(&[("touchable          no", &format!("touchable          {word}"))]);
-            let (touch, sink) = (margin(&text, RULE.name, "fins"), margin(&text, "thermal.sink", "fins"));
+            let text = tern60(&[(
+                "touchable          no",
+                &format!("touchable          {word}"),
+            )]);
+            let (touch, sink) = (
+                margin(&text, RULE.name, "fins"),
+                margin(&text, "thermal.sink", "fins"),
+            );
             assert!((sink.stress.unwrap().value - touch.stress.unwrap().value - 15.0).abs() < 1e-9);
             assert!((touch.rating.unwrap().value - limit).abs() < 1e-12);
         }

@@ -35,7 +35,12 @@ pub fn check(case: &Case<'_>, out: &mut Margins<'_>) {
     let stage = case.output();
     for side in stage.sides() {
         let device = stage.device(*side);
-        out.compare(&RULE, case.device_part(stage, *side), stage.devices.site(), rail_to_rail(case, device));
+        out.compare(
+            &RULE,
+            case.device_part(stage, *side),
+            stage.devices.site(),
+            rail_to_rail(case, device),
+        );
     }
 }
 
@@ -57,11 +62,36 @@ pub fn rail_to_rail(case: &Case<'_>, device: &Device) -> Result<Stress, Needs> {
             ..case.witness()
         },
         working: vec![
-            solved("V0", "rail, no load, high mains", "m·√2·Vs·(1 + ρ)", rail.0, "V", "definition of regulation"),
-            solved("V", "across the device that is off", "V0+ + V0-", across.0, "V", "node voltages"),
-            stated("V(BR)", "breakdown voltage", rating.0, "V", device.breakdown.stated_at()),
+            solved(
+                "V0",
+                "rail, no load, high mains",
+                "m·√2·Vs·(1 + ρ)",
+                rail.0,
+                "V",
+                "definition of regulation",
+            ),
+            solved(
+                "V",
+                "across the device that is off",
+                "V0+ + V0-",
+                across.0,
+                "V",
+                "node voltages",
+            ),
+            stated(
+                "V(BR)",
+                "breakdown voltage",
+                rating.0,
+                "V",
+                device.breakdown.stated_at(),
+            ),
         ],
-        related: case.rail_sites(device.breakdown.stated_at().map(|site| ("the rating", site))),
+        related: case.rail_sites(
+            device
+                .breakdown
+                .stated_at()
+                .map(|site| ("the rating", site)),
+        ),
         ..Stress::default()
     })
 }

@@ -32,15 +32,28 @@ pub fn check(case: &Case<'_>, out: &mut Margins<'_>) {
     let field = &amplifier.driver_field;
     if field.unstated() {
         let name = amplifier.owner.name.clone();
-        let part = Part { name: format!("{name} driver"), block: name, key: "driver", ..Part::default() };
+        let part = Part {
+            name: format!("{name} driver"),
+            block: name,
+            key: "driver",
+            ..Part::default()
+        };
         return out.compare(&RULE, part, field.site(), Err(field.missing()));
     }
-    for stage in [&amplifier.driver, &amplifier.predriver].into_iter().flatten() {
+    for stage in [&amplifier.driver, &amplifier.predriver]
+        .into_iter()
+        .flatten()
+    {
         for side in stage.sides() {
             let device = stage.device(*side);
             let stress = both(device.breakdown.need().copied(), case.across_drivers());
             let part = case.device_part(stage, *side);
-            out.compare(&RULE, part, stage.devices.site(), stress.map(|(rating, across)| across.against(case, rating, &device.breakdown)));
+            out.compare(
+                &RULE,
+                part,
+                stage.devices.site(),
+                stress.map(|(rating, across)| across.against(case, rating, &device.breakdown)),
+            );
         }
     }
 }
@@ -55,7 +68,16 @@ mod tests {
     fn both_rails_stand_across_it() {
         let m = margin(&tern60(&[]), super::RULE.name, "d3");
         assert!((m.stress.unwrap().value - 93.2137).abs() < 1e-3);
-        let at = |volts: &str| verdict(&tern60(&[("230 V\n    current            4 A", &format!("{volts} V\n    current            4 A"))]), super::RULE.name, "d3");
+        let at = |volts: &str| {
+            verdict(
+                &tern60(&[(
+                    "230 V\n    current            4 A",
+                    &format!("{volts} V\n    current            4 A"),
+                )]),
+                super::RULE.name,
+                "d3",
+            )
+        };
         assert_eq!(at("103.6"), Verdict::Ok);
         assert_eq!(at("103.5"), Verdict::Thin);
         assert_eq!(at("93.3"), Verdict::Thin);
@@ -65,21 +87,50 @@ mod tests {
     /// A driver supply 5 V above the rail adds twice 5.5 V at high mains. By hand.
     #[test]
     fn a_driver_supply_above_the_rail_counts() {
-        let m = margin(&tern60(&[("    own-sink           6 K/W per device", "    own-sink           6 K/W per device\n    driver-rail        5 V")]), super::RULE.name, "d3");
+        let m = margin(
+            &tern60(&[(
+                "    own-sink           6 K/W per device",
+                "    own-sink           6 K/W per device\n    driver-rail        5 V",
+            )]),
+            super::RULE.name,
+            "d3",
+        );
         assert!((m.stress.unwrap().value - 104.2137).abs() < 1e-3);
     }
 
     #[test]
     fn says_what_is_missing() {
-        let m = margin(&tern60(&[("    driver             drv\n", "")]), super::RULE.name, "tern60 driver");
-        assert_eq!((m.verdict, m.needs.as_slice()), (Verdict::Unchecked, ["amplifier tern60 driver".to_owned()].as_slice()));
-        let m = margin(&tern60(&[("    vceo               230 V\n", "")]), super::RULE.name, "d3");
+        let m = margin(
+            &tern60(&[("    driver             drv\n", "")]),
+            super::RULE.name,
+            "tern60 driver",
+        );
+        assert_eq!(
+            (m.verdict, m.needs.as_slice()),
+            (
+                Verdict::Unchecked,
+                ["amplifier tern60 driver".to_owned()].as_slice()
+            )
+        );
+        let m = margin(
+            &tern60(&[("    vceo               230 V\n", "")]),
+            super::RULE.name,
+            "d3",
+        );
         assert_eq!(m.needs, ["device d3 vceo"]);
     }
 
     #[test]
     fn none_is_nothing_to_check() {
-        let report = crate::testing::report(&tern60(&[("driver             drv", "driver             none")]));
-        assert!(report.builds[0].margins.iter().all(|m| m.rule != super::RULE.name));
+        let report = crate::testing::report(&tern60(&[(
+            "driver             drv",
+            "driver             none",
+        )]));
+        assert!(
+            report.builds[0]
+                .margins
+                .iter()
+                .all(|m| m.rule != super::RULE.name)
+        );
     }
 }

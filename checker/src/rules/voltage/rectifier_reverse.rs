@@ -32,14 +32,25 @@ rule! {
 
 /// One margin for the rectifier.
 pub fn check(case: &Case<'_>, out: &mut Margins<'_>) {
-    let Some(supply) = case.fitted(&RULE, out) else { return };
+    let Some(supply) = case.fitted(&RULE, out) else {
+        return;
+    };
     let each = supply.rectifier.get().map_or(1, |r| r.bridges);
-    out.compare(&RULE, case.supply_part(supply, "rectifier", each), supply.rectifier.site(), stress(case, supply));
+    out.compare(
+        &RULE,
+        case.supply_part(supply, "rectifier", each),
+        supply.rectifier.site(),
+        stress(case, supply),
+    );
 }
 
 fn stress(case: &Case<'_>, supply: &Supply) -> Result<Stress, Needs> {
     let field = &supply.rectifier;
-    let (rating, made, rail) = three(field.part("V", |r| r.reverse), case.made(), case.no_load(Mains::High))?;
+    let (rating, made, rail) = three(
+        field.part("V", |r| r.reverse),
+        case.made(),
+        case.no_load(Mains::High),
+    )?;
     let reverse = made.rectifier.reverse_peak(rail, rail);
     let expression = match made.rectifier {
         Rectifier::CentreTap => "V0+ + V0-",
@@ -48,10 +59,29 @@ fn stress(case: &Case<'_>, supply: &Supply) -> Result<Stress, Needs> {
     Ok(Stress {
         value: reverse.0,
         rating: rating.0,
-        witness: Witness { mains_v: case.mains_volts(Mains::High), rail_v: Some(rail.0), channels_driven: None, ..case.witness() },
+        witness: Witness {
+            mains_v: case.mains_volts(Mains::High),
+            rail_v: Some(rail.0),
+            channels_driven: None,
+            ..case.witness()
+        },
         working: vec![
-            solved("V0", "rail, no load, high mains", "m·√2·Vs·(1 + ρ)", rail.0, "V", "definition of regulation"),
-            solved("VR", "across a blocking diode", expression, reverse.0, "V", "node voltages"),
+            solved(
+                "V0",
+                "rail, no load, high mains",
+                "m·√2·Vs·(1 + ρ)",
+                rail.0,
+                "V",
+                "definition of regulation",
+            ),
+            solved(
+                "VR",
+                "across a blocking diode",
+                expression,
+                reverse.0,
+                "V",
+                "node voltages",
+            ),
             stated("VRRM", "rating", rating.0, "V", field.stated_at()),
         ],
         related: case.rail_sites(None),
@@ -69,7 +99,13 @@ mod tests {
     fn both_rails_in_one_bridge() {
         let m = margin(&tern60(&[]), super::RULE.name, "toroid rectifier");
         assert!((m.stress.unwrap().value - 93.2137).abs() < 1e-3);
-        let at = |volts: &str| verdict(&tern60(&[("bridge 400 V", &format!("bridge {volts} V"))]), super::RULE.name, "toroid rectifier");
+        let at = |volts: &str| {
+            verdict(
+                &tern60(&[("bridge 400 V", &format!("bridge {volts} V"))]),
+                super::RULE.name,
+                "toroid rectifier",
+            )
+        };
         assert_eq!(at("133.2"), Verdict::Ok);
         assert_eq!(at("133.1"), Verdict::Thin);
         assert_eq!(at("93.2"), Verdict::Over);
@@ -78,13 +114,27 @@ mod tests {
     /// Two bridges: one rail each, 46.6068 V. By hand.
     #[test]
     fn one_rail_in_a_bridge_per_winding() {
-        let m = margin(&tern60(&[("1 x bridge", "2 x bridge")]), super::RULE.name, "toroid rectifier");
+        let m = margin(
+            &tern60(&[("1 x bridge", "2 x bridge")]),
+            super::RULE.name,
+            "toroid rectifier",
+        );
         assert!((m.stress.unwrap().value - 46.6068).abs() < 1e-3);
     }
 
     #[test]
     fn says_what_is_missing() {
-        let m = margin(&tern60(&[("bridge 400 V", "bridge")]), super::RULE.name, "toroid rectifier");
-        assert_eq!((m.verdict, m.needs.as_slice()), (Verdict::Unchecked, ["supply toroid rectifier V".to_owned()].as_slice()));
+        let m = margin(
+            &tern60(&[("bridge 400 V", "bridge")]),
+            super::RULE.name,
+            "toroid rectifier",
+        );
+        assert_eq!(
+            (m.verdict, m.needs.as_slice()),
+            (
+                Verdict::Unchecked,
+                ["supply toroid rectifier V".to_owned()].as_slice()
+            )
+        );
     }
 }

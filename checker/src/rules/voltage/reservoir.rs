@@ -37,7 +37,12 @@ pub fn check(case: &Case<'_>, out: &mut Margins<'_>) {
         && let Some(supply) = case.fitted(&RULE, out)
     {
         let part = case.supply_part(supply, "reservoir", 1);
-        out.compare(&RULE, part, supply.reservoir.site(), Err(supply.reservoir.missing()));
+        out.compare(
+            &RULE,
+            part,
+            supply.reservoir.site(),
+            Err(supply.reservoir.missing()),
+        );
     }
     for bank in banks {
         let (part, site) = (bank.part.clone(), bank.stated.site);
@@ -51,9 +56,21 @@ fn stress(case: &Case<'_>, bank: &Bank<'_>) -> Result<Stress, Needs> {
     Ok(Stress {
         value: rail.0,
         rating: rating.0,
-        witness: Witness { mains_v: case.mains_volts(Mains::High), rail_v: Some(rail.0), channels_driven: None, ..case.witness() },
+        witness: Witness {
+            mains_v: case.mains_volts(Mains::High),
+            rail_v: Some(rail.0),
+            channels_driven: None,
+            ..case.witness()
+        },
         working: vec![
-            solved("V0", "rail, no load, high mains", "m·√2·Vs·(1 + ρ)", rail.0, "V", "definition of regulation"),
+            solved(
+                "V0",
+                "rail, no load, high mains",
+                "m·√2·Vs·(1 + ρ)",
+                rail.0,
+                "V",
+                "definition of regulation",
+            ),
             stated("UR", "rated voltage", rating.0, "V", [bank.stated.site]),
         ],
         related: case.rail_sites(None),
@@ -71,7 +88,13 @@ mod tests {
     fn crest_of_the_unloaded_winding() {
         let m = margin(&tern60(&[]), super::RULE.name, "toroid reservoir");
         assert!((m.stress.unwrap().value - 46.6068).abs() < 1e-3);
-        let at = |volts: &str| verdict(&tern60(&[("±20 % 63 V", &format!("±20 % {volts} V"))]), super::RULE.name, "toroid reservoir");
+        let at = |volts: &str| {
+            verdict(
+                &tern60(&[("±20 % 63 V", &format!("±20 % {volts} V"))]),
+                super::RULE.name,
+                "toroid reservoir",
+            )
+        };
         assert_eq!(at("51.8"), Verdict::Ok);
         assert_eq!(at("51.7"), Verdict::Thin);
         assert_eq!(at("46.7"), Verdict::Thin);
@@ -81,23 +104,45 @@ mod tests {
     /// 2 x 35 V, 6 %, +10 %: 35·1.06·1.10·√2 = 57.71 V. Published worked example, recomputed by hand.
     #[test]
     fn a_published_case() {
-        let text = tern60(&[("2 x 28 Vac", "2 x 35 Vac"), ("7 % of full-load", "6 % of full-load")]);
+        let text = tern60(&[
+            ("2 x 28 Vac", "2 x 35 Vac"),
+            ("7 % of full-load", "6 % of full-load"),
+        ]);
         let m = margin(&text, super::RULE.name, "toroid reservoir");
         assert!((m.stress.unwrap().value - 57.71).abs() < 0.005);
         assert_eq!(m.verdict, Verdict::Thin);
-        assert_eq!(verdict(&edited(&text, &[("±20 % 63 V", "±20 % 50 V")]), super::RULE.name, "toroid reservoir"), Verdict::Over);
+        assert_eq!(
+            verdict(
+                &edited(&text, &[("±20 % 63 V", "±20 % 50 V")]),
+                super::RULE.name,
+                "toroid reservoir"
+            ),
+            Verdict::Over
+        );
     }
 
     #[test]
     fn capacitors_on_the_board_are_on_the_rail_too() {
-        let text = tern60(&[("board-reservoir    none", "board-reservoir    1 x 470 uF ±20 % 40 V per rail")]);
-        assert_eq!(verdict(&text, super::RULE.name, "tern60 board-reservoir"), Verdict::Over);
-        assert_eq!(verdict(&text, super::RULE.name, "toroid reservoir"), Verdict::Ok);
+        let text = tern60(&[(
+            "board-reservoir    none",
+            "board-reservoir    1 x 470 uF ±20 % 40 V per rail",
+        )]);
+        assert_eq!(
+            verdict(&text, super::RULE.name, "tern60 board-reservoir"),
+            Verdict::Over
+        );
+        assert_eq!(
+            verdict(&text, super::RULE.name, "toroid reservoir"),
+            Verdict::Ok
+        );
     }
 
     #[test]
     fn says_what_is_missing() {
         let text = tern60(&[("    secondary          2 x 28 Vac\n", "")]);
-        assert_eq!(margin(&text, super::RULE.name, "toroid reservoir").needs, ["transformer t300 secondary"]);
+        assert_eq!(
+            margin(&text, super::RULE.name, "toroid reservoir").needs,
+            ["transformer t300 secondary"]
+        );
     }
 }

@@ -33,7 +33,12 @@ pub fn check(case: &Case<'_>, out: &mut Margins<'_>) {
     let field = &amplifier.voltage_field;
     if field.unstated() {
         let name = amplifier.owner.name.clone();
-        let part = Part { name: format!("{name} voltage-amplifier"), block: name, key: "voltage-amplifier", ..Part::default() };
+        let part = Part {
+            name: format!("{name} voltage-amplifier"),
+            block: name,
+            key: "voltage-amplifier",
+            ..Part::default()
+        };
         return out.compare(&RULE, part, field.site(), Err(field.missing()));
     }
     if let Some(stage) = &amplifier.voltage_amplifier {
@@ -41,7 +46,12 @@ pub fn check(case: &Case<'_>, out: &mut Margins<'_>) {
             let device = stage.device(*side);
             let stress = both(device.breakdown.need().copied(), case.across_drivers());
             let part = case.device_part(stage, *side);
-            out.compare(&RULE, part, stage.devices.site(), stress.map(|(rating, across)| across.against(case, rating, &device.breakdown)));
+            out.compare(
+                &RULE,
+                part,
+                stage.devices.site(),
+                stress.map(|(rating, across)| across.against(case, rating, &device.breakdown)),
+            );
         }
     }
 }
@@ -54,7 +64,16 @@ mod tests {
     /// Twice 253/230·√2·28·1.07 = 93.2137 V; 90 % of 103.6 V is 93.24 V. By hand.
     #[test]
     fn both_rails_stand_across_it() {
-        let at = |volts: &str| verdict(&tern60(&[("250 V\n    current            100 mA", &format!("{volts} V\n    current            100 mA"))]), super::RULE.name, "v1");
+        let at = |volts: &str| {
+            verdict(
+                &tern60(&[(
+                    "250 V\n    current            100 mA",
+                    &format!("{volts} V\n    current            100 mA"),
+                )]),
+                super::RULE.name,
+                "v1",
+            )
+        };
         assert_eq!(at("103.6"), Verdict::Ok);
         assert_eq!(at("103.5"), Verdict::Thin);
         assert_eq!(at("93.2"), Verdict::Over);
@@ -62,13 +81,31 @@ mod tests {
 
     #[test]
     fn says_what_is_missing() {
-        let m = margin(&tern60(&[("    voltage-amplifier  vas\n", "")]), super::RULE.name, "tern60 voltage-amplifier");
-        assert_eq!((m.verdict, m.needs.as_slice()), (Verdict::Unchecked, ["amplifier tern60 voltage-amplifier".to_owned()].as_slice()));
+        let m = margin(
+            &tern60(&[("    voltage-amplifier  vas\n", "")]),
+            super::RULE.name,
+            "tern60 voltage-amplifier",
+        );
+        assert_eq!(
+            (m.verdict, m.needs.as_slice()),
+            (
+                Verdict::Unchecked,
+                ["amplifier tern60 voltage-amplifier".to_owned()].as_slice()
+            )
+        );
     }
 
     #[test]
     fn none_is_nothing_to_check() {
-        let report = crate::testing::report(&tern60(&[("voltage-amplifier  vas", "voltage-amplifier  none")]));
-        assert!(report.builds[0].margins.iter().all(|m| m.rule != super::RULE.name));
+        let report = crate::testing::report(&tern60(&[(
+            "voltage-amplifier  vas",
+            "voltage-amplifier  none",
+        )]));
+        assert!(
+            report.builds[0]
+                .margins
+                .iter()
+                .all(|m| m.rule != super::RULE.name)
+        );
     }
 }
