@@ -219,6 +219,7 @@ impl Owner {
                 let buffers = Arc::clone(&self.snapshot.buffers);
                 self.roots
                     .retain(|path, root| root.is_fresh() || buffers.contains_key(path));
+                self.remote.step(0);
             }
         }
     }
