@@ -101,7 +101,7 @@ def _small_device(rng, name, rail_to_rail, amps, watts):
     return device
 
 
-def _load(rng, name, folder, kinds, base=None):
+def _load(rng, index, name, folder, kinds, base=None):
     """One load of a given kind; tables are written to the folder as CSV."""
     kind = str(rng.choice(kinds))
     size = base or float(rng.choice([4, 6, 8]))
@@ -127,11 +127,11 @@ def _load(rng, name, folder, kinds, base=None):
         f = np.geomspace(10, 40_000, 97)
         z = re + 1j * 2 * np.pi * f * le + re * qms / qes / (1 + 1j * qms * (f / fs - fs / f))
         rows = [(tidy(a, 6), tidy(abs(b), 5), tidy(math.degrees(np.angle(b)), 5)) for a, b in zip(f, z)]
-        load.update(nominal=size, rows=rows, file=f"{name}.csv")
+        load.update(nominal=size, rows=rows, file=f"{index:04d}-{name}.csv")
         (folder / load["file"]).write_text("frequency_hz,modulus_ohm,phase_deg\n" + "".join(f"{num(a)},{num(b)},{num(c)}\n" for a, b, c in rows))
     elif kind == "parallel":
         load["parts"] = [
-            _load(rng, f"{name}-{x}", folder, ["resistive", "voice-coil"] if x == "b" else ["voice-coil"], size * 2)
+            _load(rng, index, f"{name}-{x}", folder, ["resistive", "voice-coil"] if x == "b" else ["voice-coil"], size * 2)
             for x in "ab"
         ]
         load["nominal"] = size
@@ -221,7 +221,7 @@ def generate(seed, index, folder):
     loads = []
     kinds = ["resistive", "nominal", "voice-coil", "table", "parallel"]
     for k in range(int(rng.integers(1, 4))):
-        loads.append(_load(rng, f"load{chr(97 + k)}", folder, kinds))
+        loads.append(_load(rng, index, f"load{chr(97 + k)}", folder, kinds))
     b["loads"] = loads
     smallest = min(_least_guess(load) for load in loads) / (2 if b["bridged"] else 1)
     peak_amps = rail / smallest

@@ -179,14 +179,13 @@ class Case:
                     found.append(dict(load=load["name"], sink=sink, watts=watts, bank=bank, driver=driver, case=case))
         return found
 
-    @property
-    def hottest_case(self):
-        return max(h["case"] for h in self.hot)
+    def hottest_case(self, load=None):
+        """Case of the hottest device at the duty, in one load or in the worst."""
+        return max(h["case"] for h in self.hot if load in (None, h["load"]))
 
-    @property
-    def hottest_driver(self):
-        """Case of the hottest driver at the duty; NaN where its current cannot be told."""
-        return max(self.driver_case(h) for h in self.hot)
+    def hottest_driver(self, load):
+        """Case of the hottest driver at the duty in one load; NaN where its current cannot be told."""
+        return max(self.driver_case(h) for h in self.hot if h["load"] == load)
 
     def driver_case(self, h):
         drv = self.b["drv"]
@@ -361,7 +360,7 @@ def junction_peaks(case, worst):
             for d in (out["up"], out["down"]):
                 # The idle current is added whole, as it is to the mean heat.
                 rise = heat.foster_peak(d["foster"], power, 1 / low) + rest * sum(r for r, _ in d["foster"])
-                tj = case.hottest_case + rise
+                tj = case.hottest_case(load["name"]) + rise
                 worst.note("thermal.junction-peak", d["name"], tj, d["tj"], case.ambient_used(tj, d["tj"]), rise=rise)
 
 
@@ -478,9 +477,9 @@ def bleed_down(case, worst):
 def safe_areas(case, worst):
     b, out = case.b, case.b["out"]
     rail = case.unsagged("volts")
-    tc = case.hottest_case
     sides = [out["up"], out["down"]] if out["down"].get("separate") else [out["up"]]
     for load in b["loads"]:
+        tc = case.hottest_case(load["name"])
         least = case.least_modulus(load)
         for d in sides:
             flat = lambda f: least + 0j * f
@@ -530,16 +529,18 @@ def search(function, band, knots=(), flat=False, turn=np.pi):
     grid = np.meshgrid(f, a, t, indexing="ij")
     got = function(*grid)
     got = np.where(np.isnan(got), -np.inf, got)
-    order = np.argsort(got.max(axis=(1, 2)))[::-1]
     boxes = []
-    for k in order[:3]:
-        j, m = np.unravel_index(int(np.argmax(got[k])), got.shape[1:])
+    left = got.copy()
+    for _ in range(4):
+        # The best cell that is not beside one already taken.
+        k, j, m = np.unravel_index(int(np.argmax(left)), left.shape)
         if flat:
             span, lower, upper = 0.0, middle, middle
         else:
             span = max(f[min(k + 1, len(f) - 1)] - f[k], f[k] - f[max(k - 1, 0)])
             lower, upper = band
         boxes.append(((f[k], a[j], t[m]), (span, 0.15, 0.06), (lower, 0.02, 1e-4), (upper, 1.0, turn - 1e-4)))
+        left[max(k - 3, 0) : k + 4, :, max(m - 3, 0) : m + 4] = -np.inf
     return safe_area.zoom(function, boxes, points=(1 if flat else 7, 5, 9), rounds=24, shrink=0.5)
 
 
@@ -553,7 +554,7 @@ def soa_used(case, device, z, rail, tc, knots, flat):
 
 def driver_soa(case, load, z, rail, worst):
     d = case.b["drv"]["up"]
-    tc = case.hottest_driver
+    tc = case.hottest_driver(load["name"])
     if not math.isfinite(tc):
         return
 
@@ -585,13 +586,22 @@ def limiters(case, worst):
     if g["network"]:
         return
     high, rail = case.unsagged("high"), case.unsagged("volts")
-    v = np.linspace(0.05, 2 * high, 200_001)
-    line = limit_line(g, case.pairs, v)
-    each = line / case.pairs if g["bank"] else line
-    worst_share = stage_.share(np.maximum(each, 1e-9), case.pairs, out["spread"], case.re, out["re_low"]) if g["bank"] else 1.0
+    # The line acts on the bank, or on one device and that the least loaded; the most loaded is judged.
+    def most_loaded(v):
+        line = limit_line(g, case.pairs, v)
+        if not g["bank"]:
+            return stage_.beside(line, case.pairs, out["spread"], case.re, out["re_low"])
+        each = line / case.pairs
+        return each * stage_.share(np.maximum(each, 1e-9), case.pairs, out["spread"], case.re, out["re_low"])
+
+    v = np.linspace(0.05, 2 * high, 20_001)
     for d in (out["up"], out["down"]):
-        use = each * worst_share / safe_area.allowed(d, case.hottest_case, v)
-        use = np.nanmax(use)
+        function = lambda v, d=d: most_loaded(v) / safe_area.allowed(d, case.hottest_case(), v)
+        use = np.nan_to_num(function(v))
+        peaks = [v[k] for k in range(1, len(v) - 1) if use[k] >= max(use[k - 1], use[k + 1])]
+        peaks = sorted(peaks, key=lambda x: -float(function(np.array([x]))[0]))[:6]
+        fine = max((float(np.nanmax(function(np.linspace(x - 0.02, min(x + 0.02, 2 * high), 20_001)))) for x in peaks), default=0.0)
+        use = max(fine, float(use.max()))
         worst.below("soa.limiter-soa", d["name"], use, 1.0, 1.0)
     for load in b["loads"]:
         for z in case.sides(load):
@@ -658,7 +668,8 @@ def switching_on(builds):
                 full = one["volts"] / unsagged * 100
                 w.note("supply.soft-start-timing", "psu soft-start", full, 40.0, 100 * 80 / max(full, 1e-9), level=level)
             if level == "high":
-                joules = s["soft"] * (2 * turns) ** 2 * one["before"]
+                filling = s["soft"] * (2 * turns) ** 2 * one["before"]
+                joules = max(filling, s["soft"] * saturated_core(case, s["soft"]))
                 w.note("supply.inrush-resistor-energy", "psu soft-start", joules, 250.0 * 10 / 10, 100 * joules / (0.8 * 250))
                 limit = s["surge"] ** 2 * 8.3e-3 / 2
                 peak = max(one["early"], one["late"]) / s["surge"]
@@ -666,3 +677,11 @@ def switching_on(builds):
                 each = 0.0 if drawn else (one["first"] + one["square"]) / 2 / limit
                 w.below("current.rectifier-surge", "psu rectifier", 100 * max(peak, each), 100.0, 0.8)
     return found
+
+
+def saturated_core(case, ohms):
+    """A2s of half a cycle of a saturated core behind a resistor, at high mains."""
+    s, m = case.b["supply"], case.mains
+    copper = s["rho"] * m["tap"] ** 2 / s["va"] / 2
+    peak = m["high"] * math.sqrt(2) / (copper + m["loop"] + ohms)
+    return float(np.mean((peak * np.sin(TURN)) ** 2)) / 2 / m["hertz"]

@@ -70,6 +70,18 @@ def share(mean, count, spread, ohms, low):
     return s
 
 
+def beside(least, count, spread, ohms, low):
+    """Current of the device that hogs while each of the others carries `least` (array), by halving."""
+    if count == 1:
+        return least
+    lo, hi = least, least + 10.0
+    for _ in range(60):
+        most = 0.5 * (lo + hi)
+        over = VT * np.log(most / np.maximum(least, 1e-12)) + most * ohms * (1 - low) - least * ohms - spread > 0
+        hi, lo = np.where(over, most, hi), np.where(over, lo, most)
+    return 0.5 * (lo + hi)
+
+
 def share_one(mean, stage):
     """The worst share at one mean device current of a stage."""
     return float(share(np.array([max(mean, 1e-12)]), stage["pairs"], stage["spread"], stage["re"], stage["re_low"])[0])

@@ -186,7 +186,8 @@ def switch_on(starts, at_crest, per_cycle=1600):
 
     The source closes at its crest or at its zero; `idle` is drawn above 10 V. Returns arrays: the
     greatest amps before and after the bypass, the square of the charging current integrated before
-    the bypass, to the end of the first half-cycle, and to the end, and the rail volts at the bypass.
+    the bypass, to the end of the first half-cycle, over the first half-cycle after the bypass (`again`),
+    and to the end, and the rail volts at the bypass.
     """
     get = lambda f: np.array([f(s) for s in starts])
     peak, fall, source = get(lambda s: s.rail.peak), get(lambda s: s.rail.drop), get(lambda s: s.rail.source)
@@ -196,7 +197,7 @@ def switch_on(starts, at_crest, per_cycle=1600):
     w = 2 * np.pi * hertz
     shift = np.pi / 2 if at_crest else 0.0
     v = np.zeros(len(starts))
-    early, late, square, before, first, volts = (np.zeros(len(starts)) for _ in range(6))
+    early, late, square, before, first, again, volts = (np.zeros(len(starts)) for _ in range(7))
     switched = np.round(bypass / h).astype(int)
     end = np.round(until / h).astype(int)
 
@@ -222,8 +223,9 @@ def switch_on(starts, at_crest, per_cycle=1600):
         square = square + part
         before = before + np.where(soft, part, 0.0)
         first = first + (part if k < per_cycle // 2 else 0.0)
+        again = again + np.where((k >= switched) & (k < switched + per_cycle // 2), part, 0.0)
         v = np.maximum(v + h / 6 * (a + 2 * b + 2 * c + d), 0.0)
-    return dict(early=early, late=late, square=square, before=before, first=first, volts=volts)
+    return dict(early=early, late=late, square=square, before=before, first=first, again=again, volts=volts)
 
 
 def sag_batch(rails, idles, channels, ohms, need, bottom, judge, bridged, per_cycle=1000, settle=14):

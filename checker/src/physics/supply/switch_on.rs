@@ -323,11 +323,18 @@ mod tests {
             let h = PI / slow.omega / 2000.0;
             let (mut inside, mut square) = (0.0, 0.0);
             for n in 0..half_cycles {
-                let drawn = if inside > 10.0 { idle } else { 0.0 };
                 let begin = PI / slow.omega * n as f64;
-                inside = slow
-                    .march(&|_| drawn, (begin, inside), h, 2000, |_, _, i| square += i * i * h)
-                    .max(0.0);
+                let mut half = |drawn: f64| {
+                    let mut own = 0.0;
+                    let end = slow
+                        .march(&|_| drawn, (begin, inside), h, 2000, |_, _, i| own += i * i * h)
+                        .max(0.0);
+                    (end, own)
+                };
+                let drawing = half(idle);
+                let (end, own) = if drawing.0 > 10.0 { drawing } else { half(0.0) };
+                inside = end;
+                square += own;
             }
             let joules = 2.0 * extra * square;
             prop_assert!((found.reached.0 - inside).abs() < 1e-4 * parts.no_load_crest.0, "{found:?} {inside}");
