@@ -20,6 +20,7 @@ sys.path.insert(0, str(pathlib.Path(__file__).parent))
 from brute import build, margins, published  # noqa: E402
 
 SAME = 1e-6  # the same model on both sides; reports print nine digits
+SEARCHED = 1e-5  # a greatest value over frequency, amplitude and angle, sought on a kinked ridge
 STEPPED = 1e-4  # this side marches in fixed small steps, or samples a minimum
 
 # Rule: (relative tolerance, what is compared, why it is looser than SAME).
@@ -35,15 +36,15 @@ RULES = {
     "current.device-share": (SAME, "stress rating used", ""),
     "current.emitter-mean": (SAME, "stress rating used", ""),
     "current.rectifier-mean": (SAME, "stress rating used", ""),
-    "current.rectifier-surge": (STEPPED, "used", "fixed steps"),
+    "current.rectifier-surge": (2e-3, "used", "fixed steps; how long the tail of the I2t is counted is not defined"),
     "current.reservoir-ripple": (2e-5, "stress rating used", "the signal's form factor is stated to four digits: 0.3856"),
     "current.transformer-duty": (SAME, "stress rating used", ""),
     "current.fuse-rms": (SAME, "stress rating used", ""),
-    "soa.resistive": (SAME, "used", ""),
-    "soa.reactive": (SAME, "used", ""),
+    "soa.resistive": (SEARCHED, "used", "searched"),
+    "soa.reactive": (SEARCHED, "used", "searched"),
     "soa.idle": (SAME, "stress rating used", ""),
-    "soa.limiter-soa": (SAME, "used", ""),
-    "soa.limiter-music": (SAME, "used", ""),
+    "soa.limiter-soa": (SEARCHED, "used", "searched"),
+    "soa.limiter-music": (SEARCHED, "used", "searched"),
     "thermal.junction": (SAME, "stress rating used", ""),
     "thermal.junction-peak": (SAME, "stress rating used", ""),
     "thermal.sink": (SAME, "stress rating used", ""),
@@ -52,7 +53,7 @@ RULES = {
     "bias.stability": (SAME, "stress rating used", ""),
     "drive.output-gain-droop": (SAME, "used", ""),
     "drive.driver-current": (SAME, "stress rating used", ""),
-    "drive.driver-soa": (SAME, "used", ""),
+    "drive.driver-soa": (SEARCHED, "used", "searched"),
     "drive.slew": (SAME, "used", ""),
     "supply.core-flux": (SAME, "stress rating used", ""),
     "supply.soft-start-timing": (STEPPED, "stress used", "fixed steps"),

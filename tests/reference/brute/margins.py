@@ -656,7 +656,7 @@ def switching_on(builds):
                 for cap in (min(case.cap_corners), max(case.cap_corners)):
                     for idle in (0.0, case.share_channels * case.pairs * case.idle):
                         rows.append((k, case, level, idle > 0, turns))
-                        starts.append(supply_.Start(case.rail(level, cap), 2 * s["soft"] * turns**2, s["bypass"], idle, s["bypass"] + 0.1))
+                        starts.append(supply_.Start(case.rail(level, cap), 2 * s["soft"] * turns**2, s["bypass"], idle, s["bypass"] + 0.3))
     found = {}
     for crest in (True, False):
         got = supply_.switch_on(starts, crest)
@@ -673,8 +673,9 @@ def switching_on(builds):
                 w.note("supply.inrush-resistor-energy", "psu soft-start", joules, 250.0 * 10 / 10, 100 * joules / (0.8 * 250))
                 limit = s["surge"] ** 2 * 8.3e-3 / 2
                 peak = max(one["early"], one["late"]) / s["surge"]
-                # Of one diode: every second pulse, at most the first half-cycle and half of the rest.
-                each = 0.0 if drawn else (one["first"] + one["square"]) / 2 / limit
+                # Of one diode: every second pulse, at most a surge's first half-cycle and half of the rest.
+                surges = (one["first"] + one["before"], one["again"] + one["square"] - one["before"])
+                each = 0.0 if drawn else max(surges) / 2 / limit
                 w.below("current.rectifier-surge", "psu rectifier", 100 * max(peak, each), 100.0, 0.8)
     return found
 
