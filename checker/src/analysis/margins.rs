@@ -3,7 +3,9 @@
 
 use std::collections::HashMap;
 
+use super::case::line_part;
 use crate::build::Needs;
+use crate::build::parts::Field;
 use crate::finding::{Margin, Measure, Part, Related, Severity, Site, Step, Verdict, Witness};
 use crate::policy::Policy;
 use crate::rule::{Rule, compare};
@@ -95,6 +97,15 @@ impl<'a> Margins<'a> {
             }
         };
         self.put(margin);
+    }
+
+    /// Note that a key is not stated, where it is neither stated nor `none`; whether it was so.
+    pub fn lacking<T>(&mut self, rule: &'static Rule, field: &Field<T>) -> bool {
+        if field.unstated() {
+            let part = line_part(field);
+            self.compare(rule, part, field.site(), Err(field.missing()));
+        }
+        field.unstated()
     }
 
     /// A verdict that no comparison of numbers gives: a fault of kind (`over`), or a thing that is

@@ -35,6 +35,9 @@ rule! {
 
 /// One margin for each declared device of driver and predriver.
 pub fn check(case: &Case<'_>, out: &mut Margins<'_>) {
+    if out.lacking(&RULE, &case.build.amplifier.driver_field) {
+        return;
+    }
     for (depth, stage) in case.followers().into_iter().enumerate().skip(1) {
         for side in Side::BOTH {
             let (part, site) = (case.device_part(stage, side), stage.devices.site());

@@ -36,6 +36,9 @@ rule! {
 
 /// One margin for each declared driver device.
 pub fn check(case: &Case<'_>, out: &mut Margins<'_>) {
+    if out.lacking(&RULE, &case.build.amplifier.driver_field) {
+        return;
+    }
     let Ok(driver) = case.driver() else { return };
     for side in driver.sides() {
         let (part, site) = (case.device_part(driver, *side), driver.devices.site());

@@ -39,6 +39,9 @@ rule! {
 
 /// One margin for each declared driver device.
 pub fn check(case: &Case<'_>, out: &mut Margins<'_>) {
+    if out.lacking(&RULE, &case.build.amplifier.driver_field) {
+        return;
+    }
     let Ok(driver) = case.driver() else { return };
     for side in Side::BOTH {
         let (part, site) = (case.device_part(driver, side), driver.devices.site());

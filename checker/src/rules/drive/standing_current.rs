@@ -33,6 +33,9 @@ rule! {
 /// One margin for the voltage stage.
 pub fn check(case: &Case<'_>, out: &mut Margins<'_>) {
     let amplifier = &case.build.amplifier;
+    if out.lacking(&RULE, &amplifier.voltage_field) {
+        return;
+    }
     let Some(voltage) = amplifier
         .voltage_amplifier
         .as_ref()
