@@ -39,6 +39,9 @@ pub(crate) enum Need {
 /// Gives an answer, or says why there is none.
 pub(crate) type Work = Box<dyn FnOnce(Result<View, jsonrpc::Error>) + Send>;
 
+/// What is done for a question about the whole workspace.
+pub(crate) type WorkOnAll = Box<dyn FnOnce(&Snapshot, &Session) + Send>;
+
 /// What the owner is told, in the order in which it happened.
 pub(crate) enum Event {
     /// The client has said who it is: its abilities, its folders, its settings if it sent them.
@@ -60,7 +63,7 @@ pub(crate) enum Event {
     /// A question about a document.
     Ask(Url, Need, Work),
     /// A question about the whole workspace.
-    AskAll(Box<dyn FnOnce(&Snapshot, &Session) + Send>),
+    AskAll(WorkOnAll),
     /// A check was done.
     Checked(PathBuf, u64, Box<Checked>),
     /// The specs below the workspace folders.

@@ -324,7 +324,7 @@ mod tests {
             let (mut inside, mut square) = (0.0, 0.0);
             for n in 0..half_cycles {
                 let begin = PI / slow.omega * n as f64;
-                let mut half = |drawn: f64| {
+                let half = |drawn: f64| {
                     let mut own = 0.0;
                     let end = slow
                         .march(&|_| drawn, (begin, inside), h, 2000, |_, _, i| own += i * i * h)
