@@ -13,9 +13,7 @@ use crate::build::parts::{Flavour, Stage as Stated, both, three};
 use crate::physics::drive::{Driver, LocusPoint, Stage};
 use crate::physics::load::Impedance;
 use crate::physics::safe_area::{Allowance, Coverage};
-use crate::physics::sharing::Bank;
 use crate::physics::unit::{Amp, Hertz, Ohm, Volt};
-use crate::physics::waveform::Locus;
 
 /// One follower of the chain while the output swings to its peak.
 #[derive(Clone, Debug)]
@@ -143,9 +141,8 @@ impl Case<'_> {
     /// The worst point of the driver's locus in a load at full drive, nominal mains, the drivers of a
     /// side carrying alike.
     ///
-    /// The frequency is searched with the driver's current as the output current over one gain, where
-    /// the locus of an output device has its worst point in closed form; there, and at the least
-    /// impedance, where the gain is lowest, the locus with the gain of each instant is walked.
+    /// At every frequency of the search the locus is walked with the gain of each instant: neither the
+    /// least impedance nor the worst point of the output devices is where a driver has it worst.
     ///
     /// # Errors
     /// What chain, load or supply do not state.
@@ -163,10 +160,9 @@ impl Case<'_> {
         )?;
         let drivers = f64::from(drivers.max(1));
         let peak = self.peak_into(load, Mains::Nominal)?;
-        let base = bank
-            .demand(peak.amps)
+        // a gain that ends before the peak is told as such
+        bank.demand(peak.amps)
             .map_err(|e| no_gain(&output.device(side).owner.name, &e))?;
-        let gain = peak.amps / base * drivers;
         let vbe = Self::vbe(output.device(side));
         let nothing = || {
             Needs::because(format!(
@@ -174,38 +170,29 @@ impl Case<'_> {
                 load.name, rail.0
             ))
         };
-        let alone = Bank::even(1, Ohm::ZERO).ok_or_else(nothing)?;
-        let used = |z: Impedance| {
-            let amplitude = drop.burst(rail, z.modulus())?;
-            let scaled = Impedance {
-                resistance: z.resistance * gain,
-                reactance: z.reactance * gain,
+        let template = load.minimum_seen();
+        let walked = |frequency, seen: Impedance| {
+            let amplitude = drop.burst(rail, seen.modulus()).ok_or_else(nothing)?;
+            let spot = Spot {
+                frequency,
+                seen,
+                ..template
             };
-            Some(
-                allowance
-                    .usage(&Locus::new(&alone, rail - vbe, amplitude, scaled)?)
-                    .used,
-            )
-        };
-        let found = load
-            .worst(self.band()?, |_, z| used(z).unwrap_or(f64::NAN))
-            .ok_or_else(nothing)?;
-        let mut worst: Option<DriverUse> = None;
-        for spot in [found, load.minimum_seen()] {
-            let amplitude = drop.burst(rail, spot.seen.modulus()).ok_or_else(nothing)?;
-            let here = self.driver_locus(
+            self.driver_locus(
                 &bank,
                 spot,
                 (rail, vbe, amplitude),
                 drivers,
                 allowance,
                 side,
-            )?;
-            if worst.is_none_or(|w| here.point.used > w.point.used) {
-                worst = Some(here);
-            }
-        }
-        worst.ok_or_else(nothing)
+            )
+        };
+        let found = load
+            .worst(self.band()?, |f, z| {
+                walked(f, z).map_or(f64::NAN, |u| u.point.used)
+            })
+            .ok_or_else(nothing)?;
+        walked(found.frequency, found.seen)
     }
 
     fn driver_locus(
