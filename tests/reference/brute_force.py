@@ -9,7 +9,9 @@ in `brute/`, numpy and scipy only, none of the program's shortcuts). A table is 
 """
 
 import argparse
+import concurrent.futures
 import json
+import os
 import pathlib
 import subprocess
 import sys
@@ -36,7 +38,7 @@ RULES = {
     "current.device-share": (SAME, "stress rating used", ""),
     "current.emitter-mean": (SAME, "stress rating used", ""),
     "current.rectifier-mean": (SAME, "stress rating used", ""),
-    "current.rectifier-surge": (2e-3, "used", "fixed steps; how long the tail of the I2t is counted is not defined"),
+    "current.rectifier-surge": (1e-3, "used", "fixed steps; the march ends 0.6 s after the bypass, before the last of the I2t"),
     "current.reservoir-ripple": (2e-5, "stress rating used", "the signal's form factor is stated to four digits: 0.3856"),
     "current.transformer-duty": (SAME, "stress rating used", ""),
     "current.fuse-rms": (SAME, "stress rating used", ""),
@@ -93,6 +95,7 @@ def main():
     ask.add_argument("--derate", default="derate", help="the binary to check")
     ask.add_argument("--count", type=int, default=200)
     ask.add_argument("--seed", type=int, default=1)
+    ask.add_argument("--jobs", type=int, default=os.cpu_count() or 1, help="processes")
     ask.add_argument("--keep", help="write the specs to this folder and leave them")
     ask.add_argument("--quick", action="store_true", help="leave out the published cases")
     ask.add_argument("--show", type=int, default=3, help="disagreements shown for each rule")
@@ -105,7 +108,7 @@ def main():
         folder.mkdir(parents=True, exist_ok=True)
         builds = [build.generate(options.seed, k, folder) for k in range(options.count)]
         theirs, refused = said(options.derate, folder)
-        together = [margins.bottom_of_band(builds), margins.switching_on(builds)]
+        ours = work(builds, options.jobs)
         table = {rule: [] for rule in options.rules}
         unchecked = {}
         compared = 0
@@ -116,10 +119,7 @@ def main():
                 failed += 1
                 continue
             compared += 1
-            mine = margins.expected(b)
-            for more in together:
-                mine.update(more.get(k, {}))
-            compare(b, mine, answer, table, unchecked)
+            compare(b, ours[k], answer, table, unchecked)
     failed += refused
     failed += report(table, unchecked, options.show)
     if compared < options.count:
@@ -127,6 +127,24 @@ def main():
         failed += 1
     print(f"{compared} builds, seed {options.seed}:", "agreed" if not failed else f"{failed} failures")
     return 1 if failed else 0
+
+
+def work(builds, jobs):
+    """Every margin of every build, worked in so many processes; a process takes every n-th build."""
+    shares = [builds[k::jobs] for k in range(jobs)]
+    with concurrent.futures.ProcessPoolExecutor(jobs) as pool:
+        done = list(pool.map(together, shares))
+    return [done[k % jobs][k // jobs] for k in range(len(builds))]
+
+
+def together(builds):
+    """The margins of some builds; what marches in time is marched for all of them side by side."""
+    marched = [margins.bottom_of_band(builds), margins.switching_on(builds)]
+    found = [margins.expected(b) for b in builds]
+    for k, mine in enumerate(found):
+        for more in marched:
+            mine.update(more.get(k, {}))
+    return found
 
 
 def compare(b, mine, answer, table, unchecked):

@@ -4,7 +4,7 @@
 use std::rc::Rc;
 
 use super::case::{Case, Side};
-use super::devices::gain;
+use super::devices::{gain, idle_of};
 use super::signal::Duty;
 use crate::build::Needs;
 use crate::build::parts::{Flavour, Stage as Stated, both};
@@ -27,14 +27,15 @@ pub fn no_gain(device: &str, why: &NoGain) -> Needs {
 }
 
 impl Case<'_> {
-    /// One side of a bipolar stage as the chain sees it: gain, devices, and what its base-emitter
-    /// resistor takes.
+    /// One side of a bipolar stage as the chain sees it: gain, devices, and the standing current of the
+    /// stage before it: what its base-emitter resistor takes, or the idle current stated for the stage
+    /// before, the greater.
     ///
     /// # Errors
     /// What the stage does not state.
-    pub fn follower(&self, stage: &Stated, side: Side) -> Result<Stage, Needs> {
+    pub fn follower(&self, stage: &Rc<Stated>, side: Side) -> Result<Stage, Needs> {
         let device = stage.device(side);
-        let standing = match stage.base_emitter.get() {
+        let through_resistor = match stage.base_emitter.get() {
             None => Amp::ZERO,
             // the least resistor takes the most
             Some(r) => standing_current(Self::vbe(device), r.ohm.low).ok_or_else(|| {
@@ -44,6 +45,7 @@ impl Case<'_> {
                 ))
             })?,
         };
+        let standing = through_resistor.max(self.idle_before(stage)?);
         if device.flavour == Flavour::Mosfet {
             return Err(Needs::because(format!(
                 "{} is a MOSFET: its gate takes no steady current",
@@ -61,6 +63,25 @@ impl Case<'_> {
         })
     }
 
+    /// The idle current stated for the stage before a follower, all its devices of a side together; zero
+    /// where none is stated.
+    fn idle_before(&self, stage: &Rc<Stated>) -> Result<Amp, Needs> {
+        let followers = self.followers();
+        let before = followers
+            .iter()
+            .skip_while(|s| !Rc::ptr_eq(s, stage))
+            .nth(1);
+        let Some(before) = before else {
+            return Ok(Amp::ZERO);
+        };
+        let groups = before.idle.get().map(Vec::as_slice).unwrap_or_default();
+        let mut most = Amp::ZERO;
+        for group in groups {
+            most = most.max(idle_of(before, group)?);
+        }
+        Ok(most * f64::from(before.pairs.get().copied().unwrap_or(1)))
+    }
+
     /// The followers from the output back: output, driver, predriver, as far as they are named.
     #[must_use]
     pub fn followers(&self) -> Vec<&Rc<Stated>> {
@@ -75,7 +96,8 @@ impl Case<'_> {
         .collect()
     }
 
-    /// Mean heat of ONE driver device of a side at a signal, on a mean rail.
+    /// The greatest mean heat of ONE driver device of a side at any amplitude up to that of a signal,
+    /// on a mean rail, and that amplitude: a driver is hottest at some four tenths of full power.
     ///
     /// # Errors
     /// What the chain does not state.
@@ -85,7 +107,7 @@ impl Case<'_> {
         rail: Volt,
         amplitude: Volt,
         load: Impedance,
-    ) -> Result<Watt, Needs> {
+    ) -> Result<(Volt, Watt), Needs> {
         let output = self.output();
         let driver = self
             .build
@@ -105,19 +127,20 @@ impl Case<'_> {
         .ok_or_else(|| Needs::because("the rail leaves the driver no voltage"))?;
         // a loaded rail clips what an unsagged one would carry
         let most = (rail - Self::vbe(device)) * (1.0 - 1e-12);
-        let heat = model
-            .mean_heat(amplitude.min(most))
+        let (worst, heat) = model
+            .worst_mean_heat(amplitude.min(most))
             .map_err(|e| no_gain(&device.owner.name, &e))?;
-        Ok(heat / f64::from(pairs.max(1)))
+        Ok((worst, heat / f64::from(pairs.max(1))))
     }
 
-    /// Watts that the stages before the output put on the BUILD'S heatsink, of one channel, at a duty.
+    /// Watts that the stages before the output put on the BUILD'S heatsink, of one channel, at a duty on
+    /// a mean rail.
     /// A stage with a sink of its own, or none declared, puts none. Predrivers carry a few per cent of
     /// the driver's current and are left out.
     ///
     /// # Errors
     /// What those stages do not state.
-    pub fn other_watts(&self, duty: &Duty) -> Result<Watt, Needs> {
+    pub fn other_watts(&self, rail: Volt, duty: &Duty) -> Result<Watt, Needs> {
         let amplifier = &self.build.amplifier;
         let mut watts = Watt::ZERO;
         if let Some(driver) = &amplifier.driver
@@ -126,7 +149,8 @@ impl Case<'_> {
         {
             let pairs = f64::from(*driver.pairs.need()?);
             for side in Side::BOTH {
-                watts += self.driver_heat(side, duty.rail, duty.amplitude, duty.load)? * pairs;
+                let (_, one) = self.driver_heat(side, rail, duty.amplitude, duty.load)?;
+                watts += one * pairs;
             }
         }
         if let Some(stage) = &amplifier.voltage_amplifier
@@ -134,7 +158,7 @@ impl Case<'_> {
             && stage.insulator.get().is_some()
         {
             // the voltage stage and its current source each stand between a rail and the output
-            watts += duty.rail * *stage.output_current.need()? * 2.0;
+            watts += rail * *stage.output_current.need()? * 2.0;
         }
         Ok(watts)
     }

@@ -78,8 +78,8 @@ impl Case<'_> {
     /// What the build does not state.
     pub fn heat_at(&self, load: &Driven, fraction: f64, mains: Mains) -> Result<Heat, Needs> {
         let duty = self.signal_at(load, fraction)?;
-        let (idle, other) = both(self.idle(), self.other_watts(&duty))?;
         let rail = self.mean_rail(mains, duty.rail_current)?;
+        let (idle, other) = both(self.idle(), self.other_watts(rail, &duty))?;
         let signal = self.sine(duty.amplitude, duty.load)?;
         // what the emitter resistors do not take, the devices do
         let least = least_resistors(self.output())?;

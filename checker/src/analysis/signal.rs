@@ -25,8 +25,6 @@ pub struct Duty {
     pub power: Watt,
     /// Mean current on each rail of one supply, all its channels, idle included.
     pub rail_current: Amp,
-    /// Mean rail then, nominal mains.
-    pub rail: Volt,
 }
 
 impl Case<'_> {
@@ -103,7 +101,6 @@ impl Case<'_> {
             .ok_or_else(|| Needs::because("the duty signal cannot be worked out"))?;
         let peak = amplitude / resistance;
         let rail_current = self.rail_current(peak)?;
-        let rail = self.mean_rail(Mains::Nominal, rail_current)?;
         Ok(Duty {
             fraction,
             amplitude,
@@ -111,7 +108,6 @@ impl Case<'_> {
             load: Impedance::resistive(resistance),
             power: power(amplitude, resistance),
             rail_current,
-            rail,
         })
     }
 

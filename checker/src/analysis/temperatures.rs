@@ -48,6 +48,8 @@ pub struct PeakJunction {
 /// A driver at the duty.
 #[derive(Clone, Copy, Debug)]
 pub struct DriverHeat {
+    /// Peak output at which it is hottest, up to that of the duty.
+    pub amplitude: Volt,
     /// Mean watts of one device.
     pub watts: Watt,
     /// What it is screwed to.
@@ -187,7 +189,7 @@ impl Case<'_> {
                 "the driver's heat depends on the charge of the gates, which is not stated",
             ));
         }
-        let (watts, mounting) = both(
+        let ((amplitude, watts), mounting) = both(
             self.driver_heat(side, heat.rail, heat.duty.amplitude, heat.duty.load),
             mounting(stage, side),
         )?;
@@ -207,6 +209,7 @@ impl Case<'_> {
             .temperatures(sink, watts)
             .ok_or_else(|| Needs::because("thermal resistances must not be negative"))?;
         Ok(DriverHeat {
+            amplitude,
             watts,
             sink,
             case: found.case,

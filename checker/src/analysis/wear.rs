@@ -103,7 +103,7 @@ impl Case<'_> {
     /// The most loaded emitter resistor of either side at the duty.
     ///
     /// The signal's part is mean(i²)·RE/2N², times the square of the share; the idle current's Iq²·RE
-    /// is added whole.
+    /// is added whole. The resistor is the worst of its tolerance, with the share that follows from it.
     ///
     /// # Errors
     /// What output stage or build do not state.
@@ -116,23 +116,21 @@ impl Case<'_> {
         )?;
         let rated = stage.emitter.part("W", |r| r.watt)?;
         let signal = self.sine(heat.duty.amplitude, heat.duty.load)?;
+        let mean = heat.duty.peak / crate::physics::math::PI;
         let mut worst: Option<(Watt, f64, Watt)> = None;
         for side in super::case::Side::BOTH {
-            let bank = bench.bank(side);
-            let pairs = f64::from(bank.devices());
-            let mean = heat.duty.peak / crate::physics::math::PI;
-            let share = bank.share(mean);
-            // alone, the greatest resistor takes the most; among several, the least one has the share
-            let spread = if bank.devices() == 1 {
-                resistor.ohm.high / resistor.ohm.nominal
-            } else {
-                1.0
-            };
-            let own = bank.share(idle * pairs) * idle.0;
-            let still = Watt(own * own * resistor.ohm.high.0);
-            let watts = signal.emitter_watts(bank, share) * spread + still;
-            if worst.is_none_or(|w| watts > w.0) {
-                worst = Some((watts, share, still));
+            // a low resistor takes more of the current, a high one more watts from the same current
+            for own in [resistor.ohm.low, resistor.ohm.nominal, resistor.ohm.high] {
+                let Some(bank) = bench.bank(side).with_own_resistor(own) else {
+                    continue;
+                };
+                let share = bank.share(mean);
+                let alone = idle * bank.share(idle * f64::from(bank.devices()));
+                let still = Watt(alone.0 * alone.0 * own.0);
+                let watts = signal.emitter_watts(bank.devices(), own, share) + still;
+                if worst.is_none_or(|w| watts > w.0) {
+                    worst = Some((watts, share, still));
+                }
             }
         }
         let (watts, share, still) = worst.ok_or_else(|| stage.pairs.missing())?;

@@ -264,12 +264,13 @@ impl Signal {
         }
     }
 
-    /// Mean watts in each emitter (source) resistor, mean(i²)·RE/2N²; a sine puts Î²·RE/4 of its own
-    /// peak current into it. `share` is how much more than its even part the device carries.
+    /// Mean watts in the emitter (source) resistor of one of a bank's `devices`, mean(i²)·RE/2N²; a sine
+    /// puts Î²·RE/4 of its own peak current into it. `share` is how much more than its even part the
+    /// device carries.
     #[must_use]
-    pub fn emitter_watts(&self, bank: &Bank, share: f64) -> Watt {
-        let devices = f64::from(bank.devices());
-        Watt(self.mean_square * 0.5 * bank.emitter().0 * share * share / (devices * devices))
+    pub fn emitter_watts(&self, devices: u32, resistor: Ohm, share: f64) -> Watt {
+        let part = share / f64::from(devices.max(1));
+        Watt(self.mean_square * 0.5 * resistor.0 * part * part)
     }
 }
 

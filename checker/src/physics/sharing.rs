@@ -180,6 +180,16 @@ impl Bank {
         })
     }
 
+    /// The same bank with another resistor in the deviating device's own emitter. `None` for a negative
+    /// one.
+    #[must_use]
+    pub fn with_own_resistor(&self, own: Ohm) -> Option<Self> {
+        (own >= Ohm::ZERO && own.is_finite()).then(|| Self {
+            low: own,
+            ..self.clone()
+        })
+    }
+
     /// N.
     #[must_use]
     pub fn devices(&self) -> u32 {

@@ -138,17 +138,18 @@ def _load(rng, index, name, folder, kinds, base=None):
     return load
 
 
-def _points_drop(rng):
-    """The drop as a person states it: one figure, or two or three points."""
+def _points_drop(rng, peak_amps, emitters):
+    """The drop as a person states it: one figure, or two or three points; the emitter resistors' is in it."""
     first = tidy(rng.uniform(1.0, 2.5), 3)
     n = int(rng.integers(1, 4))
-    points = [(first, 0.0)]
     if n == 1:
-        return points
+        return [(tidy(first + 1.3 * peak_amps * emitters, 3), 0.0)]
+    points = [(first, 0.0)]
     amps, volts = 0.0, first
     for _ in range(n - 1):
-        amps = tidy(amps + rng.uniform(2, 6), 2)
-        volts = tidy(volts + rng.uniform(0.4, 2.0), 3)
+        step = rng.uniform(2, 6)
+        amps = tidy(amps + step, 2)
+        volts = tidy(volts + rng.uniform(0.4, 2.0) + step * emitters, 3)
         points.append((volts, amps))
     return points
 
@@ -255,7 +256,7 @@ def generate(seed, index, folder):
         tail=tidy(rng.uniform(0.002, 0.005), 2), comp=float(rng.choice([47, 68, 100])) * 1e-12,
     )
 
-    b["drop"] = _points_drop(rng)
+    b["drop"] = _points_drop(rng, peak_amps, re_ohms / pairs)
     bottom = float(rng.choice([20, 25, 40]))
     b["band"] = (bottom, 20_000.0)
     b["rated"] = []

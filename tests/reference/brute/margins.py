@@ -262,7 +262,7 @@ def clip(case, ohms, cap):
         low *= 0.5
         if low < 0.01:
             raise Unreached("no clean amplitude")
-    return brentq(headroom, low, high, xtol=1e-9)
+    return brentq(headroom, low, high, xtol=1e-8, rtol=1e-9)
 
 
 def rated_power(case, worst):
@@ -656,7 +656,7 @@ def switching_on(builds):
                 for cap in (min(case.cap_corners), max(case.cap_corners)):
                     for idle in (0.0, case.share_channels * case.pairs * case.idle):
                         rows.append((k, case, level, idle > 0, turns))
-                        starts.append(supply_.Start(case.rail(level, cap), 2 * s["soft"] * turns**2, s["bypass"], idle, s["bypass"] + 0.3))
+                        starts.append(supply_.Start(case.rail(level, cap), 2 * s["soft"] * turns**2, s["bypass"], idle, s["bypass"] + 0.6))
     found = {}
     for crest in (True, False):
         got = supply_.switch_on(starts, crest)
@@ -674,8 +674,10 @@ def switching_on(builds):
                 limit = s["surge"] ** 2 * 8.3e-3 / 2
                 peak = max(one["early"], one["late"]) / s["surge"]
                 # Of one diode: every second pulse, at most a surge's first half-cycle and half of the rest.
-                surges = (one["first"] + one["before"], one["again"] + one["square"] - one["before"])
-                each = 0.0 if drawn else max(surges) / 2 / limit
+                filled = one["first"] + one["before"]
+                after = one["again"] + one["square"] - one["before"]
+                # Idle current is no part of the first surge; of the second it is the reason.
+                each = (after if drawn else max(filled, after)) / 2 / limit
                 w.below("current.rectifier-surge", "psu rectifier", 100 * max(peak, each), 100.0, 0.8)
     return found
 

@@ -61,10 +61,10 @@ def zoom(function, boxes, points, rounds, shrink):
         got = float(function(*[np.array([a]) for a in at])[0])
         return 1e9 if np.isnan(got) else -got
 
-    for reach in (3e-3, 1e-4, 1e-5):
+    for reach in (3e-3, 1e-4):
         start = best[1][free]
         simplex = np.vstack([start, start + np.diag(reach * np.maximum(np.abs(start), 1e-3))])
-        got = minimize(less, start, method="Nelder-Mead", options=dict(initial_simplex=simplex, xatol=1e-12, fatol=1e-13, maxfev=110))
+        got = minimize(less, start, method="Nelder-Mead", options=dict(initial_simplex=simplex, xatol=1e-8, fatol=1e-9, maxfev=110))
         if -got.fun > best[0]:
             at = best[1].copy()
             at[free] = np.clip(got.x, np.array(lower)[free], np.array(upper)[free])

@@ -59,14 +59,16 @@ def share(mean, count, spread, ohms, low):
         slope = VT * (1 / s + 1 / (count - s)) + mean * (first + ohms / (count - 1))
         return VT * np.log(i1 / i2) + i1 * first - i2 * ohms - spread, slope
 
-    for _ in range(10):
+    for _ in range(5):
         s = 0.5 * (lo + hi)
         over = gap(s)[0] > 0
         hi, lo = np.where(over, s, hi), np.where(over, lo, s)
     s = 0.5 * (lo + hi)
-    for _ in range(6):
+    for _ in range(12):
         miss, slope = gap(s)
-        s = np.clip(s - miss / slope, lo, hi)
+        old, s = s, np.clip(s - miss / slope, lo, hi)
+        if np.max(np.abs(s - old)) < 1e-13:
+            break
     return s
 
 

@@ -184,8 +184,8 @@ class Start:
 def switch_on(starts, at_crest, per_cycle=1600):
     """Empty reservoirs, many supplies marched side by side in small equal steps of the mains.
 
-    The source closes at its crest or at its zero; `idle` is drawn above 10 V. Returns arrays: the
-    greatest amps before and after the bypass, the square of the charging current integrated before
+    The source closes at its crest or at its zero; until the bypass, `idle` is drawn from when a rail has
+    come up to 10 V. Returns arrays: the greatest amps before and after the bypass, the square of the charging current integrated before
     the bypass, to the end of the first half-cycle, over the first half-cycle after the bypass (`again`),
     and to the end, and the rail volts at the bypass.
     """
@@ -200,20 +200,27 @@ def switch_on(starts, at_crest, per_cycle=1600):
     early, late, square, before, first, again, volts = (np.zeros(len(starts)) for _ in range(7))
     switched = np.round(bypass / h).astype(int)
     end = np.round(until / h).astype(int)
+    biased = np.zeros(len(starts), bool)
 
     for k in range(int(end.max()) + 1):
         t = k * h
         soft = k < switched
         total = source + esr + np.where(soft, extra, 0.0)
 
+        biased |= v >= 10.0
+        # A surge at the bypass is taken as charging alone: what is drawn beside it is no part of it.
+        idling = np.where(biased, idle, 0.0)
+        drawn = np.where(soft, idling, 0.0)
+
         def flow(t, v):
-            drawn = np.where(v > 10.0, idle, 0.0)
             i = np.maximum(peak * np.abs(np.sin(w * t + shift)) - fall - v + esr * drawn, 0.0) / total
             return i, (i - drawn) / farads
 
         alive = k <= end
         i0, a = flow(t, v)
-        volts = np.where(k == switched, v - esr * np.where(v > 10.0, idle, 0.0) * (i0 <= 0) + esr * (i0 - np.where(v > 10.0, idle, 0.0)) * (i0 > 0), volts)
+        if np.any(k == switched):
+            last = np.maximum(peak * np.abs(np.sin(w * t + shift)) - fall - v + esr * idling, 0.0) / (source + esr + extra)
+            volts = np.where(k == switched, v + esr * (last - idling), volts)
         i1, b = flow(t + h / 2, v + h / 2 * a)
         i2, c = flow(t + h / 2, v + h / 2 * b)
         i3, d = flow(t + h, v + h * c)

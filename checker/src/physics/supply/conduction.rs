@@ -195,11 +195,13 @@ pub(super) fn turn_on(x: f64, j: f64, from: f64, level: f64) -> Option<f64> {
     at.is_finite().then_some(at.min(greatest))
 }
 
-/// One half-cycle of the mains.
+/// One half-cycle of the mains, or a part of one.
 #[derive(Clone, Copy, Debug)]
 pub(super) struct HalfCycle {
-    /// Level at the zero crossing that ends it.
+    /// Level at its end.
     pub(super) level: f64,
+    /// Charging current s at its end: not zero only where it ends within the conduction.
+    pub(super) current: f64,
     /// Its conduction and the angle at which that ended, if there was any.
     conduction: Option<(Conduction, f64)>,
 }
@@ -211,6 +213,19 @@ impl HalfCycle {
             .map_or(0.0, |(c, end)| c.square(end.min(until).max(c.start)))
     }
 
+    /// The angle at which the level has risen to `level`, if it does so while the rectifier conducts.
+    /// The level sin θ - s rises by (s - j)/x per radian.
+    pub(super) fn rises_to(&self, level: f64) -> Option<f64> {
+        let (conduction, end) = self.conduction?;
+        let gap = |angle: f64| {
+            let (s, _) = conduction.current(angle);
+            let slope = (s - conduction.j) / conduction.x;
+            (level - (sin(angle) - s), -slope)
+        };
+        let crosses = gap(conduction.start).0 > 0.0 && gap(end).0 <= 0.0;
+        crosses.then(|| bracketed_root(gap, conduction.start, end, 0.5 * (conduction.start + end)))
+    }
+
     /// Greatest s.
     pub(super) fn peak(&self) -> f64 {
         self.conduction
@@ -218,27 +233,30 @@ impl HalfCycle {
     }
 }
 
-/// Carries a level from angle `from` (0 to π) to the end of the half-cycle, with j drawn throughout.
-pub(super) fn half_cycle(x: f64, j: f64, from: f64, level: f64) -> HalfCycle {
+/// Carries a level from angle `from` to angle `to` (both 0 to π), with j drawn throughout.
+pub(super) fn half_cycle(x: f64, j: f64, (from, to): (f64, f64), level: f64) -> HalfCycle {
     let fall = j / x;
     let excess = sin(from) - level;
     let on = if excess > 0.0 {
         Some((from, excess))
     } else {
-        turn_on(x, j, from, level).map(|at| (at, 0.0))
+        turn_on(x, j, from, level)
+            .filter(|&at| at < to)
+            .map(|at| (at, 0.0))
     };
     let Some((start, current)) = on else {
         return HalfCycle {
-            level: level - fall * (PI - from),
+            level: level - fall * (to - from),
+            current: 0.0,
             conduction: None,
         };
     };
     let conduction = Conduction::new(x, j, start, current);
-    let end = conduction.turn_off(PI);
+    let end = conduction.turn_off(to);
     let left = conduction.current(end).0.max(0.0);
-    let level = sin(end) - left - fall * (PI - end);
     HalfCycle {
-        level,
+        level: sin(end) - left - fall * (to - end),
+        current: if end < to { 0.0 } else { left },
         conduction: Some((conduction, end)),
     }
 }
@@ -304,7 +322,7 @@ fn first_guess(j: f64, fall: f64) -> (f64, f64) {
 fn bracketed_angles(x: f64, j: f64, floor: f64) -> Option<(f64, f64)> {
     let gain = |alpha: f64| {
         let level = sin(alpha) + j / x * alpha;
-        half_cycle(x, j, 0.0, level).level - level
+        half_cycle(x, j, (0.0, PI), level).level - level
     };
     let alpha = root(gain, asin(floor.clamp(0.0, 1.0)), FRAC_PI_2, 1e-15)?;
     Some((alpha, Conduction::new(x, j, alpha, 0.0).turn_off(PI)))
@@ -380,7 +398,7 @@ mod tests {
         ) {
             let (x, j) = (exp(lx), exp(lj));
             let from = if crest { FRAC_PI_2 } else { 0.0 };
-            let found = half_cycle(x, j, from, level);
+            let found = half_cycle(x, j, (from, PI), level);
             // E = 1, Vd = 0, R = 1, so C = x at an angular frequency of 1.
             let twin = Twin { crest: 1.0, drop: 0.0, source: 1.0, esr: 0.0, reservoir: x, omega: 1.0 };
             let (mut square, mut peak) = (0.0, 0.0f64);

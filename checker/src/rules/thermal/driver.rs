@@ -8,6 +8,7 @@ use crate::analysis::{Case, Margins, Stress};
 use crate::build::Needs;
 use crate::build::parts::{Stage, both};
 use crate::finding::{Related, Witness};
+use crate::physics::output_stage::power;
 use crate::rule::{Allow, Remedy, Series};
 
 rule! {
@@ -88,8 +89,8 @@ fn stress(
             mains_v: case.mains_volts(Mains::Nominal),
             load: Some(load.name.clone()),
             frequency_hz: Some(1000.0),
-            amplitude_v: Some(heat.duty.amplitude.0),
-            power_w: Some(heat.duty.power.0),
+            amplitude_v: Some(found.amplitude.0),
+            power_w: Some(power(found.amplitude, heat.duty.load.modulus()).0),
             duty: Some(case.duty().shown.clone()),
             ambient_c: Some(case.hottest()?.0),
             sink_c: Some(found.sink.0),
