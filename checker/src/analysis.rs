@@ -17,6 +17,7 @@ pub mod heat;
 pub mod limits;
 pub mod loads;
 pub mod margins;
+pub mod memory;
 pub mod rails;
 pub mod reach;
 pub mod safe_area;
@@ -28,3 +29,4 @@ pub mod wear;
 
 pub use case::{Case, Tables};
 pub use margins::{Margins, Stress};
+pub use memory::Memory;

@@ -23,8 +23,9 @@ pub mod waiver;
 
 use std::collections::BTreeSet;
 use std::path::{Path, PathBuf};
+use std::sync::Arc;
 
-use analysis::{Case, Margins, Tables, derived};
+use analysis::{Case, Margins, Memory, Tables, derived};
 use build::parts::Reader;
 use build::statement::Declared;
 use build::{Project, View, project};
@@ -46,6 +47,8 @@ pub struct Options {
     pub changes: bool,
     /// The folder that no path may leave; the folder of the file where not given.
     pub root: Option<PathBuf>,
+    /// What earlier checks solved. Give the same to every check of a run: results do not depend on it.
+    pub memory: Arc<Memory>,
 }
 
 /// What a check came to.
@@ -188,7 +191,7 @@ fn solve(
                 regions.iter().map(Some).collect()
             };
             for region in regions {
-                let case = Case::new(&build, &policy, region, tables);
+                let case = Case::new(&build, &policy, region, tables, &options.memory);
                 for registered in rules::ALL {
                     if let Check::Build(check) = registered.check {
                         check(&case, &mut margins);

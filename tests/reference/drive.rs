@@ -5,7 +5,7 @@
 //! numerical route.
 
 use derate::physics::drive::{
-    Driver, GainCurve, NoGain, Stage, slew_given, slew_needed, standing_current,
+    Driver, GainCurve, NoGain, Screen, Stage, slew_given, slew_needed, standing_current,
 };
 use derate::physics::unit::{Amp, Farad, Hertz, Ohm, Volt};
 
@@ -140,7 +140,10 @@ fn driver_peak_on_the_locus() {
     };
     let phase = 60.0_f64.to_radians();
     let driver = Driver::new(&bank, Volt(35.0), Volt(0.0), Ohm(4.0), phase).unwrap();
-    let worst = driver.worst_on_locus(Volt(35.0), |v, i| v.0 * i.0).unwrap();
+    let screen = Screen::new(&bank, Amp(35.0 / 4.0), Volt(70.0), |v| v.0);
+    let worst = driver
+        .worst_on_locus(Volt(35.0), &screen, |v, i| v.0 * i.0)
+        .unwrap();
     near(worst.used * 50.0, 275.34, 0.005);
     near(worst.volts.0, 41.078, 0.005);
     near(worst.amps.0 * 50.0, 6.7029, 0.001);

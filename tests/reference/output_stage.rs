@@ -322,7 +322,11 @@ fn emitter_resistor_watts() {
     for (devices, watts) in [(1, 1.375), (2, 0.34375)] {
         let bank = Bank::even(devices, Ohm(0.22)).unwrap();
         let signal = Signal::sine(Volt(40.0), resistor(8.0)).unwrap();
-        near(signal.emitter_watts(bank.devices(), bank.emitter(), 1.0).0, watts, 1e-12);
+        near(
+            signal.emitter_watts(bank.devices(), bank.emitter(), 1.0).0,
+            watts,
+            1e-12,
+        );
     }
 }
 

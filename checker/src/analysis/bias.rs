@@ -14,6 +14,7 @@ use crate::physics::bias::{
     BASE_EMITTER_DRIFT, Heating, THERMAL_VOLTAGE, ThermalLoop, disagreement,
 };
 use crate::physics::heat::sink_temperature;
+use crate::physics::load::Impedance;
 use crate::physics::math::ln;
 use crate::physics::unit::{Amp, KelvinPerWatt, Ohm, Volt, VoltPerKelvin, Watt};
 
@@ -107,7 +108,12 @@ impl Case<'_> {
         }
         let ((sink, channels), air) = both(self.heatsink(), self.air_inside())?;
         let devices = 2.0 * pairs * f64::from(channels);
-        let watts: Watt = rail * idle * devices;
+        // Drivers at rest warm it too. Where theirs is not known it is left out, which is the safe side:
+        // a cooler sink has the greater resistance.
+        let quiet = Impedance::resistive(Ohm(8.0));
+        let others = self.other_watts(rail, Volt::ZERO, quiet);
+        let watts: Watt =
+            rail * idle * devices + others.unwrap_or(Watt::ZERO) * f64::from(channels);
         let model = sink_model(sink)?;
         let temperature = sink_temperature(&model, air, watts).ok_or_else(|| {
             Needs::because(format!(

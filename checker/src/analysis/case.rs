@@ -8,8 +8,8 @@ use std::rc::Rc;
 use super::devices::Bench;
 use super::heat::Heat;
 use super::loads::Driven;
+use super::memory::Memory;
 use super::rails::Rails;
-use super::safe_area::Remembered;
 use crate::build::Needs;
 use crate::build::parts::{
     Build, Device, Duty, Field, Heatsink, Protection, Region, Stage, Supply,
@@ -74,12 +74,13 @@ pub struct Case<'a> {
     pub region: Option<&'a Region>,
     /// Impedance tables.
     pub tables: &'a Tables,
+    /// What was solved before.
+    pub memory: &'a Memory,
     assumed: RefCell<Vec<Assumed>>,
     pub(super) rails: OnceCell<Result<Rails, Needs>>,
     pub(super) loads: OnceCell<Vec<Result<Driven, Needs>>>,
     pub(super) bench: OnceCell<Result<Bench, Needs>>,
     pub(super) heat: OnceCell<Vec<Result<Heat, Needs>>>,
-    pub(super) uses: RefCell<Vec<Remembered>>,
 }
 
 impl<'a> Case<'a> {
@@ -90,18 +91,19 @@ impl<'a> Case<'a> {
         policy: &'a Policy,
         region: Option<&'a Region>,
         tables: &'a Tables,
+        memory: &'a Memory,
     ) -> Self {
         Self {
             build,
             policy,
             region,
             tables,
+            memory,
             assumed: RefCell::default(),
             rails: OnceCell::new(),
             loads: OnceCell::new(),
             bench: OnceCell::new(),
             heat: OnceCell::new(),
-            uses: RefCell::default(),
         }
     }
 

@@ -5,7 +5,6 @@ use std::rc::Rc;
 
 use super::case::{Case, Side};
 use super::devices::{gain, idle_of};
-use super::signal::Duty;
 use crate::build::Needs;
 use crate::build::parts::{Flavour, Stage as Stated, both};
 use crate::physics::drive::{Driver, NoGain, Stage, standing_current};
@@ -133,14 +132,14 @@ impl Case<'_> {
         Ok((worst, heat / f64::from(pairs.max(1))))
     }
 
-    /// Watts that the stages before the output put on the BUILD'S heatsink, of one channel, at a duty on
+    /// Watts that the stages before the output put on the BUILD'S heatsink, of one channel, at a signal on
     /// a mean rail.
     /// A stage with a sink of its own, or none declared, puts none. Predrivers carry a few per cent of
     /// the driver's current and are left out.
     ///
     /// # Errors
     /// What those stages do not state.
-    pub fn other_watts(&self, rail: Volt, duty: &Duty) -> Result<Watt, Needs> {
+    pub fn other_watts(&self, rail: Volt, amplitude: Volt, load: Impedance) -> Result<Watt, Needs> {
         let amplifier = &self.build.amplifier;
         let mut watts = Watt::ZERO;
         if let Some(driver) = &amplifier.driver
@@ -149,7 +148,7 @@ impl Case<'_> {
         {
             let pairs = f64::from(*driver.pairs.need()?);
             for side in Side::BOTH {
-                let (_, one) = self.driver_heat(side, rail, duty.amplitude, duty.load)?;
+                let (_, one) = self.driver_heat(side, rail, amplitude, load)?;
                 watts += one * pairs;
             }
         }

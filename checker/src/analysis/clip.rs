@@ -14,6 +14,16 @@ use crate::physics::unit::{Amp, Hertz, Ohm, Volt, Watt};
 /// Most times the phase of the signal against the mains is looked for anew.
 const MOST_PHASES: u32 = 8;
 
+/// Where the search for the level at the bottom of the band starts, as a multiple of that at mid-band.
+const ABOVE: f64 = 1.01;
+
+/// Phases are kept whose headroom at the first, too high level is within this part of the unloaded rail
+/// of the least: on the way down to the level that holds they change places by far less.
+const PROMISING: f64 = 0.015;
+
+/// How far beside the worst phase it is looked for again, in steps of the search.
+const NEAR_STEP: f64 = 0.2;
+
 /// How exactly a clip level is found, as a part of the unloaded rail.
 const EXACT: f64 = 1e-7;
 
@@ -169,9 +179,9 @@ impl Case<'_> {
     /// The same at the bottom of the band: the greatest sine for which the rail never falls below
     /// v_out + drop over the signal period, in the worst phase of the signal against the mains.
     ///
-    /// The phase is searched at a level, the level then lowered at that phase until the rail just
-    /// holds, and the phase searched again: each level found is too high or right, so the last, at
-    /// which the worst phase holds too, is right.
+    /// All phases are searched roughly at a level that is too high, the level then lowered at the worst of
+    /// them until the rail just holds; there the phases that were within some hundredths of the worst are
+    /// searched exactly, and the level lowered again, until the worst phase holds too.
     ///
     /// # Errors
     /// What supply, drop or output stage lack: given rails say nothing of it.
@@ -211,33 +221,17 @@ impl Case<'_> {
                 }
             }
         };
-        let collapsed = -most.0;
-        let mut amplitude = self.sustained(mains, driven, seen)?.min(most);
-        for _ in 0..MOST_PHASES {
-            let worst = low
-                .rail
-                .least_headroom(low.load(amplitude), needed(amplitude));
-            let phase = match worst {
-                Some(headroom) if headroom.least.0 >= -EXACT * most.0 => return Ok(amplitude),
-                Some(headroom) => headroom.mains_rad,
-                // so much is drawn that the rail is gone: the level is far too high in any phase
-                None => 0.0,
-            };
-            let spare = |v: f64| {
-                let v = Volt(v);
-                low.rail
-                    .least_headroom_at(low.load(v), phase, needed(v))
-                    .map_or(collapsed, |h| h.least.0)
-            };
-            let found = root(spare, 0.0, amplitude.0, 0.1 * EXACT * most.0).map(Volt);
-            // where the level holds at this phase, rounding alone decided
-            amplitude = found.unwrap_or(amplitude * (1.0 - EXACT));
-        }
-        Ok(amplitude)
+        // a little above what the mean current would leave, which the low band seldom exceeds
+        let start = (self.sustained(mains, driven, seen)? * ABOVE).min(most);
+        let inputs = (&low, &drop, most, start);
+        self.memory.recall("sag", &inputs, || {
+            low.sustained(start, most, needed).ok_or_else(fails)
+        })
     }
 }
 
 /// A rail and who draws on it.
+#[derive(Debug)]
 struct Low {
     rail: Rail,
     standing: Amp,
@@ -255,5 +249,66 @@ impl Low {
             frequency: self.frequency,
             draw: self.draw,
         }
+    }
+
+    /// The greatest amplitude up to `start` at which the rail holds in every phase; `most` is the
+    /// unloaded rail less the drop.
+    fn sustained<N: Fn(f64) -> Volt>(
+        &self,
+        start: Volt,
+        most: Volt,
+        needed: impl Fn(Volt) -> N,
+    ) -> Option<Volt> {
+        let exact = EXACT * most.0;
+        let spare = |amplitude: Volt, phase: f64| {
+            self.rail
+                .least_headroom_at(self.load(amplitude), phase, needed(amplitude))
+                .map_or(-most.0, |h| h.least.0)
+        };
+        // The rail loses at least what the output does, so the level is at most short of by what is
+        // missing of headroom.
+        let lowered = |amplitude: Volt, missing: f64, phase: f64| {
+            let f = |v: f64| spare(Volt(v), phase);
+            let near = (amplitude.0 - missing * (1.0 + 1e-3) - exact).max(0.0);
+            let from = if f(near) >= 0.0 { near } else { 0.0 };
+            let found = root(f, from, amplitude.0, 0.1 * exact).map(Volt);
+            // where the level holds at this phase, rounding alone decided
+            found.unwrap_or(amplitude * (1.0 - EXACT))
+        };
+        let mut amplitude = start;
+        let mut scanned = None;
+        for _ in 0..MOST_PHASES {
+            scanned = self
+                .rail
+                .scan_headroom(self.load(amplitude), &needed(amplitude));
+            match &scanned {
+                // so much is drawn that the rail is gone: the level is far too high in any phase
+                None => amplitude = lowered(amplitude, most.0, 0.0),
+                Some(scan) if amplitude < most && scan.lowest() > 0.0 => amplitude = most,
+                Some(_) => break,
+            }
+        }
+        let scan = scanned?;
+        let mut phases = scan.promising(PROMISING * most.0);
+        let first = *phases.first()?;
+        let missing = -spare(amplitude, first);
+        if missing > 0.0 {
+            amplitude = lowered(amplitude, missing, first);
+        }
+        let mut step = scan.step;
+        for _ in 0..MOST_PHASES {
+            let needs = needed(amplitude);
+            let phase = self
+                .rail
+                .lowest_near(self.load(amplitude), &phases, step, &needs)?;
+            let missing = -spare(amplitude, phase);
+            if missing <= exact {
+                return Some(amplitude);
+            }
+            amplitude = lowered(amplitude, missing, phase);
+            // the level hardly moved, and with it the worst phase
+            (phases, step) = (vec![phase], NEAR_STEP * scan.step);
+        }
+        Some(amplitude)
     }
 }

@@ -1,7 +1,6 @@
 //! The drive chain at full output: what each follower carries and asks for, and the driver's locus.
 //! Must not know what is allowed.
 
-use std::cell::Cell;
 use std::rc::Rc;
 
 use super::case::{Case, Side};
@@ -10,7 +9,7 @@ use super::loads::{Driven, Spot};
 use super::rails::Mains;
 use crate::build::Needs;
 use crate::build::parts::{Flavour, Stage as Stated, both, three};
-use crate::physics::drive::{Driver, LocusPoint, Stage};
+use crate::physics::drive::{Driver, LocusPoint, NoGain, Screen, Stage};
 use crate::physics::load::Impedance;
 use crate::physics::safe_area::{Allowance, Coverage};
 use crate::physics::unit::{Amp, Hertz, Ohm, Volt};
@@ -170,84 +169,101 @@ impl Case<'_> {
                 load.name, rail.0
             ))
         };
-        let template = load.minimum_seen();
-        let walked = |frequency, seen: Impedance| {
-            let amplitude = drop.burst(rail, seen.modulus()).ok_or_else(nothing)?;
-            let spot = Spot {
-                frequency,
-                seen,
-                ..template
-            };
-            self.driver_locus(
-                &bank,
-                spot,
-                (rail, vbe, amplitude),
-                drivers,
-                allowance,
-                side,
-            )
+        let walk = Walk {
+            bank: &bank,
+            rail,
+            vbe,
+            drivers,
+            allowance,
         };
-        let found = load
-            .worst(self.band()?, |f, z| {
-                walked(f, z).map_or(f64::NAN, |u| u.point.used)
-            })
-            .ok_or_else(nothing)?;
-        walked(found.frequency, found.seen)
+        let highest = rail - vbe + peak.volts.max(self.greatest_output(Mains::Nominal)?);
+        let screen = walk.screen(peak.amps, highest);
+        let burst = |seen: Impedance| drop.burst(rail, seen.modulus());
+        let band = self.band()?;
+        let inputs = (load.identity, &walk, &drop, (band, peak.amps, highest));
+        let found = self.memory.recall("use of a driver", &inputs, || {
+            let rough = |_, z| {
+                let driver = burst(z).zip(walk.driver(z));
+                driver.map_or(f64::NAN, |(v, d)| d.roughly_worst(v, &screen))
+            };
+            let exact = |_, z| {
+                let point = burst(z).and_then(|v| walk.worst(z, v, &screen).ok());
+                point.map_or(f64::NAN, |point| point.used)
+            };
+            load.worst_screened(band, rough, exact).ok_or_else(nothing)
+        })?;
+        let amplitude = burst(found.seen).ok_or_else(nothing)?;
+        let name = &output.device(side).owner.name;
+        let point = walk
+            .worst(found.seen, amplitude, &screen)
+            .map_err(|e| no_gain(name, &e))?;
+        Ok(DriverUse {
+            spot: found,
+            amplitude,
+            amps: point.amps / drivers,
+            allowed: allowance.allowed(point.volts),
+            coverage: walk.coverage(found.seen, amplitude)?,
+            point,
+        })
+    }
+}
+
+/// The drivers of one side, their bank and what they are allowed.
+#[derive(Debug)]
+struct Walk<'a> {
+    bank: &'a Stage,
+    rail: Volt,
+    /// VBE of the bank.
+    vbe: Volt,
+    drivers: f64,
+    allowance: &'a Allowance,
+}
+
+impl Walk<'_> {
+    /// Their use in tables, for bank currents and voltages up to these.
+    fn screen(&self, most: Amp, highest: Volt) -> Screen {
+        let allowed = |v| self.allowance.allowed(v).0;
+        Screen::new(self.bank, most, highest, |v| {
+            1.0 / (self.drivers * allowed(v))
+        })
     }
 
-    fn driver_locus(
-        &self,
-        bank: &Stage,
-        spot: Spot,
-        (rail, vbe, amplitude): (Volt, Volt, Volt),
-        drivers: f64,
-        allowance: &Allowance,
-        side: Side,
-    ) -> Result<DriverUse, Needs> {
+    fn driver(&self, z: Impedance) -> Option<Driver<'_>> {
+        Driver::new(self.bank, self.rail, self.vbe, z.modulus(), z.angle_rad())
+    }
+
+    /// The worst point at an amplitude into an impedance.
+    fn worst(&self, z: Impedance, amplitude: Volt, screen: &Screen) -> Result<LocusPoint, NoGain> {
+        let used = |volts: Volt, amps: Amp| amps / self.drivers / self.allowance.allowed(volts);
+        self.driver(z)
+            .ok_or(NoGain::NoSuchCurrent)?
+            .worst_on_locus(amplitude, screen, used)
+    }
+
+    /// What the data cover of that locus.
+    fn coverage(&self, z: Impedance, amplitude: Volt) -> Result<Coverage, Needs> {
         let wrong = || Needs::because("the rail leaves the driver no voltage");
-        let model = Driver::new(bank, rail, vbe, spot.seen.modulus(), spot.seen.angle_rad())
-            .ok_or_else(wrong)?;
         // the other half-cycle leaves the standing current at the greatest voltage
-        let highest = rail - vbe + amplitude;
-        let reach = allowance
-            .point_usage(highest, bank.standing / drivers)
-            .ok_or_else(wrong)?
-            .coverage;
-        let end = match reach {
-            Coverage::EndsAt { volts, .. } => volts,
-            _ => Volt(f64::INFINITY),
-        };
-        let (beyond, most) = (Cell::new(0.0_f64), Cell::new(0.0_f64));
-        let used = |volts: Volt, amps: Amp| {
-            let amps = amps / drivers;
-            most.set(most.get().max(amps.0));
-            if volts > end {
-                beyond.set(beyond.get().max(amps.0));
+        let highest = self.rail - self.vbe + amplitude;
+        let standing = self.bank.standing / self.drivers;
+        let reach = self.allowance.point_usage(highest, standing);
+        let reach = reach.ok_or_else(wrong)?.coverage;
+        let driver = self.driver(z).ok_or_else(wrong)?;
+        Ok(match reach {
+            Coverage::EndsAt { volts, .. } => {
+                let part = driver.current_beyond(volts, amplitude);
+                // one per cent of the peak current beyond the end of a curve does not matter
+                if part <= 0.01 {
+                    Coverage::Whole
+                } else {
+                    Coverage::EndsAt {
+                        volts,
+                        fraction: part,
+                    }
+                }
             }
-            amps / allowance.allowed(volts)
-        };
-        let name = &self.output().device(side).owner.name;
-        let point = model
-            .worst_on_locus(amplitude, used)
-            .map_err(|e| no_gain(name, &e))?;
-        let coverage = match reach {
-            // one per cent of the peak current beyond the end of a curve does not matter
-            Coverage::EndsAt { .. } if beyond.get() <= 0.01 * most.get() => Coverage::Whole,
-            Coverage::EndsAt { volts, .. } => Coverage::EndsAt {
-                volts,
-                fraction: beyond.get() / most.get(),
-            },
-            Coverage::AboveBreakdown if bank.standing <= Amp::ZERO => Coverage::Whole,
+            Coverage::AboveBreakdown if self.bank.standing <= Amp::ZERO => Coverage::Whole,
             other => other,
-        };
-        let amps = point.amps / drivers;
-        Ok(DriverUse {
-            spot,
-            amplitude,
-            point,
-            amps,
-            allowed: allowance.allowed(point.volts),
-            coverage,
         })
     }
 }

@@ -79,7 +79,10 @@ impl Case<'_> {
     pub fn heat_at(&self, load: &Driven, fraction: f64, mains: Mains) -> Result<Heat, Needs> {
         let duty = self.signal_at(load, fraction)?;
         let rail = self.mean_rail(mains, duty.rail_current)?;
-        let (idle, other) = both(self.idle(), self.other_watts(rail, &duty))?;
+        let (idle, other) = both(
+            self.idle(),
+            self.other_watts(rail, duty.amplitude, duty.load),
+        )?;
         let signal = self.sine(duty.amplitude, duty.load)?;
         // what the emitter resistors do not take, the devices do
         let least = least_resistors(self.output())?;

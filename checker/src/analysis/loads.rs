@@ -4,10 +4,11 @@
 use std::rc::Rc;
 
 use super::case::{Case, Tables};
+use super::memory::Identity;
 use crate::build::Needs;
 use crate::build::parts::{Load as Stated, LoadKind};
 use crate::finding::{Measure, Site};
-use crate::physics::load::{Band, Impedance, Load, Resonance, Survey, Variant, VoiceCoil};
+use crate::physics::load::{Band, Impedance, Load, Resonance, Survey, Variant, VoiceCoil, Worst};
 use crate::physics::math::PI;
 use crate::physics::unit::{Celsius, Hertz, Ohm};
 use crate::policy::Policy;
@@ -31,6 +32,8 @@ pub struct Driven {
     pub stated: Rc<Stated>,
     /// Frequencies for which the impedance is known.
     pub covered: Band,
+    /// Of the impedance that one channel sees.
+    pub identity: Identity,
 }
 
 /// A place on the impedance of a load where something is worst, as one channel sees it.
@@ -90,13 +93,32 @@ impl Driven {
 
     /// Where `objective` of what one channel sees is greatest within the band.
     pub fn worst(&self, band: Band, objective: impl Fn(Hertz, Impedance) -> f64) -> Option<Spot> {
-        let w = self.load.worst(band, |f, z| objective(f, self.seen(z)))?;
-        Some(Spot {
-            value: w.value,
-            frequency: w.frequency,
-            seen: self.seen(w.impedance),
-            variant: w.variant,
-        })
+        let found = self.load.worst(band, |f, z| objective(f, self.seen(z)))?;
+        Some(self.spot(found))
+    }
+
+    /// The same with a cheap `rough` objective that tells where to look, see
+    /// [`crate::physics::load::Sampled::worst_screened`].
+    pub fn worst_screened(
+        &self,
+        band: Band,
+        rough: impl Fn(Hertz, Impedance) -> f64,
+        objective: impl Fn(Hertz, Impedance) -> f64,
+    ) -> Option<Spot> {
+        let found = self.load.sampled(band)?.worst_screened(
+            |f, z| rough(f, self.seen(z)),
+            |f, z| objective(f, self.seen(z)),
+        )?;
+        Some(self.spot(found))
+    }
+
+    fn spot(&self, worst: Worst) -> Spot {
+        Spot {
+            value: worst.value,
+            frequency: worst.frequency,
+            seen: self.seen(worst.impedance),
+            variant: worst.variant,
+        }
     }
 }
 
@@ -152,6 +174,7 @@ impl Case<'_> {
         Ok(Driven {
             name: stated.owner.name.clone(),
             site: stated.owner.site,
+            identity: Identity::of(&(&cold, self.build.bridged)),
             load: cold,
             nominal,
             bridged: self.build.bridged,

@@ -101,6 +101,18 @@ pub enum Reservoir {
     High,
 }
 
+impl Reservoir {
+    /// As reports say it.
+    #[must_use]
+    pub fn name(self) -> &'static str {
+        match self {
+            Self::Low => "low",
+            Self::Nominal => "nominal",
+            Self::High => "high",
+        }
+    }
+}
+
 impl Case<'_> {
     /// The rails.
     ///

@@ -244,41 +244,6 @@ pub struct Use {
     pub peak: Amp,
 }
 
-/// A search over the band that has been done, with all that it depended on.
-#[derive(Debug)]
-pub(super) struct Remembered {
-    load: String,
-    rail: Volt,
-    bank: Bank,
-    allowance: Option<Allowance>,
-    pulses: Vec<PulseAllowance>,
-    aim: f64,
-    found: (Spot, Use),
-}
-
-impl Remembered {
-    fn new(ready: &Ready<'_>, load: &Driven, found: (Spot, Use)) -> Self {
-        Self {
-            load: load.name.clone(),
-            rail: ready.rail,
-            bank: ready.bank.clone(),
-            allowance: ready.allowance.clone(),
-            pulses: ready.pulses.clone(),
-            aim: ready.aim,
-            found,
-        }
-    }
-
-    fn of(&self, ready: &Ready<'_>, load: &Driven) -> bool {
-        self.load == load.name
-            && self.rail == ready.rail
-            && self.bank == *ready.bank
-            && self.allowance == ready.allowance
-            && self.pulses == ready.pulses
-            && self.aim.total_cmp(&ready.aim).is_eq()
-    }
-}
-
 /// Used where nothing is allowed: finite, and beyond any figure.
 const NOTHING_ALLOWED: f64 = 1e9;
 
@@ -473,15 +438,18 @@ impl Case<'_> {
         if angle != Angle::Own {
             return self.search_use(ready, load, angle);
         }
-        // a complement has the same data: the search over the band is done once
-        if let Some(known) = self.uses.borrow().iter().find(|u| u.of(ready, load)) {
-            return Ok(known.found);
-        }
-        let found = self.search_use(ready, load, angle)?;
-        self.uses
-            .borrow_mut()
-            .push(Remembered::new(ready, load, found));
-        Ok(found)
+        let inputs = (
+            load.identity,
+            (ready.rail, &ready.drop),
+            ready.bank,
+            &ready.allowance,
+            &ready.pulses,
+            ready.aim,
+            self.band()?,
+        );
+        self.memory.recall("use of the safe area", &inputs, || {
+            self.search_use(ready, load, angle)
+        })
     }
 
     fn search_use(

@@ -64,12 +64,12 @@ impl Case<'_> {
         }))
     }
 
-    /// A rail as it charges at switch-on: the greatest reservoir, the mains behind it.
-    fn charging_rail(&self, mains: Mains) -> Result<Rail, Needs> {
+    /// A rail as it charges at switch-on, the mains behind it.
+    fn charging_rail(&self, mains: Mains, reservoir: Reservoir) -> Result<Rail, Needs> {
         let made = self.made()?;
         let region = self.region()?;
         let resistance = self.mains_at_switch_on()?;
-        let rail = made.rail(mains, Reservoir::High, region.frequency);
+        let rail = made.rail(mains, reservoir, region.frequency);
         // a stated resistance is in the rail already
         let more = if region.loop_resistance.is_some() {
             Ohm::ZERO
@@ -97,14 +97,25 @@ impl Case<'_> {
     ///
     /// # Errors
     /// What supply or output stage lack; no bypass is stated.
-    pub fn through_soft_start(&self, mains: Mains) -> Result<SoftStart, Needs> {
+    pub fn through_soft_start(
+        &self,
+        mains: Mains,
+        reservoir: Reservoir,
+    ) -> Result<SoftStart, Needs> {
         let field = &self.supply()?.soft_start;
         let stated = field.need()?;
         let bypass = stated.bypass.ok_or_else(|| field.missing_part("bypass"));
-        let (rail, idle, bypass) = three(self.charging_rail(mains), self.idle_of_supply(), bypass)?;
+        let (rail, idle, bypass) = three(
+            self.charging_rail(mains, reservoir),
+            self.idle_of_supply(),
+            bypass,
+        )?;
         let referred = self.seen_from_rail(stated.cold)?;
-        supply::soft_start(&rail, referred, RAILS, idle, bypass)
-            .ok_or_else(|| Needs::because("the soft start cannot be solved"))
+        let inputs = (rail, referred, idle, bypass);
+        self.memory.recall("soft start", &inputs, || {
+            supply::soft_start(&rail, referred, RAILS, idle, bypass)
+                .ok_or_else(|| Needs::because("the soft start cannot be solved"))
+        })
     }
 
     /// The surges of a rail, through the soft start where one is fitted and `with` it.
@@ -114,21 +125,23 @@ impl Case<'_> {
     pub fn switch_on(&self, with: bool) -> Result<SwitchOn, Needs> {
         match self.soft_start()?.filter(|_| with) {
             None => Ok(SwitchOn {
-                first: surge(&self.charging_rail(Mains::High)?)?,
+                first: self.surge(&self.charging_rail(Mains::High, Reservoir::High)?)?,
                 second: None,
             }),
             Some(ntc) if ntc.hot.is_some() && ntc.bypass.is_none() => {
                 let more = self.seen_from_rail(ntc.cold)?;
-                let rail = self.charging_rail(Mains::High)?.with_series(more);
+                let rail = self
+                    .charging_rail(Mains::High, Reservoir::High)?
+                    .with_series(more);
                 Ok(SwitchOn {
-                    first: surge(
+                    first: self.surge(
                         &rail.ok_or_else(|| Needs::because("the soft start cannot be solved"))?,
                     )?,
                     second: None,
                 })
             }
             Some(_) => {
-                let soft = self.through_soft_start(Mains::High)?;
+                let soft = self.through_soft_start(Mains::High, Reservoir::High)?;
                 Ok(SwitchOn {
                     first: soft.first,
                     second: Some(soft.second),
@@ -183,7 +196,7 @@ impl Case<'_> {
     /// What the supply lacks.
     pub fn stuck_watts(&self, resistor: Ohm, current: Amp) -> Result<(f64, Amp), Needs> {
         let (rail, referred) = (
-            self.charging_rail(Mains::High)?,
+            self.charging_rail(Mains::High, Reservoir::High)?,
             self.seen_from_rail(resistor)?,
         );
         let watts = |i: f64| supply::stuck_soft_start(&rail, referred, RAILS, Amp(i)).map(|w| w.0);
@@ -215,13 +228,15 @@ impl Case<'_> {
         let [_, _, most] = made.reservoir;
         Ok((f64::from(RAILS) * supply::stored_energy(most, rail).0, rail))
     }
-}
 
-/// The worse of closing at zero and at crest, empty reservoirs.
-fn surge(rail: &Rail) -> Result<Surge, Needs> {
-    let closed = |moment| switch_on(rail, moment, Volt::ZERO);
-    let worse = closed(Closing::Zero)
-        .zip(closed(Closing::Crest))
-        .map(|(a, b)| a.worse(b));
-    worse.ok_or_else(|| Needs::because("the surge at switch-on cannot be solved"))
+    /// The worse of closing at zero and at crest, empty reservoirs.
+    fn surge(&self, rail: &Rail) -> Result<Surge, Needs> {
+        self.memory.recall("surge", rail, || {
+            let closed = |moment| switch_on(rail, moment, Volt::ZERO);
+            let worse = closed(Closing::Zero)
+                .zip(closed(Closing::Crest))
+                .map(|(a, b)| a.worse(b));
+            worse.ok_or_else(|| Needs::because("the surge at switch-on cannot be solved"))
+        })
+    }
 }

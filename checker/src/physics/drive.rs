@@ -5,6 +5,8 @@
 //! `i/hFE(i/N) + standing`. Every stage up the chain is the same sum, so a chain is a fold of
 //! [`Stage::greatest_demand`] from the output upward.
 
+use std::sync::LazyLock;
+
 use super::math;
 use super::unit::{Amp, Farad, Hertz, Ohm, Volt, VoltPerSecond, Watt};
 
@@ -284,22 +286,21 @@ impl<'a> Driver<'a> {
     }
 
     /// The point of the locus of greatest `usage(v_CE, i)`, for example i over the current that a
-    /// safe-area curve allows at v_CE.
+    /// safe-area curve allows at v_CE; `screen` holds the same usage roughly.
     ///
-    /// The half-cycle of conduction is scanned and every hill within a fifth of the highest is refined.
-    /// In the other half the current stands still, so only its greatest voltage, `V - VBE + V̂`, is
-    /// looked at (usage must not fall with voltage).
+    /// The half-cycle of conduction is scanned roughly and every hill within a fifth of the highest is
+    /// refined with the usage itself. In the other half the current stands still, so only its greatest
+    /// voltage, `V - VBE + V̂`, is looked at (usage must not fall with voltage).
     ///
     /// # Errors
     /// As for [`Driver::mean_heat`].
     pub fn worst_on_locus(
         &self,
         amplitude: Volt,
+        screen: &Screen,
         usage: impl Fn(Volt, Amp) -> f64,
     ) -> Result<LocusPoint, NoGain> {
-        const STEPS: u32 = 64;
         let peak = self.peak(amplitude)?;
-        let step = math::PI / f64::from(STEPS);
         let point = |angle_rad: f64| {
             let amps = Amp(self.drive(peak * math::sin(angle_rad).max(0.0)) + self.bank.standing.0);
             let v = self.volts - amplitude.0 * math::sin(angle_rad + self.phase_rad);
@@ -311,28 +312,68 @@ impl<'a> Driver<'a> {
                 used: usage(volts, amps),
             }
         };
-        let mut scan = [0.0; STEPS as usize + 1];
         let mut worst = point(1.5 * math::PI - self.phase_rad);
-        for (k, sample) in (0_u32..).zip(scan.iter_mut()) {
-            let here = point(step * f64::from(k));
-            *sample = here.used;
+        let scan = self.scan(amplitude, screen);
+        let floor = 0.8 * scan.iter().copied().fold(worst.used, f64::max);
+        let mut take = |here: LocusPoint| {
             if here.used > worst.used {
                 worst = here;
             }
-        }
-        let floor = 0.8 * worst.used;
-        for (k, triple) in (1_u32..).zip(scan.windows(3)) {
-            if matches!(triple, [a, b, c] if b >= a && b >= c && *b >= floor) {
-                let middle = step * f64::from(k);
+        };
+        for (k, &here) in scan.iter().enumerate() {
+            let beside = |k: Option<usize>| k.and_then(|k| scan.get(k)).is_none_or(|s| here >= *s);
+            if here >= floor && beside(k.checked_sub(1)) && beside(k.checked_add(1)) {
+                let middle = SCAN_STEP * k as f64;
+                take(point(middle));
                 let used = |angle: f64| point(angle).used;
-                let (angle, _) = math::maximum(used, middle - step, middle + step, 1e-6);
-                let here = point(angle);
-                if here.used > worst.used {
-                    worst = here;
-                }
+                // rough values may put the top of a hill one step aside
+                let (lo, hi) = (middle - 2.0 * SCAN_STEP, middle + 2.0 * SCAN_STEP);
+                let (angle, _) = math::maximum(used, lo.max(0.0), hi.min(math::PI), 1e-6);
+                take(point(angle));
             }
         }
         Ok(worst)
+    }
+
+    /// The greatest usage of the locus, roughly: for finding out where to look. NaN where its current
+    /// is not known.
+    #[must_use]
+    pub fn roughly_worst(&self, amplitude: Volt, screen: &Screen) -> f64 {
+        if self.peak(amplitude).is_err() {
+            return f64::NAN;
+        }
+        let still = screen.usage(0.0, self.volts + amplitude.0);
+        let scan = self.scan(amplitude, screen);
+        scan.iter().copied().fold(still, f64::max)
+    }
+
+    /// The greatest current at voltages above `end`, as a part of the greatest of all, sampled finely.
+    #[must_use]
+    pub fn current_beyond(&self, end: Volt, amplitude: Volt) -> f64 {
+        const SAMPLES: u32 = 1024;
+        let peak = amplitude.0 / self.impedance;
+        let (mut beyond, mut most) = (0.0_f64, 0.0_f64);
+        for k in 0..2 * SAMPLES {
+            let angle = math::PI * f64::from(k) / f64::from(SAMPLES);
+            let amps = self.drive(peak * math::sin(angle).max(0.0)) + self.bank.standing.0;
+            most = most.max(amps);
+            if self.volts - amplitude.0 * math::sin(angle + self.phase_rad) > end.0 {
+                beyond = beyond.max(amps);
+            }
+        }
+        if most > 0.0 { beyond / most } else { 0.0 }
+    }
+
+    /// Rough usage at even steps of the half-cycle of conduction.
+    fn scan(&self, amplitude: Volt, screen: &Screen) -> [f64; SCAN_STEPS + 1] {
+        let peak = amplitude.0 / self.impedance;
+        let (sin_phase, cos_phase) = math::sin_cos(self.phase_rad);
+        let mut scan = [0.0; SCAN_STEPS + 1];
+        for (used, (sin, cos)) in scan.iter_mut().zip(SCAN_ANGLES.iter()) {
+            let volts = self.volts - amplitude.0 * (sin * cos_phase + cos * sin_phase);
+            *used = screen.usage(peak * sin, volts);
+        }
+        scan
     }
 
     /// The peak current of the bank, if its gain is known there.
@@ -354,6 +395,62 @@ impl<'a> Driver<'a> {
                 .bank
                 .gain
                 .within(current / f64::from(self.bank.devices))
+    }
+}
+
+/// Steps of a scan through the half-cycle of conduction.
+const SCAN_STEPS: usize = 64;
+const SCAN_STEP: f64 = math::PI / SCAN_STEPS as f64;
+static SCAN_ANGLES: LazyLock<[(f64, f64); SCAN_STEPS + 1]> =
+    LazyLock::new(|| std::array::from_fn(|k| math::sin_cos(SCAN_STEP * k as f64)));
+
+/// Cells of the tables that a [`Screen`] looks things up in.
+const CELLS: usize = 256;
+
+/// Driver current against bank current, and the usage of one ampere against voltage, from tables of
+/// even steps: right to about a per cent, for finding out where to look closer.
+#[derive(Clone, Debug)]
+pub struct Screen {
+    amps: Vec<f64>,
+    per_amp: f64,
+    usage: Vec<f64>,
+    per_volt: f64,
+}
+
+impl Screen {
+    /// For bank currents up to `most` and voltages up to `highest`; `usage` is that of one ampere.
+    #[must_use]
+    pub fn new(bank: &Stage, most: Amp, highest: Volt, usage: impl Fn(Volt) -> f64) -> Self {
+        let cells = CELLS as f64;
+        let devices = f64::from(bank.devices);
+        let steps = |k: usize, top: f64| top * k as f64 / cells;
+        let amps = |k: usize| {
+            let current = steps(k, most.0);
+            current / bank.gain.within(current / devices) + bank.standing.0
+        };
+        Self {
+            amps: (0..=CELLS).map(amps).collect(),
+            per_amp: cells / most.0,
+            usage: (0..=CELLS)
+                .map(|k| usage(Volt(steps(k, highest.0))))
+                .collect(),
+            per_volt: cells / highest.0,
+        }
+    }
+
+    fn usage(&self, bank_amps: f64, volts: f64) -> f64 {
+        looked_up(&self.amps, bank_amps * self.per_amp)
+            * looked_up(&self.usage, volts * self.per_volt)
+    }
+}
+
+/// Between two entries of a table, the ends held.
+fn looked_up(table: &[f64], at: f64) -> f64 {
+    let at = at.clamp(0.0, CELLS as f64);
+    let cell = (at as usize).min(CELLS - 1);
+    match table.get(cell..cell + 2) {
+        Some([a, b]) => a + (b - a) * (at - cell as f64),
+        _ => f64::NAN,
     }
 }
 
@@ -467,7 +564,8 @@ mod tests {
             let amplitude = volts * k;
             // A curve with a corner: 1 A to 20 V, then falling as v^-2.
             let allowed = |v: f64| if v < 20.0 { 1.0 } else { 400.0 / (v * v) };
-            let worst = d.worst_on_locus(Volt(amplitude), |v, i| i.0 / allowed(v.0)).unwrap();
+            let screen = Screen::new(&b, Amp(amplitude / z), Volt(volts + amplitude), |v| 1.0 / allowed(v.0));
+            let worst = d.worst_on_locus(Volt(amplitude), &screen, |v, i| i.0 / allowed(v.0)).unwrap();
             for n in 0..20_000 {
                 let beta = math::TAU * f64::from(n) / 20_000.0;
                 let i = (amplitude / z * math::sin(beta)).max(0.0);

@@ -12,6 +12,8 @@ const TIE: f64 = 1e-9;
 const POINTS_PER_OCTAVE: f64 = 5.0;
 /// Width, in ln f, to which an extremum is narrowed; its value is then exact to the square of this.
 const NARROWED: f64 = 1e-8;
+/// A point of the grid whose rough value is below this part of the roughly greatest is not the worst.
+const SCREENED: f64 = 0.8;
 /// Temperature coefficient of resistance of copper at 20 °C, per kelvin (IEC 60028 rounds to 0.003 93).
 const COPPER: f64 = 0.0039;
 
@@ -750,9 +752,50 @@ impl Sampled {
     /// worst case.
     #[must_use]
     pub fn worst(&self, objective: impl Fn(Hertz, Impedance) -> f64) -> Option<Worst> {
+        let values = self.on_grid(&objective);
+        self.narrowed(&values, &objective)
+    }
+
+    /// The same with a `rough` objective, cheap and right to a few per cent, that tells which points of
+    /// the grid need the true one: those below [`SCREENED`] of its crest cannot be the worst.
+    #[must_use]
+    pub fn worst_screened(
+        &self,
+        rough: impl Fn(Hertz, Impedance) -> f64,
+        objective: impl Fn(Hertz, Impedance) -> f64,
+    ) -> Option<Worst> {
+        let mut values = self.on_grid(&rough);
+        let crest = values
+            .iter()
+            .flatten()
+            .copied()
+            .fold(f64::NEG_INFINITY, f64::max);
+        for ((_, points), values) in self.variants.iter().zip(&mut values) {
+            for (&(f, z), value) in points.iter().zip(values) {
+                // not "below": what is not a number must be asked too
+                if !(*value < SCREENED * crest) {
+                    *value = objective(f, z);
+                }
+            }
+        }
+        self.narrowed(&values, &objective)
+    }
+
+    /// An objective on the grid, variant by variant.
+    fn on_grid(&self, objective: &impl Fn(Hertz, Impedance) -> f64) -> Vec<Vec<f64>> {
+        let of =
+            |points: &[(Hertz, Impedance)]| points.iter().map(|&(f, z)| objective(f, z)).collect();
+        self.variants.iter().map(|(_, points)| of(points)).collect()
+    }
+
+    /// The greatest value, each local maximum of the grid narrowed.
+    fn narrowed(
+        &self,
+        values: &[Vec<f64>],
+        objective: &impl Fn(Hertz, Impedance) -> f64,
+    ) -> Option<Worst> {
         let mut best: Option<Worst> = None;
-        for (variant, points) in &self.variants {
-            let values: Vec<f64> = points.iter().map(|&(f, z)| objective(f, z)).collect();
+        for ((variant, _), values) in self.variants.iter().zip(values) {
             if values.iter().any(|v| !v.is_finite()) {
                 return None;
             }
@@ -764,7 +807,7 @@ impl Sampled {
                     .map_or(f64::NAN, |z| objective(f, z))
             };
             let crest = values.iter().copied().fold(f64::NEG_INFINITY, f64::max);
-            for (k, (&x, &value)) in self.grid.iter().zip(&values).enumerate() {
+            for (k, (&x, &value)) in self.grid.iter().zip(values).enumerate() {
                 let neighbour = |k: usize| self.grid.get(k).copied().zip(values.get(k).copied());
                 let (left, right) = (k.checked_sub(1).and_then(neighbour), neighbour(k + 1));
                 let higher = |side: Option<(f64, f64)>| side.is_some_and(|(_, v)| v > value);

@@ -167,7 +167,7 @@ pub const BLOCKS: &[Block] = &[
         key("primary", "V ,...", "req", "every voltage it can be strapped or tapped for").band("V", 80.0, 500.0),
         key("secondary", "nx? V {centre-tapped-total}?", "req", "r.m.s. of each winding at rated load on the matching tap")
             .band("V", 6.0, 130.0),
-        key("rating", "VA per{transformer winding}?", "req", "per transformer assumed").band("VA", 5.0, 5000.0),
+        key("rating", "VA per{transformer winding}?", "req", "per transformer assumed").band("VA", 5.0, 10_000.0),
         key("regulation", "% of{full-load no-load}", "assumed by VA", "no-load less full-load, over this").band("%", 0.005, 0.4),
         key("resistance", "primary:ohm secondary:ohm", "from regulation", "of the windings, cold"),
         key("thermal-fuse", "degC", "-", "in the winding").band("degC", 70.0, 200.0),

@@ -531,7 +531,7 @@ def search(function, band, knots=(), flat=False, turn=np.pi):
     got = np.where(np.isnan(got), -np.inf, got)
     boxes = []
     left = got.copy()
-    for _ in range(4):
+    for _ in range(3):
         # The best cell that is not beside one already taken.
         k, j, m = np.unravel_index(int(np.argmax(left)), left.shape)
         if flat:
@@ -541,7 +541,7 @@ def search(function, band, knots=(), flat=False, turn=np.pi):
             lower, upper = band
         boxes.append(((f[k], a[j], t[m]), (span, 0.15, 0.06), (lower, 0.02, 1e-4), (upper, 1.0, turn - 1e-4)))
         left[max(k - 3, 0) : k + 4, :, max(m - 3, 0) : m + 4] = -np.inf
-    return safe_area.zoom(function, boxes, points=(1 if flat else 7, 5, 9), rounds=24, shrink=0.5)
+    return safe_area.zoom(function, boxes, points=(1 if flat else 7, 5, 9), rounds=11, shrink=0.45)
 
 
 def soa_used(case, device, z, rail, tc, knots, flat):
@@ -594,13 +594,13 @@ def limiters(case, worst):
         each = line / case.pairs
         return each * stage_.share(np.maximum(each, 1e-9), case.pairs, out["spread"], case.re, out["re_low"])
 
-    v = np.linspace(0.05, 2 * high, 20_001)
+    v = np.linspace(0.05, 2 * high, 4001)
     for d in (out["up"], out["down"]):
         function = lambda v, d=d: most_loaded(v) / safe_area.allowed(d, case.hottest_case(), v)
         use = np.nan_to_num(function(v))
         peaks = [v[k] for k in range(1, len(v) - 1) if use[k] >= max(use[k - 1], use[k + 1])]
         peaks = sorted(peaks, key=lambda x: -float(function(np.array([x]))[0]))[:6]
-        fine = max((float(np.nanmax(function(np.linspace(x - 0.02, min(x + 0.02, 2 * high), 20_001)))) for x in peaks), default=0.0)
+        fine = max((float(np.nanmax(function(np.linspace(x - 0.08, min(x + 0.08, 2 * high), 8001)))) for x in peaks), default=0.0)
         use = max(fine, float(use.max()))
         worst.below("soa.limiter-soa", d["name"], use, 1.0, 1.0)
     for load in b["loads"]:

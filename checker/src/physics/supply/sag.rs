@@ -40,6 +40,9 @@ const SLACK: f64 = 5e-3;
 /// Most samples of a piece; a piece is no longer than half a period of mains and of signal.
 const MOST_SAMPLES: usize = 18;
 
+/// Most marches that look for level and headroom at once before they are looked for apart.
+const ROUGH_MARCHES: u32 = 4;
+
 /// Most patterns marched through to find the steady state; three or four are usual.
 const MAX_MARCHES: u32 = 100;
 
@@ -81,7 +84,8 @@ impl Rail {
     /// against the mains, in the periodic steady state. `needed` is a function of the phase of the
     /// signal current in radians, 0 to 2π.
     ///
-    /// At least 16 phases are searched and the neighbourhood of the worst is refined.
+    /// At least 16 phases are searched and the neighbourhood of the worst is refined. `needed` must rise
+    /// and fall no more than once within each half wave, as what a sine needs does.
     ///
     /// A signal period that holds p/q half-cycles of the mains, q up to 8, repeats after q
     /// periods. Any other frequency is replaced by the next LOWER one that does, less than
@@ -98,44 +102,74 @@ impl Rail {
         load: LowFrequencyLoad,
         needed: impl Fn(f64) -> Volt,
     ) -> Option<Headroom> {
+        let scan = self.scan_headroom(load, &needed)?;
+        let worst = self.lowest_near(
+            load,
+            &scan.promising(SLACK * self.crest),
+            scan.step,
+            &needed,
+        )?;
+        self.least_headroom_at(load, worst, needed)
+    }
+
+    /// The least headroom at each phase of the search, roughly: to a few thousandths of the crest of the
+    /// source, for finding out where to look closer.
+    pub fn scan_headroom(
+        &self,
+        load: LowFrequencyLoad,
+        needed: &impl Fn(f64) -> Volt,
+    ) -> Option<Scan> {
         let march = March::new(self, load)?;
         let (phases, step) = march.phases();
         let (mut level, mut drift) = (1.0, 0.0);
-        let mut scan = [(f64::INFINITY, level); MOST_PHASES];
-        for (n, point) in scan.iter_mut().enumerate().take(phases) {
+        let mut spares = Vec::with_capacity(phases);
+        for n in 0..phases {
             let phase = step * n as f64;
-            let next = march.settle(phase, level + drift, ROUGH)?;
+            let (spare, next) = march.roughly_least(phase, level + drift, needed)?;
             drift = if n == 0 { 0.0 } else { next - level };
             level = next;
-            *point = (march.least(phase, level, &needed)?.least.0, level);
+            spares.push(spare);
         }
-        let lowest = scan
-            .iter()
-            .fold(f64::INFINITY, |low, point| low.min(point.0));
-        let mut worst = (0.0, f64::INFINITY);
-        for n in 0..phases {
-            let beside = |offset: usize| scan.get((n + offset) % phases).copied();
-            let (before, here, after) = (beside(phases - 1)?, beside(0)?, beside(1)?);
-            let local = here.0 <= before.0.min(after.0);
-            if local && here.0 < lowest + SLACK * self.crest {
-                let phase = step * n as f64;
-                let spare = |phase: f64| march.spare(phase, here.1, &needed);
-                let points = [
-                    (phase - step, before.0),
-                    (phase, here.0),
-                    (phase + step, after.0),
-                ];
-                let found = bottom(spare, points, GAIN * self.crest);
-                if found.1 < worst.1 {
-                    worst = found;
-                }
-            }
-        }
-        self.least_headroom_at(load, worst.0, needed)
+        Some(Scan { spares, step })
     }
 
-    /// The same at one phase: the signal current rises through zero at `mains_rad` radians after a
-    /// zero crossing of the mains. Some ten times quicker, for a search that holds the phase.
+    /// Of some phases, each with its neighbourhood of a step, the one with the least headroom.
+    pub fn lowest_near(
+        &self,
+        load: LowFrequencyLoad,
+        phases: &[f64],
+        step: f64,
+        needed: &impl Fn(f64) -> Volt,
+    ) -> Option<f64> {
+        let march = March::new(self, load)?;
+        let mut centres = Vec::with_capacity(phases.len());
+        for &phase in phases {
+            let level = march.settle(phase, 1.0, ROUGH)?;
+            centres.push((phase, march.spare(phase, level, needed), level));
+        }
+        let lowest = centres.iter().map(|c| c.1).fold(f64::INFINITY, f64::min);
+        let mut worst: Option<Point> = None;
+        for (phase, here, level) in centres {
+            if here > lowest + SLACK * self.crest {
+                continue;
+            }
+            let spare = |phase: f64| march.spare(phase, level, needed);
+            let (before, after) = (phase - step, phase + step);
+            let points = [
+                (before, spare(before)),
+                (phase, here),
+                (after, spare(after)),
+            ];
+            let found = bottom(spare, points, GAIN * self.crest);
+            if worst.is_none_or(|w| found.1 < w.1) {
+                worst = Some(found);
+            }
+        }
+        worst.map(|w| w.0.rem_euclid(PI))
+    }
+
+    /// The least headroom at one phase: the signal current rises through zero at `mains_rad` radians
+    /// after a zero crossing of the mains. Some ten times quicker, for a search that holds the phase.
     pub fn least_headroom_at(
         &self,
         load: LowFrequencyLoad,
@@ -146,6 +180,39 @@ impl Rail {
         let march = March::new(self, load)?;
         let level = march.settle(phase, 1.0, EXACT)?;
         march.least(phase, level, &needed)
+    }
+}
+
+/// Rough least headroom, in volts, at even steps of the phase of the signal against the mains.
+#[derive(Clone, Debug)]
+pub struct Scan {
+    spares: Vec<f64>,
+    /// Mains radians from one phase to the next.
+    pub step: f64,
+}
+
+impl Scan {
+    /// The lowest, in volts.
+    #[must_use]
+    pub fn lowest(&self) -> f64 {
+        self.spares.iter().copied().fold(f64::INFINITY, f64::min)
+    }
+
+    /// The phases of all local minima within this many volts of the lowest, lowest first.
+    #[must_use]
+    pub fn promising(&self, within: f64) -> Vec<f64> {
+        let count = self.spares.len();
+        let lowest = self.lowest();
+        let at = |n: usize| self.spares.get(n % count.max(1)).copied();
+        let mut found: Vec<Point> = (0..count)
+            .filter_map(|n| Some((n, at(n + count - 1)?, at(n)?, at(n + 1)?)))
+            .filter(|&(_, before, here, after)| {
+                here <= before.min(after) && here <= lowest + within
+            })
+            .map(|(n, _, here, _)| (self.step * n as f64, here))
+            .collect();
+        found.sort_by(|a, b| a.1.total_cmp(&b.1));
+        found.into_iter().map(|(phase, _)| phase).collect()
     }
 }
 
@@ -284,12 +351,52 @@ impl<'a> March<'a> {
         Some(level)
     }
 
-    /// Least headroom over one pattern that starts at `level`. Each piece is sampled; where the
-    /// samples promise about the least so far or less, parabolas find the bottom next to them.
+    /// Least headroom in volts at one phase and the settled level, from marches that look for both at
+    /// once: the headroom is that of a level up to a thousandth of the crest away.
+    fn roughly_least(
+        &self,
+        phase: f64,
+        guess: f64,
+        needed: &impl Fn(f64) -> Volt,
+    ) -> Option<(f64, f64)> {
+        let mut level = guess;
+        for _ in 0..ROUGH_MARCHES {
+            let Some((headroom, end, slope)) = self.looked_through(phase, level, needed) else {
+                break;
+            };
+            let change = (end - level) / (1.0 - slope).max(1e-3);
+            level += change;
+            if change * change < ROUGH {
+                return Some((headroom?.least.0, level));
+            }
+        }
+        let level = self.settle(phase, 1.0, ROUGH)?;
+        Some((self.least(phase, level, needed)?.least.0, level))
+    }
+
+    /// Least headroom over one pattern that starts at `level`.
     fn least(&self, phase: f64, level: f64, needed: &impl Fn(f64) -> Volt) -> Option<Headroom> {
+        self.looked_through(phase, level, needed)?.0
+    }
+
+    /// Least headroom over one pattern that starts at `level`, with the level at its end and the
+    /// derivative of that by the level at its start.
+    ///
+    /// Each piece that may hold less than was found so far is sampled; where the
+    /// samples promise about the least so far or less, parabolas find the bottom next to them.
+    fn looked_through(
+        &self,
+        phase: f64,
+        level: f64,
+        needed: &impl Fn(f64) -> Volt,
+    ) -> Option<(Option<Headroom>, f64, f64)> {
         let crest = self.rail.crest;
         let mut least: Option<Headroom> = None;
-        self.pattern(phase, level, |piece, length| {
+        let (end, slope) = self.pattern(phase, level, |piece, length| {
+            let so_far = least.map_or(f64::INFINITY, |l| l.least.0);
+            if piece.least_promised(length, needed) > so_far {
+                return;
+            }
             let headroom = |after: f64| {
                 let rail = Volt(self.rail.volts(piece.at(after).terminal));
                 let signal_rad = piece.signal_phase(after);
@@ -317,7 +424,6 @@ impl<'a> March<'a> {
             }
             let middle = lowest.clamp(1, parts - 1);
             let points = [samples[middle - 1], samples[middle], samples[middle + 1]];
-            let so_far = least.map_or(f64::INFINITY, |l| l.least.0);
             let promise = vertex(points)
                 .map_or(f64::INFINITY, |v| v.1)
                 .min(samples[lowest].1);
@@ -328,7 +434,7 @@ impl<'a> March<'a> {
                 }
             }
         })?;
-        least
+        Some((least, end, slope))
     }
 
     /// One whole pattern from the signal's rise through zero at `phase` of the mains: the level at
@@ -467,6 +573,24 @@ impl Piece<'_> {
                 terminal: level - esr * load,
             }
         }
+    }
+
+    /// What the headroom of this piece cannot fall below, in volts: the level falls by no more than the
+    /// whole load takes, the ESR loses no more than the whole load in it, and what is needed is greatest
+    /// at an end or at the crest of the half wave.
+    fn least_promised(&self, length: f64, needed: &impl Fn(f64) -> Volt) -> f64 {
+        let rail = self.march.rail;
+        let load = self.march.standing + self.wave;
+        let lowest = self.level - load * (length / rail.x + rail.esr_share);
+        let (from, to) = (self.signal_phase(0.0), self.signal_phase(length));
+        let crest = if self.negative { 1.5 * PI } else { FRAC_PI_2 };
+        let inside = if from < crest && crest < to {
+            crest
+        } else {
+            to
+        };
+        let most = needed(from).max(needed(to)).max(needed(inside));
+        rail.volts(lowest) - most.0
     }
 
     /// Phase of the signal, 0 to 2π, `after` radians of the mains from the start.

@@ -123,7 +123,7 @@ pub struct SoftStart {
     pub reached: Volt,
     /// Energy the resistor takes until then: the greater of closing at zero and at crest.
     pub energy: Joule,
-    /// The first surge, through the resistor: the worse of closing at zero and at crest.
+    /// The first surge, through the resistor, until the bypass: the worse of closing at zero and at crest.
     pub first: Surge,
     /// The second, when the bypass closes: the worse of both moments again.
     pub second: Surge,
@@ -160,10 +160,19 @@ pub fn soft_start(
     let surge = |rail: &Rail, start| {
         Some(switch_on(rail, Closing::Zero, start)?.worse(switch_on(rail, Closing::Crest, start)?))
     };
+    // what charges alone, until the bypass ends it
+    let alone = |closing: Closing| {
+        let until = |idle| Charging::until(&slow, idle, closing.angle(), turn).square;
+        slow.let_through(until(Amp::ZERO))
+    };
+    let first = Surge {
+        total: alone(Closing::Zero).max(alone(Closing::Crest)),
+        ..surge(&slow, Volt::ZERO)?
+    };
     Some(SoftStart {
         reached,
         energy: Joule(all.0 * slow.let_through(zero.square.max(crest.square)).0),
-        first: surge(&slow, Volt::ZERO)?,
+        first,
         second: surge(rail, reached.max(Volt::ZERO))?,
     })
 }

@@ -1,7 +1,7 @@
 //! supply.inrush-resistor-energy: the energy a soft start takes at each switch-on.
 
 use crate::analysis::case::{solved, stated};
-use crate::analysis::rails::Mains;
+use crate::analysis::rails::{Mains, Reservoir};
 use crate::analysis::supply::places;
 use crate::analysis::{Case, Margins, Stress};
 use crate::build::Needs;
@@ -71,7 +71,7 @@ fn resistor(case: &Case<'_>, supply: &Supply, soft: &SoftStart) -> Result<Stress
     };
     let (stands, start, surge) = three(
         stands,
-        case.through_soft_start(Mains::High),
+        case.through_soft_start(Mains::High, Reservoir::High),
         case.mains_surge(supply.transformers.max(1), true),
     )?;
     let core = surge.core.0 * soft.cold.0;

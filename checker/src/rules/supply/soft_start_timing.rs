@@ -1,7 +1,7 @@
 //! supply.soft-start-timing: how far the rails have come when the soft start is bypassed.
 
 use crate::analysis::case::{solved, stated};
-use crate::analysis::rails::Mains;
+use crate::analysis::rails::{Mains, Reservoir};
 use crate::analysis::supply::places;
 use crate::analysis::{Case, Margins, Stress};
 use crate::build::Needs;
@@ -17,7 +17,7 @@ rule! {
     compares: "rail when the soft start is bypassed with the unsagged rail",
     stress: "rail reached when the soft start is bypassed",
     rating: "limit",
-    formula: "rail after the bypass time, greatest reservoir, idle current drawn above 10 V, over Vu; low or high mains, the worse",
+    formula: "rail after the bypass time, greatest or least reservoir, idle current drawn from 10 V up, over Vu; low or high mains, the worst",
     source: "charging of a reservoir through winding and resistor, exact half-cycle by half-cycle",
     reads: ["supply.soft-start", "supply.reservoir", "supply.rectifier", "transformer.secondary", "transformer.rating", "transformer.regulation", "build.mains", "build.supply", "stage.idle"],
     sense: AtLeast,
@@ -49,20 +49,28 @@ pub fn check(case: &Case<'_>, out: &mut Margins<'_>) {
     if soft.hot.is_some() && soft.bypass.is_none() {
         return;
     }
-    for mains in [Mains::High, Mains::Low] {
-        out.compare(
-            &RULE,
-            case.supply_part(supply, "soft-start", 1),
-            field.site(),
-            stress(case, supply, mains),
-        );
+    // the greatest reservoir fills last, the least falls furthest between two pulses
+    for reservoir in [Reservoir::High, Reservoir::Low] {
+        for mains in [Mains::High, Mains::Low] {
+            out.compare(
+                &RULE,
+                case.supply_part(supply, "soft-start", 1),
+                field.site(),
+                stress(case, supply, mains, reservoir),
+            );
+        }
     }
 }
 
-fn stress(case: &Case<'_>, supply: &Supply, mains: Mains) -> Result<Stress, Needs> {
+fn stress(
+    case: &Case<'_>,
+    supply: &Supply,
+    mains: Mains,
+    reservoir: Reservoir,
+) -> Result<Stress, Needs> {
     let field = &supply.soft_start;
     let (soft, unsagged, stated_as) = three(
-        case.through_soft_start(mains),
+        case.through_soft_start(mains, reservoir),
         case.unsagged(mains),
         field.need(),
     )?;
@@ -72,7 +80,7 @@ fn stress(case: &Case<'_>, supply: &Supply, mains: Mains) -> Result<Stress, Need
         rating: f64::NAN,
         witness: Witness {
             mains_v: case.mains_volts(mains),
-            tolerance: vec![("reservoir".to_owned(), "high")],
+            tolerance: vec![("reservoir".to_owned(), reservoir.name())],
             rail_v: Some(soft.reached.0),
             channels_driven: None,
             ..case.witness()
@@ -103,7 +111,7 @@ fn stress(case: &Case<'_>, supply: &Supply, mains: Mains) -> Result<Stress, Need
             solved(
                 "V",
                 "rail then",
-                "half-cycle by half-cycle",
+                "from event to event",
                 soft.reached.0,
                 "V",
                 "charging through winding and resistor, exact",
