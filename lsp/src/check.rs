@@ -7,6 +7,7 @@ use std::path::{Path, PathBuf};
 use std::sync::Arc;
 
 use ampspec_grammar::Tree;
+use derate::analysis::Memory;
 use derate::assist::moved::moved;
 use derate::render::shown::shown;
 use derate::source::Files;
@@ -30,6 +31,8 @@ pub(crate) struct Session {
     pub(crate) policy: Option<String>,
     /// The folders of the workspace, links resolved.
     pub(crate) folders: Vec<PathBuf>,
+    /// What earlier checks solved.
+    pub(crate) memory: Arc<Memory>,
 }
 
 /// The findings of one file, on one text.
@@ -78,6 +81,7 @@ impl Session {
             policy: self.policy.clone(),
             today: today(),
             root: self.root(path),
+            memory: Arc::clone(&self.memory),
             ..Options::default()
         }
     }

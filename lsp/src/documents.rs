@@ -141,6 +141,7 @@ impl Owner {
                 client,
                 policy: None,
                 folders: Vec::new(),
+                memory: Arc::default(),
             }),
             settings: Settings::default(),
             ready: false,
@@ -190,6 +191,7 @@ impl Owner {
                     client: *client,
                     policy: self.settings.policy.clone(),
                     folders,
+                    memory: Arc::clone(&self.session.memory),
                 });
             }
             Event::Ready => {

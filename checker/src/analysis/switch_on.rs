@@ -140,11 +140,19 @@ impl Case<'_> {
                     second: None,
                 })
             }
-            Some(_) => {
+            Some(stated) => {
                 let soft = self.through_soft_start(Mains::High, Reservoir::High)?;
+                let rail = self.charging_rail(Mains::High, Reservoir::High)?;
+                let referred = self.seen_from_rail(stated.cold)?;
+                let bypass = stated.bypass.unwrap_or_default();
+                let inputs = (rail, referred, bypass, soft.reached);
+                let (first, second) = self.memory.recall("soft surges", &inputs, || {
+                    supply::soft_surges(&rail, referred, bypass, soft.reached)
+                        .ok_or_else(|| Needs::because("the soft start cannot be solved"))
+                })?;
                 Ok(SwitchOn {
-                    first: soft.first,
-                    second: Some(soft.second),
+                    first,
+                    second: Some(second),
                 })
             }
         }

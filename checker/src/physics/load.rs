@@ -772,8 +772,8 @@ impl Sampled {
             .fold(f64::NEG_INFINITY, f64::max);
         for ((_, points), values) in self.variants.iter().zip(&mut values) {
             for (&(f, z), value) in points.iter().zip(values) {
-                // not "below": what is not a number must be asked too
-                if !(*value < SCREENED * crest) {
+                // what is not a number must be asked too
+                if *value >= SCREENED * crest || value.is_nan() {
                     *value = objective(f, z);
                 }
             }

@@ -23,9 +23,9 @@ pub use reservoir::{
     Bleeder, Draw, Reservoir, RippleMultipliers, in_parallel, reservoir_ripple, ripple_shares,
     stored_energy,
 };
-pub use sag::{Headroom, LowFrequencyLoad};
+pub use sag::{Headroom, LowFrequencyLoad, Scan};
 pub use switch_on::{
-    Closing, SoftStart, Surge, core_surge, soft_start, stuck_soft_start, switch_on,
+    Closing, SoftStart, Surge, core_surge, soft_start, soft_surges, stuck_soft_start, switch_on,
 };
 pub use transformer::{
     Transformer, assumed_regulation, regulation_from_resistances, regulation_of_full_load,

@@ -123,10 +123,6 @@ pub struct SoftStart {
     pub reached: Volt,
     /// Energy the resistor takes until then: the greater of closing at zero and at crest.
     pub energy: Joule,
-    /// The first surge, through the resistor, until the bypass: the worse of closing at zero and at crest.
-    pub first: Surge,
-    /// The second, when the bypass closes: the worse of both moments again.
-    pub second: Surge,
 }
 
 /// A resistor in the primary, bypassed `bypass` seconds after switch-on, while the rail draws `idle`
@@ -155,26 +151,41 @@ pub fn soft_start(
     }
     let zero = Charging::until(&slow, idle, Closing::Zero.angle(), turn);
     let crest = Charging::until(&slow, idle, Closing::Crest.angle(), turn);
-    let reached = zero.terminal().min(crest.terminal());
     let all = referred * f64::from(conducting);
+    Some(SoftStart {
+        reached: zero.terminal().min(crest.terminal()),
+        energy: Joule(all.0 * slow.let_through(zero.square.max(crest.square)).0),
+    })
+}
+
+/// The two surges of a soft start: through the resistor until the bypass, nothing else drawn, and from
+/// the rail `reached` when the bypass closes. Each is the worse of closing at zero and at crest.
+///
+/// Arguments and refusals as in [`soft_start`].
+#[must_use]
+pub fn soft_surges(
+    rail: &Rail,
+    referred: Ohm,
+    bypass: Second,
+    reached: Volt,
+) -> Option<(Surge, Surge)> {
+    let slow = rail.with_series(referred)?;
+    let turn = bypass.0 * rail.omega;
+    if !(0.0..=MOST_HALF_CYCLES as f64 * PI).contains(&turn) {
+        return None;
+    }
     let surge = |rail: &Rail, start| {
         Some(switch_on(rail, Closing::Zero, start)?.worse(switch_on(rail, Closing::Crest, start)?))
     };
-    // what charges alone, until the bypass ends it
     let alone = |closing: Closing| {
-        let until = |idle| Charging::until(&slow, idle, closing.angle(), turn).square;
-        slow.let_through(until(Amp::ZERO))
+        let charging = Charging::until(&slow, Amp::ZERO, closing.angle(), turn);
+        slow.let_through(charging.square)
     };
     let first = Surge {
         total: alone(Closing::Zero).max(alone(Closing::Crest)),
         ..surge(&slow, Volt::ZERO)?
     };
-    Some(SoftStart {
-        reached,
-        energy: Joule(all.0 * slow.let_through(zero.square.max(crest.square)).0),
-        first,
-        second: surge(rail, reached.max(Volt::ZERO))?,
-    })
+    Some((first, surge(rail, reached.max(Volt::ZERO))?))
 }
 
 /// A rail on its way up.
@@ -325,7 +336,8 @@ mod tests {
         let found = soft_start(&rail, Ohm(2.0), 2, Amp(0.1), Second(0.0)).unwrap();
         assert_eq!((found.reached, found.energy), (Volt(0.0), Joule(0.0)));
         let direct = switch_on(&rail, Closing::Crest, Volt(0.0)).unwrap();
-        assert_eq!(found.second.peak, direct.peak);
+        let (_, second) = soft_surges(&rail, Ohm(2.0), Second(0.0), found.reached).unwrap();
+        assert_eq!(second.peak, direct.peak);
     }
 
     #[test]
