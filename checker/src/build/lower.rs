@@ -493,17 +493,7 @@ impl Lowering<'_> {
             return None;
         }
         let groups: Vec<&[Token]> = line.groups.iter().map(|g| g.tokens.as_slice()).collect();
-        let said = self.out.findings.len();
-        let statement = self.statement(kind, line.key, &groups, line.span);
-        // one fault of the text a line: what follows the first is often only its echo
-        let mut first = true;
-        let mut at = 0;
-        self.out.findings.retain(|f| {
-            at += 1;
-            let fault = at > said && f.severity == Severity::Error && f.rule.starts_with("syntax.");
-            !fault || std::mem::take(&mut first)
-        });
-        statement
+        self.statement(kind, line.key, &groups, line.span)
     }
 
     fn statement(

@@ -267,7 +267,7 @@ def clip(case, ohms, cap):
 
 def rated_power(case, worst):
     for claim, ohms in case.b["rated"]:
-        for cap in (min(case.cap_corners), max(case.cap_corners)):
+        for cap in [min(case.cap_corners)]:
             volts = clip(case, case.half(ohms), cap)
             watts = (case.halves * volts) ** 2 / 2 / ohms
             worst.note("power.rated-power", "board rated", watts, claim * 10**-0.05, 100 * claim / watts)
@@ -507,13 +507,22 @@ def past_end(path, device, case):
 
 
 def locus(case, z, rail, f, level, angle):
-    """(v_CE, worst-share device amps) for arrays of frequency, fraction of V(burst), angle of current."""
+    """(v_CE, worst-share device amps) for arrays of frequency, fraction of V(burst), angle of current.
+
+    On large arrays, which only tell where to look closer, the share is taken from samples.
+    """
     at = z(f)
     size, phi = np.abs(at), np.angle(at)
     volts = stage_.burst_array(rail, case.b["drop"], size) * level
     each = volts / size * np.sin(angle) / case.pairs
     out = case.b["out"]
-    hog = each * stage_.share(np.maximum(each, 1e-9), case.pairs, out["spread"], case.re, out["re_low"])
+    least = np.maximum(each, 1e-9)
+    if each.size > 5000:
+        at = np.geomspace(1e-9, max(float(each.max()), 1e-8), 400)
+        shares = np.interp(np.log(least), np.log(at), stage_.share(at, case.pairs, out["spread"], case.re, out["re_low"]))
+    else:
+        shares = stage_.share(least, case.pairs, out["spread"], case.re, out["re_low"])
+    hog = each * shares
     return rail - volts * np.sin(angle + phi) - each * case.re, hog, each * case.pairs
 
 

@@ -110,7 +110,15 @@ def steady(rail, load):
         low = 0.0
         if miss(low) < 0:
             raise ValueError("the supply cannot hold this current")
-    start = brentq(miss, low, high, xtol=1e-11, rtol=1e-13)
+    # One half-cycle is nearly a straight map: the secant is there in a few; brentq where it is not.
+    a, b = max(high - 1.4 * (high - gap), low), gap
+    at_a, at_b = miss(a), miss(b)
+    for _ in range(12):
+        if abs(b - a) < 1e-11 or at_a == at_b:
+            break
+        a, at_a, b = b, at_b, b - at_b * (b - a) / (at_b - at_a)
+        at_b = miss(b)
+    start = b if abs(at_b) < 1e-10 else brentq(miss, low, high, xtol=1e-11, rtol=1e-13)
     end, pieces = _half_cycle(rail, load, start, keep=True)
     w = 2 * np.pi * rail.hertz
     total = rail.source + rail.esr

@@ -418,8 +418,10 @@ mod tests {
             let (zero, crest) = (march(0.0), march(0.5 * PI));
             let (reached, joules) = (zero.0.min(crest.0), zero.1.max(crest.1));
             // Rectangles: half a step of the jump at a crest, and of the step at which idle sets in.
+            let jump = parts.no_load_crest.0 / (slow.source + slow.esr);
+            let edge = extra * jump * jump / 4000.0 * PI / rail.omega;
             prop_assert!((found.reached.0 - reached).abs() < 2e-3 * parts.no_load_crest.0, "{found:?} {reached}");
-            prop_assert!((found.energy.0 - joules).abs() < 3e-3 * joules + 1e-6, "{found:?} {joules}");
+            prop_assert!((found.energy.0 - joules).abs() < 3e-3 * joules + edge, "{found:?} {joules}");
         }
     }
 }
