@@ -67,7 +67,7 @@ impl Client {
             .unwrap_or_default();
         Self {
             // bytes cost nothing to convert; UTF-16 is what every client takes
-            unit: if encodings.contains(&PositionEncodingKind::UTF8) {
+            unit: if encodings.contains(&PositionEncodingKind::UTF8) || takes_bytes(params) {
                 ColumnUnit::Byte
             } else {
                 ColumnUnit::Utf16
@@ -115,6 +115,13 @@ impl Client {
             ColumnUnit::Utf16 | ColumnUnit::Character => PositionEncodingKind::UTF16,
         }
     }
+}
+
+/// Whether the client's options say that it takes columns for bytes whatever is agreed on: some do, and
+/// would put an edit behind a `±` in the wrong place.
+fn takes_bytes(params: &InitializeParams) -> bool {
+    let options = params.initialization_options.as_ref();
+    options.and_then(|o| o.get("columns")).and_then(Value::as_str) == Some("bytes")
 }
 
 /// What this server offers.
