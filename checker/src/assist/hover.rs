@@ -347,5 +347,6 @@ fn one_step(step: &Step) -> String {
 pub fn page(outcome: Outcome) -> String {
     let run =
         crate::render::run::Run::new("margins", crate::render::run::FailOn::Error, vec![outcome]);
-    crate::render::markdown::margins(&run)
+    // beside the spec there is room, and nobody wants to open each table first
+    crate::render::markdown::margins(&run).replace("<details>", "<details open>")
 }

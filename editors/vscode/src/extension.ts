@@ -1,5 +1,8 @@
 // Starts the language server and shows the margin report beside the spec. Knows no amplifier.
 
+import { existsSync } from "node:fs";
+import { homedir } from "node:os";
+import { delimiter, join } from "node:path";
 import * as vscode from "vscode";
 import { LanguageClient, LanguageClientOptions, ServerOptions } from "vscode-languageclient/node";
 
@@ -36,9 +39,26 @@ async function show(spec: vscode.Uri | undefined): Promise<void> {
   }
 }
 
+/** The server to start: as set, or where `cargo install` puts it, which desktops often leave out of `PATH`. */
+function command(): string {
+  const wanted = vscode.workspace.getConfiguration("derate").get<string>("server", "derate-lsp");
+  const file = process.platform === "win32" ? `${wanted}.exe` : wanted;
+  const found = (process.env.PATH ?? "").split(delimiter).some((folder) => existsSync(join(folder, file)));
+  const installed = join(homedir(), ".cargo", "bin", file);
+  return !found && !/[\\/]/.test(wanted) && existsSync(installed) ? installed : wanted;
+}
+
+/** Say what to do about a server that does not start. */
+async function explain(server: string): Promise<void> {
+  const settings = "Open Settings";
+  const text = `The language server \`${server}\` does not start. \`cargo install --path lsp\` in derate's repository installs it; if it is elsewhere, set derate.server.`;
+  if ((await vscode.window.showErrorMessage(text, settings)) === settings) {
+    await vscode.commands.executeCommand("workbench.action.openSettings", "derate.server");
+  }
+}
+
 export async function activate(context: vscode.ExtensionContext): Promise<void> {
-  const command = vscode.workspace.getConfiguration("derate").get<string>("server", "derate-lsp");
-  const server: ServerOptions = { command };
+  const server: ServerOptions = { command: command() };
   const options: LanguageClientOptions = {
     documentSelector: [{ language: "ampspec" }],
     synchronize: { configurationSection: "derate" },
@@ -60,7 +80,7 @@ export async function activate(context: vscode.ExtensionContext): Promise<void> 
     vscode.commands.registerCommand("derate.report", (spec?: vscode.Uri) => show(spec)),
     vscode.languages.onDidChangeDiagnostics((event) => event.uris.forEach((uri) => reports.refresh(uri))),
   );
-  await client.start();
+  await client.start().catch(() => explain(server.command));
 }
 
 export async function deactivate(): Promise<void> {
