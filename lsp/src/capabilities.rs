@@ -9,7 +9,8 @@ use tower_lsp::lsp_types::*;
 
 use crate::convert::legend;
 
-/// The command that answers with the margin summary of a spec, as Markdown.
+/// The command that answers with the margin summary of a spec: as Markdown, or as HTML where its second
+/// argument says `html`.
 pub(crate) const MARGINS: &str = "derate.margins";
 
 /// What the client can do, as far as it matters here.
