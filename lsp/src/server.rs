@@ -5,7 +5,7 @@ use std::future::Future;
 use std::sync::mpsc::SyncSender;
 
 use derate::assist::hover::PageForm;
-use serde_json::Value;
+use serde_json::{Map, Value};
 use tokio::sync::oneshot;
 use tower_lsp::LanguageServer;
 use tower_lsp::jsonrpc::{Error, Result};
@@ -136,8 +136,10 @@ impl LanguageServer for Server {
     }
 
     async fn did_change_configuration(&self, params: DidChangeConfigurationParams) {
+        // many clients say only that something changed, with nothing or an empty object
+        let empty = |s: &Value| s.is_null() || s.as_object().is_some_and(Map::is_empty);
         self.tell(Event::Settings(
-            Some(params.settings).filter(|s| !s.is_null()),
+            Some(params.settings).filter(|s| !empty(s)),
         ));
     }
 

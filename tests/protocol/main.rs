@@ -8,6 +8,8 @@
 )]
 
 mod client;
+mod judge;
 mod session;
+mod strict;
 mod typing;
 mod wire;
