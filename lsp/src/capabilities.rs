@@ -3,6 +3,7 @@
 
 use ampspec_grammar::ColumnUnit;
 use derate::assist::hints::Wanted;
+use derate::build::parts::Duty;
 use serde::Deserialize;
 use serde_json::Value;
 use tower_lsp::lsp_types::*;
@@ -122,7 +123,10 @@ impl Client {
 /// would put an edit behind a `±` in the wrong place.
 fn takes_bytes(params: &InitializeParams) -> bool {
     let options = params.initialization_options.as_ref();
-    options.and_then(|o| o.get("columns")).and_then(Value::as_str) == Some("bytes")
+    options
+        .and_then(|o| o.get("columns"))
+        .and_then(Value::as_str)
+        == Some("bytes")
 }
 
 /// What this server offers.
@@ -203,10 +207,12 @@ pub(crate) fn offered(client: &Client) -> ServerCapabilities {
 }
 
 /// What a person can set, under `derate`.
-#[derive(Clone, Debug, Default, PartialEq, Eq)]
+#[derive(Clone, Debug, Default, PartialEq)]
 pub(crate) struct Settings {
     /// A policy that replaces the one each build names.
     pub(crate) policy: Option<String>,
+    /// A duty that replaces the one each build states.
+    pub(crate) duty: Option<Duty>,
     /// Check every spec of the workspace, not only the open ones.
     pub(crate) workspace: bool,
     /// Which hints.
@@ -217,6 +223,7 @@ pub(crate) struct Settings {
 #[serde(default)]
 struct Sent {
     policy: Option<String>,
+    duty: Option<String>,
     workspace: bool,
     hints: SentHints,
 }
@@ -251,6 +258,7 @@ impl Settings {
         let sent = sent.get("derate").unwrap_or(sent);
         let Sent {
             policy,
+            duty,
             workspace,
             hints,
         } = Sent::deserialize(sent).unwrap_or_default();
@@ -261,6 +269,7 @@ impl Settings {
         } = hints;
         Self {
             policy: policy.filter(|p| !p.is_empty()),
+            duty: duty.as_deref().and_then(Duty::read),
             workspace,
             hints: Wanted {
                 derived,

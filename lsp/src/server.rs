@@ -138,9 +138,7 @@ impl LanguageServer for Server {
     async fn did_change_configuration(&self, params: DidChangeConfigurationParams) {
         // many clients say only that something changed, with nothing or an empty object
         let empty = |s: &Value| s.is_null() || s.as_object().is_some_and(Map::is_empty);
-        self.tell(Event::Settings(
-            Some(params.settings).filter(|s| !empty(s)),
-        ));
+        self.tell(Event::Settings(Some(params.settings).filter(|s| !empty(s))));
     }
 
     async fn hover(&self, params: HoverParams) -> Result<Option<Hover>> {

@@ -13,9 +13,7 @@ static SCHEMA: &str = include_str!("schema/lsp-3.17.schema.json");
 
 fn schema() -> &'static Validator {
     static MADE: OnceLock<Validator> = OnceLock::new();
-    MADE.get_or_init(|| {
-        jsonschema::draft7::new(&serde_json::from_str(SCHEMA).unwrap()).unwrap()
-    })
+    MADE.get_or_init(|| jsonschema::draft7::new(&serde_json::from_str(SCHEMA).unwrap()).unwrap())
 }
 
 /// What a request was about: its method and the document it names.
@@ -219,7 +217,10 @@ impl Judge {
     pub(crate) fn unseen(&self) -> Vec<String> {
         let schema: Value = serde_json::from_str(SCHEMA).unwrap();
         let all = schema["definitions"]["Sent"]["properties"].as_object();
-        let unseen = all.unwrap().keys().filter(|name| !self.seen.contains(*name));
+        let unseen = all
+            .unwrap()
+            .keys()
+            .filter(|name| !self.seen.contains(*name));
         unseen.cloned().collect()
     }
 
@@ -374,7 +375,11 @@ fn tokens(result: &Value, text: &str, bytes: bool) {
     let (mut row, mut column, mut free) = (0, 0, 0);
     for token in data.chunks(5) {
         row += token[0];
-        column = if token[0] > 0 { token[1] } else { column + token[1] };
+        column = if token[0] > 0 {
+            token[1]
+        } else {
+            column + token[1]
+        };
         free = if token[0] > 0 { 0 } else { free };
         assert!(column >= free && token[2] > 0, "{token:?}");
         free = column + token[2];

@@ -8,6 +8,7 @@
 )]
 
 mod client;
+mod edits;
 mod judge;
 mod session;
 mod strict;

@@ -374,6 +374,30 @@ fn settings_choose_policy_hints_and_the_whole_workspace() {
     assert_eq!(client.stop(), 0);
 }
 
+/// Full power heats more than the eighth that the kit states: by the definition of duty.
+#[test]
+fn a_duty_of_the_settings_replaces_that_of_the_build() {
+    let mut client = Client::start(&kits(), &[], json!({"duty": "full"}));
+    let path = uri(&kits().join("duty.ampspec"));
+    client.open(&path, &kit(KIT));
+    let sink = |d: &Value| d.to_string().contains("thermal.sink");
+    assert!(sink(&client.settled(&path, 1)));
+    // one that cannot be read is none
+    for duty in ["", "1/8", "9/8 }", "crest"] {
+        client.tell(
+            "workspace/didChangeConfiguration",
+            json!({"settings": {"derate": {"duty": duty}}}),
+        );
+        client.until(&path, |d| !sink(d));
+        client.tell(
+            "workspace/didChangeConfiguration",
+            json!({"settings": {"derate": {"duty": "crest 3 dB"}}}),
+        );
+        client.until(&path, sink);
+    }
+    assert_eq!(client.stop(), 0);
+}
+
 #[test]
 fn changes_that_clear_a_margin_are_offered_solved() {
     let mut client = Client::start(&kits(), &[], Value::Null);

@@ -168,25 +168,48 @@ fn every_message_of_a_long_session_is_sound() {
             json!({"textDocument": {"uri": s}, "range": everything(), "options": {"tabSize": 4, "insertSpaces": true}}),
         );
         client.settings = json!({"policy": "strict"});
-        client.tell("workspace/didChangeConfiguration", json!({"settings": null}));
-        client.until(&path("sound.ampspec"), |d| d.as_array().unwrap().is_empty());
-        client.tell("window/workDoneProgress/cancel", json!({"token": "derate/1"}));
+        client.tell(
+            "workspace/didChangeConfiguration",
+            json!({"settings": null}),
+        );
+        let asked = |c: &Client| {
+            let all = c.notes.iter();
+            all.filter(|n| n["method"] == "workspace/configuration")
+                .count()
+        };
+        client.within(Duration::from_secs(10), |c| asked(c) == 2);
+        client.tell(
+            "window/workDoneProgress/cancel",
+            json!({"token": "derate/1"}),
+        );
         std::fs::remove_file(root.join("sound.ampspec")).unwrap();
         client.tell(
             "workspace/didChangeWatchedFiles",
             json!({"changes": [{"uri": path("sound.ampspec"), "type": 3}]}),
         );
-        let moved = json!({"event": {"added": [], "removed": [{"uri": uri(&root), "name": "kits"}]}});
+        let moved =
+            json!({"event": {"added": [], "removed": [{"uri": uri(&root), "name": "kits"}]}});
         client.tell("workspace/didChangeWorkspaceFolders", moved);
         client.change(&p, 3, json!([{"text": parts}]));
         client.settled(&p, 3);
         client.tell("textDocument/didClose", json!({"textDocument": {"uri": p}}));
-        client.get("textDocument/hover", json!({"textDocument": {"uri": s}, "position": {"line": 5, "character": 6}}));
-        client.within(Duration::from_secs(10), |c| c.judge.as_ref().unwrap().at_rest());
+        client.get(
+            "textDocument/hover",
+            json!({"textDocument": {"uri": s}, "position": {"line": 5, "character": 6}}),
+        );
+        client.within(Duration::from_secs(10), |c| {
+            c.judge.as_ref().unwrap().at_rest()
+        });
         client.get("shutdown", Value::Null);
-        assert!(client.judge.as_ref().unwrap().at_rest(), "progress never ends");
+        assert!(
+            client.judge.as_ref().unwrap().at_rest(),
+            "progress never ends"
+        );
         let unseen = client.judge.as_ref().unwrap().unseen();
-        let left: Vec<_> = unseen.iter().filter(|n| !UNUSED.contains(&n.as_str())).collect();
+        let left: Vec<_> = unseen
+            .iter()
+            .filter(|n| !UNUSED.contains(&n.as_str()))
+            .collect();
         assert!(left.is_empty(), "never judged: {left:?}");
         client.tell("exit", Value::Null);
         assert_eq!(client.wait(), 0);
@@ -198,7 +221,10 @@ fn a_client_that_can_do_nothing_is_sent_nothing_it_cannot_take() {
     let folder = tempfile::tempdir().unwrap();
     let root = folder.path().canonicalize().unwrap();
     let (spec, parts) = workspace(&root);
-    let (s, p) = (uri(&root.join("spec.ampspec")), uri(&root.join("parts.ampspec")));
+    let (s, p) = (
+        uri(&root.join("spec.ampspec")),
+        uri(&root.join("parts.ampspec")),
+    );
     let mut client = Client::spawn();
     client.begin(json!({"processId": null, "rootUri": uri(&root), "capabilities": {}}));
     client.open(&s, &spec);
@@ -213,7 +239,10 @@ fn a_client_that_can_do_nothing_is_sent_nothing_it_cannot_take() {
     assert_eq!(hover["contents"]["kind"], "plaintext");
     let offers = client.get("textDocument/completion", at).to_string();
     assert!(!offers.contains("insertTextFormat\":2"), "{offers}");
-    let symbols = client.get("textDocument/documentSymbol", json!({"textDocument": {"uri": s}}));
+    let symbols = client.get(
+        "textDocument/documentSymbol",
+        json!({"textDocument": {"uri": s}}),
+    );
     assert!(symbols[0]["location"].is_object(), "{symbols}");
     let name = crate::client::find(&parts, "n16", false);
     let renamed = client.get(
