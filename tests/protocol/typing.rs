@@ -39,7 +39,7 @@ fn by_line(found: &Value) -> BTreeMap<u64, Vec<String>> {
             one["message"].as_str().unwrap(),
         );
         let first = said.lines().next().unwrap_or("");
-        if code.starts_with("syntax.") && !first.contains('}') {
+        if code.starts_with("syntax.") && !first.starts_with("the block ") {
             let row = one["range"]["start"]["line"].as_u64().unwrap();
             out.entry(row).or_default().push(format!("{code}: {first}"));
         }
