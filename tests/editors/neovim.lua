@@ -63,7 +63,6 @@ local function drive()
   end
   step("hover explains bleeder")
 
-  vim.lsp.inlay_hint.enable(true)
   local hints = await("hints", function()
     local all = vim.lsp.inlay_hint.get({ bufnr = 0 })
     return #all > 0 and all
