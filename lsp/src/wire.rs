@@ -264,4 +264,27 @@ mod tests {
         assert_eq!(all(format!("noise\r\n{good}").as_bytes()), ["a"]);
         assert_eq!(all(b"Content-Length: 99\r\n\r\n{"), Vec::<String>::new());
     }
+
+    /// A client that is gone: every write fails.
+    struct Gone;
+
+    impl Write for Gone {
+        fn write(&mut self, _: &[u8]) -> io::Result<usize> {
+            Err(io::ErrorKind::BrokenPipe.into())
+        }
+        fn flush(&mut self) -> io::Result<()> {
+            Ok(())
+        }
+    }
+
+    #[test]
+    fn nobody_waits_for_a_client_that_is_gone() {
+        let (outbox, writer) = Outbox::new();
+        outbox.send(&1);
+        assert!(writer.run(Gone).is_err());
+        outbox.send(&2);
+        let began = Instant::now();
+        outbox.drain();
+        assert!(began.elapsed() < LAST_WORDS / 2);
+    }
 }

@@ -146,11 +146,19 @@ async function drive(window) {
   step("formatted and saved");
   await window.shot("sound");
 
-  await window.palette("derate: Show Margins Beside");
+  await page.keyboard.press("Control+End");
+  const lens = page.locator(".codelens-decoration a", { hasText: /governed by .*, 0 unchecked/ }).first();
+  await lens.waitFor();
+  step(`a lens over the build: ${await lens.innerText()}`);
+  await lens.click();
   const report = page.frameLocator("iframe.webview").frameLocator("iframe#active-frame").locator("body");
   await until("the report", async () => (await report.innerText().catch(() => "")).includes("thermal.sink"));
   step("the margin report opens beside the spec");
   await window.shot("margins");
+  await window.palette("derate: Show Margins Beside");
+  if ((await page.locator("iframe.webview").count()) !== 1) {
+    throw new Error("a second report opens for the same spec");
+  }
 }
 
 install();
