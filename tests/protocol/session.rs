@@ -3,6 +3,7 @@
 use serde_json::{Value, json};
 
 use crate::client::{Client, find, kit, kits, place, uri};
+use crate::judge::offset;
 
 const KIT: &str = "tern60.ampspec";
 
@@ -16,34 +17,20 @@ fn at(path: &str, position: &Value) -> Value {
 
 /// The text after some edits of the protocol, none of which overlap.
 fn applied(text: &str, edits: &Value, bytes: bool) -> String {
-    let offset = |at: &Value| {
-        let (row, column) = (
-            at["line"].as_u64().unwrap() as usize,
-            at["character"].as_u64().unwrap() as usize,
-        );
-        let start: usize = text.split_inclusive('\n').take(row).map(str::len).sum();
-        let mut left = column;
-        let inside = text[start..].chars().take_while(|c| {
-            let width = if bytes { c.len_utf8() } else { c.len_utf16() };
-            let taken = left >= width && left > 0;
-            left = left.saturating_sub(width);
-            taken
-        });
-        start + inside.map(char::len_utf8).sum::<usize>()
-    };
+    let at = |place: &Value| offset(text, place, bytes).unwrap();
     let mut edits: Vec<(usize, usize, &str)> = edits
         .as_array()
         .unwrap()
         .iter()
         .map(|e| {
             (
-                offset(&e["range"]["start"]),
-                offset(&e["range"]["end"]),
+                at(&e["range"]["start"]),
+                at(&e["range"]["end"]),
                 e["newText"].as_str().unwrap(),
             )
         })
         .collect();
-    edits.sort();
+    edits.sort_unstable();
     let mut out = text.to_owned();
     for (start, end, new) in edits.into_iter().rev() {
         out.replace_range(start..end, new);

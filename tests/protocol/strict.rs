@@ -7,6 +7,7 @@ use std::time::Duration;
 use serde_json::{Value, json};
 
 use crate::client::{Client, kit, uri};
+use crate::judge::Judge;
 
 /// What this server has no need to send.
 const UNUSED: &[&str] = &[
@@ -253,6 +254,70 @@ fn a_client_that_can_do_nothing_is_sent_nothing_it_cannot_take() {
     assert!(client.capabilities.get("codeActionProvider").is_none());
     assert!(client.notes.is_empty(), "{:#?}", client.notes);
     assert_eq!(client.stop(), 0);
+}
+
+/// A judge who has seen a client open a text of two lines and ask for a hover and for the layout.
+fn judge() -> Judge {
+    let mut judge = Judge::default();
+    let document =
+        json!({"uri": "file:///a", "languageId": "ampspec", "version": 3, "text": "a±\nb"});
+    judge.sent(&json!({"method": "textDocument/didOpen", "params": {"textDocument": document}}));
+    for (id, method) in [(1, "textDocument/hover"), (2, "textDocument/formatting")] {
+        let params = json!({"textDocument": {"uri": "file:///a"}});
+        judge.sent(&json!({"id": id, "method": method, "params": params}));
+    }
+    judge
+}
+
+/// The judge is worth nothing unless what breaks the protocol fails; each of these differs from a sound
+/// message in one thing.
+#[test]
+fn the_judge_lets_nothing_pass_that_breaks_the_protocol() {
+    let range = |a: Value, b: Value, c: Value, d: Value| json!({"start": {"line": a, "character": b}, "end": {"line": c, "character": d}});
+    let whole = || range(json!(0), json!(0), json!(1), json!(1));
+    let publish = |version: i64, finding: Value| json!({"jsonrpc": "2.0", "method": "textDocument/publishDiagnostics", "params": {"uri": "file:///a", "version": version, "diagnostics": [finding]}});
+    let edits = |all: Value| json!({"jsonrpc": "2.0", "id": 2, "result": all});
+    let edit = |range: Value| json!({"range": range, "newText": ""});
+    let progress = |kind: &str| json!({"jsonrpc": "2.0", "method": "$/progress", "params": {"token": "t", "value": {"kind": kind, "title": "x"}}});
+    for sound in [
+        publish(3, json!({"range": whole(), "message": "m"})),
+        json!({"jsonrpc": "2.0", "id": 1, "result": {"contents": {"kind": "markdown", "value": "v"}, "range": whole()}}),
+        edits(json!([edit(whole())])),
+        json!({"jsonrpc": "2.0", "id": 1, "error": {"code": -32800, "message": "m"}}),
+    ] {
+        judge().received(&sound);
+    }
+    let at = |a: i64, b: i64, c: i64, d: i64| range(json!(a), json!(b), json!(c), json!(d));
+    let finding = |range: Value| publish(3, json!({"range": range, "message": "m"}));
+    let broken = [
+        publish(3, json!({"range": whole()})),
+        publish(3, json!({"range": whole(), "message": "m", "severity": 9})),
+        publish(
+            3,
+            json!({"range": whole(), "message": "m", "colour": "red"}),
+        ),
+        publish(3, json!({"range": whole(), "message": 7})),
+        publish(2, json!({"range": whole(), "message": "m"})),
+        finding(at(-1, 0, 1, 1)),
+        finding(range(json!("0"), json!(0), json!(1), json!(1))),
+        finding(range(json!(0.5), json!(0), json!(1), json!(1))),
+        finding(at(1, 1, 0, 0)),
+        finding(at(0, 0, 0, 3)),
+        finding(at(0, 0, 2, 0)),
+        finding(at(0, 0, 1, 1 << 31)),
+        edits(json!([edit(at(0, 0, 0, 2)), edit(at(0, 1, 1, 0))])),
+        edits(json!([{"range": whole()}])),
+        json!({"jsonrpc": "2.0", "id": 1, "result": null, "error": {"code": 1, "message": "m"}}),
+        json!({"jsonrpc": "2.0", "id": 1}),
+        json!({"jsonrpc": "2.0", "id": 9, "result": null}),
+        json!({"id": 1, "result": null}),
+        json!({"jsonrpc": "2.0", "method": "no/such", "params": {}}),
+        progress("begin"),
+    ];
+    for message in broken {
+        let passed = std::panic::catch_unwind(|| judge().received(&message));
+        assert!(passed.is_err(), "passed: {message}");
+    }
 }
 
 /// Positions counted by hand: `±` is two bytes and one unit, the loudspeaker four bytes and two units.
