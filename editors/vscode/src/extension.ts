@@ -9,11 +9,15 @@ import { LanguageClient, LanguageClientOptions, ServerOptions } from "vscode-lan
 /** The server's command that answers with the margin summary of a spec. */
 const MARGINS = "derate.margins";
 
-/** The page in the colours of the editor; it brings its own for a browser. */
+/** The page in the colours of the editor, and fit for half its width; it brings its own look for a browser. */
 const STYLE = `<style>
 :root { color-scheme: normal; --over: var(--vscode-errorForeground); --thin: var(--vscode-editorWarning-foreground);
   --ok: var(--vscode-testing-iconPassed); --unchecked: var(--vscode-descriptionForeground); }
 body { margin: 1rem 0; color: var(--vscode-foreground); font: var(--vscode-font-size) var(--vscode-font-family); }
+th, td { padding: .15rem .5rem; }
+th:last-child, td:last-child:not([colspan]) { min-width: 32rem; }
+td:first-child { white-space: nowrap; }
+tr:has(> .over) td:first-child { color: var(--over); } tr:has(> .thin) td:first-child { color: var(--thin); }
 </style></head>`;
 
 let client: LanguageClient | undefined;
