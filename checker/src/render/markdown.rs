@@ -24,7 +24,7 @@ pub fn check(run: &Run) -> String {
 
 fn write_check(out: &mut String, run: &Run) -> fmt::Result {
     writeln!(out, "### derate: {}\n", plain(&run.counts.line()))?;
-    let all: Vec<_> = run.shown().filter(|(_, s)| s.waiver.is_none()).collect();
+    let all: Vec<_> = run.shown().filter(|(_, s)| s.open()).collect();
     let mut said = String::new();
     let mut told = 0;
     for (outcome, one) in &all {
@@ -56,6 +56,9 @@ fn write_check(out: &mut String, run: &Run) -> fmt::Result {
             code(&waiver.rule),
             plain(&waiver.reason)
         )?;
+    }
+    for line in run.stale_lines() {
+        writeln!(out, "- {}", plain(&line))?;
     }
     Ok(())
 }
