@@ -118,7 +118,9 @@ pub fn against(
         row.severity = severity(&policy, row);
     }
     let waivers = apply_waivers(&project, options, &build.name, &mut crossed.rows);
-    crossed.rows.sort_by_key(|r| std::cmp::Reverse(r.severity));
+    crossed
+        .rows
+        .sort_by_key(|r| std::cmp::Reverse((r.severity, r.verdict == Verdict::Unchecked)));
     Ok(Crossed {
         sources: project.sources.clone(),
         build: build.name.clone(),

@@ -61,10 +61,20 @@ pub(crate) fn tern60(edits: &[(&str, &str)]) -> String {
     edited(&kit("tern60"), edits)
 }
 
+/// The same, with the changes that would clear what is found.
+pub(crate) fn changes(text: &str) -> Report {
+    checked(text, true).report
+}
+
 /// Check a text as a file beside the demo kits, and keep the files.
 pub(crate) fn outcome(text: &str) -> crate::Outcome {
+    checked(text, false)
+}
+
+fn checked(text: &str, changes: bool) -> crate::Outcome {
     let options = crate::Options {
         today: "2026-06-01".to_owned(),
+        changes,
         ..crate::Options::default()
     };
     crate::check(

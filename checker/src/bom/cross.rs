@@ -5,7 +5,7 @@ use std::collections::{BTreeSet, HashMap};
 
 use super::Row;
 use super::list::{List, Row as Listed};
-use super::reading::quantities;
+use super::reading::{quantities, speed};
 use super::wanted::{Alternative, Figure, Sense, Wanted};
 use crate::build::project::Project;
 use crate::finding::{Severity, Verdict};
@@ -29,7 +29,7 @@ pub(super) fn cross(
     alternates: &[Alternative],
     list: &List,
 ) -> Outcome {
-    let index = Index::new(wanted);
+    let index = Index::new(wanted, alternates);
     let met: Vec<Vec<usize>> = list.rows.iter().map(|row| index.of(row)).collect();
     let mut cross = Cross {
         wanted,
@@ -66,7 +66,7 @@ struct Index<'w> {
 }
 
 impl<'w> Index<'w> {
-    fn new(wanted: &'w [Wanted]) -> Self {
+    fn new(wanted: &'w [Wanted], alternates: &[Alternative]) -> Self {
         let mut index = Self {
             wanted,
             by_ref: HashMap::new(),
@@ -81,6 +81,17 @@ impl<'w> Index<'w> {
                 index.by_code.entry(folded(code)).or_default().push(at);
             }
             index.by_handle.insert(folded(&one.handle), at);
+        }
+        // a part of an alternate stands in the place of the one it replaces
+        for other in alternates.iter().flat_map(|a| &a.wanted) {
+            if let Some(at) = index.by_handle.get(&folded(&other.handle))
+                && let Some(code) = &other.code
+            {
+                let places = index.by_code.entry(folded(code)).or_default();
+                if !places.contains(at) {
+                    places.push(*at);
+                }
+            }
         }
         index
     }
@@ -322,7 +333,7 @@ impl<'c> Cross<'c> {
             return;
         }
         let Some(listed) = rows.iter().map(|r| r.quantity).sum::<Option<u32>>() else {
-            let message = "the list gives neither a quantity nor designators".to_owned();
+            let message = "the list gives no quantity".to_owned();
             self.say(
                 "bom.quantity",
                 Verdict::Unchecked,
@@ -348,16 +359,18 @@ impl<'c> Cross<'c> {
         let needed: u32 = counts.iter().fold(0, |sum, n| sum.saturating_add(*n));
         if listed != needed {
             let names: Vec<&str> = wanted.iter().map(|w| w.name.as_str()).collect();
+            let of = if names.len() > 1 {
+                format!(" of {}", names.join(" and "))
+            } else {
+                String::new()
+            };
             let lines: Vec<String> = rows.iter().map(|r| r.line.to_string()).collect();
             let where_ = if lines.len() > 1 {
                 format!(" (lines {})", lines.join(", "))
             } else {
                 String::new()
             };
-            let message = format!(
-                "{listed} listed{where_}, {needed} needed of {}",
-                names.join(" and ")
-            );
+            let message = format!("{listed} listed{where_}, {needed} needed{of}");
             self.say("bom.quantity", Verdict::Over, first, Some(row), message);
         }
     }
@@ -372,14 +385,16 @@ impl<'c> Cross<'c> {
             return;
         };
         if !clean(told) {
-            let alternative = self.alternates.iter().find(|alternate| {
-                let same = alternate.wanted.iter().find(|a| a.handle == one.handle);
-                same.is_some_and(|a| changed(a, one) && clean(&disagreements(a, row)))
+            let checked = faults.iter().find_map(|(one, _)| {
+                let alternative = self.alternates.iter().find(|alternate| {
+                    let same = alternate.wanted.iter().find(|a| a.handle == one.handle);
+                    same.is_some_and(|a| changed(a, one) && clean(&disagreements(a, row)))
+                })?;
+                Some((*one, alternative.name.as_str()))
             });
-            if let Some(alternative) = alternative {
+            if let Some((one, name)) = checked {
                 let message = format!(
-                    "what is listed is that of alternate `{}`, which has a check of its own",
-                    alternative.name
+                    "what is listed is that of alternate `{name}`, which has a check of its own"
                 );
                 self.say("bom.rating", Verdict::Ok, one, Some(row), message);
                 return;
@@ -565,6 +580,16 @@ fn figures(wanted: &Wanted, row: &Listed, same_code: bool) -> Vec<Disagreement> 
             unchecked(format!("{}{readings}", fault.message))
         })
         .collect();
+    if let (Some(ours), Some(theirs)) = (wanted.speed, speed(&text))
+        && ours != theirs
+    {
+        out.push(Disagreement {
+            verdict: Verdict::Over,
+            message: format!(
+                "the list has a {theirs} fuse; the spec was checked with a {ours} one"
+            ),
+        });
+    }
     for figure in &wanted.figures {
         let theirs: Vec<&Quantity> = read
             .iter()

@@ -197,10 +197,11 @@ pub(super) fn read(given: &Against<'_>) -> Result<List, String> {
         .from_reader(text.as_bytes());
     let headings = reader.headers().map_err(|e| cannot(e.to_string()))?.clone();
     let columns = columns(&headings, given.columns).map_err(cannot)?;
+    let starts: Vec<usize> = text.match_indices('\n').map(|(at, _)| at + 1).collect();
     let mut list = List::default();
     for record in reader.records() {
         let record = record.map_err(|e| cannot(fault(&e)))?;
-        let line = record.position().map_or(0, ::csv::Position::line);
+        let line = line_of(text, &starts, record.position());
         let row = row(&record, &columns, line);
         let blank = record.iter().all(str::is_empty);
         // nothing of it is ordered
@@ -210,6 +211,16 @@ pub(super) fn read(given: &Against<'_>) -> Result<List, String> {
         }
     }
     Ok(list)
+}
+
+/// The line a record begins on. The reader's own count stands before the line feed that ends the
+/// record before.
+fn line_of(text: &str, starts: &[usize], at: Option<&::csv::Position>) -> u64 {
+    let at = at.map_or(0, |p| usize::try_from(p.byte()).unwrap_or(usize::MAX));
+    let ends = text.get(at..).map_or(0, |rest| {
+        rest.len() - rest.trim_start_matches(['\r', '\n']).len()
+    });
+    starts.partition_point(|start| *start <= at + ends) as u64 + 1
 }
 
 /// The comma of RFC 4180, or the semicolon or tab of a spreadsheet where decimals have a comma.

@@ -2,7 +2,7 @@
 //! Must not know what they are compared with.
 
 use crate::quantity::{
-    Dimension, Fault, FaultKind, Quantity, Reading, fuse, read_one_of, split_slash, windings,
+    Dimension, Fault, FaultKind, FuseSpeed, Quantity, Reading, fuse, read_one_of, windings,
 };
 
 /// What a text says of some dimensions, and what in it has two readings. Words are passed over.
@@ -31,6 +31,30 @@ pub(super) fn quantities(text: &str, wants: &[Dimension]) -> (Vec<Quantity>, Vec
     (found, faults)
 }
 
+/// `slow` or `fast`, where the text of a fuse says which.
+pub(super) fn speed(text: &str) -> Option<&'static str> {
+    const SLOW: [&str; 7] = [
+        "slow",
+        "t",
+        "tt",
+        "time-lag",
+        "timelag",
+        "delay",
+        "slow-blow",
+    ];
+    const FAST: [&str; 6] = ["fast", "f", "ff", "quick", "quick-acting", "fast-blow"];
+    tokens(text).iter().find_map(|token| {
+        let word = token.to_lowercase();
+        match fuse(token).map(|f| f.speed) {
+            Some(FuseSpeed::Slow) => Some("slow"),
+            Some(FuseSpeed::Fast) => Some("fast"),
+            None if SLOW.contains(&word.as_str()) => Some("slow"),
+            None if FAST.contains(&word.as_str()) => Some("fast"),
+            None => None,
+        }
+    })
+}
+
 fn one(tokens: &[&str], wants: &[Dimension]) -> Option<Result<Quantity, Fault>> {
     if wants.contains(&Dimension::Current)
         && let Some(fuse) = tokens.first().and_then(|t| fuse(t))
@@ -57,15 +81,7 @@ fn tokens(text: &str) -> Vec<String> {
     let mut out = Vec::new();
     for word in text.split_whitespace() {
         let word = word.trim_matches([',', ';', '(', ')', '[', ']']);
-        let (mut left, mut more) = (word, Vec::new());
-        while let Some((a, b)) = split_slash(left) {
-            more.push(b);
-            left = a;
-            if more.len() > 8 {
-                break;
-            }
-        }
-        for piece in std::iter::once(left).chain(more.into_iter().rev()) {
+        for piece in ratings(word) {
             let piece = match crate::quantity::split_count(piece) {
                 Some((_, of)) => of,
                 None => piece,
@@ -75,6 +91,22 @@ fn tokens(text: &str) -> Vec<String> {
             }
         }
     }
+    out
+}
+
+/// `10000u/50V` into its ratings; neither a fraction, `1/8`, nor a unit, `0.5K/W`, is split.
+fn ratings(word: &str) -> Vec<&str> {
+    let mut out = Vec::new();
+    let mut from = 0;
+    for (at, _) in word.match_indices('/') {
+        let (left, right) = (&word[from..at], &word[at + 1..]);
+        let unit = matches!(right.split(['/', ',']).next(), Some("W" | "K" | "w" | "us"));
+        if left.contains(char::is_alphabetic) && !unit {
+            out.push(left);
+            from = at + 1;
+        }
+    }
+    out.push(&word[from..]);
     out
 }
 
@@ -120,6 +152,19 @@ mod tests {
             [400.0, 25.0]
         );
         assert!(values("see drawing", &can).is_empty());
+    }
+
+    #[test]
+    fn fuses_are_slow_or_fast() {
+        // the letters T and F are those of IEC 60127-1
+        for (text, wanted) in [
+            ("T2.5A", Some("slow")),
+            ("2.5 A time-lag", Some("slow")),
+            ("F 5A", Some("fast")),
+            ("5 A", None),
+        ] {
+            assert_eq!(speed(text), wanted, "{text}");
+        }
     }
 
     #[test]

@@ -2,6 +2,7 @@
 //! Must not know what a list is checked for.
 
 use super::wanted::Wanted;
+use crate::finding::Site;
 use crate::render::escape;
 
 /// The headings, all of which a list is read by.
@@ -17,7 +18,7 @@ const HEADINGS: [&str; 6] = [
 /// The list as comma-separated values after RFC 4180.
 pub(super) fn write(wanted: &[Wanted]) -> String {
     let mut out = line(HEADINGS.map(str::to_owned));
-    let mut placed: Vec<&str> = Vec::new();
+    let mut placed: Vec<(Site, &str)> = Vec::new();
     for one in wanted {
         let refs = share(one, wanted, &mut placed);
         out.push_str(&line([
@@ -25,7 +26,7 @@ pub(super) fn write(wanted: &[Wanted]) -> String {
             one.count.map(|n| n.to_string()).unwrap_or_default(),
             one.code.clone().unwrap_or_default(),
             one.figures_text(),
-            format!("{} {}", one.name, one.what),
+            one.described(),
             one.handle.clone(),
         ]));
     }
@@ -34,7 +35,7 @@ pub(super) fn write(wanted: &[Wanted]) -> String {
 
 /// The designators of one part. Two parts of one line share its designators, the upper device's
 /// first, which is the order of the spec.
-fn share<'w>(one: &'w Wanted, all: &[Wanted], placed: &mut Vec<&'w str>) -> Vec<&'w str> {
+fn share<'w>(one: &'w Wanted, all: &[Wanted], placed: &mut Vec<(Site, &'w str)>) -> Vec<&'w str> {
     let sharing = all
         .iter()
         .filter(|w| w.refs == one.refs && w.site == one.site)
@@ -44,7 +45,7 @@ fn share<'w>(one: &'w Wanted, all: &[Wanted], placed: &mut Vec<&'w str>) -> Vec<
         .refs
         .iter()
         .map(String::as_str)
-        .filter(|r| !placed.contains(r))
+        .filter(|r| !placed.contains(&(one.site, r)))
         .collect();
     let part = if sharing > 1 {
         one.refs.len().div_ceil(sharing)
@@ -52,7 +53,7 @@ fn share<'w>(one: &'w Wanted, all: &[Wanted], placed: &mut Vec<&'w str>) -> Vec<
         mine.len()
     };
     let mine: Vec<&str> = mine.into_iter().take(part).collect();
-    placed.extend(&mine);
+    placed.extend(mine.iter().map(|r| (one.site, *r)));
     mine
 }
 

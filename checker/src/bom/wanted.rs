@@ -58,6 +58,8 @@ pub(super) struct Wanted {
     pub(super) count: Option<u32>,
     /// What is compared.
     pub(super) figures: Vec<Figure>,
+    /// `slow` or `fast`, of a fuse.
+    pub(super) speed: Option<&'static str>,
     /// `npn` and its like.
     pub(super) flavour: Option<&'static str>,
     /// The line.
@@ -67,8 +69,21 @@ pub(super) struct Wanted {
 impl Wanted {
     /// Value and ratings as the spec writes them.
     pub(super) fn figures_text(&self) -> String {
-        let texts: Vec<&str> = self.figures.iter().map(|f| f.text.as_str()).collect();
-        texts.join(" ")
+        let figures = self.figures.iter().map(|f| f.text.as_str());
+        figures.chain(self.speed).collect::<Vec<_>>().join(" ")
+    }
+
+    /// `n16, npn transistor`, `emitter resistor`.
+    pub(super) fn described(&self) -> String {
+        let what = match self.flavour {
+            Some(flavour) => format!("{flavour} {}", self.what),
+            None => self.what.to_owned(),
+        };
+        if self.name.contains(' ') {
+            what
+        } else {
+            format!("{}, {what}", self.name)
+        }
     }
 
     /// `4 x WW5-0R22J 0R22 ±5 % 5 W`.
@@ -326,6 +341,7 @@ impl<'v> Search<'_, 'v> {
                 code,
                 count: count.or(stated),
                 figures: Vec::new(),
+                speed: None,
                 flavour: device.kind.filter(|k| *k != "complementary"),
                 site,
             });
@@ -420,6 +436,7 @@ impl<'v> Search<'_, 'v> {
             code: group.bought.part.clone(),
             count: count.or(group.bought.quantity),
             figures,
+            speed: group.word("slow"),
             flavour: None,
             site: group.site,
         });
@@ -479,6 +496,9 @@ impl<'v> Search<'_, 'v> {
         if let Some(block) = self.seen("transformer", &name) {
             if let Some(group) = block.group("secondary") {
                 figures.extend(self.figures(group, &[("V", Sense::Equal)]));
+                for volts in &mut figures {
+                    volts.text = format!("{} x {}", group.count(), volts.text);
+                }
             }
             if let Some(group) = block.group("rating") {
                 figures.extend(self.figures(group, &[("VA", Sense::AtLeast)]));
@@ -537,6 +557,7 @@ impl<'v> Search<'_, 'v> {
             code: None,
             count: Some(count),
             figures,
+            speed: None,
             flavour: None,
             site,
         });

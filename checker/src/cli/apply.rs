@@ -7,7 +7,7 @@ use std::sync::Arc;
 
 use derate::Outcome;
 use derate::compare::{Comparison, Course, POINTS};
-use derate::finding::{BuildReport, Change, FileId, Margin, TextEdit, Verdict};
+use derate::finding::{BuildReport, Change, FileId, Margin, Severity, TextEdit, Verdict};
 use derate::render::compare as moves;
 use derate::render::message::{build_name, part_name};
 use derate::rules;
@@ -155,11 +155,9 @@ fn edited(before: &Outcome, edits: &[TextEdit]) -> Result<(FileId, String), Stri
     let (Some((id, mut edits)), None) = (files.next(), files.next()) else {
         return Err("left as it is: the change is in several files".to_owned());
     };
-    let broken = before
-        .report
-        .findings
-        .iter()
-        .any(|f| f.site.file == id && f.rule.starts_with("syntax."));
+    let broken = before.report.findings.iter().any(|f| {
+        f.site.file == id && f.rule.starts_with("syntax.") && f.severity == Severity::Error
+    });
     if broken {
         return Err(
             "left as it is: some of the file could not be read; mend that first".to_owned(),

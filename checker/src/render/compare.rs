@@ -18,7 +18,7 @@ use super::{CAUTION, filled};
 const RED: &str = "\u{1b}[31m";
 const GREEN: &str = "\u{1b}[32m";
 
-/// What stands in the columns of a margin.
+/// What stands in the columns of a margin: before and after are stress, allowance and verdict.
 const HEADINGS: [&str; 6] = [
     "rule",
     "before",
@@ -203,20 +203,7 @@ fn name(row: &Row<'_>) -> String {
 }
 
 fn cells(row: &Row<'_>) -> [String; 6] {
-    let (before, after) = match (
-        row.before.and_then(|m| m.stress),
-        row.after.and_then(|m| m.stress),
-    ) {
-        (Some(b), Some(a)) => apart(b, a),
-        (b, a) => (
-            b.map(figure).unwrap_or_default(),
-            a.map(figure).unwrap_or_default(),
-        ),
-    };
-    let side = |m: Option<&Margin>, value: &str| match m {
-        Some(m) => format!("{value} {}", verdict(m)).trim_start().to_owned(),
-        None => "-".to_owned(),
-    };
+    let side = |m: Option<&Margin>| m.map_or("-".to_owned(), held);
     let used = |m: Option<&Margin>| {
         m.and_then(|m| m.used_percent)
             .map(percent)
@@ -230,12 +217,24 @@ fn cells(row: &Row<'_>) -> [String; 6] {
     };
     [
         row.margin().map(|m| m.rule.to_owned()).unwrap_or_default(),
-        side(row.before, &before),
-        side(row.after, &after),
+        side(row.before),
+        side(row.after),
         used(row.before),
         used(row.after),
         rise,
     ]
+}
+
+/// `677 mW / 1.8 W ok`: what the part sees, what it is allowed, the verdict.
+fn held(margin: &Margin) -> String {
+    let numbers = margin
+        .stress
+        .zip(margin.allowance)
+        .map(|(stress, allowance)| {
+            let (stress, allowance) = apart(stress, allowance);
+            format!("{stress} / {allowance} ")
+        });
+    format!("{}{}", numbers.unwrap_or_default(), verdict(margin))
 }
 
 fn verdict(margin: &Margin) -> String {
