@@ -190,11 +190,10 @@ fn alternates<'p>(project: &'p Project, build: &'p Declared) -> impl Iterator<It
 
 fn policy_of(view: &View<'_>, options: &Options) -> Policy {
     let stated = view.seen(view.build).group("policy").and_then(|g| {
-        let name = g.slots.iter().find_map(|s| match &s.value {
+        g.slots.iter().find_map(|s| match &s.value {
             crate::build::statement::Value::Name(name) => Some(name.clone()),
             _ => None,
-        });
-        name
+        })
     });
     options
         .policy

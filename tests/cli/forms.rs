@@ -69,7 +69,7 @@ fn out(folder: &TempDir, arguments: &[&str]) -> String {
 }
 
 /// Every command that reports, with every form of this name.
-fn commands<'a>(form: &'a str) -> Vec<Vec<&'a str>> {
+fn commands(form: &str) -> Vec<Vec<&str>> {
     let mut all = Vec::new();
     for spec in SPECS {
         if [

@@ -1,7 +1,11 @@
 //! The recipes of the README are run, not only written: every command of the CI files and scripts,
 //! and the hook, in a repository made for it. Must not know what the recipes are for.
 #![cfg(unix)]
-#![allow(clippy::unwrap_used, reason = "a test may stop where it stands")]
+#![allow(
+    clippy::unwrap_used,
+    clippy::panic,
+    reason = "a test may stop where it stands"
+)]
 
 use std::fs;
 use std::os::unix::fs::PermissionsExt;

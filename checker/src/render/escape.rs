@@ -82,7 +82,7 @@ pub fn markdown(text: &str) -> String {
 /// whoever wrote them, in which nothing else is mark-up.
 #[must_use]
 pub fn markdown_words(text: &str) -> String {
-    if text.matches('`').count() % 2 != 0 {
+    if !text.matches('`').count().is_multiple_of(2) {
         return markdown(text);
     }
     let piece = |(at, piece): (usize, &str)| match at % 2 {

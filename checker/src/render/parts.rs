@@ -138,26 +138,46 @@ fn write_terminal(out: &mut String, crossed: &Crossed, style: Style) -> fmt::Res
             say("waived:", reason)?;
         }
     }
-    if let Some(text) = others(crossed) {
+    for text in gathered(crossed) {
         filled(out, &escape::terminal(&text), 0, style.width)?;
     }
     writeln!(out, "{}", escape::terminal(&total(crossed)))
 }
 
-/// Only worth knowing: the list holds something that no line of the spec speaks of.
+/// Said in one line for all: the list holds something that no line of the spec speaks of, or a line
+/// of the spec gives nothing to look for it by.
 fn aside(row: &Row) -> bool {
-    row.rule == "bom.extra" && row.verdict == Verdict::Ok && row.severity == Severity::Information
+    let only_known = row.verdict == Verdict::Ok && row.severity == Severity::Information;
+    let nothing_to_find_it_by = row.verdict == Verdict::Unchecked && row.line.is_none();
+    match row.rule {
+        "bom.extra" => only_known,
+        "bom.missing" => nothing_to_find_it_by && row.waiver.is_none(),
+        _ => false,
+    }
 }
 
-/// `not in the spec, not checked: 4 x screws and 2 more`.
-fn others(crossed: &Crossed) -> Option<String> {
-    let names: Vec<String> = crossed
-        .rows
-        .iter()
-        .filter(|r| aside(r))
-        .map(|r| format!("line {} ({})", r.line.unwrap_or_default(), r.part))
-        .collect();
-    (!names.is_empty()).then(|| format!("not in the spec, not checked: {}", listed(&names)))
+/// The rows that are said in one line: `not in the spec, not checked: line 12 (printed board)`.
+fn gathered(crossed: &Crossed) -> Vec<String> {
+    let names = |rule: &str| -> Vec<String> {
+        let rows = crossed.rows.iter().filter(|r| r.rule == rule && aside(r));
+        rows.map(|r| match r.line {
+            Some(line) => format!("line {line} ({})", r.part),
+            None => r.part.clone(),
+        })
+        .collect()
+    };
+    let (missing, extra) = (names("bom.missing"), names("bom.extra"));
+    let mut out = Vec::new();
+    if !missing.is_empty() {
+        out.push(format!(
+            "unchecked bom.missing: these lines state neither `ref` nor `part`, so that they cannot be looked for: {}",
+            missing.join(", ")
+        ));
+    }
+    if !extra.is_empty() {
+        out.push(format!("not in the spec, not checked: {}", listed(&extra)));
+    }
+    out
 }
 
 fn reason<'c>(crossed: &'c Crossed, row: &Row) -> Option<&'c str> {
@@ -202,7 +222,7 @@ fn write_markdown(out: &mut String, crossed: &Crossed) -> fmt::Result {
         ];
         writeln!(out, "| {} |", cells.join(" | "))?;
     }
-    if let Some(text) = others(crossed) {
+    for text in gathered(crossed) {
         writeln!(out, "\n{}", plain(&text))?;
     }
     Ok(())
