@@ -375,6 +375,7 @@ fn fault(error: &::csv::Error) -> String {
 mod tests {
     use super::*;
     use crate::bom::Basis;
+    use proptest::prelude::*;
 
     fn list(text: &str) -> Result<List, String> {
         read(&Against {
@@ -422,6 +423,27 @@ mod tests {
                 .unwrap_err()
                 .contains("line 2 has 1 cells")
         );
+    }
+
+    proptest! {
+        /// Any text as a list: rows or a reason, on lines that are there.
+        #[test]
+        fn any_text_is_a_list_or_says_why(text in "(?s)(ref,qty,value\n)?[Rr0-9,;\"\r\n\t /µ.\\-xuV\u{0}\u{feff}]{0,120}|(?s).{0,60}") {
+            match list(&text) {
+                Ok(list) => {
+                    let lines = text.lines().count() as u64 + 1;
+                    for row in &list.rows {
+                        prop_assert!((1..=lines).contains(&row.line), "{} of {lines}", row.line);
+                        for value in &row.values {
+                            let all = crate::quantity::Dimension::ALL;
+                            let (found, _) = crate::bom::reading::quantities(value, &all);
+                            prop_assert!(found.iter().all(|q| q.value.is_finite()));
+                        }
+                    }
+                }
+                Err(why) => prop_assert!(!why.is_empty()),
+            }
+        }
     }
 
     #[test]
