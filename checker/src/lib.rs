@@ -3,7 +3,10 @@
 
 pub mod analysis;
 pub mod assist;
+pub mod baseline;
+pub mod bom;
 pub mod build;
+pub mod compare;
 pub mod finding;
 pub mod physics;
 pub mod policy;
