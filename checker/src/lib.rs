@@ -4,6 +4,7 @@
 pub mod analysis;
 pub mod assist;
 pub mod build;
+pub mod curves;
 pub mod finding;
 pub mod physics;
 pub mod policy;
@@ -45,6 +46,8 @@ pub struct Options {
     pub today: String,
     /// Look for changes that clear what is over or thin. Each is re-solved, which takes time.
     pub changes: bool,
+    /// Work out the points of the pictures.
+    pub curves: bool,
     /// The folder that no path may leave; the folder of the file where not given.
     pub root: Option<PathBuf>,
     /// What earlier checks solved. Give the same to every check of a run: results do not depend on it.
@@ -177,6 +180,7 @@ fn solve(
         assumed: Vec::new(),
         derived: Vec::new(),
         margins: Vec::new(),
+        curves: None,
     };
     match typed {
         Ok(build) => {
@@ -190,6 +194,7 @@ fn solve(
             } else {
                 regions.iter().map(Some).collect()
             };
+            let mut cases = Vec::new();
             for region in regions {
                 let case = Case::new(&build, &policy, region, tables, &options.memory);
                 for registered in rules::ALL {
@@ -199,8 +204,17 @@ fn solve(
                 }
                 derived::note(&case, &mut report.derived);
                 extend(&mut assumed, case.assumed());
+                if options.curves {
+                    cases.push(case);
+                }
             }
             report.margins = in_rule_order(margins.into_margins());
+            if options.curves {
+                let pictures = report.curves.insert(Vec::new());
+                for (at, case) in cases.iter().enumerate() {
+                    analysis::curves::draw(case, &report.margins, at == 0, pictures);
+                }
+            }
         }
         Err(needs) => {
             for need in needs.keys {

@@ -45,7 +45,7 @@ pub struct Limit {
 
 impl Limit {
     /// Current of what is sensed, at a voltage.
-    fn sensed(&self, volts: Volt) -> Option<Amp> {
+    pub(super) fn sensed(&self, volts: Volt) -> Option<Amp> {
         let all = self.lines.iter().map(|l| l.current(volts));
         all.reduce(|a, b| match self.extreme {
             Extreme::Most => Some(a?.max(b?)),
@@ -55,14 +55,23 @@ impl Limit {
 
     /// Current of the most loaded device while what is sensed is at the limit: a limiter that senses
     /// one device may sense the least loaded.
-    fn most_loaded(&self, bank: &Bank, sensed: Amp) -> Option<Amp> {
+    pub(super) fn most_loaded(&self, bank: &Bank, sensed: Amp) -> Option<Amp> {
         match self.senses {
             Senses::Device => bank.most_loaded_beside(sensed.max(Amp::ZERO)),
             Senses::Bank => Some(bank.most_loaded(sensed.max(Amp::ZERO))),
         }
     }
 
-    fn kinks(&self) -> Vec<Volt> {
+    /// The same where the most loaded device is the one that is sensed.
+    pub(super) fn when_sensed(&self, bank: &Bank, sensed: Amp) -> Option<Amp> {
+        match self.senses {
+            Senses::Device => Some(sensed.max(Amp::ZERO)),
+            Senses::Bank => Some(bank.most_loaded(sensed.max(Amp::ZERO))),
+        }
+    }
+
+    /// Where the line bends.
+    pub(super) fn kinks(&self) -> Vec<Volt> {
         self.lines
             .iter()
             .flat_map(|l| l.corners().map(|c| c.volts))

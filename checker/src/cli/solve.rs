@@ -60,13 +60,20 @@ impl Solve {
         self.colour.style(self.out.is_some())
     }
 
-    /// Solve every file named; also what to say on standard error, and the exit status.
-    pub(crate) fn run(&self, command: &'static str, paths: &[PathBuf]) -> (Run, Vec<String>, u8) {
+    /// Solve every file named; also what to say on standard error, and the exit status. `curves`:
+    /// work out the points of the pictures too.
+    pub(crate) fn run(
+        &self,
+        command: &'static str,
+        paths: &[PathBuf],
+        curves: bool,
+    ) -> (Run, Vec<String>, u8) {
         let (files, mut notes) = inputs(paths);
         let options = Options {
             policy: self.policy.clone(),
             build: self.build.clone(),
             today: today(),
+            curves,
             ..Options::default()
         };
         let shelf = Shelf::default();

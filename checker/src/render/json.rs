@@ -14,6 +14,7 @@ use schemars::generate::SchemaSettings;
 use sha2::{Digest, Sha256};
 
 use crate::Outcome;
+use crate::curves;
 use crate::finding::{self as found, Severity, Site, WaiverState};
 use crate::source::{File, Sources};
 
@@ -215,6 +216,10 @@ fn build(outcome: &Outcome, b: &found::BuildReport) -> form::Build {
                 why: a.why.to_owned(),
             })
             .collect(),
+        curves: b
+            .curves
+            .as_ref()
+            .map(|all| all.iter().map(picture).collect()),
         derived: b.derived.iter().map(|d| derived(sources, d)).collect(),
         duty: b.duty.clone(),
         margins: b.margins.iter().map(|m| margin(outcome, b, m)).collect(),
@@ -226,6 +231,50 @@ fn build(outcome: &Outcome, b: &found::BuildReport) -> form::Build {
         policy: b.policy.clone(),
         settled: b.settled,
         span: span(sources, b.site),
+    }
+}
+
+fn picture(p: &curves::Picture) -> form::Picture {
+    form::Picture {
+        facts: p.facts.iter().map(fact).collect(),
+        kind: p.kind.name().to_owned(),
+        of: p.of.clone(),
+        panels: p.panels.iter().map(panel).collect(),
+        region: some(&p.region),
+    }
+}
+
+fn fact(f: &curves::Fact) -> form::Fact {
+    form::Fact {
+        name: f.name.to_owned(),
+        of: some(&f.of),
+        value: qty(f.value),
+    }
+}
+
+fn panel(p: &curves::Panel) -> form::Panel {
+    let axis = |a: &curves::Axis| form::Axis {
+        log: a.log,
+        name: a.name.to_owned(),
+        unit: a.unit.to_owned(),
+    };
+    let line = |l: &curves::Line| form::Line {
+        label: l.label.clone(),
+        points: l.points.iter().map(|(x, y)| [Number(*x), Number(*y)]).collect(),
+        role: l.role.name().to_owned(),
+    };
+    let mark = |m: &curves::Mark| form::Mark {
+        label: m.label.clone(),
+        role: m.role.name().to_owned(),
+        value: m.value.map(qty),
+        x: Number(m.x),
+        y: Number(m.y),
+    };
+    form::Panel {
+        lines: p.lines.iter().map(line).collect(),
+        marks: p.marks.iter().map(mark).collect(),
+        x: axis(&p.x),
+        y: axis(&p.y),
     }
 }
 

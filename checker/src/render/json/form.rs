@@ -170,6 +170,8 @@ form! {
         alternate: Option<String>,
         /// Values used because nothing states them.
         assumed: Vec<Assumed>,
+        /// The points of the pictures; null where they were not asked for.
+        curves: Option<Vec<Picture>>,
         /// Numbers people want beside a line.
         derived: Vec<Derived>,
         /// The duty in force.
@@ -195,6 +197,70 @@ form! {
         value: Option<Qty>,
         /// Why this one.
         why: String,
+    }
+    /// A picture as numbers.
+    Picture {
+        /// Figures for the words under it.
+        facts: Vec<Fact>,
+        /// `safe_area`, `limiter`, `impedance`, `rail`, `ripple`, `heat` or `ladder`.
+        kind: String,
+        /// Of which parts or load.
+        of: Vec<String>,
+        /// One above the other, the same axis across.
+        panels: Vec<Panel>,
+        /// The mains region.
+        region: Option<String>,
+    }
+    /// A figure that holds for a picture.
+    Fact {
+        /// What it is.
+        name: String,
+        /// The load it holds for.
+        of: Option<String>,
+        /// The figure.
+        value: Qty,
+    }
+    /// One pair of axes.
+    Panel {
+        /// In the order in which they are drawn.
+        lines: Vec<Line>,
+        /// Points pointed out.
+        marks: Vec<Mark>,
+        /// Across.
+        x: Axis,
+        /// Up.
+        y: Axis,
+    }
+    /// One axis.
+    Axis {
+        /// Logarithmic.
+        log: bool,
+        /// What it counts.
+        name: String,
+        /// Its unit.
+        unit: String,
+    }
+    /// A line through points, straight between them in the scales of the axes.
+    Line {
+        /// Which one: a load, a mains level.
+        label: String,
+        /// Pairs across and up.
+        points: Vec<[Number; 2]>,
+        /// `stated`, `derated`, `allowed`, `locus`, `limit`, `plain` or `beside`.
+        role: String,
+    }
+    /// A point pointed out.
+    Mark {
+        /// Which one.
+        label: String,
+        /// `worst`, `point`, `allowed` or `rating`.
+        role: String,
+        /// A figure that belongs to it.
+        value: Option<Qty>,
+        /// Across.
+        x: Number,
+        /// Up.
+        y: Number,
     }
     /// A derived number.
     Derived {
