@@ -394,7 +394,11 @@ impl Allowance {
     /// The voltage up to which the data speak: the end of the curve, or the breakdown where none is due.
     #[must_use]
     pub fn known_to(&self) -> Volt {
-        let end = if self.end > 0.0 { self.end } else { self.breakdown };
+        let end = if self.end > 0.0 {
+            self.end
+        } else {
+            self.breakdown
+        };
         Volt(end.min(self.breakdown))
     }
 

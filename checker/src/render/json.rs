@@ -6,6 +6,7 @@
 //! value, so that two runs, on any platform, give the same bytes.
 
 pub mod form;
+mod pictures;
 
 use std::collections::HashSet;
 use std::path::PathBuf;
@@ -14,7 +15,6 @@ use schemars::generate::SchemaSettings;
 use sha2::{Digest, Sha256};
 
 use crate::Outcome;
-use crate::curves;
 use crate::finding::{self as found, Severity, Site, WaiverState};
 use crate::source::{File, Sources};
 
@@ -219,7 +219,7 @@ fn build(outcome: &Outcome, b: &found::BuildReport) -> form::Build {
         curves: b
             .curves
             .as_ref()
-            .map(|all| all.iter().map(picture).collect()),
+            .map(|all| all.iter().map(pictures::picture).collect()),
         derived: b.derived.iter().map(|d| derived(sources, d)).collect(),
         duty: b.duty.clone(),
         margins: b.margins.iter().map(|m| margin(outcome, b, m)).collect(),
@@ -231,50 +231,6 @@ fn build(outcome: &Outcome, b: &found::BuildReport) -> form::Build {
         policy: b.policy.clone(),
         settled: b.settled,
         span: span(sources, b.site),
-    }
-}
-
-fn picture(p: &curves::Picture) -> form::Picture {
-    form::Picture {
-        facts: p.facts.iter().map(fact).collect(),
-        kind: p.kind.name().to_owned(),
-        of: p.of.clone(),
-        panels: p.panels.iter().map(panel).collect(),
-        region: some(&p.region),
-    }
-}
-
-fn fact(f: &curves::Fact) -> form::Fact {
-    form::Fact {
-        name: f.name.to_owned(),
-        of: some(&f.of),
-        value: qty(f.value),
-    }
-}
-
-fn panel(p: &curves::Panel) -> form::Panel {
-    let axis = |a: &curves::Axis| form::Axis {
-        log: a.log,
-        name: a.name.to_owned(),
-        unit: a.unit.to_owned(),
-    };
-    let line = |l: &curves::Line| form::Line {
-        label: l.label.clone(),
-        points: l.points.iter().map(|(x, y)| [Number(*x), Number(*y)]).collect(),
-        role: l.role.name().to_owned(),
-    };
-    let mark = |m: &curves::Mark| form::Mark {
-        label: m.label.clone(),
-        role: m.role.name().to_owned(),
-        value: m.value.map(qty),
-        x: Number(m.x),
-        y: Number(m.y),
-    };
-    form::Panel {
-        lines: p.lines.iter().map(line).collect(),
-        marks: p.marks.iter().map(mark).collect(),
-        x: axis(&p.x),
-        y: axis(&p.y),
     }
 }
 

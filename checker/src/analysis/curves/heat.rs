@@ -66,7 +66,10 @@ fn against_output(case: &Case<'_>) -> Result<Picture, Needs> {
             (Role::Point, "1/3".to_owned(), 1.0 / 3.0),
             (Role::Worst, "worst".to_owned(), worst),
         ];
-        if !of_load.iter().any(|(_, _, d)| (d - duty.fraction).abs() < 1e-9) {
+        if !of_load
+            .iter()
+            .any(|(_, _, d)| (d - duty.fraction).abs() < 1e-9)
+        {
             of_load.push((Role::Point, format!("duty {}", duty.shown), duty.fraction));
         }
         for (role, label, fraction) in of_load.into_iter().filter(|m| m.2 <= most) {
@@ -115,7 +118,11 @@ fn ladder(case: &Case<'_>, margins: &[Margin], side: Side) -> Result<Picture, Ne
         ("junction", found.junction.0, Some("thermal.junction")),
     ];
     if let Ok(peak) = case.peak_junction(heat, load, side) {
-        rungs.push(("junction, peak", peak.junction.0, Some("thermal.junction-peak")));
+        rungs.push((
+            "junction, peak",
+            peak.junction.0,
+            Some("thermal.junction-peak"),
+        ));
     }
     let (mut lines, mut marks) = (Vec::new(), Vec::new());
     let mut before = case.hottest()?.0;
@@ -133,7 +140,10 @@ fn ladder(case: &Case<'_>, margins: &[Margin], side: Side) -> Result<Picture, Ne
         let Some(margin) = margins.iter().find(of) else {
             continue;
         };
-        for (role, figure) in [(Role::Allowed, margin.allowance), (Role::Rating, margin.rating)] {
+        for (role, figure) in [
+            (Role::Allowed, margin.allowance),
+            (Role::Rating, margin.rating),
+        ] {
             marks.extend(figure.filter(|f| f.unit == "degC").map(|f| Mark {
                 role,
                 label: name.to_owned(),

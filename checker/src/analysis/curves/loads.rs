@@ -58,10 +58,21 @@ fn picture(load: &Driven) -> Picture {
                 y: axis("between the terminals", "ohm", true),
                 lines: vec![
                     of("modulus", Role::Plain, &modulus, false),
-                    of("peak dissipation resistance", Role::Beside, &resistance, false),
+                    of(
+                        "peak dissipation resistance",
+                        Role::Beside,
+                        &resistance,
+                        false,
+                    ),
                 ],
                 marks: vec![
-                    mark("least modulus", Role::Point, &s.minimum, modulus(s.minimum.impedance), "ohm"),
+                    mark(
+                        "least modulus",
+                        Role::Point,
+                        &s.minimum,
+                        modulus(s.minimum.impedance),
+                        "ohm",
+                    ),
                     mark(
                         "least peak dissipation resistance",
                         Role::Worst,
@@ -76,8 +87,20 @@ fn picture(load: &Driven) -> Picture {
                 y: axis("phase", "deg", false),
                 lines: phases,
                 marks: vec![
-                    mark("most lagging", Role::Point, &s.most_lagging, angle(s.most_lagging.impedance), "deg"),
-                    mark("most leading", Role::Point, &s.most_leading, angle(s.most_leading.impedance), "deg"),
+                    mark(
+                        "most lagging",
+                        Role::Point,
+                        &s.most_lagging,
+                        angle(s.most_lagging.impedance),
+                        "deg",
+                    ),
+                    mark(
+                        "most leading",
+                        Role::Point,
+                        &s.most_leading,
+                        angle(s.most_leading.impedance),
+                        "deg",
+                    ),
                 ],
             },
         ],

@@ -86,7 +86,11 @@ fn against_current(case: &Case<'_>) -> Result<Picture, Needs> {
         kind: Kind::Rail,
         of: Vec::new(),
         region: region(case),
-        facts: vec![fact("channels", f64::from(case.channels_per_supply()?), "1")],
+        facts: vec![fact(
+            "channels",
+            f64::from(case.channels_per_supply()?),
+            "1",
+        )],
         panels: vec![Panel {
             x: axis("mean current from each rail of one supply", "A", false),
             y: axis("one rail to ground", "V", false),
