@@ -13,6 +13,8 @@ pub mod quantity;
 pub mod render;
 pub mod rule;
 pub mod rules;
+pub mod size;
+pub mod solver;
 pub mod source;
 pub mod tables;
 #[cfg(test)]

@@ -71,7 +71,7 @@ fn offer(
     };
     let values = values(remedy, quantity.value);
     let mut attempt = |value: f64| -> Option<(String, Arc<Vec<Margin>>)> {
-        let text = written(value, quantity, remedy);
+        let text = written(value, quantity, remedy.series == Series::Count);
         let margins = tried.entry((slot.site, text.clone())).or_insert_with(|| {
             let changed = with_value(&line, group, remedy.slot, value);
             Arc::new(solve(&[(block.clone(), Arc::new(changed))]))
@@ -247,9 +247,10 @@ fn values(remedy: &Remedy, now: f64) -> Vec<f64> {
     out
 }
 
-/// A value as the language spells it, in the style of the line: letter codes stay letter codes.
-fn written(value: f64, like: &Quantity, remedy: &Remedy) -> String {
-    if remedy.series == Series::Count {
+/// A value as the language spells it, in the style of the line: letter codes stay letter codes, a
+/// `count` has no unit.
+pub(crate) fn written(value: f64, like: &Quantity, count: bool) -> String {
+    if count {
         return format!("{value}");
     }
     let mut text = match like.dimension {
@@ -275,7 +276,7 @@ fn written(value: f64, like: &Quantity, remedy: &Remedy) -> String {
 }
 
 /// The line with another value in one slot.
-fn with_value(line: &Statement, group: usize, slot: &str, value: f64) -> Statement {
+pub(crate) fn with_value(line: &Statement, group: usize, slot: &str, value: f64) -> Statement {
     let mut line = line.clone();
     if let Some(found) = line
         .groups
@@ -289,7 +290,7 @@ fn with_value(line: &Statement, group: usize, slot: &str, value: f64) -> Stateme
 }
 
 /// The text of the line with one place replaced, on one line.
-fn statement_text(view: &View<'_>, line: &Statement, place: Site, text: &str) -> Option<String> {
+pub(crate) fn statement_text(view: &View<'_>, line: &Statement, place: Site, text: &str) -> Option<String> {
     // a changed line begins with `change BLOCK`; its own key is where it starts
     let whole = view.project.sources.text(line.site.file);
     if place.file != line.site.file {

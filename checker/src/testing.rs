@@ -63,8 +63,18 @@ pub(crate) fn tern60(edits: &[(&str, &str)]) -> String {
 
 /// Check a text as a file beside the demo kits.
 pub(crate) fn report(text: &str) -> Report {
+    checked(text, false)
+}
+
+/// The same, with the points of the pictures.
+pub(crate) fn drawn(text: &str) -> Report {
+    checked(text, true)
+}
+
+fn checked(text: &str, curves: bool) -> Report {
     let options = crate::Options {
         today: "2026-06-01".to_owned(),
+        curves,
         ..crate::Options::default()
     };
     crate::check(

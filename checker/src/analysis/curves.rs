@@ -5,6 +5,8 @@ mod heat;
 mod loads;
 mod rails;
 mod safe_area;
+#[cfg(test)]
+mod tests;
 
 use super::case::Case;
 use crate::curves::{Axis, Fact, Picture};

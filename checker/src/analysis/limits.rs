@@ -6,7 +6,7 @@ use super::Stress;
 use super::case::{Case, Side, solved, stated};
 use super::devices::emitter;
 use super::heat::{Heat, mounting, sink_model};
-use super::loads::Driven;
+use super::loads::{Driven, Spot};
 use super::rails::Mains;
 use super::safe_area::{SafeArea, aim, settled};
 use crate::build::Needs;
@@ -78,6 +78,18 @@ impl Limit {
             .filter(|v| *v >= Volt::ZERO)
             .collect()
     }
+}
+
+/// Where a limit line comes nearest to a load.
+#[derive(Debug)]
+pub(super) struct Clear {
+    limit: Limit,
+    rail: Volt,
+    /// Where on the load's impedance.
+    pub(super) spot: Spot,
+    /// Peak output there.
+    pub(super) amplitude: Volt,
+    nearest: Clearance,
 }
 
 /// A short at the output of one channel.
@@ -351,17 +363,11 @@ impl Case<'_> {
         }
     }
 
-    /// How far the limit line stays clear of a load at full drive: the least ratio of the current at
-    /// which it acts to the current that flows.
+    /// Where the limit line comes nearest to a load at full drive.
     ///
     /// # Errors
     /// What is missing.
-    pub fn clearance_stress(
-        &self,
-        heat: &Heat,
-        load: &Driven,
-        side: Side,
-    ) -> Result<Stress, Needs> {
+    pub(super) fn clearance(&self, heat: &Heat, load: &Driven, side: Side) -> Result<Clear, Needs> {
         // the sense transistor stands on the board beside the sink: as hot as that at most
         let (limit, bench, (rail, drop)) = three(
             self.limit(Extreme::Least, heat.hot_spot),
@@ -405,6 +411,34 @@ impl Case<'_> {
             })
             .ok_or_else(nothing)?;
         let (amplitude, clear) = at_point(spot.seen).ok_or_else(nothing)?;
+        Ok(Clear {
+            limit,
+            rail,
+            spot,
+            amplitude,
+            nearest: clear,
+        })
+    }
+
+    /// How far the limit line stays clear of a load at full drive: the least ratio of the current at
+    /// which it acts to the current that flows.
+    ///
+    /// # Errors
+    /// What is missing.
+    pub fn clearance_stress(
+        &self,
+        heat: &Heat,
+        load: &Driven,
+        side: Side,
+    ) -> Result<Stress, Needs> {
+        let Clear {
+            limit,
+            rail,
+            spot,
+            amplitude,
+            nearest: clear,
+        } = self.clearance(heat, load, side)?;
+        let swing = rail * 2.0;
         let idle = limit.sensed(swing).is_none_or(|i| i <= Amp::ZERO);
         let mut working = self.limit_steps(&limit);
         working.extend([

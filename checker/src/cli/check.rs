@@ -38,7 +38,7 @@ enum Form {
 
 impl Args {
     pub(crate) fn run(self) -> Done {
-        let (run, notes, status) = self.solve.run("check", &self.paths, false);
+        let (run, notes, status) = self.solve.run("check", &self.paths, |_| {});
         let output = match self.form {
             Form::Terminal => terminal::check(&run, self.solve.style()),
             Form::Json => json::render(&run),

@@ -60,22 +60,22 @@ impl Solve {
         self.colour.style(self.out.is_some())
     }
 
-    /// Solve every file named; also what to say on standard error, and the exit status. `curves`:
-    /// work out the points of the pictures too.
+    /// Solve every file named; also what to say on standard error, and the exit status. `ask` adds
+    /// what a form shows beyond the verdicts.
     pub(crate) fn run(
         &self,
         command: &'static str,
         paths: &[PathBuf],
-        curves: bool,
+        ask: impl FnOnce(&mut Options),
     ) -> (Run, Vec<String>, u8) {
         let (files, mut notes) = inputs(paths);
-        let options = Options {
+        let mut options = Options {
             policy: self.policy.clone(),
             build: self.build.clone(),
             today: today(),
-            curves,
             ..Options::default()
         };
+        ask(&mut options);
         let shelf = Shelf::default();
         let results = self.each(&files, |file| outcome(file, &shelf, &options));
         let mut outcomes = Vec::with_capacity(results.len());

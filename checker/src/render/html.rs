@@ -1,6 +1,8 @@
 //! The margin report as one self-contained page to sign: no script, nothing fetched, every text
 //! escaped. Must not know how a margin was computed.
 
+mod labels;
+mod ladder;
 mod plot;
 mod scale;
 mod words;
@@ -226,12 +228,34 @@ fn table(out: &mut String, build: &BuildReport) -> fmt::Result {
             plain(&group.name),
             plain(&purchase(first))
         )?;
-        for margin in shown {
+        // what compares no numbers and is right needs no line of its own
+        let (plainly, numbers): (Vec<&Margin>, Vec<&Margin>) = shown
+            .into_iter()
+            .partition(|m| m.verdict == Verdict::Ok && m.stress.is_none());
+        for margin in numbers {
             row(out, build, margin)?;
         }
+        agreed(out, &plainly)?;
         out.write_str("</tbody>\n")?;
     }
     out.write_str("</table>\n")
+}
+
+/// What is plainly right, on one line: `bom.quantity; supply.bypass-stuck (the thermal fuse opens)`.
+fn agreed(out: &mut String, margins: &[&Margin]) -> fmt::Result {
+    if margins.is_empty() {
+        return Ok(());
+    }
+    let said = |m: &&Margin| match m.note.as_str() {
+        "" => m.rule.to_owned(),
+        note => format!("{} ({note})", m.rule),
+    };
+    let text = margins.iter().map(said).collect::<Vec<_>>().join("; ");
+    writeln!(
+        out,
+        "<tr><td colspan=\"8\" class=\"at wide\"><span class=\"ok\">ok</span> without figures: {}</td></tr>",
+        plain(&text)
+    )
 }
 
 fn ranked(margin: &Margin) -> bool {
@@ -260,7 +284,7 @@ fn row(out: &mut String, build: &BuildReport, margin: &Margin) -> fmt::Result {
     if let Some(pass) = rule.and_then(|rule| would_pass(rule, margin, build)) {
         writeln!(
             out,
-            "<tr><td colspan=\"8\" class=\"pass\">would pass: {}</td></tr>",
+            "<tr><td colspan=\"8\" class=\"at wide pass\">would pass: {}</td></tr>",
             plain(&pass)
         )?;
     }
@@ -270,6 +294,8 @@ fn row(out: &mut String, build: &BuildReport, margin: &Margin) -> fmt::Result {
 fn class(column: usize) -> &'static str {
     if (1..=5).contains(&column) {
         " class=\"n\""
+    } else if column == 7 {
+        " class=\"at\""
     } else {
         ""
     }
@@ -316,7 +342,7 @@ fn one(out: &mut String, picture: &Picture, id: &str) -> fmt::Result {
     let (title, caption) = (words::title(picture), words::caption(picture));
     writeln!(out, "<figure>\n<h4>{}</h4>", plain(&title))?;
     match picture.kind {
-        Kind::Ladder => plot::ladder(out, picture, id, &title, &caption)?,
+        Kind::Ladder => ladder::draw(out, picture, id, &title, &caption)?,
         _ => plot::draw(out, picture, id, &title, &caption)?,
     }
     key(out, picture)?;

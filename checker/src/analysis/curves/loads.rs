@@ -44,6 +44,8 @@ fn picture(load: &Driven) -> Picture {
         y,
         value: Some(Measure::new(y, unit)),
     };
+    let flat = load.load.is_flat();
+    let some = |marks: Vec<Mark>| if flat { Vec::new() } else { marks };
     Picture {
         kind: Kind::Impedance,
         of: vec![load.name.clone()],
@@ -65,7 +67,7 @@ fn picture(load: &Driven) -> Picture {
                         false,
                     ),
                 ],
-                marks: vec![
+                marks: some(vec![
                     mark(
                         "least modulus",
                         Role::Point,
@@ -74,19 +76,19 @@ fn picture(load: &Driven) -> Picture {
                         "ohm",
                     ),
                     mark(
-                        "least peak dissipation resistance",
+                        "least dissipation",
                         Role::Worst,
                         &s.dissipation,
                         resistance(s.dissipation.impedance),
                         "ohm",
                     ),
-                ],
+                ]),
             },
             Panel {
                 x: axis("frequency", "Hz", true),
                 y: axis("phase", "deg", false),
                 lines: phases,
-                marks: vec![
+                marks: some(vec![
                     mark(
                         "most lagging",
                         Role::Point,
@@ -101,7 +103,7 @@ fn picture(load: &Driven) -> Picture {
                         angle(s.most_leading.impedance),
                         "deg",
                     ),
-                ],
+                ]),
             },
         ],
     }

@@ -11,6 +11,7 @@ use crate::build::Needs;
 use crate::curves::{Fact, Kind, Line, Mark, Panel, Picture, Role};
 use crate::finding::{Margin, Measure, Verdict};
 use crate::physics::limiter::Extreme;
+use crate::physics::load::Impedance;
 use crate::physics::math::{self, PI};
 use crate::physics::safe_area::Allowance;
 use crate::physics::unit::{Amp, Celsius, Volt};
@@ -25,6 +26,8 @@ const FROM: f64 = 1.0;
 /// A load at its worst for a device.
 struct Played<'c> {
     name: String,
+    /// The same at every frequency.
+    flat: bool,
     ready: Ready<'c>,
     spot: Spot,
     found: Use,
@@ -76,6 +79,7 @@ fn played<'c>(case: &'c Case<'_>, side: Side, aim: f64) -> Vec<Played<'c>> {
         if let Ok((spot, found)) = case.worst_use(&ready, load, Angle::Own) {
             out.push(Played {
                 name: load.name.clone(),
+                flat: load.load.is_flat(),
                 ready,
                 spot,
                 found,
@@ -131,12 +135,14 @@ fn facts(case: &Case<'_>, played: &[Played<'_>], aim: f64) -> Vec<Fact> {
         let angle = one.spot.seen.angle_rad() * 180.0 / PI;
         facts.extend([
             fact_of("case", &one.name, one.ready.case.0, "degC"),
-            fact_of("frequency", &one.name, one.spot.frequency.0, "Hz"),
             fact_of("modulus", &one.name, modulus, "ohm"),
             fact_of("angle", &one.name, angle, "deg"),
             fact_of("amplitude", &one.name, one.found.amplitude.0, "V"),
             fact_of("rail", &one.name, one.ready.rail.0, "V"),
         ]);
+        if !one.flat {
+            facts.push(fact_of("frequency", &one.name, one.spot.frequency.0, "Hz"));
+        }
     }
     facts
 }
@@ -184,12 +190,16 @@ fn straightened(points: Vec<(f64, f64)>) -> Vec<(f64, f64)> {
 }
 
 /// The derated curve of every load: each heats the case in its own way. Loads that heat it alike
-/// share one.
+/// share one. What the policy allows of it is drawn for the load that uses most.
 fn derated(played: &[Played<'_>], aim: f64, lines: &mut Vec<Line>) {
+    let most = played.iter().map(|one| one.found.used).fold(0.0, f64::max);
     let mut known: Vec<(Role, Vec<(f64, f64)>)> = Vec::new();
     for one in played {
         for (allowance, pulse) in one.ready.allowances(one.found.pulse) {
             for (role, share) in [(Role::Derated, 1.0), (Role::Allowed, aim)] {
+                if role == Role::Allowed && one.found.used < most {
+                    continue;
+                }
                 let label = match pulse {
                     None => one.name.clone(),
                     Some(length) => format!("{}, {:.3} ms", one.name, 1e3 * length.0),
@@ -206,22 +216,40 @@ fn derated(played: &[Played<'_>], aim: f64, lines: &mut Vec<Line>) {
 
 /// The most loaded device over half a period, with its worst point among the samples.
 fn locus(one: &Played<'_>) -> Option<Line> {
-    let locus = one.ready.locus(one.found.amplitude, one.spot.seen)?;
-    let mut samples: Vec<(f64, f64, f64)> = (1..STEPS)
+    let seen = one.spot.seen;
+    let point = one.found.point;
+    let current_phase = point.angle_rad - seen.angle_rad();
+    let beta = if seen.angle_rad() > 0.0 {
+        PI - current_phase
+    } else {
+        current_phase
+    };
+    let worst = (beta, point.volts.0, point.amps.0);
+    path(one, seen, one.found.amplitude, Some(worst))
+}
+
+/// The locus of a load into an impedance, with one more sample of phase, volts and amps.
+fn path(
+    one: &Played<'_>,
+    seen: Impedance,
+    amplitude: Volt,
+    more: Option<(f64, f64, f64)>,
+) -> Option<Line> {
+    let locus = one.ready.locus(amplitude, seen)?;
+    // without an angle the second quarter runs back along the first
+    let last = if seen.angle_rad() == 0.0 {
+        STEPS / 2
+    } else {
+        STEPS - 1
+    };
+    let mut samples: Vec<(f64, f64, f64)> = (1..=last)
         .map(|k| {
             let beta = PI * f64::from(k) / f64::from(STEPS);
             let (volts, amps) = locus.at_phase(beta);
             (beta, volts, amps)
         })
         .collect();
-    let point = one.found.point;
-    let current_phase = point.angle_rad - one.spot.seen.angle_rad();
-    let beta = if one.spot.seen.angle_rad() > 0.0 {
-        PI - current_phase
-    } else {
-        current_phase
-    };
-    samples.push((beta, point.volts.0, point.amps.0));
+    samples.extend(more);
     samples.sort_by(|a, b| a.0.total_cmp(&b.0));
     Some(Line {
         role: Role::Locus,
@@ -287,12 +315,17 @@ fn limit_volts(limit: &Limit, swing: Volt) -> Vec<f64> {
 /// The limit line at both ends of its tolerances against the hottest derated curve and every locus.
 fn limiter(case: &Case<'_>, margins: &[Margin], side: Side) -> Result<Option<Picture>, Needs> {
     let device = case.output().device(side);
-    let limits: Vec<Line> = [Extreme::Most, Extreme::Least]
+    let mut limits: Vec<Line> = [Extreme::Most, Extreme::Least]
         .into_iter()
         .filter_map(|e| limit_line(case, side, e))
         .collect();
     if limits.is_empty() {
         return Ok(None);
+    }
+    // a stated line has no spread
+    limits.dedup_by(|b, a| a.points == b.points);
+    if let [only] = limits.as_mut_slice() {
+        only.label.clear();
     }
     let played = played(case, side, 1.0);
     let hottest = played
@@ -303,7 +336,15 @@ fn limiter(case: &Case<'_>, margins: &[Margin], side: Side) -> Result<Option<Pic
         lines.push(curve(Role::Derated, String::new(), allowance, 1.0));
     }
     lines.extend(limits);
-    lines.extend(played.iter().filter_map(locus));
+    for (load, heat) in case.played().into_iter().flatten() {
+        let Some(one) = played.iter().find(|one| one.name == load.name) else {
+            continue;
+        };
+        // at the frequency at which the line comes nearest, which is not that of the safe area
+        if let Ok(clear) = case.clearance(heat, load, side) {
+            lines.extend(path(one, clear.spot.seen, clear.amplitude, None));
+        }
+    }
     let mut facts = Vec::new();
     facts.extend(hottest.map(|one| fact("case", one.ready.case.0, "degC")));
     facts.extend(case.mains_volts(Mains::High).map(|v| fact("mains", v, "V")));

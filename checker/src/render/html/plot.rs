@@ -7,24 +7,23 @@ use crate::curves::{Axis, Line, Mark, Panel, Picture, Role};
 use crate::render::escape::xml as plain;
 use crate::render::figure::{figure, number};
 
-use super::scale::{Scale, Tick, range, step};
+use super::labels::{Labels, between};
+use super::scale::{Scale, Tick, range};
 
 /// Width of a drawing in its own units; on a phone it is drawn at three quarters of this.
 pub(super) const WIDTH: f64 = 480.0;
 const LEFT: f64 = 46.0;
-const RIGHT: f64 = 12.0;
-const TOP: f64 = 24.0;
-const BOTTOM: f64 = 38.0;
+pub(super) const RIGHT: f64 = 12.0;
+pub(super) const TOP: f64 = 24.0;
+pub(super) const BOTTOM: f64 = 38.0;
 /// Height of the first panel, and of those below it.
 const HEIGHTS: [f64; 2] = [290.0, 130.0];
 /// Decades of a logarithmic axis at most: currents begin at zero.
 const DECADES: f64 = 1000.0;
 /// Looks of lines that stand for loads or mains levels, told apart by dashes as well as by colour.
 pub(super) const LOOKS: usize = 6;
-/// Size of a letter, for laying out labels.
-const LETTER: (f64, f64) = (6.6, 14.0);
 /// Longest label that is written beside its line; a longer one is cut, the key says all of it.
-const LABEL: usize = 22;
+const LABEL: usize = 28;
 
 /// The drawing, with `title` and `words` for those who cannot see it; `id` is unique on the page.
 pub(super) fn draw(
@@ -110,17 +109,10 @@ fn of(axis: &Axis, values: impl Iterator<Item = f64> + Clone) -> Option<(f64, f6
     let mut low = some.fold(f64::INFINITY, f64::min);
     if axis.log {
         low = low.max(high / DECADES);
-        if low > high / 3.0 {
-            low = high / 10.0;
-        }
+        // an impedance that is flat still needs an axis
+        low = low.min(high / 3.0);
     }
     let (from, to) = range(low, high, axis.log)?;
-    // an impedance that is flat still needs an axis
-    let to = if axis.log && to < 3.0 * from {
-        3.0 * to
-    } else {
-        to
-    };
     Some((from, to, axis.log))
 }
 
@@ -178,7 +170,12 @@ impl Frame {
                 .filter(|p| x.holds(p.0) && y.holds(p.1))
                 .collect();
             let colour = class(&panel.lines, at).replace("l ", "t ");
-            labels.write(out, &named(line), &between(&on_paper(&inside)), &colour)?;
+            labels.write(
+                out,
+                &named(panel, line),
+                &between(&on_paper(&inside)),
+                &colour,
+            )?;
         }
         Ok(())
     }
@@ -269,7 +266,7 @@ fn short(value: f64) -> String {
 }
 
 /// A line through places.
-pub(super) fn path(out: &mut String, class: &str, points: &[(f64, f64)]) -> fmt::Result {
+fn path(out: &mut String, class: &str, points: &[(f64, f64)]) -> fmt::Result {
     write!(out, "<path class=\"{class}\" d=\"")?;
     for (at, (x, y)) in points.iter().enumerate() {
         write!(out, "{}{x:.1} {y:.1}", if at == 0 { 'M' } else { 'L' })?;
@@ -305,16 +302,21 @@ fn marked(mark: &Mark) -> String {
     }
 }
 
-/// What stands beside a line.
-fn named(line: &Line) -> String {
-    match (line.role, line.label.as_str()) {
-        (Role::Stated, _) => "stated, 25 °C".to_owned(),
-        (Role::Derated, _) => "derated".to_owned(),
-        (Role::Allowed, _) => "allowed".to_owned(),
-        (Role::Limit, label) => format!("limit line {label}")
-            .trim_end()
-            .replace("line at", "at"),
-        (_, label) => cut(label),
+/// What stands beside a line; nothing where it is the only one of its kind, or a mark already says it.
+fn named(panel: &Panel, line: &Line) -> String {
+    let alike = panel.lines.iter().filter(|l| l.role == line.role).count();
+    let which = |name: &str| match (alike, line.label.as_str()) {
+        (1, _) | (_, "") => name.to_owned(),
+        (_, label) => cut(&format!("{name}, {label}")),
+    };
+    match line.role {
+        Role::Stated => "stated, 25 °C".to_owned(),
+        Role::Derated => which("derated"),
+        Role::Allowed => which("allowed"),
+        Role::Limit => which("limit line"),
+        Role::Plain if alike == 1 && panel.lines.len() != 2 => String::new(),
+        _ if panel.marks.iter().any(|m| m.label == line.label) => String::new(),
+        _ => cut(&line.label),
     }
 }
 
@@ -325,210 +327,4 @@ pub(super) fn cut(label: &str) -> String {
     }
     let head: String = label.chars().take(LABEL - 1).collect();
     format!("{head}…")
-}
-
-/// Points along a line, close enough together that one of them is near any good place for its name.
-fn between(points: &[(f64, f64)]) -> Vec<(f64, f64)> {
-    let mut out = Vec::new();
-    for pair in points.windows(2) {
-        if let [a, b] = pair {
-            let steps = (((b.0 - a.0).abs() + (b.1 - a.1).abs()) / 12.0)
-                .ceil()
-                .clamp(1.0, 60.0);
-            for k in 0..steps as u32 {
-                let share = f64::from(k) / steps;
-                out.push((a.0 + (b.0 - a.0) * share, a.1 + (b.1 - a.1) * share));
-            }
-        }
-    }
-    out.extend(points.last());
-    out
-}
-
-/// Puts names where they cover neither lines nor each other.
-struct Labels {
-    frame: (f64, f64, f64, f64),
-    taken: Vec<(f64, f64, f64, f64)>,
-    points: Vec<(f64, f64)>,
-}
-
-impl Labels {
-    fn new(frame: (f64, f64, f64, f64)) -> Self {
-        Self {
-            frame,
-            taken: Vec::new(),
-            points: Vec::new(),
-        }
-    }
-
-    fn avoid(&mut self, points: &[(f64, f64)]) {
-        self.points.extend(between(points));
-    }
-
-    fn avoid_around(&mut self, x: f64, y: f64) {
-        self.taken.push((x - 10.0, y - 10.0, x + 10.0, y + 10.0));
-    }
-
-    /// Write a name beside the best of some places.
-    fn write(
-        &mut self,
-        out: &mut String,
-        text: &str,
-        near: &[(f64, f64)],
-        class: &str,
-    ) -> fmt::Result {
-        if text.is_empty() {
-            return Ok(());
-        }
-        let (width, height) = (text.chars().count() as f64 * LETTER.0, LETTER.1);
-        let mut best: Option<(f64, (f64, f64))> = None;
-        for (x, y) in near {
-            for (dx, dy) in [
-                (12.0, -4.0 - height),
-                (12.0, 4.0),
-                (-12.0 - width, -4.0 - height),
-                (-12.0 - width, 4.0),
-                (14.0, -height / 2.0),
-                (-14.0 - width, -height / 2.0),
-                (-width / 2.0, -14.0 - height),
-                (-width / 2.0, 14.0),
-            ] {
-                let at = (x + dx, y + dy);
-                let cost = self.cost((at.0, at.1, at.0 + width, at.1 + height));
-                if best.is_none_or(|b| cost < b.0) {
-                    best = Some((cost, at));
-                }
-            }
-        }
-        let Some((_, (x, y))) = best else {
-            return Ok(());
-        };
-        self.taken
-            .push((x - 2.0, y - 1.0, x + width + 2.0, y + height + 1.0));
-        writeln!(
-            out,
-            "<text class=\"name {class}\" x=\"{x:.1}\" y=\"{:.1}\">{}</text>",
-            y + height - 3.0,
-            plain(text)
-        )
-    }
-
-    /// What a box would cover: other names and what leaves the frame cost most.
-    fn cost(&self, b: (f64, f64, f64, f64)) -> f64 {
-        let overlap = |o: &(f64, f64, f64, f64)| {
-            (b.2.min(o.2) - b.0.max(o.0)).max(0.0) * (b.3.min(o.3) - b.1.max(o.1)).max(0.0)
-        };
-        let inside = overlap(&self.frame);
-        let outside = (b.2 - b.0) * (b.3 - b.1) - inside;
-        let named: f64 = self.taken.iter().map(overlap).sum();
-        let lines = self
-            .points
-            .iter()
-            .filter(|p| (b.0..=b.2).contains(&p.0) && (b.1..=b.3).contains(&p.1));
-        50.0 * outside + 20.0 * named + 10.0 * lines.count() as f64
-    }
-}
-
-/// The temperature ladder: a bar from the temperature before to its own, a row each.
-pub(super) fn ladder(
-    out: &mut String,
-    picture: &Picture,
-    id: &str,
-    title: &str,
-    words: &str,
-) -> fmt::Result {
-    const ROW: f64 = 34.0;
-    const NAMES: f64 = 126.0;
-    let Some(panel) = picture.panels.first() else {
-        return Ok(());
-    };
-    let rows = panel.lines.len();
-    let height = TOP + rows as f64 * ROW + BOTTOM;
-    let all = panel
-        .lines
-        .iter()
-        .flat_map(|l| l.points.iter().map(|p| p.0));
-    let all = all.chain(panel.marks.iter().map(|m| m.x));
-    let (low, high) = all.fold((f64::INFINITY, f64::NEG_INFINITY), |(l, h), t| {
-        (l.min(t), h.max(t))
-    });
-    let tick = step((high - low).max(1.0), 6.0);
-    let ends = (NAMES, WIDTH - 30.0);
-    let Some(x) = Scale::new(
-        (low / tick).floor() * tick,
-        (high / tick).ceil() * tick,
-        false,
-        ends,
-    ) else {
-        return Ok(());
-    };
-    open(out, id, height, title, words)?;
-    let bottom = TOP + rows as f64 * ROW;
-    for tick in x.ticks() {
-        let at = x.place(tick.value);
-        writeln!(out, "<path class=\"g\" d=\"M{at:.1} {TOP}V{bottom}\"/>")?;
-        writeln!(
-            out,
-            "<text class=\"tick mid\" x=\"{at:.1}\" y=\"{:.1}\">{}</text>",
-            bottom + 15.0,
-            number(tick.value)
-        )?;
-    }
-    for (row, line) in panel.lines.iter().enumerate() {
-        let (Some(from), Some(to)) = (line.points.first(), line.points.last()) else {
-            continue;
-        };
-        let top = TOP + row as f64 * ROW + 7.0;
-        let (a, b) = (x.place(from.0.min(to.0)), x.place(from.0.max(to.0)));
-        writeln!(
-            out,
-            "<text class=\"tick end\" x=\"{:.1}\" y=\"{:.1}\">{}</text>",
-            NAMES - 8.0,
-            top + 14.0,
-            plain(&line.label)
-        )?;
-        writeln!(
-            out,
-            "<rect class=\"bar\" x=\"{a:.1}\" y=\"{top:.1}\" width=\"{:.1}\" height=\"20\"/>",
-            (b - a).max(2.0)
-        )?;
-        for mark in panel
-            .marks
-            .iter()
-            .filter(|m| (m.y - row as f64).abs() < 0.5)
-        {
-            let at = x.place(mark.x);
-            writeln!(
-                out,
-                "<path class=\"l {}\" d=\"M{at:.1} {:.1}v32\"/>",
-                mark.role.name(),
-                top - 6.0
-            )?;
-        }
-        // beside the bar, on the side where no limit stands in the way
-        let after = b + 5.0;
-        let room = panel
-            .marks
-            .iter()
-            .filter(|m| (m.y - row as f64).abs() < 0.5)
-            .all(|m| {
-                let at = x.place(m.x);
-                at < after - 2.0 || at > after + 46.0
-            });
-        let (at, class) = if room { (after, "") } else { (a - 5.0, " end") };
-        writeln!(
-            out,
-            "<text class=\"name{class}\" x=\"{at:.1}\" y=\"{:.1}\">{} °C</text>",
-            top + 14.0,
-            number(to.0)
-        )?;
-    }
-    writeln!(
-        out,
-        "<text class=\"axis end\" x=\"{:.1}\" y=\"{:.1}\">{}</text>",
-        ends.1,
-        bottom + 32.0,
-        plain(&axis_name(&panel.x))
-    )?;
-    out.write_str("</svg>\n")
 }

@@ -114,10 +114,7 @@ fn impedance(p: &Picture) -> String {
     let mut text = String::from(
         "The equivalent peak dissipation resistance is the resistor that would make the output devices as hot at the worst instant as this load does at its own phase.",
     );
-    if let (Some(modulus), Some(heat)) = (
-        mark("least modulus"),
-        mark("least peak dissipation resistance"),
-    ) {
+    if let (Some(modulus), Some(heat)) = (mark("least modulus"), mark("least dissipation")) {
         text.push_str(&format!(
             " The modulus is least with {} at {}, the peak dissipation resistance with {} at {}.",
             modulus.0, modulus.1, heat.0, heat.1
@@ -130,18 +127,18 @@ fn impedance(p: &Picture) -> String {
 }
 
 fn rail(p: &Picture) -> String {
-    let channels = p
-        .fact("channels")
-        .map(|c| number(c.value))
-        .unwrap_or_default();
+    let channels = match p.fact("channels") {
+        Some(one) if one.value < 1.5 => "one channel".to_owned(),
+        many => format!("{} channels", number(many.map_or(0.0, |c| c.value))),
+    };
     let mut text = format!(
-        "Mean of one rail with a steady current drawn from both, {channels} channel(s) on the supply; the trough with the reservoir at its least."
+        "Mean of one rail with a steady current drawn from both, {channels} on the supply; the trough with the reservoir at its least."
     );
     for mark in marks(p, Role::Point) {
         let at = figure(Measure::new(mark.x, "A"));
         text.push_str(&format!(
             " {}: {} at {at}.",
-            mark.label,
+            capital(&mark.label),
             mark.value.map(shown).unwrap_or_default()
         ));
     }
@@ -220,13 +217,14 @@ pub(super) fn key(picture: &Picture, line: &Line) -> String {
             of(picture, "case", &line.label)
         ),
         (_, Role::Allowed) => format!("what the policy allows of it, in {}", line.label),
+        (_, Role::Limit) if line.label.is_empty() => "limit line".to_owned(),
         (_, Role::Limit) => format!("limit line, {}", line.label),
         (Kind::SafeArea, Role::Locus) => format!(
-            "{}: {} at {}, {}, {} peak",
+            "{}: {} at {}{}, {} peak",
             line.label,
             figure_of(picture, "modulus", &line.label),
             figure_of(picture, "angle", &line.label),
-            figure_of(picture, "frequency", &line.label),
+            of(picture, "frequency", &line.label),
             figure_of(picture, "amplitude", &line.label)
         ),
         (Kind::Impedance, Role::Beside) if line.label == "phase" => {
