@@ -16,6 +16,7 @@ pub mod rules;
 pub mod size;
 pub mod solver;
 pub mod source;
+pub mod spread;
 pub mod tables;
 #[cfg(test)]
 pub(crate) mod testing;

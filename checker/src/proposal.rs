@@ -27,7 +27,7 @@ pub fn fill(view: &View<'_>, margins: &mut [Margin], solve: &Solve<'_>) {
     // the same edit is asked about by every margin it may clear: solve it once
     let mut tried: HashMap<(Site, String), Arc<Vec<Margin>>> = HashMap::new();
     for margin in margins.iter_mut() {
-        if !matches!(margin.verdict, Verdict::Over | Verdict::Thin) || margin.waiver.is_some() {
+        if !stands_in_the_way(margin) {
             continue;
         }
         let Some(rule) = rules::find(margin.rule) else {
@@ -136,6 +136,11 @@ fn offer(
         used_after,
         also_moves: moves(margin, before, &after),
     })
+}
+
+/// Past its allowance, and no waiver accepts it.
+pub(crate) fn stands_in_the_way(margin: &Margin) -> bool {
+    matches!(margin.verdict, Verdict::Over | Verdict::Thin) && margin.waiver.is_none()
 }
 
 /// A change must not push any other margin past its rating, or leave it without a figure.

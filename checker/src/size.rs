@@ -12,6 +12,7 @@ use std::path::Path;
 use crate::Options;
 use crate::build::statement::Declared;
 use crate::finding::{Margin, Measure, Verdict};
+use crate::proposal::stands_in_the_way as fails;
 use crate::solver::Solver;
 use crate::source::{Files, Sources};
 
@@ -150,11 +151,6 @@ pub fn size(
 fn states_supply(solver: &Solver, build: &Declared) -> bool {
     let view = solver.view(build, &[]);
     view.seen(build).line("supply").is_some_and(|l| !l.none)
-}
-
-/// Whether a margin stands in the way: past its allowance and not waived.
-fn fails(margin: &Margin) -> bool {
-    matches!(margin.verdict, Verdict::Over | Verdict::Thin) && margin.waiver.is_none()
 }
 
 /// Whether two solutions leave a margin exactly as it was.
