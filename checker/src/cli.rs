@@ -40,6 +40,10 @@ commands! {
     Check(check),
     /// Summarise every margin, by part
     Margins(margins),
+    /// Find the smallest usual transformer, reservoir, heatsink and fuses that pass
+    Size(size),
+    /// Draw random kits within tolerance, and say how many pass
+    Spread(spread),
     /// Explain a rule, or list all of them
     Explain(explain),
     /// Put files into the canonical layout; meaning never changes

@@ -295,7 +295,12 @@ pub(crate) fn with_value(line: &Statement, group: usize, slot: &str, value: f64)
 }
 
 /// The text of the line with one place replaced, on one line.
-pub(crate) fn statement_text(view: &View<'_>, line: &Statement, place: Site, text: &str) -> Option<String> {
+pub(crate) fn statement_text(
+    view: &View<'_>,
+    line: &Statement,
+    place: Site,
+    text: &str,
+) -> Option<String> {
     // a changed line begins with `change BLOCK`; its own key is where it starts
     let whole = view.project.sources.text(line.site.file);
     if place.file != line.site.file {

@@ -15,6 +15,8 @@ pub mod message;
 pub mod run;
 pub mod sarif;
 pub mod shown;
+pub mod size;
+pub mod spread;
 pub mod terminal;
 pub mod test_xml;
 

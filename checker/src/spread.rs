@@ -151,20 +151,34 @@ fn of_build(
     let worst = solver.solve(build, &[]).margins;
     let full = |at: &[f64]| solver.solve(build, &draw::changes(&inputs, at)).margins;
     let fitted = model::fit(inputs.len(), &worst, &full);
-    let moving: Vec<Moving> = fitted.moving.iter().filter_map(|id| moving(id, &worst)).collect();
+    let moving: Vec<Moving> = fitted
+        .moving
+        .iter()
+        .filter_map(|id| moving(id, &worst))
+        .collect();
     let fixed: Vec<&Margin> = worst
         .iter()
         .filter(|m| crate::proposal::stands_in_the_way(m) && !fitted.moving.contains(&m.id))
         .collect();
-    let bands = fitted.models.as_deref().map(|models| bands(models, &inputs, &moving, ask, &full));
-    let kits = if bands.is_some() { ask.kits } else { ask.kits.min(FULL_KITS) };
+    let bands = fitted
+        .models
+        .as_deref()
+        .map(|models| bands(models, &inputs, &moving, ask, &full));
+    let kits = if bands.is_some() {
+        ask.kits
+    } else {
+        ask.kits.min(FULL_KITS)
+    };
     let judge = Judge {
         moving: &moving,
         models: fitted.models.as_deref().zip(bands.as_deref()),
         full: &full,
         inputs: &inputs,
         seed: ask.seed,
-        fails: (!fixed.is_empty(), fixed.iter().any(|m| m.verdict == Verdict::Over)),
+        fails: (
+            !fixed.is_empty(),
+            fixed.iter().any(|m| m.verdict == Verdict::Over),
+        ),
     };
     let all = judge.all(kits, progress);
     let share = |count: usize| count as f64 / f64::from(kits.max(1));
@@ -179,7 +193,10 @@ fn of_build(
             share(all.iter().filter(|k| k.within).count()),
         ),
         margins: margins(&judge, &all, bands.as_deref()),
-        fixed: fixed.iter().map(|m| (m.part.name.clone(), m.rule, m.verdict)).collect(),
+        fixed: fixed
+            .iter()
+            .map(|m| (m.part.name.clone(), m.rule, m.verdict))
+            .collect(),
     }
 }
 
@@ -209,7 +226,11 @@ fn over(margin: &Margin) -> f64 {
         }
         _ => 100.0 * rating.value / allowance.value,
     };
-    if at.is_finite() && at >= 100.0 { at } else { 100.0 }
+    if at.is_finite() && at >= 100.0 {
+        at
+    } else {
+        100.0
+    }
 }
 
 /// The band of each margin within which the model is not believed.
@@ -234,8 +255,16 @@ fn bands(
             models.iter().zip(moving).map(error).collect()
         })
         .collect();
-    let worst = |k: usize| errors.iter().filter_map(|e| e.get(k)).copied().fold(0.0, f64::max);
-    (0..models.len()).map(|k| CAUTION * worst(k) + 1e-9).collect()
+    let worst = |k: usize| {
+        errors
+            .iter()
+            .filter_map(|e| e.get(k))
+            .copied()
+            .fold(0.0, f64::max)
+    };
+    (0..models.len())
+        .map(|k| CAUTION * worst(k) + 1e-9)
+        .collect()
 }
 
 /// All that it takes to judge one kit.
@@ -283,12 +312,19 @@ impl Judge<'_> {
     fn solved(&self, at: &[f64]) -> Kit {
         let margins = (self.full)(at);
         // no figure is no rating left: past everything
-        let used = self.moving.iter().map(|of| model::used(&margins, &of.id).unwrap_or(f64::INFINITY));
+        let used = self
+            .moving
+            .iter()
+            .map(|of| model::used(&margins, &of.id).unwrap_or(f64::INFINITY));
         self.verdict(used.collect(), true)
     }
 
     fn verdict(&self, used: Vec<f64>, solved: bool) -> Kit {
-        let counted = || used.iter().zip(self.moving).filter(|(_, of)| of.worst.waiver.is_none());
+        let counted = || {
+            used.iter()
+                .zip(self.moving)
+                .filter(|(_, of)| of.worst.waiver.is_none())
+        };
         let pass = !self.fails.0 && counted().all(|(u, _)| *u <= 100.0);
         let within = !self.fails.1 && counted().all(|(u, of)| *u <= of.over);
         Kit {
@@ -304,7 +340,11 @@ fn margins(judge: &Judge<'_>, kits: &[Kit], bands: Option<&[f64]>) -> Vec<Margin
     let count = kits.len().max(1) as f64;
     let mut governs = vec![0_u32; judge.moving.len()];
     for kit in kits {
-        let greatest = kit.used.iter().enumerate().max_by(|a, b| a.1.total_cmp(b.1));
+        let greatest = kit
+            .used
+            .iter()
+            .enumerate()
+            .max_by(|a, b| a.1.total_cmp(b.1));
         if let Some(found) = greatest.and_then(|(at, _)| governs.get_mut(at)) {
             *found += 1;
         }
@@ -314,14 +354,21 @@ fn margins(judge: &Judge<'_>, kits: &[Kit], bands: Option<&[f64]>) -> Vec<Margin
         .iter()
         .enumerate()
         .map(|(k, of)| {
-            let mut used: Vec<f64> = kits.iter().filter_map(|kit| kit.used.get(k).copied()).collect();
+            let mut used: Vec<f64> = kits
+                .iter()
+                .filter_map(|kit| kit.used.get(k).copied())
+                .collect();
             used.sort_by(f64::total_cmp);
             let past = |limit: f64| used.iter().filter(|u| **u > limit).count() as f64 / count;
             let at = |percent: f64| {
                 let place = (percent / 100.0 * count).ceil().max(1.0) as usize - 1;
-                used.get(place.min(used.len().saturating_sub(1))).copied().unwrap_or_default()
+                used.get(place.min(used.len().saturating_sub(1)))
+                    .copied()
+                    .unwrap_or_default()
             };
-            let by = judge.models.and_then(|(models, _)| models.get(k)?.governing(judge.inputs, judge.seed));
+            let by = judge
+                .models
+                .and_then(|(models, _)| models.get(k)?.governing(judge.inputs, judge.seed));
             MarginSpread {
                 id: of.id.clone(),
                 rule: of.worst.rule,

@@ -1,11 +1,12 @@
 //! What the commands that solve builds have in common: their options, and the run.
 //! Must not know how a run is printed.
 
-use std::path::PathBuf;
+use std::path::{Path, PathBuf};
 
 use clap::ValueEnum;
 use derate::render::run::{FailOn, Run};
 use derate::render::terminal::Style;
+use derate::source::Files;
 use derate::today::today;
 use derate::{Options, Outcome};
 use rayon::prelude::*;
@@ -98,6 +99,56 @@ impl Solve {
             NOT_RUN
         };
         (run, notes, status)
+    }
+
+    /// Do something else with one file than check it, on as many threads as were asked for.
+    ///
+    /// # Errors
+    /// When it is no one file, or cannot be read; the text says why.
+    pub(crate) fn one<T: Send>(
+        &self,
+        path: &Path,
+        work: impl FnOnce(&dyn Files, &Path, &str, &Options) -> Result<T, String> + Send,
+    ) -> Result<T, String> {
+        let (files, notes) = inputs(&[path.to_owned()]);
+        let [file] = files.as_slice() else {
+            let why = notes.first().map_or("it is not one file", String::as_str);
+            return Err(format!("cannot read {}: {why}", path.display()));
+        };
+        let cannot = |why| format!("cannot read {}: {why}", file.name);
+        let text = file.read().map_err(cannot)?;
+        let options = Options {
+            policy: self.policy.clone(),
+            build: self.build.clone(),
+            today: today(),
+            root: file.root(),
+            ..Options::default()
+        };
+        let run = || {
+            let shelf = Shelf::default();
+            let path = file.path.as_path();
+            let given = Given {
+                path,
+                text,
+                shelf: &shelf,
+            };
+            work(&given, path, &file.name, &options).map_err(cannot)
+        };
+        match rayon::ThreadPoolBuilder::new()
+            .num_threads(self.threads.unwrap_or(0))
+            .build()
+        {
+            Ok(pool) => pool.install(run),
+            Err(_) => run(),
+        }
+    }
+
+    /// Whether errors or warnings fail the run.
+    pub(crate) fn fails(&self, errors: bool, warnings: bool) -> bool {
+        match self.fail_on {
+            Level::Error => errors,
+            Level::Warning | Level::Unchecked => errors || warnings,
+        }
     }
 
     /// Names on the command line that name nothing.

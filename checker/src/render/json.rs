@@ -7,6 +7,8 @@
 
 pub mod form;
 mod pictures;
+mod size;
+mod spread;
 
 use std::collections::HashSet;
 use std::path::PathBuf;
@@ -45,6 +47,9 @@ pub fn render(run: &Run) -> String {
     lines(&report(run))
 }
 
+pub use size::sized;
+pub use spread::spread;
+
 /// Any value as indented JSON with a line end.
 pub(super) fn lines(value: &impl serde::Serialize) -> String {
     // the types hold nothing that JSON cannot say
@@ -79,6 +84,8 @@ pub fn report(run: &Run) -> form::Report {
         files: files.list,
         policies: policies(run),
         schema: SCHEMA.to_owned(),
+        size: None,
+        spread: None,
         summary: form::Summary {
             assumed: c.assumed,
             error: c.error,
@@ -267,15 +274,19 @@ fn margin(outcome: &Outcome, b: &found::BuildReport, m: &found::Margin) -> form:
         span: span(sources, m.site),
         stress: m.stress.map(qty),
         used_percent: m.used_percent.map(Number),
-        verdict: match m.verdict {
-            found::Verdict::Ok => form::Verdict::Ok,
-            found::Verdict::Thin => form::Verdict::Thin,
-            found::Verdict::Over => form::Verdict::Over,
-            found::Verdict::Unchecked => form::Verdict::Unchecked,
-        },
+        verdict: verdict(m.verdict),
         waiver: m.waiver.and_then(|at| report.waivers.get(at)).map(accepted),
         witness: witness(&m.witness),
         working: m.working.iter().map(|s| step(sources, s)).collect(),
+    }
+}
+
+fn verdict(v: found::Verdict) -> form::Verdict {
+    match v {
+        found::Verdict::Ok => form::Verdict::Ok,
+        found::Verdict::Thin => form::Verdict::Thin,
+        found::Verdict::Over => form::Verdict::Over,
+        found::Verdict::Unchecked => form::Verdict::Unchecked,
     }
 }
 

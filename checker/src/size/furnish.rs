@@ -126,7 +126,9 @@ impl<'b> Board<'b> {
         let sources = &solver.project.sources;
         let text_of = |line: &Statement, group: usize| {
             let site = line.groups.get(group)?.site;
-            let text = sources.text(site.file).get(site.span.start..site.span.end)?;
+            let text = sources
+                .text(site.file)
+                .get(site.span.start..site.span.end)?;
             Some(text.split_whitespace().collect::<Vec<_>>().join(" "))
         };
         let (mut mains, mut taps) = (Vec::new(), Vec::new());
@@ -136,12 +138,17 @@ impl<'b> Board<'b> {
                 taps.extend(group.number("tap").or_else(|| group.number("V")));
             }
         }
-        let loads = seen.line("loads").into_iter().flat_map(|l| crate::build::view::names(l));
+        let loads = seen
+            .line("loads")
+            .into_iter()
+            .flat_map(|l| crate::build::view::names(l));
         let loads = loads.map(str::to_owned).collect();
         let channels = seen.group("channels").and_then(|g| g.number("n"));
         let file = sources.file(build.whole.file);
         let place = file.map(|f| (f.path.clone(), f.tree.text.clone(), build.whole.span.end));
-        let amplifier = seen.group("amplifier").and_then(|g| g.name("amplifier").map(str::to_owned));
+        let amplifier = seen
+            .group("amplifier")
+            .and_then(|g| g.name("amplifier").map(str::to_owned));
         Self {
             files,
             path,
@@ -171,13 +178,19 @@ impl<'b> Board<'b> {
             _ => (text.as_ref(), ""),
         };
         let lines = self.lines(usage);
-        format!("{head}\n{lines}{tail}\n\n{}", self.blocks(lists, choice, usage))
+        format!(
+            "{head}\n{lines}{tail}\n\n{}",
+            self.blocks(lists, choice, usage)
+        )
     }
 
     /// The lines of the build.
     pub(super) fn lines(&self, usage: &Use) -> String {
         let name = &self.build;
-        let mut lines = format!("    supply             {name}-supply per {}\n", usage.supply);
+        let mut lines = format!(
+            "    supply             {name}-supply per {}\n",
+            usage.supply
+        );
         if !self.sink_stated || usage.cell {
             lines.push_str(&format!("    heatsink           {name}-sink per channel\n"));
         }
@@ -211,7 +224,11 @@ impl<'b> Board<'b> {
                 } else {
                     String::new()
                 };
-                format!("{} slow melts {:.0} A2s{tap}", say(amps, Dimension::Current), (MELTS * amps * amps).max(1.0))
+                format!(
+                    "{} slow melts {:.0} A2s{tap}",
+                    say(amps, Dimension::Current),
+                    (MELTS * amps * amps).max(1.0)
+                )
             })
             .collect();
         let (bridge, surge) = BRIDGES.get(choice.bridge).copied().unwrap_or_default();
@@ -290,7 +307,9 @@ fn counted(mut margins: Vec<Margin>, usage: &Use) -> Vec<Margin> {
 fn claimed(solver: &Solver, amplifier: Option<&str>) -> f64 {
     let of = |b: &&Declared| amplifier.is_none_or(|a| b.name == a);
     let blocks = solver.project.of_kind("amplifier").filter(of);
-    let lines = blocks.flat_map(|b| &b.lines).filter(|l| l.key.name == "rated");
+    let lines = blocks
+        .flat_map(|b| &b.lines)
+        .filter(|l| l.key.name == "rated");
     let watts = lines.flat_map(|l| &l.groups).filter_map(|g| g.number("W"));
     watts.fold(0.0, f64::max)
 }
@@ -301,46 +320,90 @@ fn bleeder(secondary: f64, farads: f64) -> String {
     // from the rail to 20 V takes about RC·ln(V/20)
     let ohms = (20.0 / (farads * (rail / 20.0).max(2.0))).clamp(470.0, 10_000.0);
     let ohms = Series::E12.at_or_below(ohms).unwrap_or(1000.0);
-    let watts = Series::ResistorPower.at_or_above(3.2 * rail * rail / ohms).unwrap_or(100.0);
-    format!("{} ±5 % {} per rail", format_exact(ohms, Dimension::Resistance), format_exact(watts, Dimension::Power))
+    let watts = Series::ResistorPower
+        .at_or_above(3.2 * rail * rail / ohms)
+        .unwrap_or(100.0);
+    format!(
+        "{} ±5 % {} per rail",
+        format_exact(ohms, Dimension::Resistance),
+        format_exact(watts, Dimension::Power)
+    )
 }
 
 /// A soft start that lets about twice the rated current through, bypassed when the reservoir is full.
 fn soft_start(secondary: f64, rating: f64, farads: f64, tap: f64) -> String {
-    let ohms = Series::E12.at_or_below(0.5 * tap * tap / rating.max(1.0)).unwrap_or(22.0).clamp(2.2, 100.0);
+    let ohms = Series::E12
+        .at_or_below(0.5 * tap * tap / rating.max(1.0))
+        .unwrap_or(22.0)
+        .clamp(2.2, 100.0);
     // the charge of both rails through the resistor as the secondary sees it
     let seen = ohms * (2.0 * secondary / tap) * (2.0 * secondary / tap) / 2.0;
     let seconds = (8.0 * seen * farads).clamp(0.3, 3.0);
     let milli = (seconds * 10.0).ceil() * 100.0;
-    format!("{} 50 W bypass {milli:.0} ms thermal-fuse 130 degC", format_exact(ohms, Dimension::Resistance))
+    format!(
+        "{} 50 W bypass {milli:.0} ms thermal-fuse 130 degC",
+        format_exact(ohms, Dimension::Resistance)
+    )
 }
 
 /// One coordinate of a choice.
-type Coordinate = (&'static str, fn(&mut Choice) -> &mut usize, fn(&Lists) -> usize);
+type Coordinate = (
+    &'static str,
+    fn(&mut Choice) -> &mut usize,
+    fn(&Lists) -> usize,
+);
 
 /// What is walked down one step at a time: each couples with others.
 const COUPLED: &[Coordinate] = &[
-    ("transformer secondary", |c| &mut c.secondary, |l| l.secondary.len()),
+    (
+        "transformer secondary",
+        |c| &mut c.secondary,
+        |l| l.secondary.len(),
+    ),
     ("transformer rating", |c| &mut c.rating, |l| l.rating.len()),
     ("reservoir", |c| &mut c.reservoir, |_| RESERVOIRS.len()),
     ("heatsink", |c| &mut c.sink, |l| l.sink.len()),
 ];
 /// What only its own rating decides.
 const RATED: &[Coordinate] = &[
-    ("reservoir volts", |c| &mut c.capacitor_volts, |l| l.capacitor_volts.len()),
+    (
+        "reservoir volts",
+        |c| &mut c.capacitor_volts,
+        |l| l.capacitor_volts.len(),
+    ),
     ("reservoir ripple", |c| &mut c.ripple, |l| l.ripple.len()),
     ("bridge amperes", |c| &mut c.bridge, |_| BRIDGES.len()),
-    ("bridge volts", |c| &mut c.bridge_volts, |_| BRIDGE_VOLTS.len()),
+    (
+        "bridge volts",
+        |c| &mut c.bridge_volts,
+        |_| BRIDGE_VOLTS.len(),
+    ),
     ("rail fuse", |c| &mut c.rail_fuse, |l| l.fuse.len()),
     ("mains fuse", |c| &mut c.mains_fuse[0], |l| l.fuse.len()),
-    ("mains fuse, second tap", |c| &mut c.mains_fuse[1], |l| l.fuse.len()),
-    ("mains fuse, third tap", |c| &mut c.mains_fuse[2], |l| l.fuse.len()),
-    ("mains fuse, fourth tap", |c| &mut c.mains_fuse[3], |l| l.fuse.len()),
+    (
+        "mains fuse, second tap",
+        |c| &mut c.mains_fuse[1],
+        |l| l.fuse.len(),
+    ),
+    (
+        "mains fuse, third tap",
+        |c| &mut c.mains_fuse[2],
+        |l| l.fuse.len(),
+    ),
+    (
+        "mains fuse, fourth tap",
+        |c| &mut c.mains_fuse[3],
+        |l| l.fuse.len(),
+    ),
 ];
 
 /// Where the search begins: generous in everything but the secondary.
 fn start(board: &Board<'_>, lists: &Lists, usage: &Use) -> Choice {
-    let carried = if usage.supply == "channel" { 1 } else { usage.channels };
+    let carried = if usage.supply == "channel" {
+        1
+    } else {
+        usage.channels
+    };
     let watts = board.claimed.max(10.0) * f64::from(carried);
     // Vs·√2·0.9 = √(2PR) + 4 V, R about 8 ohm
     let secondary = ((2.0 * board.claimed.max(10.0) * 8.0).sqrt() + 4.0) / 1.27;
@@ -504,7 +567,10 @@ fn settle(
 /// How far a leap goes: where one rule just rates a part, straight to what it needs.
 fn step_down(at: usize, choice: &mut Choice, margins: &[Margin], lists: &Lists) -> usize {
     let used = |rule: &str| {
-        let all = margins.iter().filter(|m| m.rule == rule).filter_map(|m| m.used_percent);
+        let all = margins
+            .iter()
+            .filter(|m| m.rule == rule)
+            .filter_map(|m| m.used_percent);
         all.reduce(f64::max)
     };
     let now = COUPLED.get(at).map_or(0, |c| *(c.1)(choice));
@@ -557,12 +623,22 @@ pub(super) fn rows(board: &Board<'_>, sized: &mut Sized) {
     };
     let pasted = self::Board::blocks(board, &lists, &found.choice, &usage);
     for (name, of, _) in COUPLED.iter().chain(RATED) {
-        sized.rows.extend(row(board, &lists, &usage, &found, (name, *of)));
+        sized
+            .rows
+            .extend(row(board, &lists, &usage, &found, (name, *of)));
     }
     let lines = board.lines(&usage);
-    sized.pasted.push((board.build.clone(), format!("{pasted}\nbuild {}:\n{lines}", board.build)));
-    let open = found.margins.iter().filter(|m| fails(m) && !found.moved.contains(&m.id));
-    sized.elsewhere.extend(open.map(|m| (board.build.clone(), Left::of(m))));
+    sized.pasted.push((
+        board.build.clone(),
+        format!("{pasted}\nbuild {}:\n{lines}", board.build),
+    ));
+    let open = found
+        .margins
+        .iter()
+        .filter(|m| fails(m) && !found.moved.contains(&m.id));
+    sized
+        .elsewhere
+        .extend(open.map(|m| (board.build.clone(), Left::of(m))));
 }
 
 fn row(
@@ -577,8 +653,16 @@ fn row(
     let (value, dimension, unit, line) = said(lists, name, at)?;
     // a tap that is not there has no fuse
     let taps = usage.taps.len();
-    let tap = ["mains fuse", "mains fuse, second tap", "mains fuse, third tap", "mains fuse, fourth tap"];
-    if tap.iter().position(|t| *t == name).is_some_and(|k| k >= taps)
+    let tap = [
+        "mains fuse",
+        "mains fuse, second tap",
+        "mains fuse, third tap",
+        "mains fuse, fourth tap",
+    ];
+    if tap
+        .iter()
+        .position(|t| *t == name)
+        .is_some_and(|k| k >= taps)
         || (name == "heatsink" && board.sink_stated && !usage.cell)
     {
         return None;
@@ -617,19 +701,73 @@ fn row(
 }
 
 /// A choice in words: value, dimension, unit and the key of its line.
-fn said(lists: &Lists, name: &str, at: usize) -> Option<(f64, Dimension, &'static str, &'static str)> {
+fn said(
+    lists: &Lists,
+    name: &str,
+    at: usize,
+) -> Option<(f64, Dimension, &'static str, &'static str)> {
     let of = |list: &[f64]| list.get(at).copied();
     Some(match name {
-        "transformer secondary" => (of(&lists.secondary)?, Dimension::Voltage, "V", "transformer secondary 2 x"),
-        "transformer rating" => (of(&lists.rating)?, Dimension::ApparentPower, "VA", "transformer rating"),
-        "reservoir" => (of(RESERVOIRS)?, Dimension::Capacitance, "F", "supply reservoir, per rail"),
-        "heatsink" => (of(&lists.sink)?, Dimension::ThermalResistance, "K/W", "heatsink resistance"),
-        "reservoir volts" => (of(&lists.capacitor_volts)?, Dimension::Voltage, "V", "supply reservoir, working"),
-        "reservoir ripple" => (of(&lists.ripple)?, Dimension::Current, "A", "supply reservoir ripple"),
-        "bridge amperes" => (BRIDGES.get(at)?.0, Dimension::Current, "A", "supply rectifier bridge"),
-        "bridge volts" => (of(BRIDGE_VOLTS)?, Dimension::Voltage, "V", "supply rectifier bridge"),
-        "rail fuse" => (of(&lists.fuse)?, Dimension::Current, "A", "supply fuse rail"),
-        _ => (of(&lists.fuse)?, Dimension::Current, "A", "supply fuse mains"),
+        "transformer secondary" => (
+            of(&lists.secondary)?,
+            Dimension::Voltage,
+            "V",
+            "transformer secondary 2 x",
+        ),
+        "transformer rating" => (
+            of(&lists.rating)?,
+            Dimension::ApparentPower,
+            "VA",
+            "transformer rating",
+        ),
+        "reservoir" => (
+            of(RESERVOIRS)?,
+            Dimension::Capacitance,
+            "F",
+            "supply reservoir, per rail",
+        ),
+        "heatsink" => (
+            of(&lists.sink)?,
+            Dimension::ThermalResistance,
+            "K/W",
+            "heatsink resistance",
+        ),
+        "reservoir volts" => (
+            of(&lists.capacitor_volts)?,
+            Dimension::Voltage,
+            "V",
+            "supply reservoir, working",
+        ),
+        "reservoir ripple" => (
+            of(&lists.ripple)?,
+            Dimension::Current,
+            "A",
+            "supply reservoir ripple",
+        ),
+        "bridge amperes" => (
+            BRIDGES.get(at)?.0,
+            Dimension::Current,
+            "A",
+            "supply rectifier bridge",
+        ),
+        "bridge volts" => (
+            of(BRIDGE_VOLTS)?,
+            Dimension::Voltage,
+            "V",
+            "supply rectifier bridge",
+        ),
+        "rail fuse" => (
+            of(&lists.fuse)?,
+            Dimension::Current,
+            "A",
+            "supply fuse rail",
+        ),
+        _ => (
+            of(&lists.fuse)?,
+            Dimension::Current,
+            "A",
+            "supply fuse mains",
+        ),
     })
 }
 
@@ -637,7 +775,11 @@ fn said(lists: &Lists, name: &str, at: usize) -> Option<(f64, Dimension, &'stati
 pub(super) fn brief(found: &Found) -> String {
     let lists = lists();
     let c = &found.choice;
-    let say = |name: &str, at: usize| said(&lists, name, at).map(|s| format_exact(s.0, s.1)).unwrap_or_default();
+    let say = |name: &str, at: usize| {
+        said(&lists, name, at)
+            .map(|s| format_exact(s.0, s.1))
+            .unwrap_or_default()
+    };
     format!(
         "2 x {}ac {}, {} a rail, sinks of {}",
         say("transformer secondary", c.secondary),

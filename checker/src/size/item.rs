@@ -58,32 +58,74 @@ const fn item(
 
 /// Everything that is sized, in the order in which it is shown.
 pub(super) const ITEMS: &[Item] = &[
-    item("transformer rating", ("transformer", "rating"), "VA", Some("current.transformer-duty"), || {
-        members(Series::TransformerRating, 15.0, 3000.0)
+    item(
+        "transformer rating",
+        ("transformer", "rating"),
+        "VA",
+        Some("current.transformer-duty"),
+        || members(Series::TransformerRating, 15.0, 3000.0),
+    ),
+    item(
+        "transformer secondary",
+        ("transformer", "secondary"),
+        "V",
+        None,
+        || members(Series::SecondaryVoltage, 6.0, 60.0),
+    ),
+    item("reservoir", ("supply", "reservoir"), "F", None, || {
+        RESERVOIRS.to_vec()
     }),
-    item("transformer secondary", ("transformer", "secondary"), "V", None, || {
-        members(Series::SecondaryVoltage, 6.0, 60.0)
-    }),
-    item("reservoir", ("supply", "reservoir"), "F", None, || RESERVOIRS.to_vec()),
-    item("reservoir volts", ("supply", "reservoir"), "V", Some("voltage.reservoir"), || {
-        members(Series::CapacitorVoltage, 16.0, 450.0)
-    }),
-    item("bridge amperes", ("supply", "rectifier"), "A", Some("current.rectifier-mean"), || {
-        BRIDGES.iter().map(|b| b.0).collect()
-    }),
-    item("bridge volts", ("supply", "rectifier"), "V", Some("voltage.rectifier-reverse"), || {
-        BRIDGE_VOLTS.to_vec()
-    }),
+    item(
+        "reservoir volts",
+        ("supply", "reservoir"),
+        "V",
+        Some("voltage.reservoir"),
+        || members(Series::CapacitorVoltage, 16.0, 450.0),
+    ),
+    item(
+        "bridge amperes",
+        ("supply", "rectifier"),
+        "A",
+        Some("current.rectifier-mean"),
+        || BRIDGES.iter().map(|b| b.0).collect(),
+    ),
+    item(
+        "bridge volts",
+        ("supply", "rectifier"),
+        "V",
+        Some("voltage.rectifier-reverse"),
+        || BRIDGE_VOLTS.to_vec(),
+    ),
     Item {
         select: Some("mains"),
-        ..item("mains fuse", ("supply", "fuse"), "A", Some("current.fuse-rms"), fuses)
+        ..item(
+            "mains fuse",
+            ("supply", "fuse"),
+            "A",
+            Some("current.fuse-rms"),
+            fuses,
+        )
     },
     Item {
         select: Some("rail"),
-        ..item("rail fuse", ("supply", "fuse"), "A", Some("current.fuse-rms"), fuses)
+        ..item(
+            "rail fuse",
+            ("supply", "fuse"),
+            "A",
+            Some("current.fuse-rms"),
+            fuses,
+        )
     },
-    item("heatsink", ("heatsink", "resistance"), "K/W", None, heatsinks),
-    item("pairs", ("stage", "pairs"), "n", None, || (1..=16).map(f64::from).collect()),
+    item(
+        "heatsink",
+        ("heatsink", "resistance"),
+        "K/W",
+        None,
+        heatsinks,
+    ),
+    item("pairs", ("stage", "pairs"), "n", None, || {
+        (1..=16).map(f64::from).collect()
+    }),
 ];
 
 pub(super) fn fuses() -> Vec<f64> {

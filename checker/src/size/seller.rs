@@ -62,10 +62,17 @@ fn cell(board: &Board<'_>, usage: &Use) -> Cell {
         ..usage.clone()
     };
     if let Ok(found) = furnish(board, &modest) {
-        let words = format!("not to the power claimed{}: {}", because(first.as_ref()), brief(&found));
+        let words = format!(
+            "not to the power claimed{}: {}",
+            because(first.as_ref()),
+            brief(&found)
+        );
         return made(Answer::Condition, words);
     }
-    made(Answer::Not, because(first.as_ref()).trim_start_matches(", ").to_owned())
+    made(
+        Answer::Not,
+        because(first.as_ref()).trim_start_matches(", ").to_owned(),
+    )
 }
 
 /// `, soa.reactive of n16 118 % used`.

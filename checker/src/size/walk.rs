@@ -67,7 +67,9 @@ fn places<'i>(solver: &Solver, build: &Declared, item: &'i Item) -> Vec<Place<'i
                     queue.push(next);
                 }
             }
-            let selected = item.select.is_none_or(|s| line.select == Some(Select::Word(s)));
+            let selected = item
+                .select
+                .is_none_or(|s| line.select == Some(Select::Word(s)));
             if declared.kind.kind != kind || line.key.name != key || line.none || !selected {
                 continue;
             }
@@ -149,7 +151,10 @@ impl Trial<'_> {
         Row {
             build: self.build.name.clone(),
             item: self.place.item.name,
-            needed: Some(Measure::new(self.needed(value, &margins), unit(self.place.item.slot))),
+            needed: Some(Measure::new(
+                self.needed(value, &margins),
+                unit(self.place.item.slot),
+            )),
             offered: Some(text),
             stated,
             statements: line
@@ -171,7 +176,8 @@ impl Trial<'_> {
                 && item.select.is_none_or(|s| m.part.name.ends_with(s))
         };
         let used = margins.iter().filter(of).filter_map(|m| m.used_percent);
-        used.reduce(f64::max).map_or(value, |used| value * used / 100.0)
+        used.reduce(f64::max)
+            .map_or(value, |used| value * used / 100.0)
     }
 
     /// The position of the smallest value that passes, walking from one near it, and what keeps the
@@ -225,7 +231,9 @@ impl Trial<'_> {
 
     fn text_at(&self, site: Site) -> String {
         let text = self.solver.project.sources.text(site.file);
-        text.get(site.span.start..site.span.end).unwrap_or_default().to_owned()
+        text.get(site.span.start..site.span.end)
+            .unwrap_or_default()
+            .to_owned()
     }
 }
 

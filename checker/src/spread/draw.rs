@@ -46,7 +46,10 @@ pub(super) struct Input {
 /// Every line of a build that carries a tolerance. The mains is a range of use, not a tolerance.
 pub(super) fn inputs(solver: &Solver, build: &Declared) -> Vec<Input> {
     let view = solver.view(build, &[]);
-    let channels = view.seen(build).group("channels").and_then(|g| g.number("n"));
+    let channels = view
+        .seen(build)
+        .group("channels")
+        .and_then(|g| g.number("n"));
     let banks = 2 * channels.map_or(1, |n| n.clamp(1.0, 64.0) as u32);
     let mut out = Vec::new();
     let mut queue = vec![build.name.clone()];
@@ -85,7 +88,9 @@ fn of_line(block: &str, line: &Arc<Statement>, (n, banks): (u32, u32), out: &mut
                 "emitter" if n > 1 && q.tolerance.is_some() => What::Lowest { n, banks },
                 _ => {
                     let (low, high) = match q.tolerance {
-                        None if capacitor => (q.value * (1.0 - RESERVOIR), q.value * (1.0 + RESERVOIR)),
+                        None if capacitor => {
+                            (q.value * (1.0 - RESERVOIR), q.value * (1.0 + RESERVOIR))
+                        }
                         _ => bounds(q),
                     };
                     if low >= high {
@@ -95,7 +100,11 @@ fn of_line(block: &str, line: &Arc<Statement>, (n, banks): (u32, u32), out: &mut
                 }
             };
             let several = line.groups.len() > 1;
-            let which = if several { format!(" {}", group + 1) } else { String::new() };
+            let which = if several {
+                format!(" {}", group + 1)
+            } else {
+                String::new()
+            };
             out.push(Input {
                 name: format!("{block} {}{which}", line.key.name),
                 block: block.to_owned(),
@@ -128,7 +137,9 @@ pub(super) fn changes(inputs: &[Input], at: &[f64]) -> Vec<(String, Arc<Statemen
             input.set(q, *x);
         }
     }
-    out.into_iter().map(|(input, line)| (input.block.clone(), Arc::new(line))).collect()
+    out.into_iter()
+        .map(|(input, line)| (input.block.clone(), Arc::new(line)))
+        .collect()
 }
 
 impl Input {

@@ -54,7 +54,9 @@ fn node(k: usize) -> f64 {
 pub(super) fn fit(inputs: usize, worst: &[Margin], full: &Full<'_>) -> Fitted {
     let middle = vec![MIDDLE; inputs];
     let centre = full(&middle);
-    let places: Vec<(usize, usize)> = (0..inputs).flat_map(|j| (0..NODES).map(move |k| (j, k))).collect();
+    let places: Vec<(usize, usize)> = (0..inputs)
+        .flat_map(|j| (0..NODES).map(move |k| (j, k)))
+        .collect();
     let along: Vec<Vec<Margin>> = places
         .par_iter()
         .map(|(j, k)| {
@@ -73,7 +75,10 @@ pub(super) fn fit(inputs: usize, worst: &[Margin], full: &Full<'_>) -> Fitted {
         let some: Vec<f64> = figures.iter().flatten().copied().collect();
         let low = some.iter().copied().fold(f64::INFINITY, f64::min);
         let high = some.iter().copied().fold(f64::NEG_INFINITY, f64::max);
-        let verdicts = along.iter().chain([&centre]).filter_map(|m| m.iter().find(|n| n.id == margin.id));
+        let verdicts = along
+            .iter()
+            .chain([&centre])
+            .filter_map(|m| m.iter().find(|n| n.id == margin.id));
         let same = verdicts.clone().all(|m| m.verdict == margin.verdict);
         if some.is_empty() && same {
             continue;
@@ -88,7 +93,10 @@ pub(super) fn fit(inputs: usize, worst: &[Margin], full: &Full<'_>) -> Fitted {
     }
     let moving: Vec<String> = moving.into_iter().collect();
     let models = whole.then(|| {
-        let singles: Vec<Model> = moving.iter().map(|id| single(id, &centre, &places, &along)).collect();
+        let singles: Vec<Model> = moving
+            .iter()
+            .map(|id| single(id, &centre, &places, &along))
+            .collect();
         with_both(singles, &moving, &middle, full)
     });
     Fitted { moving, models }
@@ -122,7 +130,12 @@ fn single(id: &str, centre: &[Margin], places: &[(usize, usize)], along: &[Vec<M
 }
 
 /// What every two inputs do together, where some margin is moved by both.
-fn with_both(mut models: Vec<Model>, moving: &[String], middle: &[f64], full: &Full<'_>) -> Vec<Model> {
+fn with_both(
+    mut models: Vec<Model>,
+    moving: &[String],
+    middle: &[f64],
+    full: &Full<'_>,
+) -> Vec<Model> {
     let mut pairs: BTreeSet<(usize, usize)> = BTreeSet::new();
     for model in &models {
         for (at, (j, _)) in model.single.iter().enumerate() {
@@ -146,7 +159,13 @@ fn with_both(mut models: Vec<Model>, moving: &[String], middle: &[f64], full: &F
         .collect();
     for (model, id) in models.iter_mut().zip(moving) {
         for ((j, k), solved) in pairs.iter().zip(&corners) {
-            let ends = |input: usize| model.single.iter().find(|s| s.0 == input).map(|s| (s.1[0], s.1[NODES - 1]));
+            let ends = |input: usize| {
+                model
+                    .single
+                    .iter()
+                    .find(|s| s.0 == input)
+                    .map(|s| (s.1[0], s.1[NODES - 1]))
+            };
             let (Some(a), Some(b)) = (ends(*j), ends(*k)) else {
                 continue;
             };
@@ -168,7 +187,11 @@ impl Model {
     /// Used at a place, per cent.
     pub(super) fn at(&self, place: &[f64]) -> f64 {
         let x = |j: usize| place.get(j).copied().unwrap_or(MIDDLE);
-        let single: f64 = self.single.iter().map(|(j, nodes)| through(nodes, x(*j))).sum();
+        let single: f64 = self
+            .single
+            .iter()
+            .map(|(j, nodes)| through(nodes, x(*j)))
+            .sum();
         let both: f64 = self
             .both
             .iter()
@@ -185,7 +208,11 @@ impl Model {
     pub(super) fn governing(&self, inputs: &[Input], seed: u64) -> Option<(String, f64)> {
         let kits: Vec<Vec<f64>> = (0..SAMPLE).map(|n| draw::kit(inputs, seed, n)).collect();
         let variance = |(j, nodes): &(usize, [f64; NODES])| {
-            let values = || kits.iter().filter_map(|k| k.get(*j)).map(|x| through(nodes, *x));
+            let values = || {
+                kits.iter()
+                    .filter_map(|k| k.get(*j))
+                    .map(|x| through(nodes, *x))
+            };
             let mean = values().sum::<f64>() / kits.len() as f64;
             values().map(|v| (v - mean) * (v - mean)).sum::<f64>()
         };

@@ -96,6 +96,10 @@ form! {
         policies: Vec<Policy>,
         /// Where the schema of this form is.
         schema: String,
+        /// What each build needs; null but for `derate size`.
+        size: Option<Size>,
+        /// The builds over random kits; null but for `derate spread`.
+        spread: Option<Spread>,
         /// What was counted.
         summary: Summary,
         /// What made this.
@@ -261,6 +265,132 @@ form! {
         x: Number,
         /// Up.
         y: Number,
+    }
+    /// What the builds of a file need.
+    Size {
+        /// The table that a seller publishes; empty where every build states its supply.
+        cells: Vec<Cell>,
+        /// Margins past their allowance whatever the size.
+        elsewhere: Vec<Elsewhere>,
+        /// What to paste into a build that states no supply.
+        pasted: Vec<Pasted>,
+        /// One for each build and thing.
+        rows: Vec<SizeRow>,
+    }
+    /// One thing that a build needs.
+    SizeRow {
+        /// The build.
+        build: String,
+        /// The thing.
+        item: String,
+        /// The margin that keeps the next smaller value, or every value, from passing.
+        limited: Option<LimitedBy>,
+        /// The margins that the choice moves, worst first.
+        margins: Vec<Left>,
+        /// The least figure that passes.
+        needed: Option<Qty>,
+        /// The smallest usual value that passes; null where none does.
+        offered: Option<String>,
+        /// What the file says now.
+        stated: Option<String>,
+        /// As lines of the language.
+        statements: Vec<String>,
+    }
+    /// Which margin stands in the way, and of which value.
+    LimitedBy {
+        /// The margin.
+        margin: Left,
+        /// The value that it keeps from passing.
+        value: String,
+    }
+    /// A margin as a choice leaves it.
+    Left {
+        /// Which.
+        id: String,
+        /// Share of the allowance, per cent.
+        used_percent: Option<Number>,
+        /// Its verdict.
+        verdict: Verdict,
+    }
+    /// A margin that is no matter of size.
+    Elsewhere {
+        /// The build.
+        build: String,
+        /// The margin.
+        margin: Left,
+    }
+    /// Text for a build.
+    Pasted {
+        /// The build.
+        build: String,
+        /// Blocks, then the lines of the build.
+        text: String,
+    }
+    /// One use of the board.
+    Cell {
+        /// `allowed`, `condition` or `not`.
+        answer: String,
+        /// Amplifier channels.
+        channels: u32,
+        /// The load.
+        load: String,
+        /// The mains, as the file words it.
+        mains: String,
+        /// What it takes, the condition, or the reason.
+        words: String,
+    }
+    /// Builds over random kits.
+    Spread {
+        /// Each build.
+        builds: Vec<SpreadBuild>,
+        /// The shares of kits, per cent, at which used is given.
+        percentiles: Vec<Number>,
+        /// What drew the kits.
+        seed: u64,
+    }
+    /// One build over random kits.
+    SpreadBuild {
+        /// Its name.
+        build: String,
+        /// Lines that were drawn.
+        inputs: Vec<String>,
+        /// Kits drawn.
+        kits: u32,
+        /// Margins that some tolerance moves, the greatest used first.
+        margins: Vec<SpreadMargin>,
+        /// Whether a model stood for the kits that were not solved in full.
+        modelled: bool,
+        /// Share of kits within every allowance.
+        pass: Number,
+        /// Kits solved in full for their verdict.
+        solved: u32,
+        /// Share of kits within every rating.
+        within_ratings: Number,
+    }
+    /// One margin over random kits.
+    SpreadMargin {
+        /// The line that moves it most.
+        by: Option<String>,
+        /// That line's share of the variance that single lines make.
+        by_share: Option<Number>,
+        /// The worst case says no, and most kits say yes.
+        disagrees: bool,
+        /// Greatest error of the model found, points of used.
+        error: Number,
+        /// Share of kits in which it is the governing margin.
+        governs: Number,
+        /// Which.
+        id: String,
+        /// Share of kits past its allowance.
+        past_allowance: Number,
+        /// Share of kits past its rating.
+        past_rating: Number,
+        /// Used at each of the shares, per cent.
+        used_percent: Vec<Number>,
+        /// Used in the worst case of every check, per cent.
+        worst_case_percent: Number,
+        /// The verdict of that.
+        worst_case_verdict: Verdict,
     }
     /// A derived number.
     Derived {
