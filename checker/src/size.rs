@@ -4,6 +4,8 @@
 mod furnish;
 mod item;
 mod seller;
+#[cfg(test)]
+mod tests;
 mod walk;
 
 use std::collections::BTreeSet;
@@ -183,12 +185,20 @@ fn moved(solutions: &[&[Margin]]) -> BTreeSet<String> {
     moved
 }
 
+/// What could not be solved at all, though nothing is missing: a supply that gives out.
+fn collapsed(margin: &Margin) -> bool {
+    let family = margin.rule.split('.').next().unwrap_or_default();
+    margin.verdict == Verdict::Unchecked
+        && margin.needs.is_empty()
+        && matches!(family, "power" | "current" | "supply")
+}
+
 /// The worst of the margins that fail and are moved by what is sized.
 fn blocking<'m>(margins: &'m [Margin], moved: &BTreeSet<String>) -> Option<&'m Margin> {
     let used = |m: &Margin| m.used_percent.unwrap_or(f64::INFINITY);
     margins
         .iter()
-        .filter(|m| fails(m) && moved.contains(&m.id))
+        .filter(|m| collapsed(m) || (fails(m) && moved.contains(&m.id)))
         .max_by(|a, b| a.verdict.cmp(&b.verdict).then(used(a).total_cmp(&used(b))))
 }
 

@@ -6,10 +6,14 @@ use std::sync::Arc;
 
 use crate::analysis::Tables;
 use crate::build::statement::{Declared, Statement};
+use crate::build::view::{Seen, names};
 use crate::build::{Project, View, project};
 use crate::finding::{BuildReport, Finding};
 use crate::source::Files;
 use crate::{Options, policy, tables, waiver};
+
+/// Blocks that a build reaches at most.
+const MOST_BLOCKS: usize = 200;
 
 /// Lines to put in place of others: the block, and the line as if it stood there.
 pub type Changes = [(String, Arc<Statement>)];
@@ -68,6 +72,43 @@ impl Solver {
     #[must_use]
     pub fn view<'s>(&'s self, build: &'s Declared, changes: &Changes) -> View<'s> {
         View::new(&self.project, build, None, changes)
+    }
+
+    /// The blocks that a build is made of, itself first: all that it names, the only amplifier where it
+    /// names none, and what those name.
+    #[must_use]
+    pub fn blocks<'s>(&'s self, build: &'s Declared) -> Vec<Seen<'s>> {
+        let view = self.view(build, &[]);
+        let mut queue = vec![build.name.clone()];
+        if view.seen(build).line("amplifier").is_none() {
+            queue.extend(
+                self.project
+                    .of_kind("amplifier")
+                    .next()
+                    .map(|a| a.name.clone()),
+            );
+        }
+        let mut out = Vec::new();
+        let mut at = 0;
+        while let Some(name) = queue.get(at).cloned() {
+            at += 1;
+            let Some(declared) = self.project.find(view.name(&name)) else {
+                continue;
+            };
+            let seen = view.seen(declared);
+            for next in seen
+                .lines
+                .iter()
+                .flat_map(|l| names(l))
+                .map(|n| view.name(n).to_owned())
+            {
+                if queue.len() < MOST_BLOCKS && !queue.contains(&next) {
+                    queue.push(next);
+                }
+            }
+            out.push(seen);
+        }
+        out
     }
 
     /// Solve a build with lines changed, waivers honoured.

@@ -10,6 +10,8 @@
 
 mod draw;
 mod model;
+#[cfg(test)]
+mod tests;
 
 use std::path::Path;
 
@@ -147,10 +149,22 @@ fn of_build(
     ask: Ask,
     progress: &(dyn Fn(u64) + Sync),
 ) -> BuildSpread {
+    of_build_with(solver, build, ask, true, progress)
+}
+
+/// The same with or without models.
+fn of_build_with(
+    solver: &Solver,
+    build: &Declared,
+    ask: Ask,
+    modelled: bool,
+    progress: &(dyn Fn(u64) + Sync),
+) -> BuildSpread {
     let inputs = draw::inputs(solver, build);
     let worst = solver.solve(build, &[]).margins;
     let full = |at: &[f64]| solver.solve(build, &draw::changes(&inputs, at)).margins;
-    let fitted = model::fit(inputs.len(), &worst, &full);
+    let mut fitted = model::fit(inputs.len(), &worst, &full);
+    fitted.models = fitted.models.filter(|_| modelled);
     let moving: Vec<Moving> = fitted
         .moving
         .iter()
@@ -395,5 +409,11 @@ impl MarginSpread {
     #[must_use]
     pub fn disagrees(&self) -> bool {
         matches!(self.worst_case.1, Verdict::Over | Verdict::Thin) && self.past.0 < 0.5
+    }
+
+    /// Some kit uses more than the worst case of every check, by more than the model may err.
+    #[must_use]
+    pub fn beyond(&self) -> bool {
+        self.range.1 > self.worst_case.0 + CAUTION * self.error + 0.01
     }
 }

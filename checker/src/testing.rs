@@ -87,6 +87,11 @@ fn checked(text: &str, curves: bool) -> Report {
     .report
 }
 
+/// Do something with a text as a file beside the demo kits.
+pub(crate) fn beside<T>(text: &str, work: impl FnOnce(&dyn Files, &Path) -> T) -> T {
+    work(&Beside(text), &kits().join("under-test.ampspec"))
+}
+
 /// The margin of a rule for a part, in the first build, without alternate.
 pub(crate) fn margin(text: &str, rule: &str, part: &str) -> Margin {
     let report = report(text);

@@ -192,6 +192,15 @@ fn notes(build: &BuildSpread) -> Vec<String> {
             share(1.0 - m.past.0)
         ));
     }
+    for m in build.margins.iter().filter(|m| m.beyond()) {
+        out.push(format!(
+            "{} of {}: a kit uses {}, more than the {} of the worst case that a check takes",
+            m.rule,
+            m.part,
+            used(m.range.1),
+            used(m.worst_case.0)
+        ));
+    }
     for (part, rule, verdict) in &build.fixed {
         out.push(format!(
             "{rule} of {part} is {} in every kit: no tolerance moves it",
@@ -199,11 +208,18 @@ fn notes(build: &BuildSpread) -> Vec<String> {
         ));
     }
     if build.modelled {
-        let error = build.margins.iter().map(|m| m.error).fold(0.0, f64::max);
-        out.push(format!(
-            "greatest error of the models against full solutions at random places: {} points of used; where a verdict lies within three times that of its margin, the kit is solved in full",
-            number(error)
-        ));
+        let most = build
+            .margins
+            .iter()
+            .max_by(|a, b| a.error.total_cmp(&b.error));
+        out.extend(most.map(|m| {
+            format!(
+                "greatest error of a model against full solutions at random places: {} points of used, {} of {}; where a figure lies within three times the error of its margin from a limit, the kit is solved in full",
+                number(m.error),
+                m.rule,
+                m.part
+            )
+        }));
     }
     if build.margins.len() > SHOWN {
         out.push(format!(

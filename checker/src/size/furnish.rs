@@ -84,7 +84,7 @@ pub(super) struct Choice {
 }
 
 /// The lists of usual values.
-struct Lists {
+pub(super) struct Lists {
     secondary: Vec<f64>,
     rating: Vec<f64>,
     sink: Vec<f64>,
@@ -93,7 +93,7 @@ struct Lists {
     fuse: Vec<f64>,
 }
 
-fn lists() -> Lists {
+pub(super) fn lists() -> Lists {
     Lists {
         secondary: members(Series::SecondaryVoltage, 6.0, 60.0),
         rating: members(Series::TransformerRating, 15.0, 3000.0),
@@ -169,7 +169,7 @@ impl<'b> Board<'b> {
     }
 
     /// The text with a choice written in, for a use of the board.
-    fn pasted(&self, lists: &Lists, choice: &Choice, usage: &Use) -> String {
+    pub(super) fn pasted(&self, lists: &Lists, choice: &Choice, usage: &Use) -> String {
         let (_, text, end) = &self.place;
         // before the brace that closes the block
         let inside = end.saturating_sub(1);
@@ -182,6 +182,15 @@ impl<'b> Board<'b> {
             "{head}\n{lines}{tail}\n\n{}",
             self.blocks(lists, choice, usage)
         )
+    }
+
+    /// The build that is solved.
+    fn name(&self, usage: &Use) -> String {
+        if usage.cell {
+            format!("{}-use", self.build)
+        } else {
+            self.build.clone()
+        }
     }
 
     /// The lines of the build.
@@ -274,7 +283,7 @@ impl<'b> Board<'b> {
             text: text.into(),
         };
         let solver = Solver::read(&files, self.path, self.shown, &self.options).ok()?;
-        let build = solver.project.find(&self.build)?;
+        let build = solver.project.find(&self.name(usage))?;
         Some(counted(solver.solve(build, &[]).margins, usage))
     }
 }
@@ -347,53 +356,76 @@ fn soft_start(secondary: f64, rating: f64, farads: f64, tap: f64) -> String {
 }
 
 /// One coordinate of a choice.
-type Coordinate = (
-    &'static str,
-    fn(&mut Choice) -> &mut usize,
-    fn(&Lists) -> usize,
-);
+pub(super) struct Coordinate {
+    pub(super) name: &'static str,
+    pub(super) of: fn(&mut Choice) -> &mut usize,
+    /// The rule that rates just this value, and the end of the name of its part.
+    rated: Option<(&'static str, &'static str)>,
+}
 
-/// What is walked down one step at a time: each couples with others.
-const COUPLED: &[Coordinate] = &[
-    (
-        "transformer secondary",
-        |c| &mut c.secondary,
-        |l| l.secondary.len(),
+const fn coordinate(
+    name: &'static str,
+    of: fn(&mut Choice) -> &mut usize,
+    rated: Option<(&'static str, &'static str)>,
+) -> Coordinate {
+    Coordinate { name, of, rated }
+}
+
+/// Everything that is chosen. What couples with other things comes first, what only its own rating
+/// decides comes last.
+pub(super) const COORDINATES: &[Coordinate] = &[
+    coordinate("transformer secondary", |c| &mut c.secondary, None),
+    coordinate(
+        "transformer rating",
+        |c| &mut c.rating,
+        Some(("current.transformer-duty", "")),
     ),
-    ("transformer rating", |c| &mut c.rating, |l| l.rating.len()),
-    ("reservoir", |c| &mut c.reservoir, |_| RESERVOIRS.len()),
-    ("heatsink", |c| &mut c.sink, |l| l.sink.len()),
-];
-/// What only its own rating decides.
-const RATED: &[Coordinate] = &[
-    (
+    coordinate("reservoir", |c| &mut c.reservoir, None),
+    coordinate("heatsink", |c| &mut c.sink, None),
+    coordinate(
         "reservoir volts",
         |c| &mut c.capacitor_volts,
-        |l| l.capacitor_volts.len(),
+        Some(("voltage.reservoir", "supply reservoir")),
     ),
-    ("reservoir ripple", |c| &mut c.ripple, |l| l.ripple.len()),
-    ("bridge amperes", |c| &mut c.bridge, |_| BRIDGES.len()),
-    (
+    coordinate(
+        "reservoir ripple",
+        |c| &mut c.ripple,
+        Some(("current.reservoir-ripple", "supply reservoir")),
+    ),
+    coordinate(
+        "bridge amperes",
+        |c| &mut c.bridge,
+        Some(("current.rectifier-mean", "")),
+    ),
+    coordinate(
         "bridge volts",
         |c| &mut c.bridge_volts,
-        |_| BRIDGE_VOLTS.len(),
+        Some(("voltage.rectifier-reverse", "")),
     ),
-    ("rail fuse", |c| &mut c.rail_fuse, |l| l.fuse.len()),
-    ("mains fuse", |c| &mut c.mains_fuse[0], |l| l.fuse.len()),
-    (
+    coordinate(
+        "rail fuse",
+        |c| &mut c.rail_fuse,
+        Some(("current.fuse-rms", "fuse rail")),
+    ),
+    coordinate(
+        "mains fuse",
+        |c| &mut c.mains_fuse[0],
+        Some(("current.fuse-rms", "fuse mains")),
+    ),
+    coordinate(
         "mains fuse, second tap",
         |c| &mut c.mains_fuse[1],
-        |l| l.fuse.len(),
+        Some(("current.fuse-rms", "fuse mains")),
     ),
-    (
+    coordinate(
         "mains fuse, third tap",
         |c| &mut c.mains_fuse[2],
-        |l| l.fuse.len(),
+        Some(("current.fuse-rms", "fuse mains")),
     ),
-    (
+    coordinate(
         "mains fuse, fourth tap",
         |c| &mut c.mains_fuse[3],
-        |l| l.fuse.len(),
+        Some(("current.fuse-rms", "fuse mains")),
     ),
 ];
 
@@ -446,8 +478,8 @@ pub(super) fn furnish(board: &Board<'_>, usage: &Use) -> Result<Found, Option<Le
     other.rating = choice.rating.saturating_sub(2);
     other.sink = choice.sink.saturating_sub(8);
     other.reservoir = choice.reservoir.saturating_sub(3);
-    for (_, of, _) in RATED {
-        let at = of(&mut other);
+    for coordinate in COORDINATES.iter().skip(4) {
+        let at = (coordinate.of)(&mut other);
         *at = at.saturating_sub(2);
     }
     let others = board.solve(&lists, &other, usage).ok_or(None)?;
@@ -506,90 +538,82 @@ fn settle(
     board: &Board<'_>,
     lists: &Lists,
     usage: &Use,
-    mut choice: Choice,
-    mut margins: Vec<Margin>,
+    choice: Choice,
+    margins: Vec<Margin>,
     moved: BTreeSet<String>,
 ) -> Result<Found, Option<Left>> {
-    for _ in 0..ROUNDS {
-        let before = choice;
-        // without a claim the secondary is the highest, not the lowest
-        let first = usize::from(usage.unclaimed);
-        for (at, (_, of, _)) in COUPLED.iter().enumerate().skip(first) {
-            while *of(&mut choice) > 0 {
-                let mut next = choice;
-                *of(&mut next) = step_down(at, &mut next, &margins, lists);
-                if COUPLED.get(at).is_some_and(|c| c.0 == "transformer rating") {
-                    refuse(lists, usage, &mut next);
-                }
-                let solved = board.solve(lists, &next, usage).ok_or(None)?;
-                if blocking(&solved, &moved).is_some() {
-                    // a leap may go too far: one step at least is tried
-                    if *of(&mut next) + 1 == *of(&mut choice) {
-                        break;
-                    }
-                    next = choice;
-                    *of(&mut next) -= 1;
-                    if COUPLED.get(at).is_some_and(|c| c.0 == "transformer rating") {
-                        refuse(lists, usage, &mut next);
-                    }
-                    let solved = board.solve(lists, &next, usage).ok_or(None)?;
-                    if blocking(&solved, &moved).is_some() {
-                        break;
-                    }
-                    (choice, margins) = (next, solved);
-                    continue;
-                }
-                (choice, margins) = (next, solved);
-            }
-        }
-        for (_, of, _) in RATED {
-            while *of(&mut choice) > 0 {
-                let mut next = choice;
-                *of(&mut next) -= 1;
-                let solved = board.solve(lists, &next, usage).ok_or(None)?;
-                if blocking(&solved, &moved).is_some() {
-                    break;
-                }
-                (choice, margins) = (next, solved);
-            }
-        }
-        if choice == before {
-            break;
-        }
-    }
-    Ok(Found {
+    let mut found = Found {
         choice,
         margins,
         moved,
-    })
+    };
+    for _ in 0..ROUNDS {
+        let before = found.choice;
+        // without a claim the secondary is the highest, not the lowest
+        for coordinate in COORDINATES.iter().skip(usize::from(usage.unclaimed)) {
+            lower(board, lists, usage, coordinate, &mut found);
+        }
+        if found.choice == before {
+            break;
+        }
+    }
+    Ok(found)
 }
 
-/// How far a leap goes: where one rule just rates a part, straight to what it needs.
-fn step_down(at: usize, choice: &mut Choice, margins: &[Margin], lists: &Lists) -> usize {
-    let used = |rule: &str| {
-        let all = margins
-            .iter()
-            .filter(|m| m.rule == rule)
-            .filter_map(|m| m.used_percent);
-        all.reduce(f64::max)
-    };
-    let now = COUPLED.get(at).map_or(0, |c| *(c.1)(choice));
-    let leap = match COUPLED.get(at).map(|c| c.0) {
-        Some("transformer rating") => used("current.transformer-duty").map(|u| {
-            let needed = lists.rating.get(now).copied().unwrap_or_default() * u / 100.0;
-            lists.rating.iter().position(|v| *v >= needed).unwrap_or(0)
-        }),
-        Some("heatsink") => used("thermal.sink").map(|u| {
-            let most = lists.sink.get(now).copied().unwrap_or_default() * 100.0 / u;
-            lists.sink.iter().position(|v| *v <= most).unwrap_or(0)
-        }),
-        _ => None,
-    };
-    leap.filter(|to| *to < now).unwrap_or(now.saturating_sub(1))
+/// One part down to the smallest that passes: straight to what its rating needs where a rule rates just
+/// this, else in growing steps, then halving. What passes lies above what fails; the value before the
+/// one that stands has been seen to fail.
+fn lower(
+    board: &Board<'_>,
+    lists: &Lists,
+    usage: &Use,
+    coordinate: &Coordinate,
+    found: &mut Found,
+) {
+    let mut passes = *(coordinate.of)(&mut found.choice.clone());
+    let mut fails: Option<usize> = None;
+    let mut step = 1;
+    let mut guess = leap(coordinate, lists, found);
+    while passes > fails.map_or(0, |f| f + 1) {
+        let low = fails.map_or(0, |f| f + 1);
+        let at = match (guess.take(), fails) {
+            (Some(at), _) if at >= low && at < passes => at,
+            (_, None) => passes.saturating_sub(step),
+            (_, Some(f)) => usize::midpoint(f, passes).clamp(low, passes - 1),
+        };
+        let mut next = found.choice;
+        *(coordinate.of)(&mut next) = at;
+        if coordinate.name == "transformer rating" {
+            refuse(lists, usage, &mut next);
+        }
+        let solved = board.solve(lists, &next, usage);
+        match solved.filter(|m| blocking(m, &found.moved).is_none()) {
+            Some(margins) => {
+                (found.choice, found.margins, passes) = (next, margins, at);
+                step *= 2;
+            }
+            None => fails = Some(at),
+        }
+    }
+}
+
+/// The position that a rating needs at least, of what its margin uses of the one that it has.
+fn leap(coordinate: &Coordinate, lists: &Lists, found: &Found) -> Option<usize> {
+    let (rule, part) = coordinate.rated?;
+    let of = |m: &&Margin| m.rule == rule && m.part.name.ends_with(part);
+    let used = found
+        .margins
+        .iter()
+        .filter(of)
+        .filter_map(|m| m.used_percent)
+        .reduce(f64::max)?;
+    let now = *(coordinate.of)(&mut found.choice.clone());
+    let needed = said(lists, coordinate.name, now)?.0 * used / 100.0;
+    (0..now).find(|at| said(lists, coordinate.name, *at).is_some_and(|s| s.0 >= needed))
 }
 
 /// The use that a build itself states.
-fn own(board: &Board<'_>) -> Use {
+pub(super) fn own(board: &Board<'_>) -> Use {
     Use {
         cell: false,
         channels: board.channels,
@@ -622,10 +646,10 @@ pub(super) fn rows(board: &Board<'_>, sized: &mut Sized) {
         }
     };
     let pasted = self::Board::blocks(board, &lists, &found.choice, &usage);
-    for (name, of, _) in COUPLED.iter().chain(RATED) {
+    for coordinate in COORDINATES {
         sized
             .rows
-            .extend(row(board, &lists, &usage, &found, (name, *of)));
+            .extend(row(board, &lists, &usage, &found, coordinate));
     }
     let lines = board.lines(&usage);
     sized.pasted.push((
@@ -646,48 +670,31 @@ fn row(
     lists: &Lists,
     usage: &Use,
     found: &Found,
-    (name, of): (&'static str, fn(&mut Choice) -> &mut usize),
+    coordinate: &Coordinate,
 ) -> Option<Row> {
-    let mut choice = found.choice;
-    let at = *of(&mut choice);
+    let name = coordinate.name;
+    let at = *(coordinate.of)(&mut found.choice.clone());
     let (value, dimension, unit, line) = said(lists, name, at)?;
     // a tap that is not there has no fuse
-    let taps = usage.taps.len();
-    let tap = [
-        "mains fuse",
-        "mains fuse, second tap",
-        "mains fuse, third tap",
-        "mains fuse, fourth tap",
-    ];
-    if tap
+    let tap = COORDINATES
         .iter()
-        .position(|t| *t == name)
-        .is_some_and(|k| k >= taps)
+        .filter(|c| c.name.starts_with("mains fuse"))
+        .position(|c| c.name == name);
+    if tap.is_some_and(|k| k >= usage.taps.len())
         || (name == "heatsink" && board.sink_stated && !usage.cell)
     {
         return None;
     }
-    let mut smaller = None;
-    if at > 0 {
-        let mut next = found.choice;
-        *of(&mut next) = at - 1;
-        let solved = board.solve(lists, &next, usage)?;
-        let why = blocking(&solved, &found.moved).map(Left::of);
-        let text = said(lists, name, at - 1).map(|s| format_exact(s.0, s.1));
-        smaller = text.zip(why);
-        let only: BTreeSet<String> = moved(&[&found.margins, &solved]);
-        let margins = left(&found.margins, &only);
-        return Some(Row {
-            build: board.build.clone(),
-            item: name,
-            needed: Some(Measure::new(value, unit)),
-            offered: Some(format_exact(value, dimension)),
-            stated: String::new(),
-            statements: vec![format!("{line} {}", format_exact(value, dimension))],
-            margins,
-            limited: smaller,
-        });
-    }
+    // the next smaller, or, where there is none, the next greater shows what the choice moves
+    let beside = if at > 0 { at - 1 } else { at + 1 };
+    let mut next = found.choice;
+    *(coordinate.of)(&mut next) = beside;
+    let solved = board.solve(lists, &next, usage)?;
+    let why = blocking(&solved, &found.moved)
+        .filter(|_| at > 0)
+        .map(Left::of);
+    let text = |at: usize| said(lists, name, at).map(|s| format_exact(s.0, s.1));
+    let only = moved(&[&found.margins, &solved]);
     Some(Row {
         build: board.build.clone(),
         item: name,
@@ -695,8 +702,8 @@ fn row(
         offered: Some(format_exact(value, dimension)),
         stated: String::new(),
         statements: vec![format!("{line} {}", format_exact(value, dimension))],
-        margins: Vec::new(),
-        limited: smaller,
+        margins: left(&found.margins, &only),
+        limited: text(beside).zip(why),
     })
 }
 

@@ -7,14 +7,10 @@ use std::sync::Arc;
 use super::item::{ITEMS, Item, nearest};
 use super::{Left, Row, Sized, blocking, fails, left, moved};
 use crate::build::statement::{Declared, Select, Statement, Value};
-use crate::build::view::names;
 use crate::finding::{Margin, Measure, Site};
 use crate::proposal::{statement_text, with_value, written};
 use crate::quantity::Quantity;
 use crate::solver::Solver;
-
-/// Blocks that a build reaches at most.
-const MOST_BLOCKS: usize = 200;
 
 /// A value of a line, to be tried at others.
 struct Place<'i> {
@@ -51,26 +47,17 @@ pub(super) fn in_place(solver: &Solver, build: &Declared, sized: &mut Sized) {
 /// Every place where a build states a thing: a fuse for each tap, a sink for each that it has.
 fn places<'i>(solver: &Solver, build: &Declared, item: &'i Item) -> Vec<Place<'i>> {
     let (kind, key) = item.key;
-    let view = solver.view(build, &[]);
     let mut out = Vec::new();
-    let mut queue = vec![build.name.clone()];
-    let mut at = 0;
-    while let Some(name) = queue.get(at).cloned() {
-        at += 1;
-        let Some(declared) = solver.project.find(view.name(&name)) else {
-            continue;
-        };
-        let seen = view.seen(declared);
-        for line in &seen.lines {
-            for next in names(line).map(|n| view.name(n).to_owned()) {
-                if queue.len() < MOST_BLOCKS && !queue.contains(&next) {
-                    queue.push(next);
-                }
-            }
-            let selected = item
+    for seen in solver
+        .blocks(build)
+        .into_iter()
+        .filter(|s| s.declared.kind.kind == kind)
+    {
+        for line in seen.lines.iter().filter(|l| l.key.name == key && !l.none) {
+            if item
                 .select
-                .is_none_or(|s| line.select == Some(Select::Word(s)));
-            if declared.kind.kind != kind || line.key.name != key || line.none || !selected {
+                .is_some_and(|s| line.select != Some(Select::Word(s)))
+            {
                 continue;
             }
             for (group, values) in line.groups.iter().enumerate() {
@@ -79,7 +66,7 @@ fn places<'i>(solver: &Solver, build: &Declared, item: &'i Item) -> Vec<Place<'i
                 {
                     out.push(Place {
                         item,
-                        block: declared.name.clone(),
+                        block: seen.declared.name.clone(),
                         line: line.clone(),
                         group,
                         stated: stated.clone(),

@@ -9,12 +9,9 @@
 use std::sync::Arc;
 
 use crate::build::statement::{Declared, Statement, Value, bounds};
-use crate::build::view::names;
 use crate::quantity::{Amount, Quantity, Tolerance};
 use crate::solver::Solver;
 
-/// Blocks that a build reaches at most.
-const MOST_BLOCKS: usize = 200;
 /// Usual tolerance of an electrolytic that states none, as every check takes it.
 const RESERVOIR: f64 = 0.2;
 
@@ -23,6 +20,8 @@ const RESERVOIR: f64 = 0.2;
 enum What {
     /// The value, from its low to its high end.
     Value(f64, f64),
+    /// The same of a test load: what it is called does not change, and the duty goes by that.
+    Load(f64, f64),
     /// How far the lowest of `n` resistors lies below the mean of the others, over the tolerance, in
     /// the worst of `banks`.
     Lowest { n: u32, banks: u32 },
@@ -45,32 +44,18 @@ pub(super) struct Input {
 
 /// Every line of a build that carries a tolerance. The mains is a range of use, not a tolerance.
 pub(super) fn inputs(solver: &Solver, build: &Declared) -> Vec<Input> {
-    let view = solver.view(build, &[]);
-    let channels = view
-        .seen(build)
-        .group("channels")
-        .and_then(|g| g.number("n"));
-    let banks = 2 * channels.map_or(1, |n| n.clamp(1.0, 64.0) as u32);
+    let blocks = solver.blocks(build);
+    let whole = |n: Option<f64>| n.map_or(1, |n| n.clamp(1.0, 64.0) as u32);
+    let channels = blocks
+        .first()
+        .and_then(|b| b.group("channels")?.number("n"));
+    let banks = 2 * whole(channels);
     let mut out = Vec::new();
-    let mut queue = vec![build.name.clone()];
-    let mut at = 0;
-    while let Some(name) = queue.get(at).cloned() {
-        at += 1;
-        let Some(declared) = solver.project.find(view.name(&name)) else {
-            continue;
-        };
-        let seen = view.seen(declared);
-        let pairs = seen.group("pairs").and_then(|g| g.number("n"));
-        let pairs = pairs.map_or(1, |n| n.clamp(1.0, 64.0) as u32);
-        for line in seen.lines.iter().filter(|l| l.change.is_none() && !l.none) {
-            for next in names(line).map(|n| view.name(n).to_owned()) {
-                if queue.len() < MOST_BLOCKS && !queue.contains(&next) {
-                    queue.push(next);
-                }
-            }
-            if line.key.name != "mains" {
-                of_line(&declared.name, line, (pairs, banks), &mut out);
-            }
+    for seen in &blocks {
+        let pairs = whole(seen.group("pairs").and_then(|g| g.number("n")));
+        let drawn = |l: &&Arc<Statement>| l.change.is_none() && !l.none && l.key.name != "mains";
+        for line in seen.lines.iter().filter(drawn) {
+            of_line(&seen.declared.name, line, (pairs, banks), &mut out);
         }
     }
     out
@@ -96,7 +81,11 @@ fn of_line(block: &str, line: &Arc<Statement>, (n, banks): (u32, u32), out: &mut
                     if low >= high {
                         continue;
                     }
-                    What::Value(low, high)
+                    if line.key.name == "resistive" {
+                        What::Load(low, high)
+                    } else {
+                        What::Value(low, high)
+                    }
                 }
             };
             let several = line.groups.len() > 1;
@@ -153,6 +142,13 @@ impl Input {
                     minus: none,
                 });
             }
+            What::Load(low, high) => {
+                let above = low + x * (high - low) - q.value;
+                q.tolerance = Some(Tolerance {
+                    plus: Amount::Absolute(above),
+                    minus: Amount::Absolute(-above),
+                });
+            }
             What::Between { .. } => q.value *= x,
             What::Lowest { .. } => {
                 let (low, high) = bounds(q);
@@ -167,7 +163,7 @@ impl Input {
     /// A place on this input, 0 to 1.
     fn draw(&self, random: &mut Random) -> f64 {
         match self.what {
-            What::Value(..) => random.next(),
+            What::Value(..) | What::Load(..) => random.next(),
             // of resistors the lowest lies up to the whole tolerance width below the mean; the model
             // takes it up to half of that, as the file states it
             What::Lowest { n, banks } => (2.0 * lowest(n, banks, random)).min(1.0),
