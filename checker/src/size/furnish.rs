@@ -177,11 +177,13 @@ impl<'b> Board<'b> {
             (Some(head), Some(tail)) => (head, tail),
             _ => (text.as_ref(), ""),
         };
-        let lines = self.lines(usage);
-        format!(
-            "{head}\n{lines}{tail}\n\n{}",
-            self.blocks(lists, choice, usage)
-        )
+        let (lines, blocks) = (self.lines(usage), self.blocks(lists, choice, usage));
+        if usage.cell {
+            // what the build says of channels, loads and mains gives way to this use
+            let (name, from) = (self.name(usage), &self.build);
+            return format!("{text}\n\nbuild {name} from {from} {{\n{lines}}}\n\n{blocks}");
+        }
+        format!("{head}\n{lines}{tail}\n\n{blocks}")
     }
 
     /// The build that is solved.
@@ -583,11 +585,13 @@ fn lower(
         };
         let mut next = found.choice;
         *(coordinate.of)(&mut next) = at;
-        if coordinate.name == "transformer rating" {
+        let mut solved = passing(board, lists, usage, &next, &found.moved);
+        if solved.is_none() && coordinate.name == "transformer rating" {
+            // a smaller transformer may want a smaller fuse
             refuse(lists, usage, &mut next);
+            solved = passing(board, lists, usage, &next, &found.moved);
         }
-        let solved = board.solve(lists, &next, usage);
-        match solved.filter(|m| blocking(m, &found.moved).is_none()) {
+        match solved {
             Some(margins) => {
                 (found.choice, found.margins, passes) = (next, margins, at);
                 step *= 2;
@@ -595,6 +599,18 @@ fn lower(
             None => fails = Some(at),
         }
     }
+}
+
+/// The margins of a choice, where it passes.
+fn passing(
+    board: &Board<'_>,
+    lists: &Lists,
+    usage: &Use,
+    choice: &Choice,
+    moved: &BTreeSet<String>,
+) -> Option<Vec<Margin>> {
+    let solved = board.solve(lists, choice, usage)?;
+    blocking(&solved, moved).is_none().then_some(solved)
 }
 
 /// The position that a rating needs at least, of what its margin uses of the one that it has.
