@@ -6,7 +6,7 @@ use std::path::{Path, PathBuf};
 use std::sync::Arc;
 
 use super::item::{BRIDGE_VOLTS, BRIDGES, RESERVOIRS, fuses, heatsinks, members, nearest};
-use super::{Left, Row, Sized, blocking, fails, left, moved};
+use super::{Left, Row, Sized, blocking, collapsed, fails, left, moved};
 use crate::Options;
 use crate::build::statement::{Declared, Statement};
 use crate::finding::{Margin, Measure};
@@ -344,12 +344,12 @@ fn bleeder(secondary: f64, farads: f64) -> String {
 /// A soft start that lets about twice the rated current through, bypassed when the reservoir is full.
 fn soft_start(secondary: f64, rating: f64, farads: f64, tap: f64) -> String {
     let ohms = Series::E12
-        .at_or_below(0.5 * tap * tap / rating.max(1.0))
+        .at_or_below(0.3 * tap * tap / rating.max(1.0))
         .unwrap_or(22.0)
         .clamp(2.2, 100.0);
     // the charge of both rails through the resistor as the secondary sees it
     let seen = ohms * (2.0 * secondary / tap) * (2.0 * secondary / tap) / 2.0;
-    let seconds = (8.0 * seen * farads).clamp(0.3, 3.0);
+    let seconds = (20.0 * seen * farads).clamp(0.5, 5.0);
     let milli = (seconds * 10.0).ceil() * 100.0;
     format!(
         "{} 50 W bypass {milli:.0} ms thermal-fuse 130 degC",
@@ -441,7 +441,7 @@ fn start(board: &Board<'_>, lists: &Lists, usage: &Use) -> Choice {
     let watts = board.claimed.max(10.0) * f64::from(carried);
     // Vs·√2·0.9 = √(2PR) + 4 V, R about 8 ohm
     let secondary = ((2.0 * board.claimed.max(10.0) * 8.0).sqrt() + 4.0) / 1.27;
-    let rating = nearest(&lists.rating, 2.5 * watts);
+    let rating = nearest(&lists.rating, 5.0 * watts);
     let mut choice = Choice {
         secondary: nearest(&lists.secondary, secondary),
         rating,
@@ -501,9 +501,8 @@ pub(super) fn furnish(board: &Board<'_>, usage: &Use) -> Result<Found, Option<Le
             passes = true;
             break;
         };
-        let power = why.rule.starts_with("power.");
         first = Some(Left::of(why));
-        if !power {
+        if !too_low(why) {
             break;
         }
     }
@@ -511,6 +510,11 @@ pub(super) fn furnish(board: &Board<'_>, usage: &Use) -> Result<Found, Option<Le
         return down(board, &lists, usage, choice, moved, first);
     }
     settle(board, &lists, usage, choice, margins, moved)
+}
+
+/// Whether a margin asks for more volts: a power not reached, a supply that gives out.
+fn too_low(why: &Margin) -> bool {
+    why.rule.starts_with("power.") || collapsed(why)
 }
 
 /// Lower secondaries, where a higher one is too much for something.
@@ -528,7 +532,7 @@ fn down(
         match blocking(&margins, &moved) {
             None => return settle(board, lists, usage, choice, margins, moved),
             // neither too high nor too low, but never right
-            Some(why) if why.rule.starts_with("power.") => break,
+            Some(why) if too_low(why) => break,
             Some(_) => {}
         }
     }
