@@ -1,8 +1,11 @@
 //! What each use of a board needs: the smallest usual value of every bought part, each solved in place.
 //! Must not know any particular rule's arithmetic: a value passes where the margins that it moves do.
 
-mod furnish;
+mod board;
+mod choice;
 mod item;
+mod offer;
+mod search;
 mod seller;
 #[cfg(test)]
 mod tests;
@@ -138,12 +141,12 @@ pub fn size(
             walk::in_place(&solver, build, &mut sized);
         } else {
             bare = bare.or(Some(build));
-            let board = furnish::Board::of(&solver, build, files, path, shown, options);
-            furnish::rows(&board, &mut sized);
+            let board = board::Board::of(&solver, build, files, path, shown, options);
+            offer::rows(&board, &mut sized);
         }
     }
     if let Some(build) = bare {
-        let board = furnish::Board::of(&solver, build, files, path, shown, options);
+        let board = board::Board::of(&solver, build, files, path, shown, options);
         sized.cells = seller::table(&board);
     }
     sized.sources = solver.project.sources;

@@ -285,7 +285,7 @@ fn row(out: &mut String, build: &BuildReport, margin: &Margin) -> fmt::Result {
         writeln!(
             out,
             "<tr><td colspan=\"8\" class=\"at wide pass\">would pass: {}</td></tr>",
-            plain(&pass)
+            plain(&pass.replace('`', ""))
         )?;
     }
     Ok(())

@@ -1,7 +1,9 @@
 //! The table that a seller publishes: channels by load by mains, each use allowed, allowed on a
 //! condition, or not. Must not know how a use is furnished.
 
-use super::furnish::{Board, Use, brief, furnish};
+use super::board::{Board, Use};
+use super::offer::brief;
+use super::search::furnish;
 use super::{Answer, Cell, Left};
 
 /// Channels of the table beside those that the build states: one, two, many.

@@ -2,7 +2,10 @@
 
 use rayon::prelude::*;
 
-use super::furnish::{Board, COORDINATES, furnish, lists, own};
+use super::board::Board;
+use super::choice::{COORDINATES, lists};
+use super::offer::own;
+use super::search::furnish;
 use super::{Answer, Sized, seller, size};
 use crate::Options;
 use crate::finding::{Margin, Severity};
@@ -197,8 +200,9 @@ fn furnished(text: &str) -> Result<(String, Vec<(&'static str, String)>), String
     })
 }
 
-/// A hundred boards: what is offered, pasted, passes the check without an error or a warning; each
-/// next smaller usual value leaves at least a warning. Where nothing is offered, something is said.
+/// A hundred boards: what is offered, pasted, passes the check without an error or a warning; the
+/// next smaller usual value leaves at least a warning, four things of each board in turn. Where nothing
+/// is offered, something is said.
 #[test]
 fn what_is_pasted_passes_and_the_next_smaller_fails() {
     let found: Vec<Result<(), String>> = (0..100_u64)
@@ -222,7 +226,8 @@ fn what_is_pasted_passes_and_the_next_smaller_fails() {
                 Vec::<String>::new(),
                 "board {n}:\n{pasted}"
             );
-            for (name, text) in smaller {
+            let turn = smaller.len().max(1);
+            for (name, text) in smaller.into_iter().cycle().skip(n as usize % turn).take(4) {
                 assert_ne!(
                     warnings(&text),
                     Vec::<String>::new(),

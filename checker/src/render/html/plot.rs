@@ -142,8 +142,15 @@ impl Frame {
         let on_paper = |points: &[(f64, f64)]| -> Vec<(f64, f64)> {
             points
                 .iter()
+                .filter(|p| p.0.is_finite() && p.1.is_finite())
                 .map(|p| (x.place(p.0), y.place(p.1)))
                 .collect()
+        };
+        let marks = || {
+            panel
+                .marks
+                .iter()
+                .filter(|m| m.x.is_finite() && m.y.is_finite())
         };
         let mut labels = Labels::new((LEFT, self.top, WIDTH - RIGHT, bottom));
         for (at, line) in panel.lines.iter().enumerate() {
@@ -151,14 +158,14 @@ impl Frame {
             path(out, &class(&panel.lines, at), &points)?;
             labels.avoid(&points);
         }
-        for mark in &panel.marks {
+        for mark in marks() {
             sign(out, mark.role, x.place(mark.x), y.place(mark.y))?;
         }
         out.write_str("</svg>\n")?;
-        for mark in &panel.marks {
+        for mark in marks() {
             labels.avoid_around(x.place(mark.x), y.place(mark.y));
         }
-        for mark in &panel.marks {
+        for mark in marks() {
             let near = [(x.place(mark.x), y.place(mark.y))];
             labels.write(out, &marked(mark), &near, "")?;
         }
