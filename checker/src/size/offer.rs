@@ -5,7 +5,7 @@ use super::board::{Board, Use};
 use super::choice::{COORDINATES, Coordinate, Lists, lists, said};
 use super::search::{Found, furnish};
 use super::{Left, Row, Sized, blocking, fails, left, moved};
-use crate::finding::{Margin, Measure};
+use crate::finding::Measure;
 use crate::quantity::format_exact;
 
 /// The use that a build itself states.
