@@ -182,7 +182,10 @@ fn why(row: &Row) -> Option<String> {
 fn named(left: &Left) -> String {
     match left.used {
         Some(used) => format!("{} of {} {} used", left.rule, left.part, percent(used)),
-        None => format!("{} of {}: nothing left", left.rule, left.part),
+        None => {
+            let verdict = super::message::verdict(left.verdict);
+            format!("{} of {} is {verdict}", left.rule, left.part)
+        }
     }
 }
 

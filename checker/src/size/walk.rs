@@ -69,7 +69,7 @@ fn places<'i>(solver: &Solver, build: &Declared, item: &'i Item) -> Vec<Place<'i
                         block: seen.declared.name.clone(),
                         line: line.clone(),
                         group,
-                        stated: stated.clone(),
+                        stated: *stated,
                         site: slot.site,
                     });
                 }

@@ -2,6 +2,7 @@
 
 use crate::curves::{Kind, Line, Picture, Role};
 use crate::finding::{BuildReport, Margin, Verdict};
+use crate::physics::math;
 use crate::testing::{all_kits, drawn, kit, tern60};
 
 /// A line read between its points, straight in log-log, held beyond its ends: as it is drawn.
@@ -16,8 +17,8 @@ fn at(line: &Line, x: f64) -> f64 {
     let Some([a, b]) = pair.map(|w| [w[0], w[1]]) else {
         return last.1;
     };
-    let share = (x / a.0).ln() / (b.0 / a.0).ln();
-    a.1 * (b.1 / a.1).powf(share)
+    let share = math::ln(x / a.0) / math::ln(b.0 / a.0);
+    a.1 * math::pow(b.1 / a.1, share)
 }
 
 fn lines(picture: &Picture, role: Role) -> impl Iterator<Item = &Line> {

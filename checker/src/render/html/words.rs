@@ -45,7 +45,7 @@ fn shown(m: Measure) -> String {
     figure(m).replace("degC", "°C").replace(" deg", "°")
 }
 
-fn marks<'p>(picture: &'p Picture, role: Role) -> impl Iterator<Item = &'p Mark> {
+fn marks(picture: &Picture, role: Role) -> impl Iterator<Item = &Mark> {
     picture
         .panels
         .iter()
