@@ -177,8 +177,11 @@ fn board(n: u64) -> String {
     ])
 }
 
+/// Texts, each with the name of what is smaller in it.
+type Named = Vec<(&'static str, String)>;
+
 /// The values furnished for a board, with every text in which one of them is the next smaller.
-fn furnished(text: &str) -> Result<(String, Vec<(&'static str, String)>), String> {
+fn furnished(text: &str) -> Result<(String, Named), String> {
     beside(text, |files, path| {
         let options = options();
         let solver = Solver::read(files, path, "under-test.ampspec", &options)?;

@@ -94,7 +94,7 @@ fn worst_case_and_statistics_stand_side_by_side() {
         assert_eq!((margin.used_percent.unwrap(), margin.verdict), m.worst_case);
         assert!(!m.beyond(), "{m:?}");
         if margin.verdict == Verdict::Ok {
-            assert_eq!(m.past.0, 0.0, "{m:?}");
+            assert!(m.past.0 <= 0.0, "{m:?}");
         }
     }
 }

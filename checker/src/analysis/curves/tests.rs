@@ -122,7 +122,8 @@ fn marks_lie_where_they_are_said_to() {
         let locus = lines(area, Role::Locus)
             .find(|l| l.label == mark.label)
             .unwrap();
-        assert!(locus.points.iter().any(|p| p.0 == mark.x && p.1 == mark.y));
+        let there = |p: &&(f64, f64)| (p.0 - mark.x).abs() + (p.1 - mark.y).abs() < 1e-12;
+        assert_eq!(locus.points.iter().filter(there).count(), 1);
     }
     let limiter = pictures(build, Kind::Limiter)[0];
     let margin = build
