@@ -1,7 +1,10 @@
 //! The command line: reads arguments, starts one command, and is the one place that prints.
 //! Must not know what a command does.
 
+mod apply;
 mod input;
+mod progress;
+mod revision;
 mod save;
 mod solve;
 
@@ -44,6 +47,10 @@ commands! {
     Size(size),
     /// Draw random kits within tolerance, and say how many pass
     Spread(spread),
+    /// Show which margins moved between two specs, or two revisions of one
+    Compare(compare),
+    /// Check a bill of materials against a spec, or write one from it
+    Parts(parts),
     /// Explain a rule, or list all of them
     Explain(explain),
     /// Put files into the canonical layout; meaning never changes

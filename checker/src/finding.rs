@@ -201,6 +201,8 @@ pub struct Margin {
     pub severity: Severity,
     /// Index into [`Report::waivers`] where one accepts this margin.
     pub waiver: Option<usize>,
+    /// The baseline of this run holds it: it was found before, and fails nothing.
+    pub known: bool,
     /// What the part sees.
     pub stress: Option<Measure>,
     /// What the data sheet, or the policy's hard limit, allows.
@@ -254,6 +256,8 @@ pub struct Finding {
     pub edits: Vec<TextEdit>,
     /// Index into [`Report::waivers`] where one accepts this finding.
     pub waiver: Option<usize>,
+    /// The baseline of this run holds it: it was found before, and fails nothing.
+    pub known: bool,
     /// The build it is about, where it is about one.
     pub build: Option<String>,
 }
@@ -272,6 +276,7 @@ impl Finding {
             related: Vec::new(),
             edits: Vec::new(),
             waiver: None,
+            known: false,
             build: None,
         }
     }

@@ -3,7 +3,10 @@
 
 pub mod analysis;
 pub mod assist;
+pub mod baseline;
+pub mod bom;
 pub mod build;
+pub mod compare;
 pub mod curves;
 pub mod finding;
 pub mod physics;
@@ -30,7 +33,7 @@ use std::path::{Path, PathBuf};
 use std::sync::Arc;
 
 use analysis::{Case, Margins, Memory, Tables, derived};
-use build::parts::Reader;
+use build::parts::{Duty, Reader};
 use build::statement::Declared;
 use build::{Project, View, project};
 use finding::{Assumed, BuildReport, Finding, Margin, Report};
@@ -43,6 +46,8 @@ use source::{Files, Sources};
 pub struct Options {
     /// A policy that replaces the one each build names.
     pub policy: Option<String>,
+    /// A duty that replaces the one each build or policy states.
+    pub duty: Option<Duty>,
     /// Only this build.
     pub build: Option<String>,
     /// Today, `2030-01-31`, for waivers with a date.
@@ -186,7 +191,10 @@ fn solve(
         curves: None,
     };
     match typed {
-        Ok(build) => {
+        Ok(mut build) => {
+            if let Some(duty) = &options.duty {
+                build.duty.set(duty.clone());
+            }
             if let Some(duty) = build.duty.get() {
                 report.duty.clone_from(&duty.shown);
             }

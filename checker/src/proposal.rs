@@ -18,6 +18,13 @@ const OFFERED: usize = 3;
 /// A margin that moves by no more than this, in points, is not mentioned.
 const MENTIONED: f64 = 1.0;
 
+/// A margin that is past its limit may be pushed this much further by a remedy for another, no more.
+const FURTHER: f64 = 1.1;
+
+/// Figures that hold for the one part that was measured: a part of another value has its own, so that
+/// a change takes them out.
+const ITS_OWN: &[(&str, &str, &[&str])] = &[("supply.fuse", "A", &["melts"])];
+
 /// Solves a view again with extra changes, and gives all its margins.
 pub type Solve<'s> = dyn Fn(&[(String, Arc<Statement>)]) -> Vec<Margin> + 's;
 
@@ -70,10 +77,11 @@ fn offer(
         return None;
     };
     let values = values(remedy, quantity.value);
+    let its_own = its_own(remedy, &line, group);
     let mut attempt = |value: f64| -> Option<(String, Arc<Vec<Margin>>)> {
         let text = written(value, quantity, remedy.series == Series::Count);
         let margins = tried.entry((slot.site, text.clone())).or_insert_with(|| {
-            let changed = with_value(&line, group, remedy.slot, value);
+            let changed = with_value(&line, group, remedy.slot, value, &its_own);
             Arc::new(solve(&[(block.clone(), Arc::new(changed))]))
         });
         Some((text, margins.clone()))
@@ -98,7 +106,7 @@ fn offer(
         }
     }
     let (text, after) = attempt(*values.get(high)?)?;
-    if !clears(&after) || breaks(before, &after) {
+    if !clears(&after) || breaks(before, &after, &its_own) {
         return None;
     }
     let used_after = after.iter().find(|m| m.id == margin.id)?.used_percent?;
@@ -108,7 +116,7 @@ fn offer(
         .text(slot.site.file)
         .get(slot.site.span.start..slot.site.span.end)?;
     let bought_part = kind == "device";
-    let title = if bought_part {
+    let mut title = if bought_part {
         format!(
             "another {block}: `{key}` of {text} or {}",
             if remedy.up { "more" } else { "less" }
@@ -116,7 +124,14 @@ fn offer(
     } else {
         format!("`{key}` of {block}: {text} instead of {old}")
     };
-    let statement = statement_text(view, &line, slot.site, &text)?;
+    if !its_own.is_empty() {
+        title.push_str(&format!(
+            ", and the `{}` of that part",
+            its_own.join("`, `")
+        ));
+    }
+    let edits = edits(view, &line, group, slot.site, &text, &its_own)?;
+    let statement = statement_text(view, &line, &edits)?;
     Some(Change {
         title,
         // a data sheet is not edited: another part is bought
@@ -125,14 +140,7 @@ fn offer(
         } else {
             vec![format!("change {block} {statement}")]
         },
-        edits: if bought_part {
-            Vec::new()
-        } else {
-            vec![TextEdit {
-                site: slot.site,
-                text,
-            }]
-        },
+        edits: if bought_part { Vec::new() } else { edits },
         used_after,
         also_moves: moves(margin, before, &after),
     })
@@ -143,15 +151,38 @@ pub(crate) fn stands_in_the_way(margin: &Margin) -> bool {
     matches!(margin.verdict, Verdict::Over | Verdict::Thin) && margin.waiver.is_none()
 }
 
-/// A change must not push any other margin past its rating, or leave it without a figure.
-fn breaks(before: &[Margin], after: &[Margin]) -> bool {
+/// The figures that a changed line does not keep: they are those of the part that was there.
+fn its_own(remedy: &Remedy, line: &Statement, group: usize) -> Vec<&'static str> {
+    let listed = ITS_OWN
+        .iter()
+        .filter(|(key, slot, _)| *key == remedy.key && *slot == remedy.slot)
+        .flat_map(|(.., own)| *own);
+    let stated = |own: &&str| line.groups.get(group).is_some_and(|g| g.get(own).is_some());
+    listed.copied().filter(stated).collect()
+}
+
+/// A change must not push any other margin past its rating, nor much further past one that it is past
+/// already, nor leave it without a figure, unless it waits for one of the new part's own.
+fn breaks(before: &[Margin], after: &[Margin], its_own: &[&str]) -> bool {
+    let waits = |m: &Margin| {
+        let own = |need: &String| its_own.iter().any(|own| need.ends_with(own));
+        !m.needs.is_empty() && m.needs.iter().all(own)
+    };
     let counted = |m: &&Margin| !m.rule.starts_with("bom.") && !m.rule.starts_with("data.");
     after.iter().filter(counted).any(|now| {
-        let then = before.iter().find(|m| m.id == now.id);
+        let Some(then) = before.iter().find(|m| m.id == now.id) else {
+            return now.verdict != Verdict::Ok;
+        };
+        let further = || match (then.used_percent, now.used_percent) {
+            (Some(then), Some(now)) => now > then * FURTHER,
+            (then, now) => then.is_some() && now.is_none(),
+        };
         match now.verdict {
-            Verdict::Over => then.is_none_or(|m| m.verdict != Verdict::Over),
-            Verdict::Unchecked => then.is_none_or(|m| m.verdict != Verdict::Unchecked),
-            Verdict::Thin => then.is_none_or(|m| m.verdict == Verdict::Ok),
+            Verdict::Over => then.verdict != Verdict::Over || further(),
+            Verdict::Thin => {
+                then.verdict == Verdict::Ok || (then.verdict == Verdict::Thin && further())
+            }
+            Verdict::Unchecked => then.verdict != Verdict::Unchecked && !waits(now),
             Verdict::Ok => false,
         }
     })
@@ -266,6 +297,9 @@ pub(crate) fn written(value: f64, like: &Quantity, count: bool) -> String {
     if like.form == crate::quantity::Form::Rms {
         text = text.replace(" V", " Vac");
     }
+    if like.form == crate::quantity::Form::Dc {
+        text = text.replace(" V", " Vdc");
+    }
     if let Some(tolerance) = &like.tolerance
         && let (crate::quantity::Amount::Relative(plus), crate::quantity::Amount::Relative(minus)) =
             (tolerance.plus, tolerance.minus)
@@ -280,34 +314,207 @@ pub(crate) fn written(value: f64, like: &Quantity, count: bool) -> String {
     text
 }
 
-/// The line with another value in one slot.
-pub(crate) fn with_value(line: &Statement, group: usize, slot: &str, value: f64) -> Statement {
+/// The line with another value in one slot, and without what was the old part's own.
+pub(crate) fn with_value(
+    line: &Statement,
+    group: usize,
+    slot: &str,
+    value: f64,
+    its_own: &[&str],
+) -> Statement {
     let mut line = line.clone();
-    if let Some(found) = line
-        .groups
-        .get_mut(group)
-        .and_then(|g| g.slots.iter_mut().find(|s| s.slot == slot))
-        && let Value::Quantity(q) = &mut found.value
-    {
-        q.value = value;
+    if let Some(group) = line.groups.get_mut(group) {
+        group.slots.retain(|s| !its_own.contains(&s.slot));
+        let found = group.slots.iter_mut().find(|s| s.slot == slot);
+        if let Some(Value::Quantity(q)) = found.map(|s| &mut s.value) {
+            q.value = value;
+        }
     }
     line
 }
 
-/// The text of the line with one place replaced, on one line.
+/// The replacements of text: the value, and taken out what is the old part's own, which its order code
+/// is always. In the order of the text.
+fn edits(
+    view: &View<'_>,
+    line: &Statement,
+    group: usize,
+    value: Site,
+    text: &str,
+    its_own: &[&str],
+) -> Option<Vec<TextEdit>> {
+    let group = line.groups.get(group)?;
+    let whole = view.project.sources.text(value.file);
+    let mut edits = vec![TextEdit {
+        site: value,
+        text: text.to_owned(),
+    }];
+    let mut take_out = |from: usize, to: usize| {
+        // with the blank before it
+        let from = whole
+            .get(..from)
+            .map_or(from, |before| before.trim_end_matches([' ', '\t']).len());
+        edits.push(TextEdit {
+            site: Site {
+                span: ampspec_grammar::Span::new(from, to),
+                ..value
+            },
+            text: String::new(),
+        });
+    };
+    for own in its_own {
+        let span = group.get(own)?.site.span;
+        // the label stands before the figure
+        let label = whole.get(..span.start)?.trim_end().strip_suffix(own)?.len();
+        take_out(label, span.end);
+    }
+    if group.bought.part.is_some() {
+        let span = group.site.span;
+        let (from, to) = order_code(whole.get(span.start..span.end)?)?;
+        take_out(span.start + from, span.start + to);
+    }
+    edits.sort_by_key(|e| e.site);
+    Some(edits)
+}
+
+/// Where `part "code"` stands in a text, quotes of other texts passed over.
+fn order_code(text: &str) -> Option<(usize, usize)> {
+    let mut open = false;
+    for (at, c) in text.char_indices() {
+        match c {
+            '"' => open = !open,
+            'p' if !open => {
+                let Some(code) = text.get(at..)?.strip_prefix("part") else {
+                    continue;
+                };
+                let quoted = code.trim_start();
+                let own_word = text.get(..at)?.ends_with(char::is_whitespace);
+                if own_word && let Some(inside) = quoted.strip_prefix('"') {
+                    let blanks = code.len() - quoted.len();
+                    return Some((at, at + "part".len() + blanks + inside.find('"')? + 2));
+                }
+            }
+            _ => {}
+        }
+    }
+    None
+}
+
+/// The text of the line with the edits made, on one line.
 pub(crate) fn statement_text(
     view: &View<'_>,
     line: &Statement,
-    place: Site,
-    text: &str,
+    edits: &[TextEdit],
 ) -> Option<String> {
     // a changed line begins with `change BLOCK`; its own key is where it starts
     let whole = view.project.sources.text(line.site.file);
-    if place.file != line.site.file {
-        return None;
+    let mut out = String::new();
+    let mut at = line.key_site.span.start;
+    for edit in edits {
+        if edit.site.file != line.site.file {
+            return None;
+        }
+        out.push_str(whole.get(at..edit.site.span.start)?);
+        out.push_str(&edit.text);
+        at = edit.site.span.end;
     }
-    let before = whole.get(line.key_site.span.start..place.span.start)?;
-    let after = whole.get(place.span.end..line.site.span.end)?;
-    let joined = format!("{before}{text}{after}");
-    Some(joined.split_whitespace().collect::<Vec<_>>().join(" "))
+    out.push_str(whole.get(at..line.site.span.end)?);
+    Some(out.split_whitespace().collect::<Vec<_>>().join(" "))
+}
+
+#[cfg(test)]
+mod tests {
+    use crate::finding::Margin;
+    use crate::testing;
+
+    fn changes(rule: &str, text: &str) -> Vec<Margin> {
+        let report = testing::changes(text);
+        let margins = report.builds.into_iter().flat_map(|b| b.margins);
+        margins
+            .filter(|m| m.rule == rule && !m.changes.is_empty())
+            .collect()
+    }
+
+    #[test]
+    fn another_value_is_another_part() {
+        // the order code WW2-0R22J is that of a 0R22
+        let margins = changes("bias.stability", &testing::kit("tern60-mistakes"));
+        let change = &margins[0].changes[0];
+        assert!(
+            change.statements[0].starts_with("change out emitter 0R39"),
+            "{change:?}"
+        );
+        assert!(!change.statements[0].contains("part"), "{change:?}");
+        assert!(change.edits.iter().any(|e| e.text.is_empty()));
+    }
+
+    /// The melting integral of a fuse goes with its rating: what a 6.3 A fuse lets through says
+    /// nothing of a 1 A fuse.
+    #[test]
+    fn a_fuse_of_another_rating_has_its_own_melting_integral() {
+        let margins = changes("supply.fuse-band", &testing::kit("tern60-mistakes"));
+        let change = &margins[0].changes[0];
+        assert_eq!(
+            change.statements[0],
+            "change toroid fuse mains 1 A slow tap 230 V"
+        );
+        assert!(
+            change.title.ends_with("and the `melts` of that part"),
+            "{}",
+            change.title
+        );
+    }
+
+    #[test]
+    fn volts_of_a_relay_stay_direct() {
+        let margins = changes("protection.relay-dc", &testing::kit("tern60-mistakes"));
+        assert!(
+            margins[0].changes[0].statements[0].contains("Vdc"),
+            "{:?}",
+            margins[0].changes
+        );
+    }
+
+    /// Twenty volts in place of 28 clear the safe area and leave a fifth of the claimed power, of which
+    /// too little is there already: that is no remedy.
+    #[test]
+    fn what_is_past_its_limit_is_not_pushed_further() {
+        for margin in changes("soa.reactive", &testing::kit("tern60-mistakes")) {
+            for change in &margin.changes {
+                assert!(!change.title.contains("secondary"), "{}", change.title);
+            }
+        }
+    }
+
+    /// What is offered has been re-solved: written into the file, it clears the margin.
+    #[test]
+    fn every_change_of_the_kit_full_of_mistakes_clears_its_margin() {
+        let text = testing::kit("tern60-mistakes");
+        let report = testing::changes(&text);
+        let mut tried = 0;
+        for margin in report.builds.iter().flat_map(|b| &b.margins) {
+            for change in margin.changes.iter().filter(|c| !c.edits.is_empty()) {
+                let mut changed = text.clone();
+                for edit in change.edits.iter().rev() {
+                    changed.replace_range(edit.site.span.start..edit.site.span.end, &edit.text);
+                }
+                let after = testing::report(&changed);
+                let now = after
+                    .builds
+                    .iter()
+                    .flat_map(|b| &b.margins)
+                    .find(|m| m.id == margin.id);
+                let used = now.and_then(|m| m.used_percent);
+                assert!(
+                    used.is_some_and(|u| (u - change.used_after).abs() < 1e-6 * u.abs().max(1.0)),
+                    "{}: {} gives {used:?}, offered {}",
+                    margin.id,
+                    change.title,
+                    change.used_after
+                );
+                tried += 1;
+            }
+        }
+        assert!(tried > 15);
+    }
 }

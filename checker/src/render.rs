@@ -2,6 +2,7 @@
 //! Must not know how any number was computed, and never changes a verdict.
 
 pub mod annotations;
+pub mod compare;
 pub mod csv;
 pub mod escape;
 pub mod explain;
@@ -12,11 +13,13 @@ pub mod language;
 pub mod margins;
 pub mod markdown;
 pub mod message;
+pub mod parts;
 pub mod run;
 pub mod sarif;
 pub mod shown;
 pub mod size;
 pub mod spread;
+mod table;
 pub mod terminal;
 pub mod test_xml;
 

@@ -61,20 +61,34 @@ pub(crate) fn tern60(edits: &[(&str, &str)]) -> String {
     edited(&kit("tern60"), edits)
 }
 
-/// Check a text as a file beside the demo kits.
-pub(crate) fn report(text: &str) -> Report {
+/// The same, with the changes that would clear what is found.
+pub(crate) fn changes(text: &str) -> Report {
+    checked(text, true).report
+}
+
+/// Check a text as a file beside the demo kits, and keep the files.
+pub(crate) fn outcome(text: &str) -> crate::Outcome {
     checked(text, false)
 }
 
 /// The same, with the points of the pictures.
 pub(crate) fn drawn(text: &str) -> Report {
-    checked(text, true)
-}
-
-fn checked(text: &str, curves: bool) -> Report {
     let options = crate::Options {
         today: "2026-06-01".to_owned(),
-        curves,
+        curves: true,
+        ..crate::Options::default()
+    };
+    beside(text, |files, path| {
+        crate::check(files, path, "under-test.ampspec", &options)
+    })
+    .unwrap()
+    .report
+}
+
+fn checked(text: &str, changes: bool) -> crate::Outcome {
+    let options = crate::Options {
+        today: "2026-06-01".to_owned(),
+        changes,
         ..crate::Options::default()
     };
     crate::check(
@@ -84,7 +98,35 @@ fn checked(text: &str, curves: bool) -> Report {
         &options,
     )
     .unwrap()
-    .report
+}
+
+/// Check a text as a file beside the demo kits.
+pub(crate) fn report(text: &str) -> Report {
+    outcome(text).report
+}
+
+/// The bill of materials that the first build of a text wants.
+pub(crate) fn template(text: &str) -> String {
+    let path = kits().join("under-test.ampspec");
+    let options = crate::Options::default();
+    let basis = crate::bom::Basis::Build;
+    crate::bom::template(&Beside(text), &path, "under-test.ampspec", &options, basis).unwrap()
+}
+
+/// A bill of materials held against a text.
+pub(crate) fn crossed(text: &str, list: &str) -> crate::bom::Crossed {
+    let given = crate::bom::Against {
+        name: "bom.csv",
+        text: list,
+        columns: &[],
+        basis: crate::bom::Basis::Build,
+    };
+    let path = kits().join("under-test.ampspec");
+    let options = crate::Options {
+        today: "2026-06-01".to_owned(),
+        ..crate::Options::default()
+    };
+    crate::bom::against(&Beside(text), &path, "under-test.ampspec", &options, &given).unwrap()
 }
 
 /// Do something with a text as a file beside the demo kits.

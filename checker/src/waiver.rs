@@ -2,6 +2,7 @@
 //! Must not know what a rule compares.
 
 use crate::Options;
+use crate::bom;
 use crate::build::Project;
 use crate::finding::{BuildReport, Finding, Margin, Severity, Verdict, Waiver, WaiverState};
 use crate::policy::unknown_rule;
@@ -15,8 +16,33 @@ pub fn apply(
     builds: &mut [BuildReport],
     findings: &mut Vec<Finding>,
 ) -> Vec<Waiver> {
+    // what a list is checked for cannot be waived where there is no list, nor be stale
+    heard(project, options, builds, findings, |rule| {
+        !bom::needs_list(rule)
+    })
+}
+
+/// The same for what a bill of materials is checked for, and for nothing else.
+pub fn apply_to_list(
+    project: &Project,
+    options: &Options,
+    builds: &mut [BuildReport],
+    findings: &mut Vec<Finding>,
+) -> Vec<Waiver> {
+    heard(project, options, builds, findings, |rule| {
+        rule.starts_with("bom.")
+    })
+}
+
+fn heard(
+    project: &Project,
+    options: &Options,
+    builds: &mut [BuildReport],
+    findings: &mut Vec<Finding>,
+    concerns: impl Fn(&str) -> bool,
+) -> Vec<Waiver> {
     let mut waivers = Vec::new();
-    for text in &project.waivers {
+    for text in project.waivers.iter().filter(|w| concerns(&w.rule)) {
         let Some(site) = text.site else { continue };
         let mut waiver = Waiver {
             rule: text.rule.clone(),

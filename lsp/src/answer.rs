@@ -412,10 +412,10 @@ impl View {
         })
     }
 
-    /// The margin summary as a page of Markdown.
-    pub(crate) fn margins(&self) -> Option<Value> {
+    /// The margin summary as a page.
+    pub(crate) fn margins(&self, form: hover::PageForm) -> Option<Value> {
         let outcome = self.outcomes.first()?;
-        Some(Value::String(hover::page(Outcome::clone(outcome))))
+        Some(Value::String(hover::page(Outcome::clone(outcome), form)))
     }
 }
 

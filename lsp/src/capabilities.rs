@@ -3,13 +3,15 @@
 
 use ampspec_grammar::ColumnUnit;
 use derate::assist::hints::Wanted;
+use derate::build::parts::Duty;
 use serde::Deserialize;
 use serde_json::Value;
 use tower_lsp::lsp_types::*;
 
 use crate::convert::legend;
 
-/// The command that answers with the margin summary of a spec, as Markdown.
+/// The command that answers with the margin summary of a spec: as Markdown, or as HTML where its second
+/// argument says `html`.
 pub(crate) const MARGINS: &str = "derate.margins";
 
 /// What the client can do, as far as it matters here.
@@ -67,7 +69,7 @@ impl Client {
             .unwrap_or_default();
         Self {
             // bytes cost nothing to convert; UTF-16 is what every client takes
-            unit: if encodings.contains(&PositionEncodingKind::UTF8) {
+            unit: if encodings.contains(&PositionEncodingKind::UTF8) || takes_bytes(params) {
                 ColumnUnit::Byte
             } else {
                 ColumnUnit::Utf16
@@ -115,6 +117,16 @@ impl Client {
             ColumnUnit::Utf16 | ColumnUnit::Character => PositionEncodingKind::UTF16,
         }
     }
+}
+
+/// Whether the client's options say that it takes columns for bytes whatever is agreed on: some do, and
+/// would put an edit behind a `±` in the wrong place.
+fn takes_bytes(params: &InitializeParams) -> bool {
+    let options = params.initialization_options.as_ref();
+    options
+        .and_then(|o| o.get("columns"))
+        .and_then(Value::as_str)
+        == Some("bytes")
 }
 
 /// What this server offers.
@@ -195,10 +207,12 @@ pub(crate) fn offered(client: &Client) -> ServerCapabilities {
 }
 
 /// What a person can set, under `derate`.
-#[derive(Clone, Debug, Default, PartialEq, Eq)]
+#[derive(Clone, Debug, Default, PartialEq)]
 pub(crate) struct Settings {
     /// A policy that replaces the one each build names.
     pub(crate) policy: Option<String>,
+    /// A duty that replaces the one each build states.
+    pub(crate) duty: Option<Duty>,
     /// Check every spec of the workspace, not only the open ones.
     pub(crate) workspace: bool,
     /// Which hints.
@@ -209,6 +223,7 @@ pub(crate) struct Settings {
 #[serde(default)]
 struct Sent {
     policy: Option<String>,
+    duty: Option<String>,
     workspace: bool,
     hints: SentHints,
 }
@@ -243,6 +258,7 @@ impl Settings {
         let sent = sent.get("derate").unwrap_or(sent);
         let Sent {
             policy,
+            duty,
             workspace,
             hints,
         } = Sent::deserialize(sent).unwrap_or_default();
@@ -253,6 +269,7 @@ impl Settings {
         } = hints;
         Self {
             policy: policy.filter(|p| !p.is_empty()),
+            duty: duty.as_deref().and_then(Duty::read),
             workspace,
             hints: Wanted {
                 derived,

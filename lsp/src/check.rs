@@ -9,6 +9,7 @@ use std::sync::Arc;
 use ampspec_grammar::Tree;
 use derate::analysis::Memory;
 use derate::assist::moved::moved;
+use derate::build::parts::Duty;
 use derate::render::shown::shown;
 use derate::source::Files;
 use derate::today::today;
@@ -29,6 +30,8 @@ pub(crate) struct Session {
     pub(crate) client: Client,
     /// A policy that replaces the one each build names.
     pub(crate) policy: Option<String>,
+    /// A duty that replaces the one each build states.
+    pub(crate) duty: Option<Duty>,
     /// The folders of the workspace, links resolved.
     pub(crate) folders: Vec<PathBuf>,
     /// What earlier checks solved.
@@ -79,6 +82,7 @@ impl Session {
     pub(crate) fn options(&self, path: &Path) -> Options {
         Options {
             policy: self.policy.clone(),
+            duty: self.duty.clone(),
             today: today(),
             root: self.root(path),
             memory: Arc::clone(&self.memory),

@@ -140,6 +140,7 @@ impl Owner {
             session: Arc::new(Session {
                 client,
                 policy: None,
+                duty: None,
                 folders: Vec::new(),
                 memory: Arc::default(),
             }),
@@ -190,6 +191,7 @@ impl Owner {
                 self.session = Arc::new(Session {
                     client: *client,
                     policy: self.settings.policy.clone(),
+                    duty: self.settings.duty.clone(),
                     folders,
                     memory: Arc::clone(&self.session.memory),
                 });
@@ -341,6 +343,7 @@ impl Owner {
         self.settings = settings;
         self.session = Arc::new(Session {
             policy: self.settings.policy.clone(),
+            duty: self.settings.duty.clone(),
             ..(*self.session).clone()
         });
         self.restart();

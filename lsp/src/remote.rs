@@ -8,6 +8,7 @@ use std::thread;
 use std::time::Duration;
 
 use tokio::runtime::Handle;
+use tokio::sync::mpsc::{UnboundedReceiver, UnboundedSender, unbounded_channel};
 use tower_lsp::lsp_types::notification::Progress;
 use tower_lsp::lsp_types::request::{RegisterCapability, WorkDoneProgressCreate};
 use tower_lsp::lsp_types::*;
@@ -24,8 +25,8 @@ pub(crate) struct Remote {
     runtime: Handle,
     events: SyncSender<Event>,
     exit: Sender<u8>,
-    /// How many specs the check of the workspace began with, while it is shown.
-    shown: Option<usize>,
+    /// Takes how many specs are left, while the check of the workspace is shown.
+    shown: Option<UnboundedSender<usize>>,
     count: i32,
 }
 
@@ -141,56 +142,70 @@ impl Remote {
         if !client.progress || self.shown.is_some() {
             return;
         }
-        self.shown = Some(specs);
         self.count += 1;
-        let (remote, token) = (
-            self.client.clone(),
-            NumberOrString::String(format!("derate/{}", self.count)),
-        );
-        self.runtime.spawn(async move {
-            if remote
-                .send_request::<WorkDoneProgressCreate>(WorkDoneProgressCreateParams {
-                    token: token.clone(),
-                })
-                .await
-                .is_ok()
-            {
-                let begin = WorkDoneProgressBegin {
-                    title: "Checking specs".to_owned(),
-                    cancellable: Some(true),
-                    message: None,
-                    percentage: Some(0),
-                };
-                tell(&remote, token, WorkDoneProgress::Begin(begin)).await;
-            }
-        });
+        let token = NumberOrString::String(format!("derate/{}", self.count));
+        let (left, steps) = unbounded_channel();
+        self.shown = Some(left);
+        self.runtime
+            .spawn(show_progress(self.client.clone(), token, specs, steps));
     }
 
     /// So many specs are left to check.
     pub(crate) fn step(&mut self, left: usize) {
-        let Some(all) = self.shown else { return };
-        let token = NumberOrString::String(format!("derate/{}", self.count));
-        let progress = if left == 0 {
+        if let Some(shown) = &self.shown {
+            // nobody listens where the client did not want to show anything
+            let _ = shown.send(left);
+        }
+        if left == 0 {
             self.shown = None;
-            WorkDoneProgress::End(WorkDoneProgressEnd { message: None })
-        } else {
-            let done = all.saturating_sub(left);
-            let percentage = u32::try_from(100 * done / all.max(1)).ok();
-            WorkDoneProgress::Report(WorkDoneProgressReport {
-                cancellable: Some(true),
-                message: Some(format!("{done} of {all}")),
-                percentage,
-            })
-        };
-        let remote = self.client.clone();
-        self.runtime
-            .spawn(async move { tell(&remote, token, progress).await });
+        }
     }
 }
 
-async fn tell(remote: &tower_lsp::Client, token: NumberOrString, progress: WorkDoneProgress) {
-    let value = ProgressParamsValue::WorkDone(progress);
-    remote
-        .send_notification::<Progress>(ProgressParams { token, value })
-        .await;
+/// Show the progress of a check of so many specs, in the order of the protocol: nothing is told before
+/// the client has agreed, and the end comes last.
+async fn show_progress(
+    remote: tower_lsp::Client,
+    token: NumberOrString,
+    all: usize,
+    mut steps: UnboundedReceiver<usize>,
+) {
+    let create = WorkDoneProgressCreateParams {
+        token: token.clone(),
+    };
+    if remote
+        .send_request::<WorkDoneProgressCreate>(create)
+        .await
+        .is_err()
+    {
+        return;
+    }
+    let begin = WorkDoneProgressBegin {
+        title: "Checking specs".to_owned(),
+        cancellable: Some(true),
+        message: None,
+        percentage: Some(0),
+    };
+    tell(&remote, &token, WorkDoneProgress::Begin(begin)).await;
+    let mut most = 0;
+    while let Some(left) = steps.recv().await.filter(|left| *left > 0) {
+        // an edit can make specs wait again: what is shown never falls
+        most = most.max(all.saturating_sub(left));
+        let report = WorkDoneProgressReport {
+            cancellable: Some(true),
+            message: Some(format!("{most} of {all}")),
+            percentage: u32::try_from(100 * most / all.max(1)).ok(),
+        };
+        tell(&remote, &token, WorkDoneProgress::Report(report)).await;
+    }
+    let end = WorkDoneProgressEnd { message: None };
+    tell(&remote, &token, WorkDoneProgress::End(end)).await;
+}
+
+async fn tell(remote: &tower_lsp::Client, token: &NumberOrString, progress: WorkDoneProgress) {
+    let params = ProgressParams {
+        token: token.clone(),
+        value: ProgressParamsValue::WorkDone(progress),
+    };
+    remote.send_notification::<Progress>(params).await;
 }

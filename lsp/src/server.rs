@@ -4,7 +4,8 @@
 use std::future::Future;
 use std::sync::mpsc::SyncSender;
 
-use serde_json::Value;
+use derate::assist::hover::PageForm;
+use serde_json::{Map, Value};
 use tokio::sync::oneshot;
 use tower_lsp::LanguageServer;
 use tower_lsp::jsonrpc::{Error, Result};
@@ -135,9 +136,9 @@ impl LanguageServer for Server {
     }
 
     async fn did_change_configuration(&self, params: DidChangeConfigurationParams) {
-        self.tell(Event::Settings(
-            Some(params.settings).filter(|s| !s.is_null()),
-        ));
+        // many clients say only that something changed, with nothing or an empty object
+        let empty = |s: &Value| s.is_null() || s.as_object().is_some_and(Map::is_empty);
+        self.tell(Event::Settings(Some(params.settings).filter(|s| !empty(s))));
     }
 
     async fn hover(&self, params: HoverParams) -> Result<Option<Hover>> {
@@ -336,14 +337,14 @@ impl LanguageServer for Server {
     }
 
     async fn execute_command(&self, params: ExecuteCommandParams) -> Result<Option<Value>> {
-        let uri = params
-            .arguments
-            .first()
-            .and_then(Value::as_str)
-            .and_then(|u| Url::parse(u).ok());
-        match uri {
+        let argument = |at: usize| params.arguments.get(at).and_then(Value::as_str);
+        let form = match argument(1) {
+            Some("html") => PageForm::Html,
+            _ => PageForm::Markdown,
+        };
+        match argument(0).and_then(|u| Url::parse(u).ok()) {
             Some(uri) if params.command == MARGINS => {
-                self.ask(uri, Need::Check, |v| v.margins()).await
+                self.ask(uri, Need::Check, move |v| v.margins(form)).await
             }
             _ => Err(Error::invalid_params(format!(
                 "`{MARGINS}` takes the address of a spec"

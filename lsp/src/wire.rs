@@ -144,8 +144,10 @@ impl Outbox {
         let mut frame = format!("Content-Length: {}\r\n\r\n", body.len()).into_bytes();
         frame.extend(body);
         self.waiting.fetch_add(frame.len(), Ordering::Relaxed);
-        // a closed queue means that the client is gone, and the process about to end
-        let _ = self.queue.send(frame);
+        // a closed queue means that the client is gone, and the process about to end: nothing goes out
+        if self.queue.send(frame).is_err() {
+            self.waiting.store(0, Ordering::Relaxed);
+        }
     }
 
     /// Send a notification.
@@ -189,17 +191,30 @@ impl Writer {
     ///
     /// # Errors
     /// When the client no longer reads.
-    pub(crate) fn run(self, mut to: impl Write) -> io::Result<()> {
-        while let Ok(mut frame) = self.frames.recv() {
-            while let Ok(more) = self.frames.try_recv() {
-                frame.extend(more);
-            }
-            to.write_all(&frame)?;
-            to.flush()?;
-            self.waiting.fetch_sub(frame.len(), Ordering::Relaxed);
-        }
-        Ok(())
+    pub(crate) fn run(self, to: impl Write) -> io::Result<()> {
+        let Self { frames, waiting } = self;
+        let ended = write_all(&frames, &waiting, to);
+        // whoever waits for what is left waits in vain
+        drop(frames);
+        waiting.store(0, Ordering::Relaxed);
+        ended
     }
+}
+
+fn write_all(
+    frames: &Receiver<Vec<u8>>,
+    waiting: &AtomicUsize,
+    mut to: impl Write,
+) -> io::Result<()> {
+    while let Ok(mut frame) = frames.recv() {
+        while let Ok(more) = frames.try_recv() {
+            frame.extend(more);
+        }
+        to.write_all(&frame)?;
+        to.flush()?;
+        waiting.fetch_sub(frame.len(), Ordering::Relaxed);
+    }
+    Ok(())
 }
 
 #[cfg(test)]
@@ -248,5 +263,28 @@ mod tests {
         }
         assert_eq!(all(format!("noise\r\n{good}").as_bytes()), ["a"]);
         assert_eq!(all(b"Content-Length: 99\r\n\r\n{"), Vec::<String>::new());
+    }
+
+    /// A client that is gone: every write fails.
+    struct Gone;
+
+    impl Write for Gone {
+        fn write(&mut self, _: &[u8]) -> io::Result<usize> {
+            Err(io::ErrorKind::BrokenPipe.into())
+        }
+        fn flush(&mut self) -> io::Result<()> {
+            Ok(())
+        }
+    }
+
+    #[test]
+    fn nobody_waits_for_a_client_that_is_gone() {
+        let (outbox, writer) = Outbox::new();
+        outbox.send(&1);
+        assert!(writer.run(Gone).is_err());
+        outbox.send(&2);
+        let began = Instant::now();
+        outbox.drain();
+        assert!(began.elapsed() < LAST_WORDS / 2);
     }
 }

@@ -97,6 +97,7 @@ const MUST_NOT_KNOW: &[(&str, &[&str])] = &[
         "checker/src/assist",
         &["crate::physics", "crate::analysis", "tower_lsp"],
     ),
+    ("checker/src/bom", &["crate::physics", "crate::analysis"]),
     (
         "lsp/src",
         &[

@@ -11,6 +11,8 @@ use std::time::{Duration, Instant};
 
 use serde_json::{Value, json};
 
+use crate::judge::Judge;
+
 /// How long an answer may take on a busy machine.
 const PATIENCE: Duration = Duration::from_secs(60);
 
@@ -25,6 +27,8 @@ pub(crate) struct Client {
     pub(crate) notes: Vec<Value>,
     pub(crate) settings: Value,
     pub(crate) capabilities: Value,
+    /// Fails the session where the server breaks the protocol.
+    pub(crate) judge: Option<Judge>,
 }
 
 impl Client {
@@ -56,17 +60,23 @@ impl Client {
             notes: Vec::new(),
             settings: Value::Null,
             capabilities: Value::Null,
+            judge: Some(Judge::default()),
         }
     }
 
     /// A client that has been through the first exchange. `encodings` are those it offers.
     pub(crate) fn start(root: &Path, encodings: &[&str], options: Value) -> Self {
         let mut client = Self::spawn();
-        let answer = client.ask("initialize", initialize(root, encodings, options));
-        client.capabilities = answer["result"]["capabilities"].clone();
-        assert!(client.capabilities.is_object(), "{answer}");
-        client.tell("initialized", json!({}));
+        client.begin(initialize(root, encodings, options));
         client
+    }
+
+    /// The first exchange.
+    pub(crate) fn begin(&mut self, params: Value) {
+        let answer = self.ask("initialize", params);
+        self.capabilities = answer["result"]["capabilities"].clone();
+        assert!(self.capabilities.is_object(), "{answer}");
+        self.tell("initialized", json!({}));
     }
 
     pub(crate) fn raw(&mut self, bytes: &[u8]) {
@@ -76,6 +86,9 @@ impl Client {
     }
 
     pub(crate) fn send(&mut self, message: &Value) {
+        if let Some(judge) = &mut self.judge {
+            judge.sent(message);
+        }
         let body = message.to_string();
         self.raw(format!("Content-Length: {}\r\n\r\n{body}", body.len()).as_bytes());
     }
@@ -121,6 +134,9 @@ impl Client {
             Ok(message) => message,
             Err(RecvTimeoutError::Timeout | RecvTimeoutError::Disconnected) => return false,
         };
+        if let Some(judge) = &mut self.judge {
+            judge.received(&message);
+        }
         match (message["method"].as_str(), message.get("id")) {
             (Some("textDocument/publishDiagnostics"), None) => {
                 let params = &message["params"];
@@ -246,7 +262,7 @@ pub(crate) fn initialize(root: &Path, encodings: &[&str], options: Value) -> Val
                 "documentSymbol": {"hierarchicalDocumentSymbolSupport": true},
                 "completion": {"completionItem": {"snippetSupport": true}},
             },
-            "workspace": {"configuration": true, "workspaceEdit": {"documentChanges": true}, "didChangeWatchedFiles": {"dynamicRegistration": true}},
+            "workspace": {"configuration": true, "codeLens": {"refreshSupport": true}, "inlayHint": {"refreshSupport": true}, "workspaceEdit": {"documentChanges": true}, "didChangeWatchedFiles": {"dynamicRegistration": true}},
             "window": {"workDoneProgress": true},
         },
     })

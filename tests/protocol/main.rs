@@ -8,6 +8,9 @@
 )]
 
 mod client;
+mod edits;
+mod judge;
 mod session;
+mod strict;
 mod typing;
 mod wire;

@@ -3,6 +3,7 @@
 use serde_json::{Value, json};
 
 use crate::client::{Client, find, kit, kits, place, uri};
+use crate::judge::offset;
 
 const KIT: &str = "tern60.ampspec";
 
@@ -16,34 +17,20 @@ fn at(path: &str, position: &Value) -> Value {
 
 /// The text after some edits of the protocol, none of which overlap.
 fn applied(text: &str, edits: &Value, bytes: bool) -> String {
-    let offset = |at: &Value| {
-        let (row, column) = (
-            at["line"].as_u64().unwrap() as usize,
-            at["character"].as_u64().unwrap() as usize,
-        );
-        let start: usize = text.split_inclusive('\n').take(row).map(str::len).sum();
-        let mut left = column;
-        let inside = text[start..].chars().take_while(|c| {
-            let width = if bytes { c.len_utf8() } else { c.len_utf16() };
-            let taken = left >= width && left > 0;
-            left = left.saturating_sub(width);
-            taken
-        });
-        start + inside.map(char::len_utf8).sum::<usize>()
-    };
+    let at = |place: &Value| offset(text, place, bytes).unwrap();
     let mut edits: Vec<(usize, usize, &str)> = edits
         .as_array()
         .unwrap()
         .iter()
         .map(|e| {
             (
-                offset(&e["range"]["start"]),
-                offset(&e["range"]["end"]),
+                at(&e["range"]["start"]),
+                at(&e["range"]["end"]),
                 e["newText"].as_str().unwrap(),
             )
         })
         .collect();
-    edits.sort();
+    edits.sort_unstable();
     let mut out = text.to_owned();
     for (start, end, new) in edits.into_iter().rev() {
         out.replace_range(start..end, new);
@@ -371,6 +358,33 @@ fn settings_choose_policy_hints_and_the_whole_workspace() {
         json!({"textDocument": {"uri": open}, "range": everything}),
     );
     assert!(hints.to_string().contains("rail idle"), "{hints}");
+    assert_eq!(client.stop(), 0);
+}
+
+#[test]
+fn a_duty_of_the_settings_replaces_that_of_the_build() {
+    let mut client = Client::start(&kits(), &[], json!({"duty": "full"}));
+    let path = uri(&kits().join("duty.ampspec"));
+    client.open(&path, &kit(KIT));
+    let shown = |client: &mut Client, duty: &str| {
+        let asked = json!({"command": "derate.margins", "arguments": [path]});
+        let page = client.get("workspace/executeCommand", asked);
+        assert!(page.as_str().unwrap().contains(duty), "{duty}: {page}");
+    };
+    shown(&mut client, "duty full");
+    // one that cannot be read is none: the kit states 1/8
+    for (duty, wanted) in [
+        ("crest 12 dB", "duty crest 12 dB"),
+        ("9/8", "duty 1/8"),
+        ("1/3", "duty 1/3"),
+        ("", "duty 1/8"),
+        ("full\n}\nbuild c {", "duty 1/8"),
+        ("1/3, full", "duty 1/8"),
+    ] {
+        let settings = json!({"settings": {"derate": {"duty": duty}}});
+        client.tell("workspace/didChangeConfiguration", settings);
+        shown(&mut client, wanted);
+    }
     assert_eq!(client.stop(), 0);
 }
 

@@ -39,7 +39,7 @@ RULES = {
     "current.device-share": (SAME, "stress rating used", ""),
     "current.emitter-mean": (SAME, "stress rating used", ""),
     "current.rectifier-mean": (SAME, "stress rating used", ""),
-    "current.rectifier-surge": (1e-3, "used", "fixed steps; the march ends 0.6 s after the bypass, before the last of the I2t"),
+    "current.rectifier-surge": (4e-3, "used", "fixed steps; derate starts the second surge from the lower of two rails, at the worse moment"),
     "current.reservoir-ripple": (2e-5, "stress rating used", "the signal's form factor is stated to four digits: 0.3856"),
     "current.transformer-duty": (SAME, "stress rating used", ""),
     "current.fuse-rms": (SAME, "stress rating used", ""),

@@ -430,7 +430,11 @@ pub fn idle_apart(stage: &Stage, a: &Idle, b: &Idle) -> Result<Stress, Needs> {
             })
             .collect(),
         note: if apart > 0.0 {
-            slip(high / low, pairs, mixed || more.volts.is_some())
+            let amps = |a: Amp| {
+                crate::quantity::format_digits(a.0, crate::quantity::Dimension::Current, 3)
+            };
+            let slip = slip(high / low, pairs, mixed || more.volts.is_some());
+            format!("{} and {} of one device{slip}", amps(ia), amps(ib))
         } else {
             String::new()
         },
@@ -454,6 +458,6 @@ fn slip(factor: f64, pairs: u32, volts: bool) -> String {
     if likely.is_empty() {
         String::new()
     } else {
-        format!("a factor of {factor:.2}: {}", likely.join(", or "))
+        format!("; a factor of {factor:.2}: {}", likely.join(", or "))
     }
 }

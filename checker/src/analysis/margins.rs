@@ -166,6 +166,7 @@ impl<'a> Margins<'a> {
             verdict: Verdict::Ok,
             severity: Severity::Information,
             waiver: None,
+            known: false,
             stress: None,
             rating: None,
             allowance: None,

@@ -179,6 +179,11 @@ fn missing(outcome: &Outcome, need: &str) -> Option<Fix> {
             b.kind.text(text) == kind.kind && b.name().is_some_and(|n| n.text(text) == name)
         };
         let block = file.tree.blocks().find(named)?;
+        // the line is there and lacks an item: a second one would replace it
+        let stated = block.lines.iter().any(|l| l.key.text(text) == key.name);
+        if stated && key.shape().selector.is_none() {
+            return None;
+        }
         let edits = lines_into(&file.path, text, block, &[key]);
         Some(Fix {
             title: format!(

@@ -342,10 +342,22 @@ fn one_step(step: &Step) -> String {
     )
 }
 
-/// The margins of a build as a page of Markdown: what the editor shows beside the spec.
+/// How a page is written.
+#[derive(Clone, Copy, Debug, PartialEq, Eq)]
+pub enum PageForm {
+    /// As Markdown.
+    Markdown,
+    /// As a page of HTML that stands by itself.
+    Html,
+}
+
+/// The margins of a spec as a page: what the editor shows beside it.
 #[must_use]
-pub fn page(outcome: Outcome) -> String {
+pub fn page(outcome: Outcome, form: PageForm) -> String {
     let run =
         crate::render::run::Run::new("margins", crate::render::run::FailOn::Error, vec![outcome]);
-    crate::render::markdown::margins(&run)
+    match form {
+        PageForm::Markdown => crate::render::markdown::margins(&run),
+        PageForm::Html => crate::render::html::margins(&run),
+    }
 }

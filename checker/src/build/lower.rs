@@ -1616,7 +1616,7 @@ fn fraction(text: &str) -> Option<f64> {
 }
 
 /// `R21-R24` as four designators, `R21` as one. At most a thousand; the two ends must share letters.
-fn designators(text: &str) -> Option<Vec<String>> {
+pub(crate) fn designators(text: &str) -> Option<Vec<String>> {
     let split = |d: &str| -> Option<(String, u32)> {
         let at = d.find(|c: char| c.is_ascii_digit())?;
         let (letters, digits) = d.split_at(at);

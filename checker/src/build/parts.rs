@@ -3,11 +3,13 @@
 //! listed as assumed.
 
 use std::cell::RefCell;
+use std::collections::HashMap;
 use std::rc::Rc;
 
+use super::lower::lower;
 use super::statement::{Bought, Group, Select, Slot, Value, bounds};
 use super::view::{Seen, View};
-use crate::finding::{Assumed, Measure, Site};
+use crate::finding::{Assumed, FileId, Measure, Site};
 use crate::physics::unit::{
     Amp, AmpSquaredSecond, Celsius, Farad, Henry, Hertz, Joule, Kelvin, KelvinPerWatt, Ohm, Second,
     Volt, VoltPerKelvin, Watt,
@@ -117,6 +119,11 @@ impl<T> Field<T> {
     #[must_use]
     pub fn get(&self) -> Option<&T> {
         self.value.as_ref()
+    }
+    /// Put another value in place of what is stated.
+    pub fn set(&mut self, value: T) {
+        self.value = Some(value);
+        self.assumed = false;
     }
     /// That this key is missing.
     #[must_use]
@@ -826,6 +833,19 @@ pub struct Duty {
     pub fraction: f64,
     /// As written: `1/8`, `full`, `crest 12 dB`.
     pub shown: String,
+}
+
+impl Duty {
+    /// The duty that a text states, written as on the line of a build: `1/8`, `full`, `crest 12 dB`.
+    #[must_use]
+    pub fn read(text: &str) -> Option<Self> {
+        let tree = ampspec_grammar::parse(format!("build b {{\n duty {text}\n}}\n"));
+        let mut lowered = lower(FileId(0), &tree, &HashMap::new());
+        let only = lowered.blocks.pop().filter(|_| lowered.blocks.is_empty())?;
+        let mut stated = only.lines.iter().filter(|_| lowered.findings.is_empty());
+        let line = stated.next().filter(|l| l.groups.len() == 1)?;
+        duty(line.groups.first()?).filter(|_| stated.next().is_none())
+    }
 }
 
 /// Given rails.

@@ -1,12 +1,15 @@
 //! `derate check`. Must not know how a form is written.
 
-use std::path::PathBuf;
+use std::path::{Path, PathBuf};
 
 use clap::ValueEnum;
+use derate::baseline::Baseline;
+use derate::render::run::Run;
 use derate::render::{annotations, json, markdown, sarif, terminal, test_xml};
+use derate::source::{Disk, Files};
 
-use super::Done;
 use super::solve::Solve;
+use super::{Done, apply, save};
 
 #[derive(clap::Args)]
 pub(crate) struct Args {
@@ -15,6 +18,18 @@ pub(crate) struct Args {
     /// How to report
     #[arg(long, value_enum, default_value_t)]
     form: Form,
+    /// Fail only on what this file does not hold; what it holds and is gone is named
+    #[arg(long, value_name = "FILE")]
+    baseline: Option<PathBuf>,
+    /// Write what is found into this file, as the baseline of later runs
+    #[arg(long, value_name = "FILE", conflicts_with = "baseline")]
+    write_baseline: Option<PathBuf>,
+    /// Write the change that is proposed for this rule into the file, and print what it moves
+    #[arg(long, value_name = "RULE", conflicts_with_all = ["baseline", "write_baseline", "form"])]
+    apply: Option<String>,
+    /// With --apply: the part, its block or a designator, where the rule is found at several
+    #[arg(long, value_name = "PART", requires = "apply")]
+    of: Option<String>,
     #[command(flatten)]
     solve: Solve,
 }
@@ -38,7 +53,15 @@ enum Form {
 
 impl Args {
     pub(crate) fn run(self) -> Done {
-        let (run, notes, status) = self.solve.run("check", &self.paths, |_| {});
+        if let Some(rule) = &self.apply {
+            return apply::run(&self.solve, &self.paths, rule, self.of.as_deref());
+        }
+        let (outcomes, mut notes) = self.solve.outcomes(&self.paths);
+        let run = match self.held(outcomes) {
+            Ok(run) => run,
+            Err(note) => return Done::refused(note),
+        };
+        notes.extend(self.solve.unheeded(&run.outcomes));
         let output = match self.form {
             Form::Terminal => terminal::check(&run, self.solve.style()),
             Form::Json => json::render(&run),
@@ -47,6 +70,38 @@ impl Args {
             Form::TestXml => test_xml::check(&run),
             Form::Annotations => annotations::check(&run),
         };
+        let status = self.solve.status(run.exit_status(), &notes);
         Done { output, file: self.solve.out, notes, status }
+    }
+
+    /// The run, with what the baseline holds marked.
+    fn held(&self, mut outcomes: Vec<derate::Outcome>) -> Result<Run, String> {
+        let mut stale = Vec::new();
+        if let Some(baseline) = self.baseline(&outcomes)? {
+            stale = baseline.apply(&mut outcomes, |file| Path::new(file).exists());
+            if self.solve.picks_a_build() {
+                // the other builds were not looked at
+                stale.clear();
+            }
+        }
+        let mut run = Run::new("check", self.solve.fail_on(), outcomes);
+        run.stale = stale;
+        Ok(run)
+    }
+
+    /// The baseline in force: read, or just written.
+    fn baseline(&self, outcomes: &[derate::Outcome]) -> Result<Option<Baseline>, String> {
+        if let Some(path) = &self.write_baseline {
+            let baseline = Baseline::of(outcomes);
+            save::replace(path, &baseline.text())
+                .map_err(|error| format!("cannot write {}: {error}", path.display()))?;
+            return Ok(Some(baseline));
+        }
+        let Some(path) = &self.baseline else {
+            return Ok(None);
+        };
+        let cannot = |why| format!("cannot read {}: {why}", path.display());
+        let text = Disk.read(path).map_err(cannot)?;
+        Baseline::read(&text).map(Some).map_err(cannot)
     }
 }

@@ -27,7 +27,8 @@ impl Input {
         self.path == Path::new(STDIN)
     }
 
-    fn new(path: PathBuf) -> Self {
+    /// A file named on the command line.
+    pub(crate) fn new(path: PathBuf) -> Self {
         let name = if path == Path::new(STDIN) {
             "<stdin>".to_owned()
         } else {

@@ -41,11 +41,8 @@ enum Form {
 impl Args {
     pub(crate) fn run(self) -> Done {
         let drawn = self.curves || matches!(self.form, Form::Html);
-        // what a reviewer reads also says what to buy instead
-        let read = matches!(self.form, Form::Html | Form::Markdown);
         let (run, notes, status) = self.solve.run("margins", &self.paths, |options| {
             options.curves = drawn;
-            options.changes = read;
         });
         let output = match self.form {
             Form::Terminal => margins::terminal(&run, self.solve.style()),

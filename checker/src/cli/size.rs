@@ -39,7 +39,7 @@ impl Args {
             Ok(sized) => sized,
             Err(note) => return Done::refused(note),
         };
-        let (run, notes, _) = self.solve.run("size", &[self.path], |_| {});
+        let (run, notes, _) = self.solve.run("size", &[self.path], |o| o.changes = false);
         let none = sized.rows.iter().any(|r| r.offered.is_none());
         let status = if notes.is_empty() { u8::from(none) } else { NOT_RUN };
         let output = match self.form {

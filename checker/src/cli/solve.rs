@@ -12,6 +12,7 @@ use derate::{Options, Outcome};
 use rayon::prelude::*;
 
 use super::input::{Given, Input, Shelf, inputs};
+use super::progress::Progress;
 use super::{Colour, NOT_RUN};
 
 /// Options of every command that solves builds.
@@ -62,23 +63,39 @@ impl Solve {
     }
 
     /// Solve every file named; also what to say on standard error, and the exit status. `ask` adds
-    /// what a form shows beyond the verdicts.
+    /// what a form shows beyond the verdicts and changes.
     pub(crate) fn run(
         &self,
         command: &'static str,
         paths: &[PathBuf],
         ask: impl FnOnce(&mut Options),
     ) -> (Run, Vec<String>, u8) {
-        let (files, mut notes) = inputs(paths);
-        let mut options = Options {
-            policy: self.policy.clone(),
-            build: self.build.clone(),
-            today: today(),
-            ..Options::default()
-        };
+        let mut options = self.with_changes();
         ask(&mut options);
+        let (outcomes, mut notes) = self.solved(paths, &options);
+        notes.extend(self.unheeded(&outcomes));
+        let run = Run::new(command, self.fail_on(), outcomes);
+        let status = self.status(run.exit_status(), &notes);
+        (run, notes, status)
+    }
+
+    /// Every file named, solved, with the changes that would clear what is found; also what to say on
+    /// standard error.
+    pub(crate) fn outcomes(&self, paths: &[PathBuf]) -> (Vec<Outcome>, Vec<String>) {
+        self.solved(paths, &self.with_changes())
+    }
+
+    fn with_changes(&self) -> Options {
+        Options {
+            changes: true,
+            ..self.options()
+        }
+    }
+
+    fn solved(&self, paths: &[PathBuf], options: &Options) -> (Vec<Outcome>, Vec<String>) {
+        let (files, mut notes) = inputs(paths);
         let shelf = Shelf::default();
-        let results = self.each(&files, |file| outcome(file, &shelf, &options));
+        let results = self.each(&files, |file| outcome(file, &shelf, options));
         let mut outcomes = Vec::with_capacity(results.len());
         for result in results {
             match result {
@@ -86,19 +103,36 @@ impl Solve {
                 Err(note) => notes.push(note),
             }
         }
-        notes.extend(self.unheeded(&outcomes));
-        let fail_on = match self.fail_on {
+        (outcomes, notes)
+    }
+
+    /// Whether only one build is looked at.
+    pub(crate) fn picks_a_build(&self) -> bool {
+        self.build.is_some()
+    }
+
+    /// How to check, without looking for changes.
+    pub(crate) fn options(&self) -> Options {
+        Options {
+            policy: self.policy.clone(),
+            build: self.build.clone(),
+            today: today(),
+            ..Options::default()
+        }
+    }
+
+    /// From where on the run fails.
+    pub(crate) fn fail_on(&self) -> FailOn {
+        match self.fail_on {
             Level::Error => FailOn::Error,
             Level::Warning => FailOn::Warning,
             Level::Unchecked => FailOn::Unchecked,
-        };
-        let run = Run::new(command, fail_on, outcomes);
-        let status = if notes.is_empty() {
-            run.exit_status()
-        } else {
-            NOT_RUN
-        };
-        (run, notes, status)
+        }
+    }
+
+    /// The exit status: what was found, unless something could not be done.
+    pub(crate) fn status(&self, found: u8, notes: &[String]) -> u8 {
+        if notes.is_empty() { found } else { NOT_RUN }
     }
 
     /// Do something else with one file than check it, on as many threads as were asked for.
@@ -118,11 +152,8 @@ impl Solve {
         let cannot = |why| format!("cannot read {}: {why}", file.name);
         let text = file.read().map_err(cannot)?;
         let options = Options {
-            policy: self.policy.clone(),
-            build: self.build.clone(),
-            today: today(),
             root: file.root(),
-            ..Options::default()
+            ..self.options()
         };
         let run = || {
             let shelf = Shelf::default();
@@ -152,7 +183,7 @@ impl Solve {
     }
 
     /// Names on the command line that name nothing.
-    fn unheeded(&self, outcomes: &[Outcome]) -> Vec<String> {
+    pub(crate) fn unheeded(&self, outcomes: &[Outcome]) -> Vec<String> {
         let mut notes = Vec::new();
         let builds = || outcomes.iter().flat_map(|o| &o.report.builds);
         if let Some(name) = &self.build
@@ -175,6 +206,12 @@ impl Solve {
     /// One result for each file, in the order of the files, whatever the number of threads. A pool
     /// costs more to start than a file takes to check, so one file has none.
     fn each<T: Send>(&self, files: &[Input], work: impl Fn(&Input) -> T + Sync) -> Vec<T> {
+        let progress = Progress::new(files.len());
+        let work = |file: &Input| {
+            let result = work(file);
+            progress.step();
+            result
+        };
         let one_by_one = || files.iter().map(&work).collect();
         if files.len() < 2 || self.threads == Some(1) {
             return one_by_one();
@@ -190,7 +227,7 @@ impl Solve {
 }
 
 /// One file read and checked, or why it cannot be read.
-fn outcome(file: &Input, shelf: &Shelf, options: &Options) -> Result<Outcome, String> {
+pub(crate) fn outcome(file: &Input, shelf: &Shelf, options: &Options) -> Result<Outcome, String> {
     let cannot = |why| format!("cannot read {}: {why}", file.name);
     let text = file.read().map_err(cannot)?;
     let path = file.path.as_path();

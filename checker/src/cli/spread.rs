@@ -56,7 +56,7 @@ impl Args {
             Ok(drawn) => drawn,
             Err(note) => return Done::refused(note),
         };
-        let (run, notes, _) = self.solve.run("spread", &[self.path], |_| {});
+        let (run, notes, _) = self.solve.run("spread", &[self.path], |o| o.changes = false);
         let (past, over) = (
             drawn.iter().any(|b| b.pass.0 < 1.0),
             drawn.iter().any(|b| b.pass.1 < 1.0),

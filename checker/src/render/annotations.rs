@@ -19,7 +19,7 @@ pub fn check(run: &Run) -> String {
 }
 
 fn write_check(out: &mut String, run: &Run) -> fmt::Result {
-    let all: Vec<_> = run.shown().filter(|(_, s)| s.waiver.is_none()).collect();
+    let all: Vec<_> = run.shown().filter(|(_, s)| s.open()).collect();
     let kinds = [
         (Severity::Error, "error"),
         (Severity::Warning, "warning"),
@@ -59,6 +59,9 @@ fn write_check(out: &mut String, run: &Run) -> fmt::Result {
                 "::{command} title=derate::{more} more of this kind; the log of derate check lists all"
             )?;
         }
+    }
+    for line in run.stale_lines() {
+        writeln!(out, "::notice title=derate::{}", annotation(&line))?;
     }
     writeln!(out, "derate: {}", total(run))
 }

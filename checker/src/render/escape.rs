@@ -78,6 +78,21 @@ pub fn markdown(text: &str) -> String {
     out
 }
 
+/// The same for a sentence in which back-ticks mark words of the language: those become code spans,
+/// whoever wrote them, in which nothing else is mark-up.
+#[must_use]
+pub fn markdown_words(text: &str) -> String {
+    if !text.matches('`').count().is_multiple_of(2) {
+        return markdown(text);
+    }
+    let piece = |(at, piece): (usize, &str)| match at % 2 {
+        0 => markdown(piece),
+        _ if piece.trim().is_empty() => markdown(&format!("`{piece}`")),
+        _ => markdown_code(piece),
+    };
+    text.split('`').enumerate().map(piece).collect()
+}
+
 /// For a code span of Markdown, fenced so that back-ticks inside cannot end it.
 #[must_use]
 pub fn markdown_code(text: &str) -> String {
@@ -187,6 +202,16 @@ mod tests {
     }
 
     #[test]
+    fn words_of_the_language_become_code() {
+        assert_eq!(
+            markdown_words("write `ref R1_2` *now*"),
+            "write `ref R1_2` \\*now\\*"
+        );
+        assert_eq!(markdown_words("a ` <b>"), "a \\` &lt;b&gt;");
+        assert_eq!(markdown_words("``x``"), "\\`\\`x\\`\\`");
+    }
+
+    #[test]
     fn cells_are_no_formulas() {
         // the characters a spreadsheet takes as the start of a formula: common practice, no source
         assert_eq!(csv("=cmd|'/c'!A1"), "\"'=cmd|'/c'!A1\"");
@@ -203,6 +228,7 @@ mod tests {
             let escaped = xml(&text);
             prop_assert!(!escaped.contains(['<', '>', '"']) && !escaped.chars().any(hidden));
             prop_assert!(!markdown(&text).contains(['<', '>', '\n']));
+            prop_assert!(!markdown_words(&text).contains('\n'));
         }
     }
 }

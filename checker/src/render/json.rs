@@ -5,7 +5,9 @@
 //! rounded to nine significant digits and written as the shortest decimal that reads back as that
 //! value, so that two runs, on any platform, give the same bytes.
 
+pub mod compare;
 pub mod form;
+pub mod parts;
 mod pictures;
 mod size;
 mod spread;
@@ -36,7 +38,7 @@ pub fn schema() -> String {
     let generator = SchemaSettings::draft2020_12()
         .for_serialize()
         .into_generator();
-    let mut schema = generator.into_root_schema_for::<form::Report>();
+    let mut schema = generator.into_root_schema_for::<form::Document>();
     schema.insert("$id".to_owned(), SCHEMA.into());
     lines(&schema)
 }
@@ -73,6 +75,7 @@ pub fn report(run: &Run) -> form::Report {
     }
     form::Report {
         ampspec_report: VERSION,
+        baseline_stale: run.stale.iter().map(stale).collect(),
         builds: run
             .outcomes
             .iter()
@@ -90,6 +93,7 @@ pub fn report(run: &Run) -> form::Report {
             assumed: c.assumed,
             error: c.error,
             information: c.information,
+            known: c.known,
             ok: c.ok,
             over: c.over,
             thin: c.thin,
@@ -97,15 +101,21 @@ pub fn report(run: &Run) -> form::Report {
             waived: c.waived,
             warning: c.warning,
         },
-        tool: form::Tool {
-            name: "derate".to_owned(),
-            version: env!("CARGO_PKG_VERSION").to_owned(),
-        },
+        tool: tool(),
         waivers: run
             .outcomes
             .iter()
             .flat_map(|o| o.report.waivers.iter().map(|w| waiver(&o.sources, w)))
             .collect(),
+    }
+}
+
+fn stale(entry: &crate::baseline::Entry) -> form::Stale {
+    form::Stale {
+        about: entry.about.clone(),
+        file: entry.file.clone(),
+        fingerprint: entry.fingerprint.clone(),
+        rule: entry.rule.clone(),
     }
 }
 
@@ -164,6 +174,7 @@ fn finding(sources: &Sources, one: &Shown<'_>, ordinal: usize) -> Option<form::F
         fingerprint: one.fingerprint(sources),
         hint: some(&hint),
         id: format!("{}/{ordinal}", one.rule),
+        known: one.known,
         message: one.message.clone(),
         readings: readings
             .iter()
@@ -263,6 +274,7 @@ fn margin(outcome: &Outcome, b: &found::BuildReport, m: &found::Margin) -> form:
         changes: m.changes.iter().map(|c| change(sources, c)).collect(),
         fingerprint: margin_fingerprint(b, m),
         id: m.id.clone(),
+        known: m.known,
         margin_percent: m.margin_percent().map(Number),
         needs: m.needs.clone(),
         note: some(&m.note),
@@ -278,15 +290,6 @@ fn margin(outcome: &Outcome, b: &found::BuildReport, m: &found::Margin) -> form:
         waiver: m.waiver.and_then(|at| report.waivers.get(at)).map(accepted),
         witness: witness(&m.witness),
         working: m.working.iter().map(|s| step(sources, s)).collect(),
-    }
-}
-
-fn verdict(v: found::Verdict) -> form::Verdict {
-    match v {
-        found::Verdict::Ok => form::Verdict::Ok,
-        found::Verdict::Thin => form::Verdict::Thin,
-        found::Verdict::Over => form::Verdict::Over,
-        found::Verdict::Unchecked => form::Verdict::Unchecked,
     }
 }
 
@@ -435,6 +438,22 @@ fn qty(m: found::Measure) -> form::Qty {
     form::Qty {
         unit: m.unit.to_owned(),
         value: Number(m.value),
+    }
+}
+
+fn verdict(verdict: found::Verdict) -> form::Verdict {
+    match verdict {
+        found::Verdict::Ok => form::Verdict::Ok,
+        found::Verdict::Thin => form::Verdict::Thin,
+        found::Verdict::Over => form::Verdict::Over,
+        found::Verdict::Unchecked => form::Verdict::Unchecked,
+    }
+}
+
+fn tool() -> form::Tool {
+    form::Tool {
+        name: "derate".to_owned(),
+        version: env!("CARGO_PKG_VERSION").to_owned(),
     }
 }
 

@@ -3,14 +3,14 @@
 
 use std::fmt::{self, Write};
 
-use crate::finding::{BuildReport, Margin, Verdict, WaiverState};
+use crate::finding::{BuildReport, Margin, Related, Verdict, WaiverState};
 use crate::source::Sources;
 
-use super::escape::{markdown as plain, markdown_code as code};
+use super::escape::{markdown as plain, markdown_code as code, markdown_words as words};
 use super::margins::{Row, assumptions, governed, groups, purchase, tally, waived};
-use super::message::build_name;
+use super::message::{build_name, part_name, proposed, would_pass};
 use super::run::{Run, severity};
-use super::shown::Shown;
+use super::shown::{Origin, Placed, Shown};
 use super::{CAUTION, UNSETTLED};
 
 /// Most characters of a comment; the services that take them stop at 65 536.
@@ -24,7 +24,7 @@ pub fn check(run: &Run) -> String {
 
 fn write_check(out: &mut String, run: &Run) -> fmt::Result {
     writeln!(out, "### derate: {}\n", plain(&run.counts.line()))?;
-    let all: Vec<_> = run.shown().filter(|(_, s)| s.waiver.is_none()).collect();
+    let all: Vec<_> = run.shown().filter(|(_, s)| s.open()).collect();
     let mut said = String::new();
     let mut told = 0;
     for (outcome, one) in &all {
@@ -57,6 +57,9 @@ fn write_check(out: &mut String, run: &Run) -> fmt::Result {
             plain(&waiver.reason)
         )?;
     }
+    for line in run.stale_lines() {
+        writeln!(out, "- {}", plain(&line))?;
+    }
     Ok(())
 }
 
@@ -72,17 +75,61 @@ fn finding(out: &mut String, sources: &Sources, one: &Shown<'_>) -> fmt::Result 
         "- **{level}** {} {}: {}",
         code(one.rule),
         code(&format!("{name}:{line}")),
-        plain(&one.message)
+        words(&one.message)
     )?;
+    if let Some(parts) = parts(one) {
+        writeln!(out, "  - *part:* {}", plain(&parts))?;
+    }
     for detail in &one.details {
         let lead = if detail.label.is_empty() {
             String::new()
         } else {
             format!("*{}:* ", detail.label)
         };
-        writeln!(out, "  - {lead}{}", plain(&detail.text))?;
+        writeln!(out, "  - {lead}{}", words(&detail.text))?;
+    }
+    if let Origin::Margins(group) = &one.origin
+        && let Some(Placed { build, margin }) = group.first()
+    {
+        for change in margin.changes.iter().skip(1) {
+            writeln!(out, "  - *or:* {}", words(&proposed(change, build)))?;
+        }
+    }
+    if !one.related.is_empty() {
+        let related: Vec<String> = one.related.iter().map(|r| place(sources, r)).collect();
+        writeln!(out, "  - *see:* {}", related.join("; "))?;
     }
     Ok(())
+}
+
+/// What is known of the parts that a finding is about: designators, how many, order code.
+fn parts(one: &Shown<'_>) -> Option<String> {
+    let Origin::Margins(group) = &one.origin else {
+        return None;
+    };
+    let mut said: Vec<String> = Vec::new();
+    for Placed { margin, .. } in group {
+        let bought = purchase(margin);
+        let line = format!("{}: {bought}", part_name(margin));
+        if !bought.is_empty() && !said.contains(&line) {
+            said.push(line);
+        }
+    }
+    (!said.is_empty()).then(|| said.join(". "))
+}
+
+/// `kit.ampspec:98` and what it contributed.
+fn place(sources: &Sources, related: &Related) -> String {
+    let file = sources.file(related.site.file);
+    let line = file.map_or(0, |f| {
+        f.tree.line_index().position(related.site.span.start).line
+    });
+    let name = file.map_or("", |f| &f.name);
+    format!(
+        "{} {}",
+        code(&format!("{name}:{line}")),
+        words(&related.message)
+    )
 }
 
 /// The margin summary: a table for each build, folded away where nothing is past its allowance.
@@ -99,6 +146,7 @@ fn write_margins(out: &mut String, run: &Run) -> fmt::Result {
         for build in &outcome.report.builds {
             let mut text = String::new();
             table(&mut text, build)?;
+            remedies(&mut text, build)?;
             for line in assumptions(build) {
                 writeln!(text, "- assumed: {}", plain(&line))?;
             }
@@ -121,6 +169,22 @@ fn write_margins(out: &mut String, run: &Run) -> fmt::Result {
         )?;
     }
     writeln!(out, "{CAUTION}")
+}
+
+/// What would clear each margin that is past its allowance.
+fn remedies(out: &mut String, build: &BuildReport) -> fmt::Result {
+    for margin in groups(build).iter().flat_map(|g| &g.margins) {
+        let past =
+            matches!(margin.verdict, Verdict::Over | Verdict::Thin) && margin.waiver.is_none();
+        let text = super::rule(margin.rule)
+            .filter(|_| past)
+            .and_then(|rule| would_pass(rule, margin, build));
+        if let Some(text) = text {
+            let (part, rule) = (plain(&part_name(margin)), code(margin.rule));
+            writeln!(out, "- {part} {rule} would pass: {}", words(&text))?;
+        }
+    }
+    Ok(())
 }
 
 fn table(out: &mut String, build: &BuildReport) -> fmt::Result {

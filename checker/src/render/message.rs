@@ -246,7 +246,8 @@ pub fn would_pass(rule: &Rule, margin: &Margin, build: &BuildReport) -> Option<S
 
 /// `3 pairs instead of 2 (change out pairs 3): re-solved, 91 % used; also moves
 /// out.devices/soa.idle from 61 to 64 %`.
-fn proposed(change: &Change, build: &BuildReport) -> String {
+#[must_use]
+pub fn proposed(change: &Change, build: &BuildReport) -> String {
     let here = format!(
         "{}/{}/",
         build.name,
@@ -298,7 +299,8 @@ fn numbers_that_pass(rule: &Rule, margin: &Margin) -> Option<String> {
             let gap = figure(Measure { unit: "K", ..gap });
             Some(format!("{} or less, {gap} cooler", at_most(allowance)))
         }
-        (Sense::AtMost, Allow::Percent(_), Some(share)) => {
+        // a share of a share reads as nothing
+        (Sense::AtMost, Allow::Percent(_), Some(share)) if stress.unit != "%" => {
             let needed = Measure {
                 value: stress.value * 100.0 / share,
                 ..stress

@@ -4,6 +4,7 @@
 use std::collections::HashSet;
 
 use crate::Outcome;
+use crate::baseline::Entry;
 use crate::finding::{Margin, Report, Severity, Verdict};
 
 use super::shown::{Placed, Shown, shown};
@@ -64,6 +65,8 @@ pub struct Counts {
     pub unchecked_open: usize,
     /// Findings and margins that a waiver accepts.
     pub waived: usize,
+    /// Findings and margins that the baseline holds, counted nowhere else but by verdict.
+    pub known: usize,
     /// Values used because the file does not state them, each counted once a file.
     pub assumed: usize,
     /// Builds, each alternate counted.
@@ -79,7 +82,7 @@ impl Counts {
             ..Self::default()
         };
         for finding in &report.findings {
-            counts.severity(finding.severity, finding.waiver.is_some());
+            counts.severity(finding.severity, finding.waiver.is_some(), finding.known);
         }
         let mut assumed = HashSet::new();
         let mut waiting = HashSet::new();
@@ -105,6 +108,7 @@ impl Counts {
         match margin.verdict {
             Verdict::Ok => {}
             Verdict::Unchecked if waived => self.waived += 1,
+            Verdict::Unchecked if margin.known => self.known += 1,
             Verdict::Unchecked => {
                 self.unchecked_open += 1;
                 waiting.extend(margin.needs.iter().map(|key| ("", key.as_str())));
@@ -112,13 +116,14 @@ impl Counts {
                     waiting.insert((margin.rule, margin.note.as_str()));
                 }
             }
-            Verdict::Thin | Verdict::Over => self.severity(margin.severity, waived),
+            Verdict::Thin | Verdict::Over => self.severity(margin.severity, waived, margin.known),
         }
     }
 
-    fn severity(&mut self, severity: Severity, waived: bool) {
+    fn severity(&mut self, severity: Severity, waived: bool, known: bool) {
         match severity {
             _ if waived => self.waived += 1,
+            _ if known => self.known += 1,
             Severity::Error => self.error += 1,
             Severity::Warning => self.warning += 1,
             Severity::Information => self.information += 1,
@@ -133,12 +138,17 @@ impl Counts {
             || (at == FailOn::Unchecked && self.unchecked_open > 0)
     }
 
-    /// `2 errors, 1 warning, 4 unchecked, 3 assumed, 1 waived`: always all five.
+    /// `2 errors, 1 warning, 4 unchecked, 3 assumed, 1 waived`: always all five; what a baseline
+    /// holds is added where it holds anything.
     #[must_use]
     pub fn line(&self) -> String {
         let plural = |n: usize, one: &str| format!("{n} {one}{}", if n == 1 { "" } else { "s" });
+        let known = match self.known {
+            0 => String::new(),
+            n => format!(", {n} known"),
+        };
         format!(
-            "{}, {}, {} unchecked, {} assumed, {} waived",
+            "{}, {}, {} unchecked, {} assumed, {} waived{known}",
             plural(self.error, "error"),
             plural(self.warning, "warning"),
             self.unchecked,
@@ -159,6 +169,7 @@ impl std::ops::AddAssign for Counts {
         self.unchecked += o.unchecked;
         self.unchecked_open += o.unchecked_open;
         self.waived += o.waived;
+        self.known += o.known;
         self.assumed += o.assumed;
         self.builds += o.builds;
     }
@@ -175,6 +186,8 @@ pub struct Run {
     pub outcomes: Vec<Outcome>,
     /// Over all of them.
     pub counts: Counts,
+    /// Entries of the baseline that match nothing any more.
+    pub stale: Vec<Entry>,
 }
 
 impl Run {
@@ -201,6 +214,7 @@ impl Run {
             fail_on,
             outcomes,
             counts,
+            stale: Vec::new(),
         }
     }
 
@@ -208,6 +222,16 @@ impl Run {
     #[must_use]
     pub fn exit_status(&self) -> u8 {
         u8::from(self.counts.fails(self.fail_on))
+    }
+
+    /// What is said of each entry of the baseline that matches nothing any more.
+    pub fn stale_lines(&self) -> impl Iterator<Item = String> {
+        self.stale.iter().map(|e| {
+            format!(
+                "stale in the baseline: {} {}: {}; write the baseline anew",
+                e.file, e.rule, e.about
+            )
+        })
     }
 
     /// Every shown finding with the outcome it is in.

@@ -246,6 +246,7 @@ impl Kit {
                 Verdict::Ok | Verdict::Unchecked => Severity::Information,
             },
             waiver: None,
+            known: false,
             stress: record
                 .zip(numbers)
                 .filter(|_| compared.is_some())
@@ -491,6 +492,7 @@ fn findings(kit: &Kit) -> Vec<Finding> {
         related: Vec::new(),
         edits: Vec::new(),
         waiver: None,
+        known: false,
         build: None,
     };
     let emitter = kit.here("22 ohm");

@@ -7,6 +7,7 @@
 use serde_json::{Value, json};
 
 use crate::Outcome;
+use crate::baseline::Entry;
 use crate::finding::{Related, Severity, Site, TextEdit, Verdict, Waiver};
 use crate::rule::Rule;
 use crate::rules;
@@ -29,6 +30,7 @@ pub fn check(run: &Run) -> String {
             }
         }
     }
+    results.extend(run.stale.iter().map(absent));
     let driver = json!({
         "name": "derate",
         "version": env!("CARGO_PKG_VERSION"),
@@ -99,6 +101,24 @@ fn finding(outcome: &Outcome, one: &Shown<'_>) -> Value {
         .map(|f| fix(sources, &f.title, &f.edits))
         .collect();
     finish(&mut result, fixes, one.waiver);
+    if one.known {
+        put(&mut result, "baselineState", json!("unchanged"));
+    }
+    result
+}
+
+/// What the baseline holds and this run does not find any more.
+fn absent(entry: &Entry) -> Value {
+    let text = format!("{}: no longer found", entry.about);
+    let mut result = result(
+        &entry.rule,
+        Severity::Information,
+        text,
+        entry.fingerprint.clone(),
+    );
+    let place = json!([{ "physicalLocation": { "artifactLocation": { "uri": uri(&entry.file), "uriBaseId": "SRCROOT" } } }]);
+    put(&mut result, "locations", place);
+    put(&mut result, "baselineState", json!("absent"));
     result
 }
 
@@ -134,6 +154,9 @@ fn margin(outcome: &Outcome, Placed { build, margin: m }: Placed<'_>) -> Value {
         fixes,
         m.waiver.and_then(|at| report.waivers.get(at)),
     );
+    if m.known {
+        put(&mut result, "baselineState", json!("unchanged"));
+    }
     result
 }
 

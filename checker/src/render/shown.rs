@@ -74,11 +74,19 @@ pub struct Shown<'a> {
     pub origin: Origin<'a>,
     /// The waiver that accepts it.
     pub waiver: Option<&'a Waiver>,
+    /// The baseline holds all that it stands for.
+    pub known: bool,
     /// Which of several that are otherwise alike.
     ordinal: usize,
 }
 
 impl Shown<'_> {
+    /// Whether it calls for anything: no waiver accepts it, no baseline holds it.
+    #[must_use]
+    pub fn open(&self) -> bool {
+        self.waiver.is_none() && !self.known
+    }
+
     /// The details, one a line.
     #[must_use]
     pub fn help(&self) -> String {
@@ -155,6 +163,15 @@ pub fn shown<'a>(sources: &Sources, report: &'a Report) -> Vec<Shown<'a>> {
     all
 }
 
+/// The fingerprints of the findings about text and data, in their order.
+#[must_use]
+pub fn text_fingerprints(sources: &Sources, report: &Report) -> Vec<String> {
+    texts(sources, report)
+        .iter()
+        .map(|s| s.fingerprint(sources))
+        .collect()
+}
+
 /// The text a finding points at, with single spaces.
 fn guilty(sources: &Sources, finding: &Finding) -> String {
     let text = finding.site.span.slice(sources.text(finding.site.file));
@@ -207,6 +224,7 @@ fn text<'a>(report: &'a Report, finding: &'a Finding, ordinal: usize) -> Shown<'
         fixes: finding.edits.iter().map(fix).collect(),
         origin: Origin::Text(finding),
         waiver,
+        known: finding.known,
         ordinal,
     }
 }
@@ -328,6 +346,7 @@ fn cluster<'a>(report: &'a Report, mut group: Vec<Placed<'a>>) -> Option<Shown<'
             .filter(|c| !c.edits.is_empty())
             .map(fix)
             .collect(),
+        known: group.iter().all(|p| p.margin.known),
         origin: Origin::Margins(group),
         waiver,
         ordinal: 0,
@@ -480,6 +499,7 @@ fn lacking<'a>(sources: &Sources, key: &'a str, group: Vec<Placed<'a>>) -> Optio
             ),
         ],
         fixes: Vec::new(),
+        known: group.iter().all(|p| p.margin.known),
         origin: Origin::Waiting(key, group),
         waiver: None,
         ordinal: 0,

@@ -93,6 +93,9 @@ fn write_check(out: &mut String, run: &Run, style: Style) -> fmt::Result {
             writeln!(out, "{}", escape::terminal(&text))?;
         }
     }
+    for line in run.stale_lines() {
+        writeln!(out, "{}", escape::terminal(&line))?;
+    }
     writeln!(out, "{}", total(run))
 }
 
@@ -129,7 +132,7 @@ fn findings(
     all: &[Shown<'_>],
 ) -> fmt::Result {
     let mut pages = Pages::default();
-    for one in all.iter().filter(|s| s.waiver.is_none()) {
+    for one in all.iter().filter(|s| s.open()) {
         let Some(page) = pages.get(sources, one.site.file) else {
             continue;
         };

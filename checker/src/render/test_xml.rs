@@ -12,6 +12,9 @@ use super::message::{self, build_name, part_name};
 use super::run::{FailOn, Run, severity};
 use super::shown::{Origin, shown};
 
+/// Why a finding of the baseline does not fail.
+const KNOWN: &str = "known: in the baseline";
+
 /// How a case ended.
 enum End {
     Pass,
@@ -120,7 +123,11 @@ fn texts(outcome: &Outcome, file: &str, fail_on: FailOn) -> Vec<Case> {
         cases.push(Case {
             class: file.to_owned(),
             name: format!("{} at {name}:{line}", one.rule),
-            end: end(one.severity, one.waiver, fail_on, text),
+            end: if one.known {
+                End::Skip(KNOWN.to_owned())
+            } else {
+                end(one.severity, one.waiver, fail_on, text)
+            },
         });
     }
     if cases.is_empty() {
@@ -150,6 +157,7 @@ fn case(outcome: &Outcome, suite: &str, build: &BuildReport, m: &Margin, fail_on
     let end = match (m.verdict, waiver) {
         (Verdict::Ok, _) => End::Pass,
         (_, Some(waiver)) => End::Skip(format!("waived: {}", waiver.reason)),
+        _ if m.known => End::Skip(KNOWN.to_owned()),
         (Verdict::Unchecked, None) if fail_on == FailOn::Unchecked => {
             End::Fail("unchecked", text())
         }

@@ -214,6 +214,7 @@ fn any_span_can_be_drawn() {
                     related: vec![],
                     edits: vec![],
                     waiver: None,
+                    known: false,
                     build: None,
                 };
                 let report = Report {

@@ -7,7 +7,7 @@ use std::sync::Arc;
 use super::item::{ITEMS, Item, nearest};
 use super::{Left, Row, Sized, blocking, fails, left, moved};
 use crate::build::statement::{Declared, Select, Statement, Value};
-use crate::finding::{Margin, Measure, Site};
+use crate::finding::{Margin, Measure, Site, TextEdit};
 use crate::proposal::{statement_text, with_value, written};
 use crate::quantity::Quantity;
 use crate::solver::Solver;
@@ -99,7 +99,7 @@ impl Trial<'_> {
         }
         let place = self.place;
         let value = self.values.get(at).copied().unwrap_or(place.stated.value);
-        let line = with_value(&place.line, place.group, place.item.slot, value);
+        let line = with_value(&place.line, place.group, place.item.slot, value, &[]);
         let changes = [(place.block.clone(), Arc::new(line))];
         let solved = Arc::new(self.solver.solve(self.build, &changes).margins);
         self.known.insert(at, solved.clone());
@@ -134,7 +134,11 @@ impl Trial<'_> {
         let value = self.values.get(at).copied().unwrap_or_default();
         let text = written(value, &self.place.stated, self.place.item.slot == "n");
         let view = self.solver.view(self.build, &[]);
-        let line = statement_text(&view, &self.place.line, self.place.site, &text);
+        let edit = TextEdit {
+            site: self.place.site,
+            text: text.clone(),
+        };
+        let line = statement_text(&view, &self.place.line, &[edit]);
         Row {
             build: self.build.name.clone(),
             item: self.place.item.name,

@@ -27,7 +27,8 @@ def allowed(device, case, volts):
         steep = slopes < -1.05
         factor[steep] = 1 - device["sb"] * (max(case, 25.0) - 25.0)
     limit = np.minimum(factor[where] * curve, k * device["power"] / np.maximum(volts, 1e-9))
-    limit = np.minimum(limit, device["ic"])
+    # At Tj,max nothing is allowed any more.
+    limit = np.clip(limit, 1e-12, device["ic"])
     return np.where(volts > points[-1][1], np.nan, limit)
 
 

@@ -43,6 +43,9 @@ macro_rules! words {
     )*};
 }
 
+pub mod compare;
+pub mod parts;
+
 words! {
     /// How loud.
     Level {
@@ -77,11 +80,25 @@ words! {
     }
 }
 
+/// What a command may write.
+#[derive(Debug, Serialize, JsonSchema)]
+#[serde(untagged)]
+pub enum Document {
+    /// `check` and `margins`.
+    Report(Box<Report>),
+    /// `compare`.
+    Comparison(Box<compare::Comparison>),
+    /// `parts`.
+    Parts(Box<parts::Parts>),
+}
+
 form! {
     /// The report of one run.
     Report {
         /// The version of this form: 1.
         ampspec_report: u32,
+        /// Entries of the baseline that match nothing any more.
+        baseline_stale: Vec<Stale>,
         /// Each build, each alternate.
         builds: Vec<Build>,
         /// The command that was run.
@@ -122,6 +139,8 @@ form! {
         error: usize,
         /// Findings and margins at information, and missing keys.
         information: usize,
+        /// Findings and margins that the baseline holds.
+        known: usize,
         /// Margins within their allowance.
         ok: usize,
         /// Margins past their rating.
@@ -134,6 +153,17 @@ form! {
         waived: usize,
         /// Findings and margins at warning.
         warning: usize,
+    }
+    /// An entry of the baseline that matches nothing any more.
+    Stale {
+        /// What it was about.
+        about: String,
+        /// The spec that was checked.
+        file: String,
+        /// Of the finding.
+        fingerprint: String,
+        /// The rule.
+        rule: String,
     }
     /// One file.
     File {
@@ -451,6 +481,8 @@ form! {
         fingerprint: String,
         /// `build/alternate/block.key/rule`.
         id: String,
+        /// The baseline holds it.
+        known: bool,
         /// 100 - used, points.
         margin_percent: Option<Number>,
         /// The missing keys.
@@ -605,6 +637,8 @@ form! {
         hint: Option<String>,
         /// `rule/` and a number that tells apart findings of one rule in this file.
         id: String,
+        /// The baseline holds it.
+        known: bool,
         /// What is wrong.
         message: String,
         /// How an ambiguous text could be read.

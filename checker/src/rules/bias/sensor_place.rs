@@ -70,7 +70,8 @@ fn place(case: &Case<'_>) -> Result<Option<&'static str>, Needs> {
     }
     let on = stage.sensor.need()?.0;
     if stage.connection != "compound-pair" {
-        let wrong = "the output devices set the idle current, and the sensor is not on their sink";
+        let wrong = "the output devices set the idle current, and the sensor is not on their sink: \
+             `sensor on sink` or `on device` is";
         return Ok((!case.sensor_on_sink()?).then_some(wrong));
     }
     let driver = case
@@ -86,7 +87,8 @@ fn place(case: &Case<'_>) -> Result<Option<&'static str>, Needs> {
         _ => false,
     };
     Ok((!right).then_some(
-        "the drivers of a compound pair set the idle current, and the sensor is not on them",
+        "the drivers of a compound pair set the idle current, and the sensor is not on them: \
+         `sensor on driver` is",
     ))
 }
 
