@@ -9,6 +9,7 @@ pub mod bias;
 pub mod case;
 pub mod chain;
 pub mod clip;
+pub mod curves;
 pub mod derived;
 pub mod devices;
 pub mod drive;

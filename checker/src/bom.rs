@@ -235,6 +235,7 @@ fn apply_waivers(
         assumed: Vec::new(),
         derived: Vec::new(),
         margins,
+        curves: None,
     }];
     let mut findings = Vec::new();
     let waivers = waiver::apply_to_list(project, options, &mut reports, &mut findings);

@@ -43,6 +43,10 @@ commands! {
     Check(check),
     /// Summarise every margin, by part
     Margins(margins),
+    /// Find the smallest usual transformer, reservoir, heatsink and fuses that pass
+    Size(size),
+    /// Draw random kits within tolerance, and say how many pass
+    Spread(spread),
     /// Show which margins moved between two specs, or two revisions of one
     Compare(compare),
     /// Check a bill of materials against a spec, or write one from it

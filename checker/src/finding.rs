@@ -3,6 +3,8 @@
 
 use ampspec_grammar::Span;
 
+use crate::curves::Picture;
+
 /// Which file of a [`crate::source::Sources`] a position is in.
 #[derive(Clone, Copy, Debug, PartialEq, Eq, Hash, PartialOrd, Ord)]
 pub struct FileId(pub u32);
@@ -348,6 +350,8 @@ pub struct BuildReport {
     pub derived: Vec<Derived>,
     /// Every margin, in rule order.
     pub margins: Vec<Margin>,
+    /// The points of the pictures, filled on request.
+    pub curves: Option<Vec<Picture>>,
 }
 
 /// What became of a waiver.

@@ -7,6 +7,7 @@ pub mod baseline;
 pub mod bom;
 pub mod build;
 pub mod compare;
+pub mod curves;
 pub mod finding;
 pub mod physics;
 pub mod policy;
@@ -15,7 +16,10 @@ pub mod quantity;
 pub mod render;
 pub mod rule;
 pub mod rules;
+pub mod size;
+pub mod solver;
 pub mod source;
+pub mod spread;
 pub mod tables;
 #[cfg(test)]
 pub(crate) mod testing;
@@ -50,6 +54,8 @@ pub struct Options {
     pub today: String,
     /// Look for changes that clear what is over or thin. Each is re-solved, which takes time.
     pub changes: bool,
+    /// Work out the points of the pictures.
+    pub curves: bool,
     /// The folder that no path may leave; the folder of the file where not given.
     pub root: Option<PathBuf>,
     /// What earlier checks solved. Give the same to every check of a run: results do not depend on it.
@@ -182,6 +188,7 @@ fn solve(
         assumed: Vec::new(),
         derived: Vec::new(),
         margins: Vec::new(),
+        curves: None,
     };
     match typed {
         Ok(mut build) => {
@@ -198,6 +205,7 @@ fn solve(
             } else {
                 regions.iter().map(Some).collect()
             };
+            let mut cases = Vec::new();
             for region in regions {
                 let case = Case::new(&build, &policy, region, tables, &options.memory);
                 for registered in rules::ALL {
@@ -207,8 +215,17 @@ fn solve(
                 }
                 derived::note(&case, &mut report.derived);
                 extend(&mut assumed, case.assumed());
+                if options.curves {
+                    cases.push(case);
+                }
             }
             report.margins = in_rule_order(margins.into_margins());
+            if options.curves {
+                let pictures = report.curves.insert(Vec::new());
+                for (at, case) in cases.iter().enumerate() {
+                    analysis::curves::draw(case, &report.margins, at == 0, pictures);
+                }
+            }
         }
         Err(needs) => {
             for need in needs.keys {

@@ -34,7 +34,7 @@ pub fn fill(view: &View<'_>, margins: &mut [Margin], solve: &Solve<'_>) {
     // the same edit is asked about by every margin it may clear: solve it once
     let mut tried: HashMap<(Site, String), Arc<Vec<Margin>>> = HashMap::new();
     for margin in margins.iter_mut() {
-        if !matches!(margin.verdict, Verdict::Over | Verdict::Thin) || margin.waiver.is_some() {
+        if !stands_in_the_way(margin) {
             continue;
         }
         let Some(rule) = rules::find(margin.rule) else {
@@ -79,7 +79,7 @@ fn offer(
     let values = values(remedy, quantity.value);
     let its_own = its_own(remedy, &line, group);
     let mut attempt = |value: f64| -> Option<(String, Arc<Vec<Margin>>)> {
-        let text = written(value, quantity, remedy);
+        let text = written(value, quantity, remedy.series == Series::Count);
         let margins = tried.entry((slot.site, text.clone())).or_insert_with(|| {
             let changed = with_value(&line, group, remedy.slot, value, &its_own);
             Arc::new(solve(&[(block.clone(), Arc::new(changed))]))
@@ -144,6 +144,11 @@ fn offer(
         used_after,
         also_moves: moves(margin, before, &after),
     })
+}
+
+/// Past its allowance, and no waiver accepts it.
+pub(crate) fn stands_in_the_way(margin: &Margin) -> bool {
+    matches!(margin.verdict, Verdict::Over | Verdict::Thin) && margin.waiver.is_none()
 }
 
 /// The figures that a changed line does not keep: they are those of the part that was there.
@@ -278,9 +283,10 @@ fn values(remedy: &Remedy, now: f64) -> Vec<f64> {
     out
 }
 
-/// A value as the language spells it, in the style of the line: letter codes stay letter codes.
-fn written(value: f64, like: &Quantity, remedy: &Remedy) -> String {
-    if remedy.series == Series::Count {
+/// A value as the language spells it, in the style of the line: letter codes stay letter codes, a
+/// `count` has no unit.
+pub(crate) fn written(value: f64, like: &Quantity, count: bool) -> String {
+    if count {
         return format!("{value}");
     }
     let mut text = match like.dimension {
@@ -309,7 +315,7 @@ fn written(value: f64, like: &Quantity, remedy: &Remedy) -> String {
 }
 
 /// The line with another value in one slot, and without what was the old part's own.
-fn with_value(
+pub(crate) fn with_value(
     line: &Statement,
     group: usize,
     slot: &str,
@@ -395,7 +401,11 @@ fn order_code(text: &str) -> Option<(usize, usize)> {
 }
 
 /// The text of the line with the edits made, on one line.
-fn statement_text(view: &View<'_>, line: &Statement, edits: &[TextEdit]) -> Option<String> {
+pub(crate) fn statement_text(
+    view: &View<'_>,
+    line: &Statement,
+    edits: &[TextEdit],
+) -> Option<String> {
     // a changed line begins with `change BLOCK`; its own key is where it starts
     let whole = view.project.sources.text(line.site.file);
     let mut out = String::new();

@@ -17,6 +17,8 @@ pub mod parts;
 pub mod run;
 pub mod sarif;
 pub mod shown;
+pub mod size;
+pub mod spread;
 mod table;
 pub mod terminal;
 pub mod test_xml;

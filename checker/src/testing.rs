@@ -71,6 +71,20 @@ pub(crate) fn outcome(text: &str) -> crate::Outcome {
     checked(text, false)
 }
 
+/// The same, with the points of the pictures.
+pub(crate) fn drawn(text: &str) -> Report {
+    let options = crate::Options {
+        today: "2026-06-01".to_owned(),
+        curves: true,
+        ..crate::Options::default()
+    };
+    beside(text, |files, path| {
+        crate::check(files, path, "under-test.ampspec", &options)
+    })
+    .unwrap()
+    .report
+}
+
 fn checked(text: &str, changes: bool) -> crate::Outcome {
     let options = crate::Options {
         today: "2026-06-01".to_owned(),
@@ -113,6 +127,11 @@ pub(crate) fn crossed(text: &str, list: &str) -> crate::bom::Crossed {
         ..crate::Options::default()
     };
     crate::bom::against(&Beside(text), &path, "under-test.ampspec", &options, &given).unwrap()
+}
+
+/// Do something with a text as a file beside the demo kits.
+pub(crate) fn beside<T>(text: &str, work: impl FnOnce(&dyn Files, &Path) -> T) -> T {
+    work(&Beside(text), &kits().join("under-test.ampspec"))
 }
 
 /// The margin of a rule for a part, in the first build, without alternate.

@@ -91,6 +91,8 @@ const MUST_NOT_KNOW: &[(&str, &[&str])] = &[
         &["crate::render", "crate::rules", "crate::waiver"],
     ),
     ("checker/src/rules", &["crate::render", "tower_lsp"]),
+    ("checker/src/size", &["crate::render", "crate::physics"]),
+    ("checker/src/spread", &["crate::render", "crate::physics"]),
     (
         "checker/src/assist",
         &["crate::physics", "crate::analysis", "tower_lsp"],

@@ -6,7 +6,7 @@ use super::Stress;
 use super::case::{Case, Side, solved, stated};
 use super::devices::emitter;
 use super::heat::{Heat, mounting, sink_model};
-use super::loads::Driven;
+use super::loads::{Driven, Spot};
 use super::rails::Mains;
 use super::safe_area::{SafeArea, aim, settled};
 use crate::build::Needs;
@@ -45,7 +45,7 @@ pub struct Limit {
 
 impl Limit {
     /// Current of what is sensed, at a voltage.
-    fn sensed(&self, volts: Volt) -> Option<Amp> {
+    pub(super) fn sensed(&self, volts: Volt) -> Option<Amp> {
         let all = self.lines.iter().map(|l| l.current(volts));
         all.reduce(|a, b| match self.extreme {
             Extreme::Most => Some(a?.max(b?)),
@@ -55,20 +55,41 @@ impl Limit {
 
     /// Current of the most loaded device while what is sensed is at the limit: a limiter that senses
     /// one device may sense the least loaded.
-    fn most_loaded(&self, bank: &Bank, sensed: Amp) -> Option<Amp> {
+    pub(super) fn most_loaded(&self, bank: &Bank, sensed: Amp) -> Option<Amp> {
         match self.senses {
             Senses::Device => bank.most_loaded_beside(sensed.max(Amp::ZERO)),
             Senses::Bank => Some(bank.most_loaded(sensed.max(Amp::ZERO))),
         }
     }
 
-    fn kinks(&self) -> Vec<Volt> {
+    /// The same where the most loaded device is the one that is sensed.
+    pub(super) fn when_sensed(&self, bank: &Bank, sensed: Amp) -> Option<Amp> {
+        match self.senses {
+            Senses::Device => Some(sensed.max(Amp::ZERO)),
+            Senses::Bank => Some(bank.most_loaded(sensed.max(Amp::ZERO))),
+        }
+    }
+
+    /// Where the line bends.
+    pub(super) fn kinks(&self) -> Vec<Volt> {
         self.lines
             .iter()
             .flat_map(|l| l.corners().map(|c| c.volts))
             .filter(|v| *v >= Volt::ZERO)
             .collect()
     }
+}
+
+/// Where a limit line comes nearest to a load.
+#[derive(Debug)]
+pub(super) struct Clear {
+    limit: Limit,
+    rail: Volt,
+    /// Where on the load's impedance.
+    pub(super) spot: Spot,
+    /// Peak output there.
+    pub(super) amplitude: Volt,
+    nearest: Clearance,
 }
 
 /// A short at the output of one channel.
@@ -342,17 +363,11 @@ impl Case<'_> {
         }
     }
 
-    /// How far the limit line stays clear of a load at full drive: the least ratio of the current at
-    /// which it acts to the current that flows.
+    /// Where the limit line comes nearest to a load at full drive.
     ///
     /// # Errors
     /// What is missing.
-    pub fn clearance_stress(
-        &self,
-        heat: &Heat,
-        load: &Driven,
-        side: Side,
-    ) -> Result<Stress, Needs> {
+    pub(super) fn clearance(&self, heat: &Heat, load: &Driven, side: Side) -> Result<Clear, Needs> {
         // the sense transistor stands on the board beside the sink: as hot as that at most
         let (limit, bench, (rail, drop)) = three(
             self.limit(Extreme::Least, heat.hot_spot),
@@ -396,6 +411,34 @@ impl Case<'_> {
             })
             .ok_or_else(nothing)?;
         let (amplitude, clear) = at_point(spot.seen).ok_or_else(nothing)?;
+        Ok(Clear {
+            limit,
+            rail,
+            spot,
+            amplitude,
+            nearest: clear,
+        })
+    }
+
+    /// How far the limit line stays clear of a load at full drive: the least ratio of the current at
+    /// which it acts to the current that flows.
+    ///
+    /// # Errors
+    /// What is missing.
+    pub fn clearance_stress(
+        &self,
+        heat: &Heat,
+        load: &Driven,
+        side: Side,
+    ) -> Result<Stress, Needs> {
+        let Clear {
+            limit,
+            rail,
+            spot,
+            amplitude,
+            nearest: clear,
+        } = self.clearance(heat, load, side)?;
+        let swing = rail * 2.0;
         let idle = limit.sensed(swing).is_none_or(|i| i <= Amp::ZERO);
         let mut working = self.limit_steps(&limit);
         working.extend([

@@ -248,6 +248,28 @@ pub struct Use {
 const NOTHING_ALLOWED: f64 = 1e9;
 
 impl Ready<'_> {
+    /// What is allowed; `None` where the case leaves nothing.
+    #[must_use]
+    pub fn allowance(&self) -> Option<&Allowance> {
+        self.allowance.as_ref()
+    }
+
+    /// The d.c. curve, and the pulse curve of a length where that one counts.
+    pub fn allowances(
+        &self,
+        pulse: Option<Second>,
+    ) -> impl Iterator<Item = (&Allowance, Option<Second>)> {
+        let credited = self.pulses.iter().filter(move |p| Some(p.length) == pulse);
+        let credited = credited.map(|p| (&p.allowance, Some(p.length)));
+        self.allowance.iter().map(|a| (a, None)).chain(credited)
+    }
+
+    /// The path of this side under a sine.
+    #[must_use]
+    pub fn locus(&self, amplitude: Volt, z: Impedance) -> Option<Locus<'_>> {
+        Locus::new(self.bank, self.rail, amplitude, z)
+    }
+
     /// Peak output into an impedance, V = Vu - drop.
     fn burst(&self, z: Impedance) -> Option<Volt> {
         self.drop.burst(self.rail, z.modulus())

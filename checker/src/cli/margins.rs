@@ -16,6 +16,9 @@ pub(crate) struct Args {
     /// How to report
     #[arg(long, value_enum, default_value_t)]
     form: Form,
+    /// In JSON, also the points of the pictures that the HTML draws
+    #[arg(long)]
+    curves: bool,
     #[command(flatten)]
     solve: Solve,
 }
@@ -37,7 +40,10 @@ enum Form {
 
 impl Args {
     pub(crate) fn run(self) -> Done {
-        let (run, notes, status) = self.solve.run("margins", &self.paths);
+        let drawn = self.curves || matches!(self.form, Form::Html);
+        let (run, notes, status) = self.solve.run("margins", &self.paths, |options| {
+            options.curves = drawn;
+        });
         let output = match self.form {
             Form::Terminal => margins::terminal(&run, self.solve.style()),
             Form::Json => json::render(&run),

@@ -1,11 +1,12 @@
 //! What the commands that solve builds have in common: their options, and the run.
 //! Must not know how a run is printed.
 
-use std::path::PathBuf;
+use std::path::{Path, PathBuf};
 
 use clap::ValueEnum;
 use derate::render::run::{FailOn, Run};
 use derate::render::terminal::Style;
+use derate::source::Files;
 use derate::today::today;
 use derate::{Options, Outcome};
 use rayon::prelude::*;
@@ -61,9 +62,17 @@ impl Solve {
         self.colour.style(self.out.is_some())
     }
 
-    /// Solve every file named; also what to say on standard error, and the exit status.
-    pub(crate) fn run(&self, command: &'static str, paths: &[PathBuf]) -> (Run, Vec<String>, u8) {
-        let (outcomes, mut notes) = self.outcomes(paths);
+    /// Solve every file named; also what to say on standard error, and the exit status. `ask` adds
+    /// what a form shows beyond the verdicts and changes.
+    pub(crate) fn run(
+        &self,
+        command: &'static str,
+        paths: &[PathBuf],
+        ask: impl FnOnce(&mut Options),
+    ) -> (Run, Vec<String>, u8) {
+        let mut options = self.with_changes();
+        ask(&mut options);
+        let (outcomes, mut notes) = self.solved(paths, &options);
         notes.extend(self.unheeded(&outcomes));
         let run = Run::new(command, self.fail_on(), outcomes);
         let status = self.status(run.exit_status(), &notes);
@@ -73,13 +82,20 @@ impl Solve {
     /// Every file named, solved, with the changes that would clear what is found; also what to say on
     /// standard error.
     pub(crate) fn outcomes(&self, paths: &[PathBuf]) -> (Vec<Outcome>, Vec<String>) {
-        let (files, mut notes) = inputs(paths);
-        let options = Options {
+        self.solved(paths, &self.with_changes())
+    }
+
+    fn with_changes(&self) -> Options {
+        Options {
             changes: true,
             ..self.options()
-        };
+        }
+    }
+
+    fn solved(&self, paths: &[PathBuf], options: &Options) -> (Vec<Outcome>, Vec<String>) {
+        let (files, mut notes) = inputs(paths);
         let shelf = Shelf::default();
-        let results = self.each(&files, |file| outcome(file, &shelf, &options));
+        let results = self.each(&files, |file| outcome(file, &shelf, options));
         let mut outcomes = Vec::with_capacity(results.len());
         for result in results {
             match result {
@@ -117,6 +133,53 @@ impl Solve {
     /// The exit status: what was found, unless something could not be done.
     pub(crate) fn status(&self, found: u8, notes: &[String]) -> u8 {
         if notes.is_empty() { found } else { NOT_RUN }
+    }
+
+    /// Do something else with one file than check it, on as many threads as were asked for.
+    ///
+    /// # Errors
+    /// When it is no one file, or cannot be read; the text says why.
+    pub(crate) fn one<T: Send>(
+        &self,
+        path: &Path,
+        work: impl FnOnce(&dyn Files, &Path, &str, &Options) -> Result<T, String> + Send,
+    ) -> Result<T, String> {
+        let (files, notes) = inputs(&[path.to_owned()]);
+        let [file] = files.as_slice() else {
+            let why = notes.first().map_or("it is not one file", String::as_str);
+            return Err(format!("cannot read {}: {why}", path.display()));
+        };
+        let cannot = |why| format!("cannot read {}: {why}", file.name);
+        let text = file.read().map_err(cannot)?;
+        let options = Options {
+            root: file.root(),
+            ..self.options()
+        };
+        let run = || {
+            let shelf = Shelf::default();
+            let path = file.path.as_path();
+            let given = Given {
+                path,
+                text,
+                shelf: &shelf,
+            };
+            work(&given, path, &file.name, &options).map_err(cannot)
+        };
+        match rayon::ThreadPoolBuilder::new()
+            .num_threads(self.threads.unwrap_or(0))
+            .build()
+        {
+            Ok(pool) => pool.install(run),
+            Err(_) => run(),
+        }
+    }
+
+    /// Whether errors or warnings fail the run.
+    pub(crate) fn fails(&self, errors: bool, warnings: bool) -> bool {
+        match self.fail_on {
+            Level::Error => errors,
+            Level::Warning | Level::Unchecked => errors || warnings,
+        }
     }
 
     /// Names on the command line that name nothing.

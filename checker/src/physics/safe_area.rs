@@ -373,6 +373,35 @@ impl Allowance {
         Amp(1.0 / self.used_at(volts.0, 1.0).0)
     }
 
+    /// The voltages at which a limit begins, ends or crosses another: between two of them
+    /// [`Allowance::allowed`] is straight in log-log.
+    #[must_use]
+    pub fn kinks(&self) -> Vec<Volt> {
+        let mut kinks = Vec::new();
+        for (at, a) in self.bounds.iter().enumerate() {
+            kinks.extend([a.from, a.to]);
+            // ln i0a - sa·(x - xa) = ln i0b - sb·(x - xb), x = ln v
+            for b in self.bounds.iter().skip(at + 1) {
+                let level = |c: &Bound| math::ln(c.i0) + c.s * c.ln_v0;
+                kinks.push(math::exp((level(a) - level(b)) / (a.s - b.s)));
+            }
+        }
+        kinks.retain(|v| v.is_finite() && *v > 0.0);
+        kinks.sort_by(f64::total_cmp);
+        kinks.into_iter().map(Volt).collect()
+    }
+
+    /// The voltage up to which the data speak: the end of the curve, or the breakdown where none is due.
+    #[must_use]
+    pub fn known_to(&self) -> Volt {
+        let end = if self.end > 0.0 {
+            self.end
+        } else {
+            self.breakdown
+        };
+        Volt(end.min(self.breakdown))
+    }
+
     /// Use at one steady point, such as idle at the full rail. `None` if a value is negative or not
     /// finite.
     #[must_use]

@@ -8,6 +8,9 @@
 pub mod compare;
 pub mod form;
 pub mod parts;
+mod pictures;
+mod size;
+mod spread;
 
 use std::collections::HashSet;
 use std::path::PathBuf;
@@ -46,6 +49,9 @@ pub fn render(run: &Run) -> String {
     lines(&report(run))
 }
 
+pub use size::sized;
+pub use spread::spread;
+
 /// Any value as indented JSON with a line end.
 pub(super) fn lines(value: &impl serde::Serialize) -> String {
     // the types hold nothing that JSON cannot say
@@ -81,6 +87,8 @@ pub fn report(run: &Run) -> form::Report {
         files: files.list,
         policies: policies(run),
         schema: SCHEMA.to_owned(),
+        size: None,
+        spread: None,
         summary: form::Summary {
             assumed: c.assumed,
             error: c.error,
@@ -226,6 +234,10 @@ fn build(outcome: &Outcome, b: &found::BuildReport) -> form::Build {
                 why: a.why.to_owned(),
             })
             .collect(),
+        curves: b
+            .curves
+            .as_ref()
+            .map(|all| all.iter().map(pictures::picture).collect()),
         derived: b.derived.iter().map(|d| derived(sources, d)).collect(),
         duty: b.duty.clone(),
         margins: b.margins.iter().map(|m| margin(outcome, b, m)).collect(),

@@ -477,6 +477,7 @@ fn build(kit: &Kit, name: &str, alternate: Option<&str>, margins: Vec<Margin>) -
             site: kit.here("supply toroid"),
         }],
         margins,
+        curves: None,
     }
 }
 

@@ -263,3 +263,69 @@ fn rules_are_explained() {
     insta::assert_snapshot!("explain-terminal", explain::terminal(rule, 80));
     insta::assert_snapshot!("explain-markdown", explain::markdown(rule));
 }
+
+/// Names from a spec in titles, captions, keys and drawings.
+#[test]
+fn hostile_names_stay_names_in_pictures() {
+    use crate::curves::{Axis, Fact, Kind, Line, Mark, Panel, Picture, Role};
+    use crate::finding::Measure;
+    let axis = |log| Axis {
+        name: "current",
+        unit: "A",
+        log,
+    };
+    let panel = |log| Panel {
+        x: axis(log),
+        y: axis(log),
+        lines: vec![Line {
+            role: Role::Locus,
+            label: HOSTILE.to_owned(),
+            points: vec![(1.0, 2.0), (30.0, 0.4), (f64::NAN, 1.0)],
+        }],
+        marks: vec![Mark {
+            role: Role::Worst,
+            label: HOSTILE.to_owned(),
+            x: 3.0,
+            y: 1.0,
+            value: Some(Measure::new(79.0, "%")),
+        }],
+    };
+    let kinds = [
+        Kind::SafeArea,
+        Kind::Limiter,
+        Kind::Impedance,
+        Kind::Rail,
+        Kind::Ripple,
+        Kind::Heat,
+        Kind::Ladder,
+    ];
+    let picture = |kind| Picture {
+        kind,
+        of: vec![HOSTILE.to_owned()],
+        region: HOSTILE.to_owned(),
+        facts: vec![Fact {
+            name: "case",
+            of: HOSTILE.to_owned(),
+            value: Measure::new(70.0, "degC"),
+        }],
+        panels: vec![panel(kind == Kind::SafeArea), panel(false)],
+    };
+    let mut summary = run("margins");
+    let build = summary
+        .outcomes
+        .iter_mut()
+        .flat_map(|o| &mut o.report.builds)
+        .next()
+        .unwrap();
+    build.curves = Some(kinds.map(picture).to_vec());
+    let page = html::margins(&summary);
+    assert_eq!(page.matches("class=\"plot\"").count(), kinds.len());
+    assert!(!page.contains("<script") && !page.contains("]]>") && !page.contains("NaN"));
+    assert!(!page.chars().any(|c| c != '\n' && escape::hidden(c)));
+    assert!(page.contains("&lt;script&gt;"));
+    // every picture is described, and every id stands once
+    for n in 1..=kinds.len() {
+        assert_eq!(page.matches(&format!("id=\"p{n}-t\"")).count(), 1);
+        assert_eq!(page.matches(&format!("id=\"p{n}-d\"")).count(), 1);
+    }
+}

@@ -113,6 +113,10 @@ form! {
         policies: Vec<Policy>,
         /// Where the schema of this form is.
         schema: String,
+        /// What each build needs; null but for `derate size`.
+        size: Option<Size>,
+        /// The builds over random kits; null but for `derate spread`.
+        spread: Option<Spread>,
         /// What was counted.
         summary: Summary,
         /// What made this.
@@ -200,6 +204,8 @@ form! {
         alternate: Option<String>,
         /// Values used because nothing states them.
         assumed: Vec<Assumed>,
+        /// The points of the pictures; null where they were not asked for.
+        curves: Option<Vec<Picture>>,
         /// Numbers people want beside a line.
         derived: Vec<Derived>,
         /// The duty in force.
@@ -225,6 +231,196 @@ form! {
         value: Option<Qty>,
         /// Why this one.
         why: String,
+    }
+    /// A picture as numbers.
+    Picture {
+        /// Figures for the words under it.
+        facts: Vec<Fact>,
+        /// `safe_area`, `limiter`, `impedance`, `rail`, `ripple`, `heat` or `ladder`.
+        kind: String,
+        /// Of which parts or load.
+        of: Vec<String>,
+        /// One above the other, the same axis across.
+        panels: Vec<Panel>,
+        /// The mains region.
+        region: Option<String>,
+    }
+    /// A figure that holds for a picture.
+    Fact {
+        /// What it is.
+        name: String,
+        /// The load it holds for.
+        of: Option<String>,
+        /// The figure.
+        value: Qty,
+    }
+    /// One pair of axes.
+    Panel {
+        /// In the order in which they are drawn.
+        lines: Vec<Line>,
+        /// Points pointed out.
+        marks: Vec<Mark>,
+        /// Across.
+        x: Axis,
+        /// Up.
+        y: Axis,
+    }
+    /// One axis.
+    Axis {
+        /// Logarithmic.
+        log: bool,
+        /// What it counts.
+        name: String,
+        /// Its unit.
+        unit: String,
+    }
+    /// A line through points, straight between them in the scales of the axes.
+    Line {
+        /// Which one: a load, a mains level.
+        label: String,
+        /// Pairs across and up.
+        points: Vec<[Number; 2]>,
+        /// `stated`, `derated`, `allowed`, `locus`, `limit`, `plain` or `beside`.
+        role: String,
+    }
+    /// A point pointed out.
+    Mark {
+        /// Which one.
+        label: String,
+        /// `worst`, `point`, `allowed` or `rating`.
+        role: String,
+        /// A figure that belongs to it.
+        value: Option<Qty>,
+        /// Across.
+        x: Number,
+        /// Up.
+        y: Number,
+    }
+    /// What the builds of a file need.
+    Size {
+        /// The table that a seller publishes; empty where every build states its supply.
+        cells: Vec<Cell>,
+        /// Margins past their allowance whatever the size.
+        elsewhere: Vec<Elsewhere>,
+        /// What to paste into a build that states no supply.
+        pasted: Vec<Pasted>,
+        /// One for each build and thing.
+        rows: Vec<SizeRow>,
+    }
+    /// One thing that a build needs.
+    SizeRow {
+        /// The build.
+        build: String,
+        /// The thing.
+        item: String,
+        /// The margin that keeps the next smaller value, or every value, from passing.
+        limited: Option<LimitedBy>,
+        /// The margins that the choice moves, worst first.
+        margins: Vec<Left>,
+        /// The least figure that passes.
+        needed: Option<Qty>,
+        /// The smallest usual value that passes; null where none does.
+        offered: Option<String>,
+        /// What the file says now.
+        stated: Option<String>,
+        /// As lines of the language.
+        statements: Vec<String>,
+    }
+    /// Which margin stands in the way, and of which value.
+    LimitedBy {
+        /// The margin.
+        margin: Left,
+        /// The value that it keeps from passing.
+        value: String,
+    }
+    /// A margin as a choice leaves it.
+    Left {
+        /// Which.
+        id: String,
+        /// Share of the allowance, per cent.
+        used_percent: Option<Number>,
+        /// Its verdict.
+        verdict: Verdict,
+    }
+    /// A margin that is no matter of size.
+    Elsewhere {
+        /// The build.
+        build: String,
+        /// The margin.
+        margin: Left,
+    }
+    /// Text for a build.
+    Pasted {
+        /// The build.
+        build: String,
+        /// Blocks, then the lines of the build.
+        text: String,
+    }
+    /// One use of the board.
+    Cell {
+        /// `allowed`, `condition` or `not`.
+        answer: String,
+        /// Amplifier channels.
+        channels: u32,
+        /// The load.
+        load: String,
+        /// The mains, as the file words it.
+        mains: String,
+        /// What it takes, the condition, or the reason.
+        words: String,
+    }
+    /// Builds over random kits.
+    Spread {
+        /// Each build.
+        builds: Vec<SpreadBuild>,
+        /// The shares of kits, per cent, at which used is given.
+        percentiles: Vec<Number>,
+        /// What drew the kits.
+        seed: u64,
+    }
+    /// One build over random kits.
+    SpreadBuild {
+        /// Its name.
+        build: String,
+        /// Lines that were drawn.
+        inputs: Vec<String>,
+        /// Kits drawn.
+        kits: u32,
+        /// Margins that some tolerance moves, the greatest used first.
+        margins: Vec<SpreadMargin>,
+        /// Whether a model stood for the kits that were not solved in full.
+        modelled: bool,
+        /// Share of kits within every allowance.
+        pass: Number,
+        /// Kits solved in full for their verdict.
+        solved: u32,
+        /// Share of kits within every rating.
+        within_ratings: Number,
+    }
+    /// One margin over random kits.
+    SpreadMargin {
+        /// The line that moves it most.
+        by: Option<String>,
+        /// That line's share of the variance that single lines make.
+        by_share: Option<Number>,
+        /// The worst case says no, and most kits say yes.
+        disagrees: bool,
+        /// Greatest error of the model found, points of used.
+        error: Number,
+        /// Share of kits in which it is the governing margin.
+        governs: Number,
+        /// Which.
+        id: String,
+        /// Share of kits past its allowance.
+        past_allowance: Number,
+        /// Share of kits past its rating.
+        past_rating: Number,
+        /// Used at each of the shares, per cent.
+        used_percent: Vec<Number>,
+        /// Used in the worst case of every check, per cent.
+        worst_case_percent: Number,
+        /// The verdict of that.
+        worst_case_verdict: Verdict,
     }
     /// A derived number.
     Derived {
