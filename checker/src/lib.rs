@@ -28,12 +28,15 @@ pub mod today;
 pub mod vocabulary;
 pub mod waiver;
 
+pub use analysis::Memory;
+pub use build::parts::Duty;
+
 use std::collections::BTreeSet;
 use std::path::{Path, PathBuf};
 use std::sync::Arc;
 
-use analysis::{Case, Margins, Memory, Tables, derived};
-use build::parts::{Duty, Reader};
+use analysis::{Case, Margins, Tables, derived};
+use build::parts::Reader;
 use build::statement::Declared;
 use build::{Project, View, project};
 use finding::{Assumed, BuildReport, Finding, Margin, Report};

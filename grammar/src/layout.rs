@@ -49,7 +49,8 @@ impl Spelling for AsWritten {
 }
 
 /// The text in canonical layout. `None` if the respelled text would not be read as it was meant
-/// (a token that is not one token, say): then it is better left alone.
+/// (a token that is not one token, say, or a broken line whose neighbours have moved): then it is
+/// better left alone.
 #[must_use]
 pub fn layout(tree: &Tree, spelling: &dyn Spelling) -> Option<String> {
     let respelled = respelled(tree, spelling);

@@ -121,9 +121,12 @@ fn meaning(tree: &Tree) -> Vec<Vec<Vec<&str>>> {
 }
 
 fn check_layout(tree: &Tree) -> Result<(), TestCaseError> {
-    let once = layout(tree, &AsWritten);
-    prop_assert!(once.is_some());
-    let once = once.unwrap_or_default();
+    let Some(once) = layout(tree, &AsWritten) else {
+        // Only a faulty text may be left alone: a broken line can be read otherwise once its neighbours
+        // have moved.
+        prop_assert!(!tree.problems.is_empty());
+        return Ok(());
+    };
     let again = parse(once.as_str());
     prop_assert_eq!(meaning(tree), meaning(&again));
     let kinds = |tree: &Tree| tree.problems.iter().map(|p| p.kind).collect::<Vec<_>>();
@@ -288,4 +291,12 @@ fn typing_a_kit_shows_one_problem_at_a_time() {
             check_typing(&tree);
         }
     }
+}
+
+/// A broken line may be read otherwise once the lines of the block before it have moved.
+#[test]
+fn a_faulty_text_may_be_left_alone() {
+    let tree = parse("b n {\n±}\n } \u{200b}a 1,\n\n   2 a");
+    assert!(!tree.problems.is_empty());
+    assert_eq!(layout(&tree, &AsWritten), None);
 }

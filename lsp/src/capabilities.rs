@@ -2,8 +2,8 @@
 //! Must not know how anything is answered.
 
 use ampspec_grammar::ColumnUnit;
+use derate::Duty;
 use derate::assist::hints::Wanted;
-use derate::build::parts::Duty;
 use serde::Deserialize;
 use serde_json::Value;
 use tower_lsp::lsp_types::*;

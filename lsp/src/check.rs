@@ -7,9 +7,9 @@ use std::path::{Path, PathBuf};
 use std::sync::Arc;
 
 use ampspec_grammar::Tree;
-use derate::analysis::Memory;
+use derate::Duty;
+use derate::Memory;
 use derate::assist::moved::moved;
-use derate::build::parts::Duty;
 use derate::render::shown::shown;
 use derate::source::Files;
 use derate::today::today;
