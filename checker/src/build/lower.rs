@@ -1228,10 +1228,11 @@ impl Lowering<'_> {
             );
             self.say(
                 "syntax.tolerance",
-                Severity::Warning,
+                Severity::Error,
                 span,
                 message,
-                "it is not used; leave it out".to_owned(),
+                "it would not be used here: write it right after the value it belongs to, or leave it out"
+                    .to_owned(),
             );
         }
         if dimension == Dimension::Number
@@ -1283,16 +1284,14 @@ impl Lowering<'_> {
         if extent == Extent::Range {
             *faulty = true;
             let message = format!("`{}` wants a range", key.name);
-            self.error(
-                "syntax.value",
-                span,
-                message,
-                format!(
-                    "write both ends with their unit: `{} to {}`",
-                    atoms[0].text,
-                    describe_value(item)
-                ),
+            let dash = |a: &&Atom<'_>| matches!(a.text, "-" | "–" | "—" | "−" | ".." | "...");
+            let other = atoms.get(used).filter(dash).and(atoms.get(used + 1));
+            let hint = format!(
+                "write both ends with their unit: `{} to {}`",
+                atoms[0].text,
+                other.map_or("…", |a| a.text)
             );
+            self.error("syntax.value", span, message, hint);
             return used;
         }
         self.plausible(key, item, quantity.value, span);

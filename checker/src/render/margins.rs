@@ -107,7 +107,7 @@ impl Row {
             ),
         };
         let used = if message::nothing_left(margin) {
-            "no rating left".to_owned()
+            message::spent(margin).to_owned()
         } else {
             margin.used_percent.map(percent).unwrap_or_default()
         };

@@ -95,6 +95,16 @@ pub fn nothing_left(margin: &Margin) -> bool {
     past && margin.used_percent.is_none() && margin.stress.is_some()
 }
 
+/// What is gone where no percentage can be told: within the rating only the allowance is.
+#[must_use]
+pub fn spent(margin: &Margin) -> &'static str {
+    if margin.verdict == Verdict::Thin {
+        "no allowance left"
+    } else {
+        "no rating left"
+    }
+}
+
 /// `118 % used, margin -18 points: over`.
 #[must_use]
 pub fn used(margin: &Margin) -> String {
@@ -105,7 +115,7 @@ pub fn used(margin: &Margin) -> String {
             percent(used),
             points(left)
         ),
-        _ if nothing_left(margin) => format!("no rating left: {verdict}"),
+        _ if nothing_left(margin) => format!("{}: {verdict}", spent(margin)),
         _ => verdict.to_owned(),
     }
 }
@@ -115,7 +125,7 @@ pub fn used(margin: &Margin) -> String {
 pub fn brief(margin: &Margin) -> String {
     match margin.used_percent {
         Some(used) => format!("{} used", percent(used)),
-        None if nothing_left(margin) => "no rating left".to_owned(),
+        None if nothing_left(margin) => spent(margin).to_owned(),
         None => verdict(margin.verdict).to_owned(),
     }
 }

@@ -13,7 +13,7 @@ rule! {
     compares: "current of the most loaded device along the locus of each load with the temperature-derated safe area",
     stress: "current of the most loaded device into a load at its own phase",
     rating: "safe area, derated to the case temperature",
-    formula: "i(t)/Iallowed(v(t)), v = Vu - V̂·sin θ - (i/N)·RE, Iallowed = min(IC, k·P/v, kseg·C(v)), k = (Tj,max - Tcase)/(Tj,max - 25)",
+    formula: "i(t)/Iallowed(v(t)), v = Vu - V̂·sin θ - (i/N)·RE, Iallowed = min(IC, k·P/v, kseg·C(v)), k = (Tj,max - Tcase)/(Tj,max - 25); Vu at nominal mains, at high mains where the policy says so (`strict`)",
     source: "derating of data sheets: power straight to Tj,max, second breakdown alike where not stated (onsemi MJ15022/D, 2N3055A/D, read); log-log between points; E. Benjamin, JAES 42(9) 1994 (from memory)",
     reads: ["device.soa", "device.power", "device.current", "device.junction", "device.vceo", "device.structure", "device.second-breakdown", "stage.pairs", "stage.emitter", "stage.vbe-spread", "stage.insulator", "amplifier.drop", "build.loads", "build.mains", "build.ambient", "build.duty", "heatsink.resistance", "load.minimum", "load.angle"],
     sense: AtMost,

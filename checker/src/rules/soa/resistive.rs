@@ -13,7 +13,7 @@ rule! {
     compares: "current of the most loaded device along a resistive load line with the temperature-derated safe area",
     stress: "current of the most loaded device into a resistive load",
     rating: "safe area, derated to the case temperature",
-    formula: "i(t)/Iallowed(v(t)), Iallowed = min(IC, k·P/v, kseg·C(v)), k = (Tj,max - Tcase)/(Tj,max - 25)",
+    formula: "i(t)/Iallowed(v(t)), Iallowed = min(IC, k·P/v, kseg·C(v)), k = (Tj,max - Tcase)/(Tj,max - 25); Vu at nominal mains, at high mains where the policy says so (`strict`)",
     source: "derating of data sheets: power straight to Tj,max, second breakdown alike where not stated (onsemi MJ15022/D, 2N3055A/D, read); log-log between points",
     reads: ["device.soa", "device.power", "device.current", "device.junction", "device.vceo", "device.structure", "device.second-breakdown", "stage.pairs", "stage.emitter", "stage.vbe-spread", "stage.insulator", "amplifier.drop", "build.loads", "build.mains", "build.ambient", "build.duty", "heatsink.resistance"],
     sense: AtMost,

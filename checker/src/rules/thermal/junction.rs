@@ -18,7 +18,7 @@ rule! {
     compares: "mean junction temperature of the hottest output device at the duty, hottest room, with Tj,max",
     stress: "mean junction temperature",
     rating: "Tj,max",
-    formula: "Tj = Ts + P·(θcs + θjc), P = share·bank/N",
+    formula: "Tj = Ts + P·(θcs + θjc), P = share·bank/N, on the mean rail at nominal mains",
     source: "energy balance; allowance common practice, no source",
     reads: ["device.junction", "device.junction-case", "stage.insulator", "stage.pairs", "stage.idle", "stage.emitter", "stage.vbe-spread", "stage.spread-across-sink", "heatsink.resistance", "build.heatsink", "build.ambient", "build.enclosure", "build.duty", "build.loads", "amplifier.drop"],
     sense: Temperature,

@@ -16,7 +16,7 @@ rule! {
     compares: "temperature of the heatsink at the duty, hottest room, with a limit",
     stress: "heatsink temperature",
     rating: "limit",
-    formula: "T = Ta + Tencl + P·Rsa, Rsa = R0·(ΔT/ΔT0)^-1/4; P = channels·(2·(V(Î/π + N·Iq) - V̂Î/4 - Î²RE/4N) + drivers)",
+    formula: "T = Ta + Tencl + P·Rsa, Rsa = R0·(ΔT/ΔT0)^-1/4; P = channels·(2·(V(Î/π + N·Iq) - V̂Î/4 - Î²RE/4N) + drivers), V the mean rail at nominal mains",
     source: "energy balance of class B; natural convection h ~ ΔT^1/4, maker's correction table",
     reads: ["heatsink.resistance", "heatsink.plate", "heatsink.fins", "build.heatsink", "build.ambient", "build.enclosure", "build.duty", "stage.idle", "stage.emitter", "amplifier.drop"],
     sense: Temperature,
