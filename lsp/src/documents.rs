@@ -79,6 +79,8 @@ struct Root {
     wanted: u64,
     /// The check that runs.
     running: Option<u64>,
+    /// What has changed since it began and is not known to be read: the check may come to read it.
+    meanwhile: Vec<PathBuf>,
     /// What the result holds for.
     settled: Option<u64>,
     result: Option<Arc<Checked>>,
@@ -314,6 +316,8 @@ impl Owner {
             if own == path || root.reads(path) {
                 self.stamp += 1;
                 root.wanted = self.stamp;
+            } else if root.running.is_some() {
+                root.meanwhile.push(path.to_owned());
             }
         }
     }
@@ -500,8 +504,14 @@ impl Owner {
             return;
         };
         root.running = None;
+        let meanwhile = std::mem::take(&mut root.meanwhile);
         // something it reads has changed since: the result is stale, and is dropped
         if stamp != root.wanted {
+            return;
+        }
+        if meanwhile.iter().any(|p| checked.seen.contains_key(p)) {
+            self.stamp += 1;
+            root.wanted = self.stamp;
             return;
         }
         let checked = Arc::new(checked);
