@@ -6,6 +6,7 @@ use super::Stress;
 use super::case::{Case, Side, solved, stated};
 use super::heat::{Heat, at};
 use super::loads::{Driven, Spot};
+use super::margins::Margins;
 use super::rails::Mains;
 use crate::build::Needs;
 use crate::build::parts::{Device, Flavour, LoadKind, both, three};
@@ -511,6 +512,29 @@ impl Case<'_> {
             .driven(spot.frequency, spot.seen)
             .ok_or_else(nothing)?;
         Ok((spot, used))
+    }
+
+    /// One margin for each declared output device: the locus of every load at an angle with the safe
+    /// area. A part of the band in which a load is not known counts where the band is searched: at its
+    /// bottom alone the load itself says what it lacks.
+    pub fn compare_loci(&self, rule: &'static Rule, out: &mut Margins<'_>, angle: Angle) {
+        let stage = self.output();
+        let site = stage.pairs.site();
+        for side in stage.sides() {
+            for played in self.played() {
+                let open = played
+                    .as_ref()
+                    .ok()
+                    .filter(|_| angle != Angle::OwnAtBottom)
+                    .and_then(|(load, _)| self.unknown_part(load));
+                if let Some(open) = open {
+                    out.compare(rule, self.device_part(stage, *side), site, Err(open));
+                }
+                let stress = played
+                    .and_then(|(load, heat)| self.locus_stress(rule, load, heat, *side, angle));
+                out.compare(rule, self.device_part(stage, *side), site, stress);
+            }
+        }
     }
 
     /// What the most loaded device of a side carries at the worst point of a load, with what it is

@@ -29,20 +29,7 @@ rule! {
 
 /// One margin for each declared output device: every load, at the bottom of the band.
 pub fn check(case: &Case<'_>, out: &mut Margins<'_>) {
-    let stage = case.output();
-    for side in stage.sides() {
-        for played in case.played() {
-            let stress = played.and_then(|(load, heat)| {
-                case.locus_stress(&RULE, load, heat, *side, Angle::OwnAtBottom)
-            });
-            out.compare(
-                &RULE,
-                case.device_part(stage, *side),
-                stage.pairs.site(),
-                stress,
-            );
-        }
-    }
+    case.compare_loci(&RULE, out, Angle::OwnAtBottom);
 }
 
 #[cfg(test)]

@@ -29,31 +29,7 @@ rule! {
 
 /// One margin for each declared output device: every load, over the band, both signs of angle.
 pub fn check(case: &Case<'_>, out: &mut Margins<'_>) {
-    let stage = case.output();
-    for side in stage.sides() {
-        for played in case.played() {
-            let open = played
-                .as_ref()
-                .ok()
-                .and_then(|(load, _)| case.unknown_part(load));
-            if let Some(open) = open {
-                out.compare(
-                    &RULE,
-                    case.device_part(stage, *side),
-                    stage.pairs.site(),
-                    Err(open),
-                );
-            }
-            let stress = played
-                .and_then(|(load, heat)| case.locus_stress(&RULE, load, heat, *side, Angle::Own));
-            out.compare(
-                &RULE,
-                case.device_part(stage, *side),
-                stage.pairs.site(),
-                stress,
-            );
-        }
-    }
+    case.compare_loci(&RULE, out, Angle::Own);
 }
 
 #[cfg(test)]
